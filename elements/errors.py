@@ -10,9 +10,12 @@ FishplateError
 ├── AnalysisError                        the system could not be solved
 │   └── MechanismError                   the plate, or a part of it, is free to move
 ├── PicturesUnavailableError             this machine cannot render
+├── SettingsError                        an environment variable is wrong
 └── StoreError                           the job store refused
     ├── UnknownJobError
-    └── NotFinalError
+    ├── NotFinalError
+    ├── TransitionError                  no such change of state
+    └── KeyConflictError                 an Idempotency-Key was used for another document
 """
 
 from collections.abc import Sequence

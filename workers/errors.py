@@ -73,3 +73,28 @@ class UnknownJobError(StoreError, LookupError):
 
 class NotFinalError(StoreError):
     """The job has no results yet."""
+
+
+class TransitionError(StoreError):
+    """A job cannot go from the state that it is in to the one asked for."""
+
+    def __init__(self, job_id: str, state: str, wanted: str) -> None:
+        self.job_id = job_id
+        self.state = state
+        self.wanted = wanted
+        super().__init__(f"job {job_id} is {state}; it cannot become {wanted}")
+
+
+class KeyConflictError(StoreError):
+    """An Idempotency-Key was used before, for another document."""
+
+    def __init__(self, job_id: str) -> None:
+        self.job_id = job_id
+        super().__init__(
+            f"this Idempotency-Key belongs to job {job_id}, whose document is another; "
+            "use a new key for a new document"
+        )
+
+
+class SettingsError(FishplateError, ValueError):
+    """An environment variable of Fishplate is wrong or not known."""

@@ -1,0 +1,100 @@
+"""Files that survive a power cut, and locks that vanish with their process.
+
+Everything here raises OSError as it comes; `store.py` turns it into words. Locks are BSD locks
+(flock): they exclude threads as well as processes, and the kernel releases them when the holder
+dies, however it dies, so no lease has to run out.
+"""
+
+import fcntl
+import os
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+
+def sync_folder(folder: Path) -> None:
+    """Make the names inside a folder durable."""
+    descriptor = os.open(folder, os.O_RDONLY | os.O_DIRECTORY)
+    try:
+        os.fsync(descriptor)
+    finally:
+        os.close(descriptor)
+
+
+def sync_tree(folder: Path) -> None:
+    """Make every file and folder below `folder` durable."""
+    for parent, _, names in os.walk(folder, topdown=False):
+        for name in names:
+            descriptor = os.open(Path(parent, name), os.O_RDONLY)
+            try:
+                os.fsync(descriptor)
+            finally:
+                os.close(descriptor)
+        sync_folder(Path(parent))
+
+
+def make_folder(folder: Path) -> None:
+    """Create a folder and whatever is missing above it, durably."""
+    if folder.is_dir():
+        return
+    make_folder(folder.parent)
+    folder.mkdir(exist_ok=True)
+    sync_folder(folder.parent)
+
+
+def write(path: Path, data: bytes) -> None:
+    """Write a file and its content durably; its name becomes durable with `sync_folder`."""
+    with path.open("wb") as file:
+        file.write(data)
+        file.flush()
+        os.fsync(file.fileno())
+
+
+def replace(path: Path, data: bytes) -> None:
+    """Replace a file at once: a reader sees the old or the new content, never a part."""
+    scratch = path.with_name(path.name + ".new")
+    try:
+        write(scratch, data)
+        scratch.replace(path)
+    except OSError:
+        scratch.unlink(missing_ok=True)
+        raise
+    sync_folder(path.parent)
+
+
+def move(source: Path, target: Path) -> None:
+    """Rename durably; both must be on one file system."""
+    source.rename(target)
+    sync_folder(target.parent)
+    if source.parent != target.parent:
+        sync_folder(source.parent)
+
+
+@contextmanager
+def lock(path: Path, *, wait: bool = True) -> Iterator[bool]:
+    """Hold the lock of `path` (created when missing); yields False when taken and wait is off."""
+    descriptor = _locked_descriptor(path, fcntl.LOCK_EX | (0 if wait else fcntl.LOCK_NB))
+    try:
+        yield descriptor is not None
+    finally:
+        if descriptor is not None:
+            os.close(descriptor)
+
+
+def _locked_descriptor(path: Path, operation: int) -> int | None:
+    while True:
+        descriptor = os.open(path, os.O_RDWR | os.O_CREAT, 0o600)
+        try:
+            fcntl.flock(descriptor, operation)
+            # Whoever held it may have removed the file: then the lock is on nothing, try again.
+            if path.exists() and os.path.samestat(os.fstat(descriptor), path.stat()):
+                return descriptor
+        except BlockingIOError:
+            os.close(descriptor)
+            return None
+        except FileNotFoundError:
+            pass
+        except BaseException:
+            os.close(descriptor)
+            raise
+        os.close(descriptor)

@@ -1,0 +1,176 @@
+"""The record of a job: its id, its state history, and which change of state is legal.
+
+Pure data; where records are kept is in `store.py`.
+"""
+
+import re
+import secrets
+import time
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from datetime import UTC, datetime, timedelta
+from typing import Any
+
+import orjson
+
+from workers.errors import Fault, TransitionError
+
+QUEUED, RUNNING, FINISHED, FAILED, CANCELLED = STATES = (
+    "queued",
+    "running",
+    "finished",
+    "failed",
+    "cancelled",
+)
+UNFINISHED = frozenset({QUEUED, RUNNING})
+# running -> running is a further attempt, running -> queued a job handed back.
+LEGAL = {
+    QUEUED: frozenset({RUNNING, CANCELLED}),
+    RUNNING: frozenset({RUNNING, QUEUED, FINISHED, FAILED, CANCELLED}),
+}
+
+# --- ids -----------------------------------------------------------------------------------------
+
+# Base 32 without i, l, o, u; its order is the order of the characters, so ids sort by time.
+ALPHABET = "0123456789abcdefghjkmnpqrstvwxyz"
+TIME_CHARACTERS = 11  # 55 bits of microseconds since 1970: enough for a thousand years
+CHANCE_CHARACTERS = 15  # 75 bits: not to be guessed
+_ID = re.compile(f"[{ALPHABET}]{{{TIME_CHARACTERS + CHANCE_CHARACTERS}}}")
+
+
+def new_id() -> str:
+    """A time-ordered id that nobody can guess."""
+    return _base32(time.time_ns() // 1000, TIME_CHARACTERS) + _base32(
+        secrets.randbits(5 * CHANCE_CHARACTERS), CHANCE_CHARACTERS
+    )
+
+
+def is_id(text: str) -> bool:
+    """Whether the text has the form of an id; it is then safe as the name of a folder."""
+    return _ID.fullmatch(text) is not None
+
+
+def day_of(job_id: str) -> str:
+    """The UTC day inside an id, e.g. "2031-04-05"."""
+    microseconds = 0
+    for character in job_id[:TIME_CHARACTERS]:
+        microseconds = 32 * microseconds + ALPHABET.index(character)
+    return (datetime(1970, 1, 1) + timedelta(microseconds=microseconds)).date().isoformat()
+
+
+def _base32(value: int, length: int) -> str:
+    return "".join(ALPHABET[value >> 5 * place & 31] for place in reversed(range(length)))
+
+
+# --- the record ----------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Event:
+    """One entry of the history: when the job came into a state, and why where that needs words."""
+
+    state: str
+    at: str  # RFC 3339, UTC
+    reason: str | None = None
+
+
+@dataclass(frozen=True)
+class Record:
+    """What is known of a job besides its document and its results.
+
+    attempts : how often a worker has begun it.
+    reason   : why it failed or was cancelled, in plain words.
+    faults   : what is wrong in the document, when that is why it failed.
+    cautions : those of the results, once it is finished.
+    key      : digest of the Idempotency-Key.
+    """
+
+    id: str
+    title: str
+    label: str | None
+    checksum: str  # "sha256:..." of the document
+    size: int  # of the document [bytes]
+    history: tuple[Event, ...]
+    attempts: int = 0
+    faults: tuple[Fault, ...] = ()
+    cautions: tuple[Mapping[str, Any], ...] = ()
+    key: str | None = None
+
+    @property
+    def state(self) -> str:
+        return self.history[-1].state
+
+    @property
+    def reason(self) -> str | None:
+        return self.history[-1].reason
+
+    @property
+    def is_final(self) -> bool:
+        return self.state not in UNFINISHED
+
+    @property
+    def accepted(self) -> str:
+        return self.history[0].at
+
+    @property
+    def started(self) -> str | None:
+        """When the last attempt began."""
+        return next((e.at for e in reversed(self.history) if e.state == RUNNING), None)
+
+    @property
+    def ended(self) -> str | None:
+        return self.history[-1].at if self.is_final else None
+
+    def moved(
+        self,
+        state: str,
+        *,
+        reason: str | None = None,
+        faults: tuple[Fault, ...] = (),
+        cautions: tuple[Mapping[str, Any], ...] = (),
+    ) -> "Record":
+        """The record after a change of state.
+
+        Raises
+        ------
+        TransitionError   the change is not legal; a final state is never left.
+        """
+        if state not in LEGAL.get(self.state, frozenset()):
+            raise TransitionError(self.id, self.state, state)
+        return replace(
+            self,
+            history=(*self.history, Event(state, now(), reason)),
+            attempts=self.attempts + (state == RUNNING),
+            faults=faults,
+            cautions=cautions,
+        )
+
+    def as_json(self) -> dict[str, Any]:
+        return {
+            "id": self.id,
+            "title": self.title,
+            "label": self.label,
+            "checksum": self.checksum,
+            "size": self.size,
+            "history": [{"state": e.state, "at": e.at, "reason": e.reason} for e in self.history],
+            "attempts": self.attempts,
+            "faults": [fault.as_json() for fault in self.faults],
+            "cautions": [dict(caution) for caution in self.cautions],
+            "key": self.key,
+        }
+
+    def as_bytes(self) -> bytes:
+        return orjson.dumps(self.as_json(), option=orjson.OPT_INDENT_2)
+
+    @classmethod
+    def from_bytes(cls, data: bytes) -> "Record":
+        document = orjson.loads(data)
+        history = tuple(Event(**event) for event in document.pop("history"))
+        faults = tuple(Fault(**fault) for fault in document.pop("faults"))
+        cautions = tuple(document.pop("cautions"))
+        return cls(**document, history=history, faults=faults, cautions=cautions)
+
+
+def now() -> str:
+    """The time of the day, UTC, as RFC 3339 writes it."""
+    return datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z")

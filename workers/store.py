@@ -1,0 +1,354 @@
+"""The job store: a folder for each job, and the truth about what state it is in.
+
+    jobs/DAY/ID/job.json       the document as accepted, never changed
+                record.json    the record (record.py), replaced at once under record.lock
+                run.lock       held by the one process that works on the job
+                staging/       results being written; nobody else looks inside
+                results/       published by one rename
+    states/STATE/DAY/ID        index: where to look for jobs of a state (index.py)
+    labels/LABEL/DAY/ID        index: the jobs of a label
+    keys/DIGEST                the job that an Idempotency-Key stands for
+    incoming/ID, removed/ID    on the way in and out
+
+Redis may be lost at any time; this folder may not. Every method raises StoreError when the file
+system refuses (full disk, no permission), and UnknownJobError for an id without a job.
+"""
+
+import hashlib
+import shutil
+from collections.abc import Iterator, Mapping, Sequence
+from contextlib import contextmanager
+from pathlib import Path
+from typing import Any, NamedTuple
+from urllib.parse import quote
+
+from workers import durable
+from workers.errors import Fault, KeyConflictError, NotFinalError, StoreError, UnknownJobError
+from workers.index import Index
+from workers.record import FINISHED, QUEUED, RUNNING, STATES, Event, Record, is_id, new_id, now
+
+# The record as it will be, inside the results: the rename publishes both at once.
+FINAL_RECORD = ".record.json"
+
+
+class Acceptance(NamedTuple):
+    """Answer to `accept`: `created` is False when the Idempotency-Key was used before."""
+
+    record: Record
+    created: bool
+
+
+class Page(NamedTuple):
+    """One page of a listing; `after` is the cursor of the next page, None on the last."""
+
+    records: tuple[Record, ...]
+    after: str | None
+
+
+class Store:
+    """The jobs below one folder. Holds no state: any number of processes may share the folder."""
+
+    def __init__(self, root: Path) -> None:
+        self.root = Path(root)
+        self.jobs = Index(self.root / "jobs")
+        self._incoming = self.root / "incoming"
+        self._removed = self.root / "removed"
+        self._keys = self.root / "keys"
+
+    # --- accepting -------------------------------------------------------------------------------
+
+    def accept(
+        self, document: bytes, *, label: str | None = None, title: str, key: str | None = None
+    ) -> Acceptance:
+        """File a job. On return it is on the disk: it will be worked on whatever is killed.
+
+        Raises
+        ------
+        KeyConflictError   the key was used before, for another document.
+        StoreError         nothing was filed.
+        """
+        checksum = "sha256:" + hashlib.sha256(document).hexdigest()
+        digest = hashlib.sha256(key.encode()).hexdigest() if key is not None else None
+        record = Record(
+            id=new_id(),
+            title=title,
+            label=label,
+            checksum=checksum,
+            size=len(document),
+            history=(Event(QUEUED, now()),),
+            key=digest,
+        )
+        with _telling("the job could not be filed"):
+            if digest is None:
+                self._file(record, document)
+                return Acceptance(record, created=True)
+            durable.make_folder(self._keys)
+            with durable.lock(self._keys / digest):
+                earlier = self._of_key(digest)
+                if earlier is None:
+                    # The key is written first: a crash in between leaves it pointing at no job,
+                    # which counts as unused, so a key can never stand for two jobs.
+                    durable.write(self._keys / digest, record.id.encode())
+                    durable.sync_folder(self._keys)
+                    self._file(record, document)
+                    return Acceptance(record, created=True)
+        if earlier.checksum != checksum:
+            raise KeyConflictError(earlier.id)
+        return Acceptance(earlier, created=False)
+
+    def _of_key(self, digest: str) -> Record | None:
+        try:
+            return self.record((self._keys / digest).read_text())
+        except UnknownJobError:
+            return None
+
+    def _file(self, record: Record, document: bytes) -> None:
+        incoming = self._incoming / record.id
+        target = self.jobs.path(record.id)
+        try:
+            durable.make_folder(self._incoming)
+            durable.make_folder(target.parent)
+            incoming.mkdir()
+            durable.write(incoming / "job.json", document)
+            durable.write(incoming / "record.json", record.as_bytes())
+            durable.sync_folder(incoming)
+            self._state_index(QUEUED).add(record.id, sync=True)
+            if record.label is not None:
+                self._label_index(record.label).add(record.id, sync=True)
+            durable.move(incoming, target)
+        except OSError:
+            for half_done in (target, incoming):
+                shutil.rmtree(half_done, ignore_errors=True)
+            self._unindex(record, STATES)
+            raise
+
+    def probe(self) -> None:
+        """Write and remove a small file, as `accept` would.
+
+        Raises
+        ------
+        StoreError   new jobs cannot be filed.
+        """
+        with _telling("the job store cannot be written"):
+            durable.make_folder(self._incoming)
+            path = self._incoming / new_id()
+            try:
+                durable.write(path, bytes(4096))
+            finally:
+                path.unlink(missing_ok=True)
+
+    # --- reading ---------------------------------------------------------------------------------
+
+    def record(self, job_id: str) -> Record:
+        """The record of a job."""
+        if is_id(job_id):
+            with _telling(f"the record of job {job_id} could not be read"):
+                try:
+                    return Record.from_bytes((self.jobs.path(job_id) / "record.json").read_bytes())
+                except FileNotFoundError:
+                    pass
+        raise UnknownJobError(f"there is no job {job_id!r}")
+
+    def document(self, job_id: str) -> bytes:
+        """The job document, byte for byte as it was accepted."""
+        with _telling(f"the document of job {job_id} could not be read"):
+            return (self._folder(job_id) / "job.json").read_bytes()
+
+    def results_path(self, job_id: str) -> Path:
+        """The folder of the published results.
+
+        Raises
+        ------
+        NotFinalError   the job has no results (yet).
+        """
+        record = self.record(job_id)
+        if record.state != FINISHED:
+            raise NotFinalError(f"job {job_id} is {record.state}; it has no results")
+        return self.jobs.path(job_id) / "results"
+
+    def list(
+        self,
+        *,
+        state: str | None = None,
+        label: str | None = None,
+        after: str | None = None,
+        limit: int = 50,
+    ) -> Page:
+        """Jobs, newest first, below the id `after`; opens little more than `limit` records."""
+        if after is not None and not is_id(after):
+            raise UnknownJobError(f"{after!r} is not a cursor of this listing")
+        records: tuple[Record, ...] = ()
+        with _telling("the jobs could not be listed"):
+            for job_id in self._index(state, label).newest_first(after):
+                record = self._present(job_id)
+                if record and state in (None, record.state) and label in (None, record.label):
+                    if len(records) == limit:
+                        return Page(records, records[-1].id)
+                    records += (record,)
+        return Page(records, None)
+
+    def unfinished(self) -> tuple[str, ...]:
+        """Ids of all jobs that are queued or running, oldest first."""
+        with _telling("the unfinished jobs could not be listed"):
+            found = {i for s in (QUEUED, RUNNING) for i in self._state_index(s).newest_first()}
+        return tuple(sorted(found))
+
+    def _folder(self, job_id: str) -> Path:
+        self.record(job_id)
+        return self.jobs.path(job_id)
+
+    def _present(self, job_id: str) -> Record | None:
+        try:
+            return self.record(job_id)
+        except UnknownJobError:
+            return None
+
+    # --- changing --------------------------------------------------------------------------------
+
+    def transition(
+        self, job_id: str, state: str, *, reason: str | None = None, faults: tuple[Fault, ...] = ()
+    ) -> Record:
+        """Move a job to another state; "finished" is reached by `publish` only.
+
+        reason : plain words for the client; faults : what is wrong in the document.
+
+        Raises
+        ------
+        TransitionError   the change is not legal from the state that the job is in now.
+        """
+        if state == FINISHED:
+            raise ValueError("a job becomes finished by publish()")
+        with self._changing(job_id) as folder:
+            record = self.record(job_id).moved(state, reason=reason, faults=faults)
+            return self._replace(folder, record)
+
+    def publish(
+        self, job_id: str, staging: Path, cautions: Sequence[Mapping[str, Any]] = ()
+    ) -> Record:
+        """Make the staged results the results of a running job: all of them, at once.
+
+        cautions : those of the results; the record keeps them for whoever asks for the state only.
+
+        Raises
+        ------
+        TransitionError   the job is not running (any more): it was cancelled meanwhile. The staged
+            results are then left where they are.
+        """
+        with _telling(f"the results of job {job_id} could not be written"):
+            durable.sync_tree(staging)
+        with self._changing(job_id) as folder:
+            record = self.record(job_id).moved(FINISHED, cautions=tuple(cautions))
+            durable.write(staging / FINAL_RECORD, record.as_bytes())
+            durable.sync_folder(staging)
+            durable.move(staging, folder / "results")
+            return self._replace(folder, record)
+
+    def recover_published(self, job_id: str) -> bool:
+        """Finish a job that was killed between the rename and the record; True if it was."""
+        with self._changing(job_id) as folder:
+            published = folder / "results" / FINAL_RECORD
+            if not published.exists() or self.record(job_id).state != RUNNING:
+                return False
+            self._replace(folder, Record.from_bytes(published.read_bytes()))
+            return True
+
+    @contextmanager
+    def working(self, job_id: str) -> Iterator[Path | None]:
+        """Be the one process that works on a job; yields an empty staging folder.
+
+        Yields None when another process works on it. The kernel ends the claim when the process
+        dies, so "running, and nobody works on it" means that the worker was killed.
+        """
+        folder = self._folder(job_id)
+        with (
+            _telling(f"job {job_id} could not be begun"),
+            durable.lock(folder / "run.lock", wait=False) as mine,
+        ):
+            if not mine:
+                yield None
+                return
+            staging = folder / "staging"
+            shutil.rmtree(staging, ignore_errors=True)
+            staging.mkdir()
+            try:
+                yield staging
+            finally:
+                shutil.rmtree(staging, ignore_errors=True)
+
+    def remove(self, job_id: str) -> None:
+        """Forget a final job and everything of it.
+
+        Raises
+        ------
+        NotFinalError   it is queued or running; cancel it first.
+        """
+        with self._changing(job_id) as folder:
+            record = self.record(job_id)
+            if not record.is_final:
+                raise NotFinalError(f"job {job_id} is {record.state}; cancel it first")
+            removed = self._removed / job_id
+            durable.make_folder(self._removed)
+            durable.move(folder, removed)
+            self._unindex(record, STATES)
+            if record.key:
+                (self._keys / record.key).unlink(missing_ok=True)
+            shutil.rmtree(removed, ignore_errors=True)
+
+    def reindex(self) -> None:
+        """Rebuild the indexes from the records, and clear what crashes left behind."""
+        with _telling("the job store could not be tidied"):
+            for job_id in self.jobs.newest_first():
+                if record := self._present(job_id):
+                    self._state_index(record.state).add(job_id)
+                    if record.label is not None:
+                        self._label_index(record.label).add(job_id)
+            shutil.rmtree(self._removed, ignore_errors=True)
+
+    @contextmanager
+    def _changing(self, job_id: str) -> Iterator[Path]:
+        """Hold the record lock: every change of a record happens inside."""
+        folder = self._folder(job_id)
+        with (
+            _telling(f"the record of job {job_id} could not be written"),
+            durable.lock(folder / "record.lock"),
+        ):
+            yield folder
+
+    def _replace(self, folder: Path, record: Record) -> Record:
+        self._state_index(record.state).add(record.id)
+        durable.replace(folder / "record.json", record.as_bytes())
+        for state in STATES:
+            if state != record.state:
+                self._state_index(state).discard(record.id)
+        return record
+
+    # --- indexes ---------------------------------------------------------------------------------
+
+    def _state_index(self, state: str) -> Index:
+        return Index(self.root / "states" / state)
+
+    def _label_index(self, label: str) -> Index:
+        # The dot keeps "", "." and ".." from naming the folder itself or its parent.
+        return Index(self.root / "labels" / ("." + quote(label, safe=" ")))
+
+    def _index(self, state: str | None, label: str | None) -> Index:
+        if label is not None:
+            return self._label_index(label)
+        return self._state_index(state) if state is not None else self.jobs
+
+    def _unindex(self, record: Record, states: tuple[str, ...]) -> None:
+        for state in states:
+            self._state_index(state).discard(record.id)
+        if record.label is not None:
+            self._label_index(record.label).discard(record.id)
+
+
+@contextmanager
+def _telling(trouble: str) -> Iterator[None]:
+    """Turn what the operating system says into a StoreError that says what failed."""
+    try:
+        yield
+    except StoreError:
+        raise
+    except OSError as error:
+        raise StoreError(error.errno, f"{trouble}: {error.strerror or error}") from error
