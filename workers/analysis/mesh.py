@@ -16,6 +16,7 @@ from elements.contract import ElementType
 from workers.analysis.connected import label_components
 
 PLATE = "plate"  # the region of whatever belongs to no named region
+MOST_SIDES = 4  # of an element
 
 Facets = NDArray[np.int32]  # (f, 3): block, element, local side
 
@@ -156,30 +157,46 @@ class Mesh:
         edges = self.edges
         return self.facet_of(np.sort(edges.facets[edges.first[:-1][edges.counts == 1]]))
 
+    def shared_facets(self) -> tuple[Facets, Facets]:
+        """The two facets of every edge inside the mesh, (e, 3) each; the lower one first."""
+        edges = self.edges
+        pairs = edges.first[:-1][edges.counts == 2]
+        return self.facet_of(edges.facets[pairs]), self.facet_of(edges.facets[pairs + 1])
+
     def facet_groups(self, facets: Facets) -> Iterator[FacetGroup]:
         """The facets, gathered by block and local side."""
         facets = np.asarray(facets).reshape(-1, 3)
-        for block, side in np.unique(facets[:, [0, 2]], axis=0):
-            rows = np.flatnonzero((facets[:, 0] == block) & (facets[:, 2] == side))
-            yield FacetGroup(int(block), int(side), facets[rows, 1].astype(np.intp), rows)
+        kind = facets[:, 0] * MOST_SIDES + facets[:, 2]
+        for number in np.unique(kind):
+            rows = np.flatnonzero(kind == number)
+            block, side = divmod(int(number), MOST_SIDES)
+            yield FacetGroup(block, side, facets[rows, 1].astype(np.intp), rows)
 
     def facet_ends(self, facets: Facets) -> NDArray[np.int32]:
         """Start and end node of each facet, (f, 2); the material is on the left."""
-        ends = np.empty((len(facets), 2), np.int32)
-        for group in self.facet_groups(facets):
-            block = self.blocks[group.block]
-            local = list(block.element.sides[group.side][:2])
-            ends[group.rows] = block.connectivity[group.elements][:, local]
-        return ends
+        return self.facet_table(facets)[:, :2]
 
-    def facet_nodes(self, facets: Facets) -> NDArray[np.int32]:
-        """Numbers of all nodes on the facets, mid-side nodes included; sorted, each once."""
-        found = [np.empty(0, np.int32)]
+    def facet_table(self, facets: Facets) -> NDArray[np.int32]:
+        """Start, end and mid-side node of each facet, (f, 3); -1 where there is no third."""
+        table = np.full((len(facets), 3), -1, np.int32)
         for group in self.facet_groups(facets):
             block = self.blocks[group.block]
             local = list(block.element.sides[group.side])
-            found.append(block.connectivity[group.elements][:, local].ravel())
-        return np.unique(np.concatenate(found))
+            table[group.rows, : len(local)] = block.connectivity[group.elements][:, local]
+        return table
+
+    def facet_nodes(self, facets: Facets) -> NDArray[np.int32]:
+        """Numbers of all nodes on the facets, mid-side nodes included; sorted, each once."""
+        numbers = np.unique(self.facet_table(facets))
+        return numbers[numbers >= 0]
+
+    def facet_regions(self, facets: Facets) -> NDArray[np.int32]:
+        """Region of the element that each facet belongs to, (f,)."""
+        regions = np.empty(len(facets), np.int32)
+        for number, block in enumerate(self.blocks):
+            rows = facets[:, 0] == number
+            regions[rows] = block.region[facets[rows, 1]]
+        return regions
 
     def facet_lengths(self, facets: Facets) -> NDArray[np.float64]:
         """Length of each facet, along its curve, (f,) [L]."""
