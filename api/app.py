@@ -1,0 +1,34 @@
+"""The Flask application, put together. What it answers is in the modules it registers."""
+
+from flask import Flask
+
+from api import catalogue, docs, health, jobs, problems, results
+from api.openapi import ABOUT, SETTINGS, Api
+from api.preferences import WaitingRoom
+from api.responses import CautiousJSON
+from api.services import KEY, Services
+from workers.queue import Queue
+from workers.settings import Settings
+from workers.store import Store
+
+THREADS = 32  # of the HTTP server, see commands/serve.py
+SEATS = THREADS // 2  # requests that may wait at a time; the other threads stay free for the rest
+BLUEPRINTS = (jobs.blueprint, results.blueprint, catalogue.blueprint, health.blueprint)
+
+
+def create_app(settings: Settings | None = None) -> Flask:
+    """The application; without settings, those of the environment (`workers/settings.py`)."""
+    settings = settings or Settings.from_environment()
+    app = Flask("api", static_folder=None)
+    app.config.update(SETTINGS)
+    app.config["MAX_CONTENT_LENGTH"] = settings.body_limit
+    app.json = CautiousJSON(app)
+    app.extensions[KEY] = Services(
+        settings, Store(settings.store), Queue(settings), WaitingRoom(SEATS)
+    )
+    api = Api(app, spec_kwargs={"info": {"description": ABOUT}})
+    problems.register(app)
+    for blueprint in BLUEPRINTS:
+        api.register_blueprint(blueprint)
+    app.register_blueprint(docs.blueprint)
+    return app

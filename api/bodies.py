@@ -1,0 +1,61 @@
+"""Reading a request body: its media type, its encoding, and how large it may grow.
+
+What the bytes mean is for `workers/document/`.
+"""
+
+import zlib
+
+from flask import Request
+
+from api.problems import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN, RefusalError
+
+CHUNK = 1 << 16
+GZIP_WINDOW = 16 + zlib.MAX_WBITS  # zlib's way to say: gzip header and trailer
+
+
+def read_document_bytes(request: Request, limit: int) -> bytes:
+    """The JSON document in the body, decompressed.
+
+    limit : bytes that the document may have; Flask holds the raw body to the same limit.
+    """
+    if request.mimetype != "application/json":
+        seen = request.mimetype or "no Content-Type"
+        raise RefusalError(
+            MEDIA_TYPE_UNKNOWN,
+            f"{seen} was sent; a job document is application/json.",
+            headers={"Accept": "application/json"},
+        )
+    encoding = request.headers.get("Content-Encoding", "identity").strip().lower()
+    if encoding == "identity":
+        return request.get_data(cache=False)
+    if encoding == "gzip":
+        return gunzip(request.get_data(cache=False), limit)
+    raise RefusalError(
+        MEDIA_TYPE_UNKNOWN,
+        f"Content-Encoding {encoding} is not understood; send gzip or nothing.",
+        headers={"Accept-Encoding": "gzip, identity"},
+    )
+
+
+def gunzip(data: bytes, limit: int) -> bytes:
+    """Decompress without ever holding more than `limit` bytes of the result."""
+    unpacker = zlib.decompressobj(GZIP_WINDOW)
+    pieces: list[bytes] = []
+    size = 0
+    try:
+        while data and not unpacker.eof:
+            piece = unpacker.decompress(data, min(CHUNK, limit - size + 1))
+            data = unpacker.unconsumed_tail
+            size += len(piece)
+            if size > limit:
+                raise RefusalError(
+                    BODY_TOO_LARGE, f"The document unpacks to more than the {limit} bytes allowed."
+                )
+            pieces.append(piece)
+    except zlib.error as error:
+        raise RefusalError(MEDIA_TYPE_UNKNOWN, f"The body is not gzip data: {error}.") from error
+    if not unpacker.eof or unpacker.unused_data:
+        raise RefusalError(
+            MEDIA_TYPE_UNKNOWN, "The gzip data is cut short or followed by something."
+        )
+    return b"".join(pieces)

@@ -1,0 +1,47 @@
+"""The `fishplate` command: one module for each subcommand, imported only when it is used.
+
+Exit status: 0 the job finished, 1 it failed, 2 the input is wrong.
+"""
+
+from collections.abc import Mapping
+from importlib import import_module
+from types import MappingProxyType
+
+import click
+
+COMMANDS: Mapping[str, str] = MappingProxyType(
+    {
+        "serve": "Run queue, workers and HTTP server on this machine.",
+        "work": "Run workers for a queue that runs elsewhere.",
+        "solve": "Solve a job here and now, without server or queue.",
+        "submit": "Send a job to a server, wait for it, fetch its results.",
+        "check": "Read a job and say what was understood; solve nothing.",
+    }
+)
+
+
+class Commands(click.Group):
+    """Finds a subcommand in the module of its name, so that `--help` imports no solver."""
+
+    def list_commands(self, ctx: click.Context) -> list[str]:
+        return list(COMMANDS)
+
+    def get_command(self, ctx: click.Context, cmd_name: str) -> click.Command | None:
+        if cmd_name not in COMMANDS:
+            return None
+        command: click.Command = import_module(f"api.commands.{cmd_name}").command
+        return command
+
+    def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
+        with formatter.section("Commands"):
+            formatter.write_dl(list(COMMANDS.items()))
+
+
+@click.group(cls=Commands, context_settings={"help_option_names": ["-h", "--help"]})
+@click.version_option(package_name="fishplate", message="%(package)s %(version)s")
+def main() -> None:
+    """Check thin plates loaded in their own plane.
+
+    Every result comes with review cautions. Read them first; a qualified engineer must review
+    every job before anything relies on it.
+    """

@@ -1,0 +1,96 @@
+"""A small HTTP client for a Fishplate server, by the standard library alone."""
+
+import gzip
+import json
+import shutil
+from collections.abc import Mapping
+from pathlib import Path
+from typing import Any
+from urllib.error import HTTPError, URLError
+from urllib.parse import urljoin, urlsplit
+from urllib.request import Request, urlopen
+
+from elements.errors import FishplateError
+
+WAIT = 30  # seconds for which one request asks to be held
+PATIENCE = 90  # seconds without any byte after which the server counts as gone
+WORTH_PACKING = 1 << 16  # bytes; smaller documents are sent as they are
+
+
+class ServerError(FishplateError):
+    """The server refused or did not answer.
+
+    status : HTTP status, None when there was no answer.
+    errors : faults as the server listed them.
+    """
+
+    def __init__(self, message: str, status: int | None = None, errors: Any = ()) -> None:
+        super().__init__(message)
+        self.status = status
+        self.errors = list(errors)
+
+
+class Client:
+    """Talks to the server at one base address.
+
+    Raises ServerError where the server refuses or is silent.
+    """
+
+    def __init__(self, url: str) -> None:
+        if urlsplit(url).scheme not in ("http", "https"):
+            raise ServerError(f"{url} is no http:// or https:// address", status=400)
+        self.url = url if url.endswith("/") else url + "/"
+
+    def submit(self, document: bytes, key: str) -> dict[str, Any]:
+        """Send a document; the key makes it safe to send again."""
+        headers = {"Content-Type": "application/json", "Idempotency-Key": key}
+        if len(document) >= WORTH_PACKING:
+            document = gzip.compress(document, compresslevel=1)
+            headers["Content-Encoding"] = "gzip"
+        return self._json(Request(self._at("v1/jobs"), document, headers, method="POST"))
+
+    def job(self, job_id: str, wait: int = WAIT) -> dict[str, Any]:
+        """State of a job, held by the server until it is final or the wait is over."""
+        return self._json(
+            Request(self._at(f"v1/jobs/{job_id}"), headers={"Prefer": f"wait={wait}"})
+        )
+
+    def results(self, job_id: str) -> dict[str, Any]:
+        """Results of a finished job."""
+        return self._json(Request(self._at(f"v1/jobs/{job_id}/results")))
+
+    def fetch(self, path: str, target: Path) -> None:
+        """Download a file of the server; the path comes percent-encoded."""
+        target.parent.mkdir(parents=True, exist_ok=True)
+        with self._open(Request(self._at(path))) as answer, target.open("wb") as file:
+            shutil.copyfileobj(answer, file)
+
+    def _at(self, path: str) -> str:
+        return urljoin(self.url, path.lstrip("/"))
+
+    def _json(self, request: Request) -> dict[str, Any]:
+        with self._open(request) as answer:
+            body: dict[str, Any] = json.load(answer)
+            return body
+
+    def _open(self, request: Request) -> Any:
+        try:
+            return urlopen(request, timeout=PATIENCE)
+        except HTTPError as error:
+            with error:
+                problem = _problem(error)
+            raise ServerError(
+                f"{problem.get('title', error.reason)}: {problem.get('detail', '')}",
+                error.code,
+                problem.get("errors", ()),
+            ) from error
+        except (URLError, OSError) as error:
+            raise ServerError(f"{self.url} does not answer: {error}") from error
+
+
+def _problem(error: HTTPError) -> Mapping[str, Any]:
+    try:
+        body = json.load(error)
+    except ValueError:
+        return {}
+    return body if isinstance(body, dict) else {}

@@ -1,0 +1,70 @@
+"""`fishplate solve`: one job in the foreground, results beside the document."""
+
+import shutil
+import tempfile
+from pathlib import Path
+from typing import Any
+
+import click
+
+from api.commands.report import print_results
+from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
+from elements.errors import FishplateError
+from workers import pipeline
+from workers.errors import DocumentError, FaultyError
+
+RESULTS = "results.json"
+
+
+@click.command()
+@click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.option(
+    "--out",
+    "folder",
+    type=click.Path(file_okay=False, path_type=Path),
+    help="Folder for the results; JOB-results beside the document if not given.",
+)
+@click.option("--pictures", default=6, show_default=True, type=click.IntRange(0, 1000),
+              help="How many pictures to draw.")  # fmt: skip
+def command(job: Path, folder: Path | None, pictures: int) -> None:
+    """Solve the job document JOB without server or queue.
+
+    Writes results.json, fields/*.vtu and previews/*/*.png. A folder with earlier results is
+    replaced as a whole, so that old and new files never mix.
+    """
+    folder = folder or job.with_name(f"{job.stem}-results")
+    refuse_foreign(folder)
+    results = _run(job.read_bytes(), folder, pictures)
+    print_results(out(), results)
+    out().print(f"\nWritten to {folder}", soft_wrap=True)
+
+
+def refuse_foreign(folder: Path) -> None:
+    """Results replace earlier results only, never a folder with something else in it."""
+    if folder.exists() and any(folder.iterdir()) and not (folder / RESULTS).is_file():
+        leave(BAD_INPUT, f"{folder} is not empty and holds no earlier results; choose another.")
+
+
+def _run(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:
+    folder.parent.mkdir(parents=True, exist_ok=True)
+    with tempfile.TemporaryDirectory(dir=folder.parent, prefix=".fishplate-") as scratch:
+        fresh = Path(scratch, "results")
+        fresh.mkdir()
+        results = _solve(document, fresh, pictures)
+        if folder.exists():
+            shutil.rmtree(folder)
+        fresh.rename(folder)
+    return results
+
+
+def _solve(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:
+    try:
+        with progress() as report:
+            return pipeline.run(document, folder, job_id=None, progress=report, pictures=pictures)
+    except FaultyError as error:
+        faults = [fault.as_json() for fault in error.faults]
+        if isinstance(error, DocumentError):
+            leave(BAD_INPUT, "The job document is wrong; nothing was solved.", faults)
+        leave(FAILED, "The job failed.", faults)
+    except FishplateError as error:
+        leave(FAILED, f"The job failed: {error}")

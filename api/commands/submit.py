@@ -1,0 +1,87 @@
+"""`fishplate submit`: a job to a server, and its results back."""
+
+import uuid
+from pathlib import Path
+from typing import Any
+from urllib.parse import quote
+
+import click
+
+from api.commands.client import Client, ServerError
+from api.commands.report import print_results
+from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
+from workers.outputs.names import file_name
+from workers.record import UNFINISHED
+
+
+@click.command()
+@click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.option(
+    "--url",
+    default="http://127.0.0.1:8470",
+    show_default=True,
+    envvar="FISHPLATE_URL",
+    help="Address of the server.",
+)
+@click.option("--wait", is_flag=True, help="Wait for the job and print its results.")
+@click.option(
+    "--out",
+    "folder",
+    type=click.Path(file_okay=False, path_type=Path),
+    help="Fetch results, fields and pictures into this folder (implies --wait).",
+)
+def command(job: Path, url: str, wait: bool, folder: Path | None) -> None:  # fmt: skip
+    """Send the job document JOB to a server.
+
+    Prints the address of the job; with --wait also the summary of its results.
+    """
+    try:
+        client = Client(url)
+        accepted = client.submit(job.read_bytes(), key=str(uuid.uuid4()))
+        err().print(f"accepted: {client.url.rstrip('/')}{accepted['links']['self']}",
+                    soft_wrap=True)  # fmt: skip
+        if not (wait or folder):
+            out().print(accepted["id"])
+            return
+        final = follow(client, accepted)
+        _leave_unless_finished(final)
+        results = fetch_results(client, final, folder)
+    except ServerError as error:
+        bad = error.status is not None and 400 <= error.status < 500
+        leave(BAD_INPUT if bad else FAILED, str(error), error.errors)
+    print_results(out(), results)
+
+
+def follow(client: Client, job: dict[str, Any]) -> dict[str, Any]:
+    """Wait until the job is final, showing where it is."""
+    with progress() as report:
+        while job["state"] in UNFINISHED:
+            now = job["progress"] or {"stage": job["state"], "fraction": 0.0}
+            report(now["stage"], now["fraction"])
+            # On a terminal people watch the bar, so ask often; a log is served by long waits.
+            job = client.job(job["id"], wait=1 if err().is_terminal else 30)
+    return job
+
+
+def _leave_unless_finished(job: dict[str, Any]) -> None:
+    if job["state"] != "finished":
+        leave(FAILED, f"The job {job['state']}: {job['reason'] or 'see the faults'}", job["errors"])
+
+
+def fetch_results(client: Client, job: dict[str, Any], folder: Path | None) -> dict[str, Any]:
+    """The results; with a folder, every file that was made with the job is written there too."""
+    results = client.results(job["id"])
+    if folder is None:
+        return results
+    here = job["links"]["self"]
+    client.fetch(f"{here}/results", folder / "results.json")
+    # Names go into addresses and file names by our own rules; paths in an answer are not followed.
+    for case in results["files"]["fields"]:
+        target = folder / "fields" / f"{file_name(case)}.vtu"
+        client.fetch(f"{here}/fields/{quote(case, safe='')}.vtu", target)
+    for case, pictures in results["files"]["previews"].items():
+        for quantity in pictures:
+            target = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
+            client.fetch(f"{here}/previews/{quote(case, safe='')}/{quote(quantity)}.png", target)
+    err().print(f"Written to {folder}", soft_wrap=True)
+    return results

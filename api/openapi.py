@@ -1,0 +1,66 @@
+"""The OpenAPI description: flask-smorest's machinery, with problem documents as the errors."""
+
+import http
+from collections.abc import Iterable
+from importlib.metadata import version
+from typing import Any
+
+import flask_smorest
+from flask import Response
+from flask_smorest.utils import prepare_response
+from werkzeug.exceptions import HTTPException
+
+from api import problems
+from api.schemas import ProblemSchema
+
+SETTINGS = {
+    "API_TITLE": "Fishplate",
+    "API_VERSION": version("fishplate"),
+    "OPENAPI_VERSION": "3.1.0",
+}
+ABOUT = (
+    "Checks thin plates loaded in their own plane. Post a job document, wait for the job, fetch "
+    "results, VTK fields and pictures. Every JSON body carries `cautions`; files carry a `Link` "
+    'header with rel="describedby" that leads to them.'
+)
+
+
+class Api(flask_smorest.Api):
+    """flask-smorest's Api whose error responses are problem documents."""
+
+    ERROR_SCHEMA = ProblemSchema
+
+    def _register_responses(self) -> None:
+        for status in [*http.HTTPStatus, None]:
+            if status is not None and status < 400:
+                continue
+            response: dict[str, Any] = {
+                "description": status.phrase if status else "Any other problem",
+                "schema": ProblemSchema,
+            }
+            prepare_response(response, self.spec, problems.MEDIA_TYPE)
+            name = status.name if status else self.DEFAULT_ERROR_RESPONSE_NAME
+            self.spec.components.response(name, response, lazy=True)
+
+    def handle_http_exception(self, error: HTTPException) -> Response:
+        return problems.http_problem(error)
+
+
+def problems_of(*statuses: int) -> dict[int, str]:
+    """Responses that a view may give besides its own: problem documents of these statuses."""
+    return {status: http.HTTPStatus(status).name for status in statuses}
+
+
+def describe_file(media_types: Iterable[str]) -> dict[str, Any]:
+    """Description of a 200 response that is a file."""
+    return {
+        "description": "The file",
+        "headers": {
+            "Link": {
+                "description": 'rel="describedby": where the cautions of this file are',
+                "schema": {"type": "string"},
+            },
+            "ETag": {"schema": {"type": "string"}},
+        },
+        "content": {media: {"schema": {}} for media in media_types},
+    }

@@ -1,0 +1,124 @@
+"""What a finished job has: its results, fields, pictures and tables, streamed from the store.
+
+Files that were not made with the job are made by a worker when somebody asks for them.
+"""
+
+from collections.abc import Callable, Iterable
+from functools import lru_cache
+from pathlib import Path
+from typing import Any
+
+import flask
+import orjson
+from flask import Response
+from flask_smorest import Blueprint
+
+from api.artefacts import make_artefact
+from api.jobs import address
+from api.openapi import describe_file, problems_of
+from api.problems import (
+    JOB_CANCELLED,
+    JOB_FAILED,
+    NOT_FINAL,
+    NOTHING_OF_THAT_NAME,
+    RefusalError,
+)
+from api.responses import file_answer, text_answer
+from api.services import services
+from workers.outputs.names import file_name
+from workers.outputs.tables import TABLES, write_table
+from workers.record import CANCELLED, FAILED, FINISHED
+
+blueprint = Blueprint("results", __name__, url_prefix="/v1", description="What a job came to")
+
+JSON, PNG, CSV = "application/json", "image/png", "text/csv"
+VTU = "application/octet-stream"  # VTK XML with raw appended data: no registered media type
+RESULTS = "results.json"
+
+
+@blueprint.get("/jobs/<job_id>/results")
+@blueprint.doc(responses={200: describe_file(JSON), **problems_of(404, 409)})
+def show_results(job_id: str) -> Response:
+    """Results of a finished job
+
+    Streamed as the worker wrote them, cautions included.
+    """
+    return file_answer(_folder(job_id) / RESULTS, JSON, address(job_id))
+
+
+@blueprint.get("/jobs/<job_id>/fields/<case>.vtu")
+@blueprint.doc(responses={200: describe_file(VTU), **problems_of(404, 409, 500, 503)})
+def show_field(job_id: str, case: str) -> Response:
+    """Fields of a case or combination, as a VTK XML file
+
+    Point data displacement, stress, von_mises, principal_max, principal_min; cell data error,
+    region, thickness; field data cautions and units.
+    """
+    folder = _folder(job_id)
+    path = folder / "fields" / f"{file_name(case)}.vtu"
+    if not path.is_file():
+        _require(case, "case or combination", _states(folder))
+        make_artefact(path, job_id, "field", case)
+    return file_answer(path, VTU, address(job_id), download_name=f"{case}.vtu")
+
+
+@blueprint.get("/jobs/<job_id>/previews/<case>/<quantity>.png")
+@blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409, 500, 503)})
+def show_preview(job_id: str, case: str, quantity: str) -> Response:
+    """A picture of a case or combination
+
+    The quantity is one of model, deformed, von_mises, principal_max, principal_min. The cautions
+    are burnt into the footer.
+    """
+    folder = _folder(job_id)
+    path = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
+    if not path.is_file():
+        _require(case, "case or combination", _states(folder))
+        _require(quantity, "quantity", QUANTITIES)
+        make_artefact(path, job_id, "preview", case, quantity)
+    return file_answer(path, PNG, address(job_id), download_name=f"{case} {quantity}.png")
+
+
+@blueprint.get("/jobs/<job_id>/tables/<name>.csv")
+@blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409)})
+def show_table(job_id: str, name: str) -> Response:
+    """A part of the results as a table
+
+    The table is one of peaks, reactions, equilibrium, probes, lines, cuts.
+    """
+    folder = _folder(job_id)
+    _require(name, "table", TABLES)
+    results = orjson.loads((folder / RESULTS).read_bytes())
+    return text_answer(write_table(name, results), CSV, address(job_id))
+
+
+def _folder(job_id: str) -> Path:
+    """Where the results of a finished job are; a refusal that says why where it is not finished."""
+    record = services().store.record(job_id)
+    if record.state == FINISHED:
+        return services().store.results_path(job_id)
+    reason = record.reason or ""
+    if record.state == FAILED:
+        errors = [fault.as_json() for fault in record.faults]
+        raise RefusalError(JOB_FAILED, reason or "It failed; see `errors`.", errors=errors)
+    if record.state == CANCELLED:
+        raise RefusalError(JOB_CANCELLED, reason or "It was cancelled.")
+    raise RefusalError(
+        NOT_FINAL,
+        f"The job is {record.state}.",
+        headers={"Retry-After": "2"},
+    )
+
+
+def _require(name: str, kind: str, available: Iterable[str]) -> None:
+    if name not in available:
+        raise RefusalError(
+            NOTHING_OF_THAT_NAME, f"The job has no {kind} {name!r}.", available=sorted(available)
+        )
+
+
+@lru_cache(maxsize=256)  # published results never change, and a path is never used twice
+def _states(folder: Path) -> tuple[str, ...]:
+    """Names of the cases and combinations."""
+    results: dict[str, Any] = orjson.loads((folder / RESULTS).read_bytes())
+    return (*results["cases"], *results["combinations"])

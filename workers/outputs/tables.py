@@ -1,0 +1,106 @@
+"""Results as tables: CSV (RFC 4180), one row for each thing that has a number.
+
+Works on the results object alone. The first row names the columns, with units; numbers are written
+so that they read back exactly. CSV has no place for cautions: whoever serves a table links to them.
+"""
+
+import csv
+import io
+from collections.abc import Callable, Iterator, Mapping
+from types import MappingProxyType
+from typing import Any
+
+Results = Mapping[str, Any]
+Row = list[Any]
+
+
+def write_table(name: str, results: Results) -> str:
+    """One table as CSV text.
+
+    Raises
+    ------
+    KeyError   there is no table of this name; `TABLES` has them all.
+    """
+    text = io.StringIO(newline="")
+    csv.writer(text).writerows(TABLES[name](results))
+    return text.getvalue()
+
+
+def _states(results: Results) -> Iterator[tuple[str, Mapping[str, Any]]]:
+    yield from results["cases"].items()
+    yield from results["combinations"].items()
+
+
+def _peaks(results: Results) -> Iterator[Row]:
+    stress, length = results["units"]["stress"], results["units"]["length"]
+    yield ["case", "quantity", f"value [{stress}; {length}]", f"x [{length}]", f"y [{length}]",
+           "error estimate"]  # fmt: skip
+    for name, state in _states(results):
+        for quantity in ("von_mises", "principal_max", "principal_min", "shear_max",
+                         "displacement"):  # fmt: skip
+            peak = state[quantity]
+            yield [name, quantity, peak["value"], *peak["at"], peak.get("error")]
+
+
+def _reactions(results: Results) -> Iterator[Row]:
+    force, length = results["units"]["force"], results["units"]["length"]
+    yield ["case", "support", f"fx [{force}]", f"fy [{force}]", f"moment [{force} {length}]",
+           f"about x [{length}]", f"about y [{length}]"]  # fmt: skip
+    for name, state in _states(results):
+        for support, reaction in state["reactions"].items():
+            yield [name, support, *reaction["force"], reaction["moment"], *reaction["about"]]
+
+
+def _equilibrium(results: Results) -> Iterator[Row]:
+    force, length = results["units"]["force"], results["units"]["length"]
+    parts = (f"fx [{force}]", f"fy [{force}]", f"moment [{force} {length}]")
+    yield ["case", *(f"{side} {part}" for side in ("applied", "reaction") for part in parts),
+           "relative residual"]  # fmt: skip
+    for name, state in _states(results):
+        balance = state["equilibrium"]
+        yield [name, *balance["applied"], *balance["reaction"], balance["residual"]]
+
+
+def _probes(results: Results) -> Iterator[Row]:
+    stress, length = results["units"]["stress"], results["units"]["length"]
+    yield ["probe", "case", *(f"{c} [{stress}]" for c in ("xx", "yy", "xy")),
+           f"von Mises [{stress}]", f"u [{length}]", f"v [{length}]"]  # fmt: skip
+    for probe, by_case in results["probes"].items():
+        for case, found in by_case.items():
+            yield [probe, case, *found["stress"], found["von_mises"], *found["displacement"]]
+
+
+def _lines(results: Results) -> Iterator[Row]:
+    stress, length = results["units"]["stress"], results["units"]["length"]
+    yield ["line", "case", f"distance [{length}]", f"x [{length}]", f"y [{length}]",
+           *(f"{c} [{stress}]" for c in ("xx", "yy", "xy")), f"von Mises [{stress}]",
+           f"u [{length}]", f"v [{length}]"]  # fmt: skip
+    for name, line in results["lines"].items():
+        for case, found in line["cases"].items():
+            columns = (line["distance"], line["points"], found["stress"], found["von_mises"],
+                       found["displacement"])  # fmt: skip
+            for distance, point, tensor, von_mises, moved in zip(*columns, strict=True):
+                # A point of the line outside the plate has no values.
+                yield [name, case, distance, *point, *(tensor or [None] * 3), von_mises,
+                       *(moved or [None] * 2)]  # fmt: skip
+
+
+def _cuts(results: Results) -> Iterator[Row]:
+    force, length = results["units"]["force"], results["units"]["length"]
+    yield ["cut", "case", f"normal [{force}]", f"shear [{force}]", f"moment [{force} {length}]",
+           f"about x [{length}]", f"about y [{length}]"]  # fmt: skip
+    for cut, by_case in results["cuts"].items():
+        for case, found in by_case.items():
+            yield [cut, case, found["normal"], found["shear"], found["moment"], *found["about"]]
+
+
+TABLES: Mapping[str, Callable[[Results], Iterator[Row]]] = MappingProxyType(
+    {
+        "peaks": _peaks,
+        "reactions": _reactions,
+        "equilibrium": _equilibrium,
+        "probes": _probes,
+        "lines": _lines,
+        "cuts": _cuts,
+    }
+)
