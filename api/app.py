@@ -11,8 +11,6 @@ from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
 
-THREADS = 32  # of the HTTP server, see commands/serve.py
-SEATS = THREADS // 2  # requests that may wait at a time; the other threads stay free for the rest
 BLUEPRINTS = (jobs.blueprint, results.blueprint, catalogue.blueprint, health.blueprint)
 
 
@@ -21,10 +19,10 @@ def create_app(settings: Settings | None = None) -> Flask:
     settings = settings or Settings.from_environment()
     app = Flask("api", static_folder=None)
     app.config.update(SETTINGS)
-    app.config["MAX_CONTENT_LENGTH"] = settings.body_limit
+    app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes
     app.json = CautiousJSON(app)
     app.extensions[KEY] = Services(
-        settings, Store(settings.store), Queue(settings), WaitingRoom(SEATS)
+        settings, Store(settings.store), Queue(settings), WaitingRoom(settings.api_threads // 2)
     )
     api = Api(app, spec_kwargs={"info": {"description": ABOUT}})
     problems.register(app)

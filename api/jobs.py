@@ -10,6 +10,7 @@ from urllib.parse import urlencode
 
 import flask
 from flask_smorest import Blueprint
+from marshmallow import RAISE
 from redis.exceptions import RedisError
 
 from api.bodies import read_document_bytes
@@ -32,7 +33,6 @@ log = logging.getLogger(__name__)
 blueprint = Blueprint("jobs", __name__, url_prefix="/v1", description="Jobs and their states")
 
 LONGEST_KEY = 200  # characters
-LONGEST_WAIT = 60  # seconds; proxies tend to give up on silent connections soon after
 PREFER = {
     "in": "header",
     "name": "Prefer",
@@ -67,7 +67,7 @@ def submit() -> Any:
     accepted; every fault found is answered together. The body may be gzip (`Content-Encoding`).
     """
     key = _idempotency_key()
-    document = read_document_bytes(flask.request, services().settings.body_limit)
+    document = read_document_bytes(flask.request, services().settings.body_bytes)
     job = read_document(document)
     preflight(job)
     record, created = services().store.accept(document, label=job.label, title=job.title, key=key)
@@ -98,7 +98,7 @@ def _enqueue(job_id: str) -> None:
 
 
 @blueprint.get("/jobs")
-@blueprint.arguments(JobQuerySchema, location="query")
+@blueprint.arguments(JobQuerySchema, location="query", unknown=RAISE)
 @blueprint.response(200, JobPageSchema)
 @blueprint.doc(responses=problems_of(400))
 def list_jobs(query: dict[str, Any]) -> Any:
@@ -130,7 +130,7 @@ def show_job(job_id: str) -> Any:
     wait = wanted_wait(flask.request.headers.get("Prefer", ""))
     headers: dict[str, str] = {}
     if wait is not None:
-        seconds = min(wait, LONGEST_WAIT)
+        seconds = min(wait, services().settings.longest_wait)
         if services().waiting_room.wait(lambda: _is_final(job_id), seconds):
             headers = applied(seconds)
         record = services().store.record(job_id)
@@ -173,9 +173,9 @@ def summarise(record: Record) -> dict[str, Any]:
         "title": record.title,
         "label": record.label,
         "times": {
-            "accepted": record.accepted_at,
-            "started": record.started_at,
-            "ended": record.ended_at,
+            "accepted": record.accepted,
+            "started": record.started,
+            "ended": record.ended,
         },
         "links": {
             "self": here,

@@ -3,12 +3,11 @@
 Files that were not made with the job are made by a worker when somebody asks for them.
 """
 
-from collections.abc import Callable, Iterable
+from collections.abc import Iterable
 from functools import lru_cache
 from pathlib import Path
 from typing import Any
 
-import flask
 import orjson
 from flask import Response
 from flask_smorest import Blueprint
@@ -28,6 +27,8 @@ from api.services import services
 from workers.outputs.names import file_name
 from workers.outputs.tables import TABLES, write_table
 from workers.record import CANCELLED, FAILED, FINISHED
+
+QUANTITIES = ("model", "deformed", "von_mises", "principal_max", "principal_min")
 
 blueprint = Blueprint("results", __name__, url_prefix="/v1", description="What a job came to")
 

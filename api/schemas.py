@@ -110,7 +110,7 @@ class JobStatusSchema(JobSummarySchema, CautiousAnswer):
     progress = fields.Nested(
         ProgressSchema, allow_none=True, required=True, metadata={"description": "While it runs"}
     )
-    reason = text("Why it failed or was cancelled", allow_none=True, required=True)
+    reason = text("Why it is in this state, where that needs words", allow_none=True, required=True)
     errors = fields.List(
         fields.Nested(FaultSchema),
         required=True,
@@ -125,9 +125,6 @@ class JobPageSchema(CautiousAnswer):
 
 class JobQuerySchema(Schema):
     """Which jobs to list."""
-
-    class Meta:
-        unknown = RAISE
 
     state = fields.String(
         validate=validate.OneOf(STATES), metadata={"description": "Only jobs in this state"}
