@@ -9,7 +9,7 @@ from collections.abc import Iterator
 from pathlib import Path
 
 from workers import durable
-from workers.record import day_of
+from workers.record import day_of, is_id
 
 
 class Index:
@@ -38,7 +38,7 @@ class Index:
             if after and day > day_of(after):
                 continue
             for job_id in sorted(_names(self.root / day), reverse=True):
-                if not after or job_id < after:
+                if is_id(job_id) and (not after or job_id < after):
                     yield job_id
 
 

@@ -23,10 +23,10 @@ QUEUED, RUNNING, FINISHED, FAILED, CANCELLED = STATES = (
     "cancelled",
 )
 UNFINISHED = frozenset({QUEUED, RUNNING})
-# running -> running is a further attempt, running -> queued a job handed back.
+# running -> queued: its worker was killed or shut down. A final state is never left.
 LEGAL = {
     QUEUED: frozenset({RUNNING, CANCELLED}),
-    RUNNING: frozenset({RUNNING, QUEUED, FINISHED, FAILED, CANCELLED}),
+    RUNNING: frozenset({QUEUED, FINISHED, FAILED, CANCELLED}),
 }
 
 # --- ids -----------------------------------------------------------------------------------------
@@ -78,7 +78,7 @@ class Event:
 class Record:
     """What is known of a job besides its document and its results.
 
-    attempts : how often a worker has begun it.
+    attempts : how often a worker has begun it; one that was shut down in order does not count.
     reason   : why it failed or was cancelled, in plain words.
     faults   : what is wrong in the document, when that is why it failed.
     cautions : those of the results, once it is finished.
@@ -121,15 +121,8 @@ class Record:
     def ended(self) -> str | None:
         return self.history[-1].at if self.is_final else None
 
-    def moved(
-        self,
-        state: str,
-        *,
-        reason: str | None = None,
-        faults: tuple[Fault, ...] = (),
-        cautions: tuple[Mapping[str, Any], ...] = (),
-    ) -> "Record":
-        """The record after a change of state.
+    def moved(self, state: str, *, reason: str | None = None, **facts: Any) -> "Record":
+        """The record after a change of state; `facts` are fields that change with it.
 
         Raises
         ------
@@ -137,13 +130,8 @@ class Record:
         """
         if state not in LEGAL.get(self.state, frozenset()):
             raise TransitionError(self.id, self.state, state)
-        return replace(
-            self,
-            history=(*self.history, Event(state, now(), reason)),
-            attempts=self.attempts + (state == RUNNING),
-            faults=faults,
-            cautions=cautions,
-        )
+        facts.setdefault("attempts", self.attempts + (state == RUNNING))
+        return replace(self, history=(*self.history, Event(state, now(), reason)), **facts)
 
     def as_json(self) -> dict[str, Any]:
         return {

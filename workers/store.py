@@ -16,6 +16,7 @@ system refuses (full disk, no permission), and UnknownJobError for an id without
 
 import hashlib
 import shutil
+import time
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import contextmanager
 from pathlib import Path
@@ -23,12 +24,13 @@ from typing import Any, NamedTuple
 from urllib.parse import quote
 
 from workers import durable
-from workers.errors import Fault, KeyConflictError, NotFinalError, StoreError, UnknownJobError
+from workers.errors import KeyConflictError, NotFinalError, StoreError, UnknownJobError
 from workers.index import Index
 from workers.record import FINISHED, QUEUED, RUNNING, STATES, Event, Record, is_id, new_id, now
 
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
+ABANDONED = 86_400.0  # age at which something in incoming/ is nobody's any more [s]
 
 
 class Acceptance(NamedTuple):
@@ -206,11 +208,12 @@ class Store:
     # --- changing --------------------------------------------------------------------------------
 
     def transition(
-        self, job_id: str, state: str, *, reason: str | None = None, faults: tuple[Fault, ...] = ()
+        self, job_id: str, state: str, *, reason: str | None = None, **facts: Any
     ) -> Record:
         """Move a job to another state; "finished" is reached by `publish` only.
 
-        reason : plain words for the client; faults : what is wrong in the document.
+        reason : plain words for the client; facts : fields of the record that change with the
+        state: `faults` (tuple of Fault), `attempts`.
 
         Raises
         ------
@@ -219,8 +222,7 @@ class Store:
         if state == FINISHED:
             raise ValueError("a job becomes finished by publish()")
         with self._changing(job_id) as folder:
-            record = self.record(job_id).moved(state, reason=reason, faults=faults)
-            return self._replace(folder, record)
+            return self._replace(folder, self.record(job_id).moved(state, reason=reason, **facts))
 
     def publish(
         self, job_id: str, staging: Path, cautions: Sequence[Mapping[str, Any]] = ()
@@ -303,6 +305,19 @@ class Store:
                     if record.label is not None:
                         self._label_index(record.label).add(job_id)
             shutil.rmtree(self._removed, ignore_errors=True)
+            for path in self._incoming.iterdir() if self._incoming.is_dir() else ():
+                if time.time() - path.stat().st_mtime > ABANDONED:
+                    shutil.rmtree(path) if path.is_dir() else path.unlink()
+
+    def tidy_index(self, job_id: str) -> None:
+        """Take out index entries that a crash left for a job that is final or never was."""
+        if (self._incoming / job_id).exists():
+            return  # being accepted just now; looked at first, since it moves to jobs/ from there
+        record = self._present(job_id)
+        if record is None or record.is_final:
+            for state in STATES:
+                if record is None or state != record.state:
+                    self._state_index(state).discard(job_id)
 
     @contextmanager
     def _changing(self, job_id: str) -> Iterator[Path]:

@@ -1,0 +1,51 @@
+"""How long and how large the work on one job may become."""
+
+import resource
+import signal
+from collections.abc import Iterator
+from contextlib import contextmanager
+from types import FrameType
+from typing import NoReturn
+
+import psutil
+
+
+class TimeLimitError(BaseException):
+    """The time is up. Not an Exception, so that no library on the way swallows it."""
+
+
+@contextmanager
+def time_limit(seconds: int) -> Iterator[None]:
+    """Raise TimeLimitError in the block when it takes longer (main thread only).
+
+    Python raises it between two of its own steps: a call into compiled code is finished first. The
+    worker outside kills a process that does not end for that reason.
+    """
+
+    def ring(_number: int, _frame: FrameType | None) -> NoReturn:
+        raise TimeLimitError
+
+    before = signal.signal(signal.SIGALRM, ring)
+    signal.alarm(seconds)
+    try:
+        yield
+    finally:
+        signal.alarm(0)
+        signal.signal(signal.SIGALRM, before)
+
+
+@contextmanager
+def memory_limit(amount: int) -> Iterator[None]:
+    """Let the block take `amount` bytes of address space beyond what the process has now.
+
+    Beyond that an allocation fails: numpy raises MemoryError.
+    """
+    before, hard = resource.getrlimit(resource.RLIMIT_AS)
+    limit = psutil.Process().memory_info().vms + amount
+    if hard != resource.RLIM_INFINITY:
+        limit = min(limit, hard)
+    resource.setrlimit(resource.RLIMIT_AS, (limit, hard))
+    try:
+        yield
+    finally:
+        resource.setrlimit(resource.RLIMIT_AS, (before, hard))

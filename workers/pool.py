@@ -1,0 +1,140 @@
+"""The pool: keeps the workers of one machine alive and has the reconciler look round.
+
+`run_pool` is the whole of `fishplate work`; `python -m workers.pool` is the same as a child of a
+process that must not load the numerical stack, and ends with it.
+"""
+
+import importlib
+import logging
+import multiprocessing
+import multiprocessing.connection
+import multiprocessing.process
+import os
+import signal
+import sys
+import time
+from types import FrameType
+
+import redis
+
+from workers.errors import FishplateError, StoreError
+from workers.lineage import die_with_parent
+from workers.private_redis import private_redis
+from workers.queue import Queue
+from workers.reconcile import reconcile
+from workers.settings import PREFIX, Settings
+from workers.store import Store
+
+TICK = 0.5  # longest time until a signal is noticed [s]
+RESTART_PAUSE = 1.0  # between two starts of workers, so that a broken one does not spin [s]
+LAST_WAIT = 10.0  # for workers that were told to stop at once [s]
+
+# One thread for each worker: the machine is filled by working on several jobs at a time.
+ONE_THREAD = {f"{library}_NUM_THREADS": "1" for library in ("OMP", "OPENBLAS", "MKL", "NUMEXPR")}
+
+_fork = multiprocessing.get_context("fork")
+log = logging.getLogger(__name__)
+
+
+class Pool:
+    """The workers of one machine."""
+
+    def __init__(self, settings: Settings) -> None:
+        self.settings = settings
+        self.store = Store(settings.store)
+        self.queue = Queue(settings)
+        self.workers: list[multiprocessing.process.BaseProcess] = []
+        self._stopping = False
+        self._next_start = self._next_look = 0.0
+
+    def run(self) -> None:
+        """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
+        for number in (signal.SIGTERM, signal.SIGINT):
+            signal.signal(number, self._request_stop)
+        self.store.reindex()
+        while not self._stopping:
+            self._replace_dead()
+            self._reconcile()
+            multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
+        self._stop()
+
+    def _request_stop(self, _number: int, _frame: FrameType | None) -> None:
+        self._stopping = True
+
+    def _replace_dead(self) -> None:
+        alive = [worker for worker in self.workers if worker.is_alive()]
+        if len(alive) < len(self.workers):
+            log.warning("%d workers ended unexpectedly", len(self.workers) - len(alive))
+            self._next_look = 0.0  # their jobs should not wait for the timer
+        self.workers = alive
+        if len(alive) < self.settings.workers and time.monotonic() >= self._next_start:
+            self._next_start = time.monotonic() + RESTART_PAUSE
+            for _ in range(self.settings.workers - len(alive)):
+                worker = _fork.Process(target=_be_worker, args=(self.settings, os.getpid()))
+                worker.start()
+                self.workers.append(worker)
+
+    def _reconcile(self) -> None:
+        if time.monotonic() < self._next_look:
+            return
+        self._next_look = time.monotonic() + self.settings.reconcile_every
+        try:
+            reconcile(self.store, self.queue)
+        except (StoreError, redis.RedisError) as error:
+            log.warning("the reconciler will try again: %s", error)
+
+    def _stop(self) -> None:
+        """First ask, then (rq takes a second signal so) insist, then kill."""
+        self._signal(signal.SIGTERM, self.settings.shutdown_grace)
+        self._signal(signal.SIGTERM, LAST_WAIT)
+        self._signal(signal.SIGKILL, LAST_WAIT)
+
+    def _signal(self, number: signal.Signals, wait: float) -> None:
+        for worker in self.workers:
+            if worker.pid is not None and worker.is_alive():
+                os.kill(worker.pid, number)
+        until = time.monotonic() + wait
+        for worker in self.workers:
+            worker.join(max(0.0, until - time.monotonic()))
+
+
+def _be_worker(settings: Settings, parent: int) -> None:
+    """First function of a worker process."""
+    os.setpgrp()  # an interrupt from the terminal reaches the pool only, which passes it on
+    for number in (signal.SIGTERM, signal.SIGINT):
+        signal.signal(number, signal.SIG_DFL)
+    die_with_parent(signal.SIGTERM, parent=parent)
+    importlib.import_module("workers.worker").work(settings)
+
+
+def run_pool(settings: Settings) -> None:
+    """Run the workers of this machine, with a private Redis server unless one is named.
+
+    Loads the numerical and drawing stack into this process, once; the workers are forked from it.
+    """
+    for name in [name for name in os.environ if name.startswith(PREFIX)]:
+        del os.environ[name]
+    os.environ.update({**ONE_THREAD, **settings.as_environment()})
+    # Only now: numerical libraries read the number of threads when they are loaded.
+    importlib.import_module("workers.tasks")
+    if settings.redis_url is not None:
+        Pool(settings).run()
+        return
+    with private_redis(settings.store):
+        Pool(settings).run()
+
+
+def main() -> int:
+    """Run the pool as a child that ends with its parent."""
+    die_with_parent(signal.SIGTERM)
+    logging.basicConfig(level=logging.INFO, format="%(asctime)s %(levelname)s %(message)s")
+    try:
+        run_pool(Settings.from_environment())
+    except FishplateError as error:
+        print(error, file=sys.stderr)
+        return 1
+    return 0
+
+
+if __name__ == "__main__":
+    sys.exit(main())

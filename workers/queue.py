@@ -1,0 +1,211 @@
+"""The queue: which job a worker takes next, how far it is, and questions that cannot wait.
+
+Everything in Redis may be lost: the store knows what is unfinished, and `reconcile.py` queues it
+again. So an id may also be queued twice; `Store.working` lets one worker at it. Redis errors pass
+through as `redis.RedisError`. The web process uses this module; it enqueues by name and never
+imports what the workers import.
+"""
+
+import hashlib
+import logging
+import time
+from contextlib import suppress
+from dataclasses import dataclass
+from datetime import timedelta
+from typing import Any
+
+import orjson
+import redis
+import rq
+from rq.command import send_stop_job_command
+from rq.exceptions import DuplicateJobError, InvalidJobOperation, NoSuchJobError
+from rq.job import Job, JobStatus
+from rq.serializers import JSONSerializer
+from rq.utils import as_text, decode_redis_hash, now, utcparse
+from rq.worker_registration import get_keys
+
+from workers.private_redis import address
+from workers.record import CANCELLED, Record
+from workers.settings import Settings
+from workers.store import Store
+
+# Workers serve the first before the second.
+INTERACTIVE, BULK = "fishplate-interactive", "fishplate-bulk"
+
+RUN_JOB = "workers.tasks.run_job"
+MAKE_ARTEFACT = "workers.tasks.make_artefact"
+PROGRESS = "fishplate:progress:"
+
+BACKSTOP = 15  # beyond the job's own time limit, before the worker kills from outside [s]
+ANSWER_LIMIT = 120  # longest work on one question [s]
+ANSWER_KEPT = 30  # an answer is kept for whoever asks the same [s]
+FAILURE_KEPT = 86_400  # rq's own note on a failure, for the operator [s]
+PROGRESS_KEPT = 86_400
+HEARTBEAT_LOST = timedelta(seconds=60)  # workers report every 15 s
+POLL = 0.1  # between two looks for an answer [s]
+
+log = logging.getLogger(__name__)
+
+
+def connect(settings: Settings) -> redis.Redis:
+    """A client that gives up after seconds rather than hang."""
+    url = settings.redis_url or address(settings.store)
+    return redis.Redis.from_url(url, socket_timeout=5.0, socket_connect_timeout=2.0)
+
+
+@dataclass(frozen=True)
+class Answer:
+    """What became of a question.
+
+    value  : what the function returned; None while it is pending and when it failed.
+    reason : why there is none, in plain words, when it failed.
+    """
+
+    state: str  # "done" | "pending" | "failed"
+    value: Any = None
+    reason: str | None = None
+
+
+class Queue:
+    """The queues of one installation."""
+
+    def __init__(self, settings: Settings) -> None:
+        self.settings = settings
+        self.store = Store(settings.store)
+        self.connection = connect(settings)
+        self._bulk, self._interactive = (
+            rq.Queue(name, connection=self.connection, serializer=JSONSerializer)
+            for name in (BULK, INTERACTIVE)
+        )
+
+    # --- jobs ------------------------------------------------------------------------------------
+
+    def submit(self, job_id: str) -> None:
+        """Queue a job of the store. If Redis refuses, the reconciler will do it later."""
+        self._forget(job_id)
+        self._bulk.enqueue_call(
+            RUN_JOB,
+            args=(job_id,),
+            job_id=job_id,
+            timeout=self.settings.time_limit + BACKSTOP,
+            result_ttl=0,
+            failure_ttl=FAILURE_KEPT,
+        )
+
+    def cancel(self, job_id: str) -> Record:
+        """Cancel a job that is queued or running; it is final on return.
+
+        The process that works on it is killed. Should Redis be away, that process finds out by
+        itself, and throws its results away.
+
+        Raises
+        ------
+        TransitionError   the job is already final.
+        """
+        record = self.store.transition(job_id, CANCELLED, reason="Cancelled on request.")
+        try:
+            job = Job.fetch(job_id, connection=self.connection, serializer=JSONSerializer)
+            if job.get_status(refresh=False) == JobStatus.STARTED:
+                send_stop_job_command(self.connection, job_id, serializer=JSONSerializer)
+            else:
+                job.delete()
+        except (NoSuchJobError, InvalidJobOperation):
+            pass  # neither waiting nor begun: whoever takes it sees that it is cancelled
+        except redis.RedisError as error:
+            log.warning("job %s is cancelled, but Redis could not be told: %s", job_id, error)
+        return record
+
+    def waiting(self) -> frozenset[str]:
+        """Ids of the jobs that Redis has in line."""
+        return frozenset(self._bulk.get_job_ids())
+
+    def _forget(self, job_id: str) -> None:
+        with suppress(NoSuchJobError):
+            Job.fetch(job_id, connection=self.connection, serializer=JSONSerializer).delete()
+
+    # --- progress --------------------------------------------------------------------------------
+
+    def set_progress(self, job_id: str, stage: str, fraction: float) -> None:
+        """Say how far a job is: its stage, and the fraction of that stage that is done."""
+        with self.connection.pipeline() as pipeline:
+            pipeline.hset(PROGRESS + job_id, mapping={"stage": stage, "fraction": fraction})
+            pipeline.expire(PROGRESS + job_id, PROGRESS_KEPT)
+            pipeline.execute()
+
+    def progress(self, job_id: str) -> dict[str, Any] | None:
+        """{"stage", "fraction"} of a running job, None where nothing is known."""
+        found = decode_redis_hash(self.connection.hgetall(PROGRESS + job_id), decode_values=True)
+        if not found:
+            return None
+        return {"stage": found["stage"], "fraction": float(found["fraction"])}
+
+    # --- questions: answered ahead of the jobs ---------------------------------------------------
+
+    def make_artefact(
+        self, job_id: str, kind: str, case: str, quantity: str | None = None, *, wait: float = 0.0
+    ) -> Answer:
+        """Have a file of a finished job made.
+
+        kind : "field" (the VTK file of a case) or "preview" (the picture of one quantity).
+
+        When the answer is "done" the file is in the results folder, whole.
+        """
+        return self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait)
+
+    def ask(self, function: str, *arguments: Any, wait: float = 0.0) -> Answer:
+        """Have a worker call a function ahead of all jobs; wait that many seconds for its answer.
+
+        The same question asked again meanwhile is the same piece of work: ask again for a pending
+        answer. The function returns what JSON can carry.
+        """
+        question = orjson.dumps([function, arguments])
+        question_id = "ask-" + hashlib.sha256(question).hexdigest()[:40]
+        with suppress(DuplicateJobError):
+            self._interactive.enqueue_call(
+                function,
+                args=arguments,
+                job_id=question_id,
+                timeout=ANSWER_LIMIT,
+                result_ttl=ANSWER_KEPT,
+                failure_ttl=ANSWER_KEPT,
+                description=f"{function} {question_id}",
+                unique=True,
+            )
+        until = time.monotonic() + wait
+        while (answer := self._answer(question_id)).state == "pending":
+            left = until - time.monotonic()
+            if left <= 0.0:
+                break
+            time.sleep(min(POLL, left))
+        return answer
+
+    def _answer(self, question_id: str) -> Answer:
+        try:
+            job = Job.fetch(question_id, connection=self.connection, serializer=JSONSerializer)
+        except NoSuchJobError:
+            return Answer("pending")  # Redis lost it; asking again queues it again
+        status = job.get_status(refresh=False)
+        if status == JobStatus.FINISHED:
+            return Answer("done", value=job.return_value())
+        if status in (JobStatus.FAILED, JobStatus.STOPPED):
+            return Answer("failed", reason="the worker process ended before it had an answer")
+        return Answer("pending")
+
+    # --- health ----------------------------------------------------------------------------------
+
+    def ping(self) -> None:
+        """Raise redis.RedisError when Redis does not answer."""
+        self.connection.ping()
+
+    def workers_alive(self) -> int:
+        """How many workers, on any machine, have reported lately."""
+        alive = 0
+        for key in get_keys(connection=self.connection):
+            beat, death = self.connection.hmget(key, "last_heartbeat", "death")
+            if beat and not death and now() - utcparse(as_text(beat)) < HEARTBEAT_LOST:
+                alive += 1
+        return alive
+
+    def depths(self) -> dict[str, int]:
+        """Number of entries in line, by queue."""
+        return {queue.name: queue.count for queue in (self._interactive, self._bulk)}

@@ -1,0 +1,83 @@
+"""Nothing accepted is lost: whatever is unfinished is in line, at work, or decided here.
+
+Run after every piece of work for its own job, and on a timer for all. A job that is `running` in
+the store while no process holds it had its worker killed: it is queued once more, then given up.
+"""
+
+import logging
+
+from workers.errors import TransitionError, UnknownJobError
+from workers.queue import Queue
+from workers.record import FAILED, QUEUED, RUNNING
+from workers.store import Store
+
+MOST_ATTEMPTS = 2
+KILLED = "The worker process was killed while it worked on this job."
+GIVEN_UP = (
+    "The worker process was killed {times} times while it worked on this job, most often because "
+    "the machine ran out of memory. Try a coarser mesh or fewer load cases at a time, or give the "
+    "machine more memory."
+)
+HANDED_BACK = "The worker was shut down; the job begins anew with the next one."
+
+log = logging.getLogger(__name__)
+
+
+def reconcile(store: Store, queue: Queue) -> None:
+    """Look after every unfinished job that Redis does not have in line.
+
+    Raises
+    ------
+    redis.RedisError, StoreError   try again later.
+    """
+    waiting = queue.waiting()
+    for job_id in store.unfinished():
+        if job_id not in waiting:
+            settle(store, queue, job_id)
+
+
+def settle(
+    store: Store,
+    queue: Queue,
+    job_id: str,
+    *,
+    verdict: str | None = None,
+    handed_back: bool = False,
+) -> None:
+    """Decide what happens to a job that nobody works on; does nothing when somebody does.
+
+    verdict     : why the worker was killed, when that was on purpose: the job has failed.
+    handed_back : the worker was shut down in order: the attempt does not count.
+    """
+    try:
+        with store.working(job_id) as staging:
+            if staging is not None:
+                _settle(store, queue, job_id, verdict, handed_back)
+    except UnknownJobError:
+        store.tidy_index(job_id)  # a crash left an entry without a job
+    except TransitionError:
+        log.info("job %s was cancelled meanwhile", job_id)
+
+
+def _settle(
+    store: Store, queue: Queue, job_id: str, verdict: str | None, handed_back: bool
+) -> None:
+    record = store.record(job_id)
+    if record.is_final:
+        store.tidy_index(job_id)
+        return
+    if record.state == RUNNING:
+        if store.recover_published(job_id):
+            return
+        if verdict is not None:
+            store.transition(job_id, FAILED, reason=verdict)
+            return
+        if handed_back:
+            store.transition(job_id, QUEUED, reason=HANDED_BACK, attempts=record.attempts - 1)
+        elif record.attempts >= MOST_ATTEMPTS:
+            store.transition(job_id, FAILED, reason=GIVEN_UP.format(times=record.attempts))
+            return
+        else:
+            store.transition(job_id, QUEUED, reason=KILLED)
+    log.warning("job %s is queued again", job_id)
+    queue.submit(job_id)

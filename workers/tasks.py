@@ -1,0 +1,139 @@
+"""What rq runs: one job from its document to its published results, or one artefact.
+
+Runs in a work-horse: a process forked for this one task. Whatever happens in here, the worker
+outside settles the job afterwards (`reconcile.py`).
+"""
+
+import errno
+import logging
+import shutil
+import time
+from collections.abc import Callable
+from pathlib import Path
+from typing import Any
+
+import redis
+
+from elements.errors import FishplateError
+from workers import pipeline
+from workers.errors import FaultyError, StoreError, TransitionError, UnknownJobError
+from workers.limits import TimeLimitError, memory_limit, time_limit
+from workers.queue import Queue
+from workers.record import FAILED, QUEUED, RUNNING
+from workers.settings import GIBIBYTE, Settings
+from workers.store import Store
+
+REPORT_EVERY = 0.2  # shortest time between two reports of the same stage [s]
+REPORT_AGAIN = 30.0  # after Redis did not answer [s]
+UNHEARD = object()  # stands for a stage that Redis did not take
+LOOK_EVERY = 1.0  # between two looks whether the job was cancelled [s]
+
+OUT_OF_TIME = (
+    "The job took longer than the {seconds} s allowed. Use a coarser mesh, fewer load cases at a "
+    "time, or have the time limit raised."
+)
+OUT_OF_MEMORY = (
+    "The job needed more than the {gibibytes:.1f} GiB of memory allowed. Use a coarser mesh, fewer "
+    "load cases at a time, or have the memory limit raised."
+)
+DISK_FULL = "The disk of the job store is full; the results could not be written."
+OUR_FAULT = (
+    "Fishplate itself failed on this job ({error}); no result was made. Please report it together "
+    "with the job document."
+)
+
+log = logging.getLogger(__name__)
+
+
+def run_job(job_id: str) -> None:
+    """Work on a queued job; its outcome is in the store afterwards."""
+    settings = Settings.from_environment()
+    store = Store(settings.store)
+    try:
+        with store.working(job_id) as staging:
+            # Someone else at work, cancelled, or in line twice: nothing to do.
+            if staging is None or store.record(job_id).state != QUEUED:
+                return
+            store.transition(job_id, RUNNING)
+            _attempt(store, Queue(settings), job_id, staging)
+    except (TransitionError, UnknownJobError) as error:
+        log.info("job %s was cancelled or removed: %s", job_id, error)
+
+
+def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
+    """One attempt; ends in a final state unless the store refuses even that."""
+    settings = queue.settings
+    try:
+        with time_limit(settings.time_limit), memory_limit(settings.memory_limit):
+            results = pipeline.run(
+                store.document(job_id),
+                staging,
+                job_id=job_id,
+                progress=_reporter(store, queue, job_id),
+                pictures=settings.pictures,
+            )
+        store.publish(job_id, staging, results["cautions"])
+    except (TransitionError, UnknownJobError):
+        raise
+    except (Exception, TimeLimitError) as error:
+        log.warning("job %s failed", job_id, exc_info=error)
+        shutil.rmtree(staging, ignore_errors=True)  # makes room for the record, too
+        store.transition(job_id, FAILED, **_explain(error, settings))
+
+
+def _explain(error: BaseException, settings: Settings) -> dict[str, Any]:
+    """Why a job failed, in plain words."""
+    if isinstance(error, FaultyError):
+        return {"reason": str(error), "faults": error.faults}
+    if isinstance(error, TimeLimitError):
+        return {"reason": OUT_OF_TIME.format(seconds=settings.time_limit)}
+    if isinstance(error, MemoryError):
+        return {"reason": OUT_OF_MEMORY.format(gibibytes=settings.memory_limit / GIBIBYTE)}
+    if isinstance(error, OSError) and error.errno in (errno.ENOSPC, errno.EDQUOT, errno.EFBIG):
+        return {"reason": DISK_FULL}
+    if isinstance(error, FishplateError):
+        return {"reason": str(error)}
+    return {"reason": OUR_FAULT.format(error=f"{type(error).__name__}: {error}")}
+
+
+def _reporter(store: Store, queue: Queue, job_id: str) -> Callable[[str, float], None]:
+    """The progress function of a job: tells Redis, seldom; raises once the job is cancelled."""
+    reported: object = None
+    silent_until = next_look = 0.0
+
+    def progress(stage: str, fraction: float) -> None:
+        nonlocal reported, silent_until, next_look
+        moment = time.monotonic()
+        if moment >= next_look:
+            next_look = moment + LOOK_EVERY
+            if (state := store.record(job_id).state) != RUNNING:
+                raise TransitionError(job_id, state, RUNNING)
+        if moment < silent_until and reported in (stage, UNHEARD):
+            return
+        try:
+            queue.set_progress(job_id, stage, fraction)
+            reported, silent_until = stage, moment + REPORT_EVERY
+        except redis.RedisError:  # progress is a convenience; the job goes on without
+            reported, silent_until = UNHEARD, moment + REPORT_AGAIN
+
+    return progress
+
+
+def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None) -> dict[str, Any]:
+    """Make one file of a finished job from its stored displacements.
+
+    Returns {"ok": True}, or {"ok": False, "reason": plain words}.
+    """
+    settings = Settings.from_environment()
+    try:
+        folder = Store(settings.store).results_path(job_id)
+        with memory_limit(settings.memory_limit):
+            if kind == "field":
+                pipeline.write_fields(folder, case)
+            elif kind == "preview" and quantity is not None:
+                pipeline.render(folder, case, quantity)
+            else:
+                raise StoreError(f"there is no artefact {kind!r} of quantity {quantity!r}")
+    except (FishplateError, MemoryError) as error:
+        return {"ok": False, **_explain(error, settings)}
+    return {"ok": True}

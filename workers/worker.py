@@ -1,0 +1,78 @@
+"""One worker process: takes tasks off the queues and forks a work-horse for each."""
+
+import logging
+import signal
+import time
+from types import FrameType
+
+import redis
+import rq
+from rq.job import Job
+from rq.serializers import JSONSerializer
+
+from workers.errors import StoreError
+from workers.lineage import die_with_parent
+from workers.queue import BULK, INTERACTIVE, Queue, connect
+from workers.reconcile import settle
+from workers.settings import Settings
+from workers.tasks import OUT_OF_TIME
+
+HEARTBEAT = 15  # between two signs of life while idle [s]; rq adds its own margin of 15 s
+MONITOR = 5  # between two looks at a work-horse [s]
+
+log = logging.getLogger(__name__)
+
+
+class Worker(rq.Worker):
+    """An rq worker that settles each job once its work-horse is gone, whatever became of it."""
+
+    max_connection_wait_time = 5.0
+
+    def __init__(self, settings: Settings) -> None:
+        self.settings = settings
+        self.jobs = Queue(settings)
+        self._handing_back = False
+        super().__init__(
+            [INTERACTIVE, BULK],
+            connection=connect(settings),
+            serializer=JSONSerializer,
+            worker_ttl=2 * HEARTBEAT,
+            job_monitoring_interval=MONITOR,
+        )
+
+    def execute_job(self, job: Job, queue: rq.Queue) -> None:
+        began = time.monotonic()
+        try:
+            super().execute_job(job, queue)
+        finally:
+            if queue.name == BULK:
+                self._settle(job.args[0], time.monotonic() - began)
+
+    def _settle(self, job_id: str, elapsed: float) -> None:
+        # A call into compiled code can outlast the limit inside the work-horse; then rq killed it.
+        limit = self.settings.time_limit
+        verdict = OUT_OF_TIME.format(seconds=limit) if elapsed > limit else None
+        try:
+            settle(
+                self.jobs.store,
+                self.jobs,
+                job_id,
+                verdict=verdict,
+                handed_back=self._handing_back,
+            )
+        except (StoreError, redis.RedisError) as error:
+            log.warning("job %s is left to the reconciler: %s", job_id, error)
+
+    def request_force_stop(self, signum: int, frame: FrameType | None) -> None:
+        self._handing_back = True
+        super().request_force_stop(signum, frame)
+
+    def setup_work_horse_signals(self) -> None:
+        super().setup_work_horse_signals()
+        # Else a killed worker leaves a work-horse that nobody watches.
+        die_with_parent(signal.SIGKILL, parent=self.pid)
+
+
+def work(settings: Settings) -> None:
+    """Be a worker until told to stop."""
+    Worker(settings).work(logging_level="WARNING")
