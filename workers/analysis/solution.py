@@ -4,15 +4,26 @@
 cases as blocks of right-hand sides, check the residual, collect the forces of the supports.
 """
 
-from collections.abc import Mapping
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from workers.analysis.model import Model
+from workers.analysis.loads.cases import Loads, resolve_loads
+from workers.analysis.mesh import Mesh
+from workers.analysis.model import Model, build_model
+from workers.analysis.stopwatch import Stopwatch
+from workers.analysis.supports import Supports, resolve_supports
+from workers.analysis.system import System, build_system
+from workers.job import Job
 
 Array = NDArray[np.float64]
+Progress = Callable[[str, float], None]
+
+# Bytes of one block of right-hand sides: wide blocks are several times faster than narrow ones
+# (measured: 300 at once 3.3 ms each, 25 at once 9 ms), and a few of these must fit in memory.
+BLOCK_BYTES = 1 << 27
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,3 +80,98 @@ class Solution:
     support_forces: tuple[SupportForces, ...]
     temperature: tuple[Array, ...] | None
     solver: SolverReport
+
+
+def solve(job: Job, mesh: Mesh, progress: Progress | None = None) -> Solution:
+    """Solve all load cases of a job on its mesh.
+
+    Parameters
+    ----------
+    progress : called with the stage and the fraction of it that is done
+
+    Raises
+    ------
+    MeshError        a support or a load cannot act where the job puts it.
+    MechanismError   the plate, or a part of it, is free to move; names the motion.
+    AnalysisError    the system could not be solved reliably.
+    """
+    report = progress or _silent
+    watch = Stopwatch()
+    report("assembling", 0.0)
+    model = build_model(job, mesh)
+    with watch("loads and supports"):
+        supports = resolve_supports(job, mesh)
+        loads = resolve_loads(model)
+    system = build_system(model, supports, watch, report)
+    report("solving", 0.0)
+    cases = len(job.load_cases)
+    displacement = np.empty((mesh.node_count, 2, cases))
+    reaction = np.zeros((len(supports.nodes), 2, cases))
+    residual = np.zeros(cases)
+    with watch("solve"):
+        for part in _parts(cases, mesh.dof_count):
+            displacement[:, :, part], reaction[:, :, part], residual[part] = _solve_part(
+                system, supports, loads, part
+            )
+            report("solving", part.stop / cases)
+    return Solution(
+        model=model,
+        cases=tuple(case.name for case in job.load_cases),
+        displacement=displacement,
+        applied=loads.applied,
+        support_forces=_support_forces(job, supports, displacement, reaction),
+        temperature=loads.heating.by_element(model),
+        solver=SolverReport(
+            name=system.factor.name,
+            ordering=system.ordering,
+            dofs=mesh.dof_count,
+            free_dofs=int((~supports.held).sum()),
+            factor_entries=system.factor.entries,
+            residual=residual,
+            refinements=system.refinements,
+            reciprocal_condition=system.reciprocal_condition,
+            seconds=dict(watch.seconds),
+        ),
+    )
+
+
+def _silent(stage: str, fraction: float) -> None:
+    pass
+
+
+def _parts(cases: int, dofs: int) -> Iterator[slice]:
+    """Load cases in blocks that fit BLOCK_BYTES."""
+    width = max(8, BLOCK_BYTES // (8 * dofs))
+    for start in range(0, cases, width):
+        yield slice(start, min(start + width, cases))
+
+
+def _solve_part(
+    system: System, supports: Supports, loads: Loads, part: slice
+) -> tuple[Array, Array, Array]:
+    """Displacement (N, 2, k), reactions (s, 2, k) of the held nodes and residual (k,)."""
+    forces = loads.applied[:, :, part].copy()
+    loads.heating.add_forces(forces, part)
+    prescribed = supports.prescribed[:, part]
+    displacement, residual = system.solve(forces, prescribed)
+    return displacement, system.reactions(displacement, forces), residual
+
+
+def _support_forces(
+    job: Job, supports: Supports, displacement: Array, reaction: Array
+) -> tuple[SupportForces, ...]:
+    """Divide the reactions (s, 2, c) of the held nodes among the supports; add their springs."""
+    found = []
+    for support, share, spring in zip(job.supports, supports.shares, supports.springs, strict=True):
+        nodes = np.union1d(share.nodes, spring.nodes)
+        force = np.zeros((len(nodes), *reaction.shape[1:]))
+        held = reaction[np.searchsorted(supports.nodes, share.nodes)]
+        size = np.einsum("kic,ki->kc", held, share.measure)
+        np.add.at(
+            force,
+            np.searchsorted(nodes, share.nodes),
+            share.direction[:, :, None] * size[:, None, :],
+        )
+        force[np.searchsorted(nodes, spring.nodes)] += spring.force(displacement)
+        found.append(SupportForces(support.label, nodes, force))
+    return tuple(found)

@@ -1,0 +1,1 @@
+"""Loads: what each load case puts on the nodes."""

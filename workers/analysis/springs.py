@@ -1,0 +1,106 @@
+"""Springs: elastic supports as 2x2 node blocks of the stiffness matrix."""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.mesh import FacetGroup, Mesh
+from workers.analysis.selection import Selection, select
+from workers.errors import Fault, MeshError
+from workers.job import Named, Spring, Support
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class SpringBlocks:
+    """Node blocks that a support adds to the stiffness: rows (b,), columns (b,), blocks (b, 2, 2).
+
+    A pair may occur several times; its blocks add up.
+    """
+
+    rows: NDArray[np.int64]
+    columns: NDArray[np.int64]
+    blocks: Array
+
+    def force(self, displacement: Array) -> Array:
+        """Force of the springs on the plate, -K u, in the order of `nodes`: (k, 2, c) [F]."""
+        nodes, row = np.unique(self.rows, return_inverse=True)
+        force = np.zeros((len(nodes), *displacement.shape[1:]))
+        np.subtract.at(force, row, self.blocks @ displacement[self.columns])
+        return force
+
+    @property
+    def nodes(self) -> NDArray[np.int64]:
+        """Numbers of the nodes on which springs act, ascending."""
+        return np.unique(self.rows)
+
+
+def spring_blocks(support: Support, mesh: Mesh) -> SpringBlocks:
+    """Stiffness of the springs of one support; empty if it has none.
+
+    Along a side the springs are spread and consistent: k N N^T ds. At a point they act on the
+    node.
+
+    Raises
+    ------
+    MeshError   the target is an area, or a point that has no normal.
+    """
+    if support.spring is None:
+        return SpringBlocks(np.empty(0, np.int64), np.empty(0, np.int64), np.empty((0, 2, 2)))
+    selection = select(mesh, support.on, support.pointer)
+    if isinstance(support.on, Named) and support.on.name in mesh.regions:
+        raise MeshError(
+            [
+                Fault(
+                    support.pointer,
+                    f"a spring acts on a side or at a point; {support.on.name!r} is a region",
+                )
+            ]
+        )
+    if len(selection.facets):
+        return _side_springs(support.spring, mesh, selection)
+    return _point_springs(support, selection)
+
+
+def _point_springs(support: Support, selection: Selection) -> SpringBlocks:
+    spring = support.spring
+    assert spring is not None
+    if spring.normal or spring.tangential:
+        raise MeshError(
+            [Fault(support.pointer, "a point has no normal; give the spring's x and y instead")]
+        )
+    nodes = selection.nodes.astype(np.int64)
+    blocks = np.tile(np.diag([spring.x, spring.y]), (len(nodes), 1, 1))
+    return SpringBlocks(nodes, nodes, blocks)
+
+
+def _side_springs(spring: Spring, mesh: Mesh, selection: Selection) -> SpringBlocks:
+    parts = [_facet_springs(spring, mesh, group) for group in mesh.facet_groups(selection.facets)]
+    return SpringBlocks(*(np.concatenate(arrays) for arrays in zip(*parts, strict=True)))
+
+
+def _facet_springs(
+    spring: Spring, mesh: Mesh, group: FacetGroup
+) -> tuple[NDArray[np.int64], NDArray[np.int64], Array]:
+    """Integral of N_i N_j (kx x x^T + ky y y^T + kn n n^T + kt t t^T) ds on each facet."""
+    block = mesh.blocks[group.block]
+    local = list(block.element.sides[group.side])
+    nodes = block.connectivity[group.elements]
+    _, tangent = block.element.side_points(mesh.nodes[nodes], group.side)
+    length = np.linalg.norm(tangent, axis=2)
+    t = tangent / length[..., None]
+    n = np.stack([t[..., 1], -t[..., 0]], axis=-1)
+    stiffness = (
+        np.diag([spring.x, spring.y])
+        + spring.normal * n[..., :, None] * n[..., None, :]
+        + spring.tangential * t[..., :, None] * t[..., None, :]
+    )
+    weights = length * block.element.side_rule().weights
+    N = block.element.shape_functions(block.element.side_natural_points(group.side))[:, local]
+    blocks = np.einsum("qi,qj,mq,mqab->mijab", N, N, weights, stiffness)
+    k = len(local)
+    side_nodes = nodes[:, local].astype(np.int64)
+    rows, columns = np.repeat(side_nodes, k, axis=1), np.tile(side_nodes, (1, k))
+    return rows.ravel(), columns.ravel(), blocks.reshape(-1, 2, 2)

@@ -1,0 +1,202 @@
+"""The system of equations of one model: built and factorised once, solved for blocks of cases.
+
+Inside, nodes stand in elimination order and held nodes in their own axes; what comes in and goes
+out is in the mesh's order and global axes.
+"""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import bsr_array, csr_array
+
+from workers.analysis.assembly import assemble_stiffness, pair_positions
+from workers.analysis.constraints import decouple, turn_matrix, turn_vectors
+from workers.analysis.mechanism import describe_motion
+from workers.analysis.mesh import Mesh
+from workers.analysis.model import Model
+from workers.analysis.ordering import NodeOrder, order_nodes
+from workers.analysis.solver import (
+    Factor,
+    SingularMatrixError,
+    backward_error,
+    factorise,
+    relative_residual,
+    weakest_motion,
+)
+from workers.analysis.stopwatch import Stopwatch
+from workers.analysis.supports import Supports
+from workers.errors import AnalysisError, Fault, MechanismError
+
+Array = NDArray[np.float64]
+
+RESIDUAL = 1e-10  # norm of the residual over that of the load, after at most one refinement
+BACKWARD = 1e-13  # backward error of a sound solution whose plate is too slender for RESIDUAL
+# A mechanism comes out at 1e-17 to 3e-16 here, a strip of 1 to 1000 at 1e-12 to 1e-13.
+SINGULAR = 1e-15
+SHIFT = 1e-8  # of the diagonal: makes a mechanism solvable so that its motion can be seen
+
+
+@dataclass(eq=False)
+class System:
+    """A factorised model.
+
+    matrix : (2N, 2N)   elimination order, own axes, held dofs decoupled
+    at_held : (2s, 2N)  rows of the stiffness (springs included) of the s held nodes, mesh order
+    """
+
+    order: NodeOrder
+    supports: Supports
+    matrix: bsr_array
+    at_held: csr_array
+    factor: Factor
+    reciprocal_condition: float
+    refinements: int = 0
+
+    @property
+    def ordering(self) -> str:
+        return self.order.name
+
+    def solve(self, forces: Array, prescribed: csr_array) -> tuple[Array, Array]:
+        """Displacements for nodal forces and the prescribed displacements of the held nodes.
+
+        Parameters
+        ----------
+        forces : (N, 2, k) array    all nodal forces, those of heating included [F]
+        prescribed : (2N, k) csr    [L]
+
+        Returns
+        -------
+        displacement : (N, 2, k) array   [L]
+        residual : (k,) array            relative
+
+        Raises
+        ------
+        AnalysisError   the residual stays too large.
+        """
+        N, _, k = forces.shape
+        right = forces - self._pull(prescribed).reshape(N, 2, k) if prescribed.nnz else forces
+        right = right[self.order.order]
+        turned = self.order.position[self.supports.turned]
+        turn_vectors(right, turned, self.supports.axes)
+        right[self.supports.held[self.order.order]] = 0.0
+        right = right.reshape(2 * N, k)
+        solution, residual = self._solve_refined(right)
+        solution = solution.reshape(N, 2, k)
+        turn_vectors(solution, turned, self.supports.axes, back=True)
+        displacement = solution[self.order.position]
+        if prescribed.nnz:
+            displacement += prescribed.toarray().reshape(N, 2, k)
+        return displacement, residual
+
+    def reactions(self, displacement: Array, forces: Array) -> Array:
+        """Forces of the supports on the held nodes, K u - f, (s, 2, k) [F]."""
+        N, _, k = displacement.shape
+        held = self.supports.nodes
+        internal = self.at_held @ displacement.reshape(2 * N, k)
+        return internal.reshape(len(held), 2, k) - forces[held]
+
+    def _pull(self, prescribed: csr_array) -> Array:
+        """Nodal forces K g of the prescribed displacements g; K is symmetric."""
+        rows = (2 * self.supports.nodes[:, None] + np.arange(2)).ravel()
+        return (self.at_held.T @ prescribed[rows]).toarray()
+
+    def _solve_refined(self, right: Array) -> tuple[Array, Array]:
+        """Solve, and once more for what is left where too much is left."""
+        solution = self.factor.solve(right)
+        left = right - self.matrix @ solution
+        residual = relative_residual(left, right)
+        poor = self._poor(solution, right, left, residual)
+        if len(poor):
+            self.refinements = 1
+            solution[:, poor] += self.factor.solve(left[:, poor])
+            left[:, poor] = right[:, poor] - self.matrix @ solution[:, poor]
+            residual[poor] = relative_residual(left[:, poor], right[:, poor])
+            if len(still := self._poor(solution, right, left, residual)):
+                message = (
+                    "the equations could not be solved: the forces out of balance are "
+                    f"{residual[still].max():.1e} of the load; look for parts that are nearly "
+                    "free to move and for extreme ratios of stiffness"
+                )
+                raise AnalysisError([Fault("", message)])
+        return solution, residual
+
+    def _poor(
+        self, solution: Array, right: Array, left: Array, residual: Array
+    ) -> NDArray[np.int64]:
+        """Columns that are worse than the plate itself excuses.
+
+        The displacements of a slender plate are large against its load, and rounding them alone
+        leaves more than RESIDUAL out of balance; the backward error tells such a plate from a
+        failed solution.
+        """
+        poor = np.flatnonzero(~(residual <= RESIDUAL))
+        if len(poor):
+            columns = (a[:, poor] for a in (solution, right, left))
+            poor = poor[~(backward_error(self.matrix, *columns) <= BACKWARD)]
+        return poor
+
+
+def build_system(
+    model: Model, supports: Supports, watch: Stopwatch, report: Callable[[str, float], None]
+) -> System:
+    """Order, assemble, apply the supports, factorise.
+
+    Raises
+    ------
+    MechanismError   something is free to move; names the motion.
+    """
+    with watch("order"):
+        order = order_nodes(model.mesh)
+    with watch("assemble"):
+        matrix = assemble_stiffness(model, order.position)
+        _add_springs(matrix, supports, order)
+        at_held = _rows(matrix, supports, order)
+        turn_matrix(matrix, order.position[supports.turned], supports.axes)
+        decouple(matrix, supports.held[order.order])
+    report("factorising", 0.0)
+    with watch("factorise"):
+        try:
+            factor = factorise(matrix)
+        except SingularMatrixError as error:
+            raise _mechanism(model.mesh, matrix, supports, order) from error
+    with watch("condition"):
+        condition, _ = weakest_motion(matrix, factor)
+    if not condition > SINGULAR:
+        raise _mechanism(model.mesh, matrix, supports, order)
+    return System(order, supports, matrix, at_held, factor, condition)
+
+
+def _add_springs(matrix: bsr_array, supports: Supports, order: NodeOrder) -> None:
+    for spring in supports.springs:
+        if len(spring.rows):
+            rows, columns = order.position[spring.rows], order.position[spring.columns]
+            np.add.at(matrix.data, pair_positions(matrix, rows, columns), spring.blocks)
+
+
+def _rows(matrix: bsr_array, supports: Supports, order: NodeOrder) -> csr_array:
+    """Rows of the held nodes, columns back in the mesh's order."""
+    nodes = order.position[supports.nodes]
+    starts, counts = matrix.indptr[nodes], np.diff(matrix.indptr)[nodes]
+    ends = np.concatenate(([0], np.cumsum(counts)))
+    chosen = np.repeat(starts - ends[:-1], counts) + np.arange(ends[-1])
+    columns = order.order[matrix.indices[chosen]]
+    shape = (2 * len(nodes), matrix.shape[1])
+    return bsr_array((matrix.data[chosen], columns, ends), shape=shape).tocsr()
+
+
+def _mechanism(
+    mesh: Mesh, matrix: bsr_array, supports: Supports, order: NodeOrder
+) -> MechanismError:
+    """Find and name a motion that the singular matrix does not resist."""
+    shifted = matrix.copy()
+    rows = np.repeat(np.arange(mesh.node_count), np.diff(matrix.indptr))
+    diagonal = np.flatnonzero(rows == matrix.indices)
+    for axis in (0, 1):
+        entries = shifted.data[diagonal, axis, axis]
+        shifted.data[diagonal, axis, axis] += SHIFT * np.where(entries > 0, entries, 1.0)
+    _, motion = weakest_motion(shifted, factorise(shifted))
+    vectors = motion.reshape(-1, 2, 1)
+    turn_vectors(vectors, order.position[supports.turned], supports.axes, back=True)
+    return MechanismError([describe_motion(mesh, vectors[order.position, :, 0])])
