@@ -1,16 +1,13 @@
 """Files of a finished job that a worker makes when somebody asks for them."""
 
-from pathlib import Path
-
-from api.problems import ARTEFACT_FAILED, ARTEFACT_LATE, RefusalError
+from api.problems import ARTEFACT_FAILED, ARTEFACT_LATE, PICTURES_UNAVAILABLE, RefusalError
 from api.services import services
+from workers.errors import PicturesUnavailableError
 
 WAIT = 25.0  # seconds; a picture takes 1-3 s, clients and proxies give up after 30 or more
 
 
-def make_artefact(
-    path: Path, job_id: str, kind: str, case: str, quantity: str | None = None
-) -> None:
+def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None) -> None:
     """Have the file made; on return it is there.
 
     Raises
@@ -26,5 +23,10 @@ def make_artefact(
         raise RefusalError(
             ARTEFACT_LATE, "A worker will make this file.", headers={"Retry-After": "5"}
         )
-    if answer.state == "failed" or not path.is_file():
-        raise RefusalError(ARTEFACT_FAILED, answer.reason or "The worker left no file.")
+    if answer.state == "failed":
+        raise RefusalError(ARTEFACT_FAILED, answer.reason or "The worker failed.")
+    if not answer.value["ok"]:
+        away = answer.value["error"] == PicturesUnavailableError.__name__
+        raise RefusalError(
+            PICTURES_UNAVAILABLE if away else ARTEFACT_FAILED, answer.value["reason"]
+        )

@@ -2,8 +2,8 @@
 
 from typing import Any
 
-from flask_smorest import Blueprint
 
+from api.openapi import Blueprint
 from api.schemas import ElementsSchema, RulesSchema
 from elements import registry
 from workers.cautions import SEVERITIES

@@ -3,10 +3,9 @@
 from collections.abc import Callable
 from typing import Any
 
-from flask_smorest import Blueprint
 from redis.exceptions import RedisError
 
-from api.openapi import problems_of
+from api.openapi import Blueprint, problems_of
 from api.problems import NOT_READY, RefusalError
 from api.schemas import LiveSchema, ReadySchema
 from api.services import services

@@ -9,12 +9,11 @@ from typing import Any
 from urllib.parse import urlencode
 
 import flask
-from flask_smorest import Blueprint
 from marshmallow import RAISE
 from redis.exceptions import RedisError
 
 from api.bodies import read_document_bytes
-from api.openapi import problems_of
+from api.openapi import Blueprint, problems_of
 from api.preferences import applied, wanted_wait
 from api.problems import BAD_REQUEST, RefusalError, parameter_fault
 from api.schemas import (
@@ -24,7 +23,8 @@ from api.schemas import (
     RemovalSchema,
 )
 from api.services import services
-from workers.document import JobSchema, read_document
+from workers.document.job import JobSchema
+from workers.document.read import read_document
 from workers.errors import UnknownJobError
 from workers.preflight import preflight
 from workers.record import RUNNING, Record

@@ -8,6 +8,7 @@ from typing import Any
 import flask_smorest
 from flask import Response
 from flask_smorest.utils import prepare_response
+from webargs.flaskparser import FlaskParser
 from werkzeug.exceptions import HTTPException
 
 from api import problems
@@ -44,6 +45,16 @@ class Api(flask_smorest.Api):
 
     def handle_http_exception(self, error: HTTPException) -> Response:
         return problems.http_problem(error)
+
+
+class QueryParser(FlaskParser):
+    """Wrong query parameters are a bad request; 422 is kept for job documents."""
+
+    DEFAULT_VALIDATION_STATUS = 400
+
+
+class Blueprint(flask_smorest.Blueprint):
+    ARGUMENTS_PARSER = QueryParser()
 
 
 def problems_of(*statuses: int) -> dict[int, str]:

@@ -10,11 +10,10 @@ from typing import Any
 
 import orjson
 from flask import Response
-from flask_smorest import Blueprint
 
 from api.artefacts import make_artefact
 from api.jobs import address
-from api.openapi import describe_file, problems_of
+from api.openapi import Blueprint, describe_file, problems_of
 from api.problems import (
     JOB_CANCELLED,
     JOB_FAILED,
@@ -59,7 +58,7 @@ def show_field(job_id: str, case: str) -> Response:
     path = folder / "fields" / f"{file_name(case)}.vtu"
     if not path.is_file():
         _require(case, "case or combination", _states(folder))
-        make_artefact(path, job_id, "field", case)
+        make_artefact(job_id, "field", case)
     return file_answer(path, VTU, address(job_id), download_name=f"{case}.vtu")
 
 
@@ -76,7 +75,7 @@ def show_preview(job_id: str, case: str, quantity: str) -> Response:
     if not path.is_file():
         _require(case, "case or combination", _states(folder))
         _require(quantity, "quantity", QUANTITIES)
-        make_artefact(path, job_id, "preview", case, quantity)
+        make_artefact(job_id, "preview", case, quantity)
     return file_answer(path, PNG, address(job_id), download_name=f"{case} {quantity}.png")
 
 

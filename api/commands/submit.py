@@ -20,7 +20,6 @@ from workers.record import UNFINISHED
     "--url",
     default="http://127.0.0.1:8470",
     show_default=True,
-    envvar="FISHPLATE_URL",
     help="Address of the server.",
 )
 @click.option("--wait", is_flag=True, help="Wait for the job and print its results.")
