@@ -1,0 +1,76 @@
+"""The whole document as one schema; what its parts say of each other is in `names.py`."""
+
+from collections.abc import Mapping
+from typing import Any
+
+from marshmallow import ValidationError, validates_schema
+
+from workers.document import consistency, names
+from workers.document.context import reading
+from workers.document.faults import nest
+from workers.document.fields import MapOf, Part, Text
+from workers.document.geometry import GeometrySchema
+from workers.document.loads import Combinations, LoadCases
+from workers.document.materials import MaterialSchema, PlateSchema, UnitsSchema
+from workers.document.record import Record
+from workers.document.requests import LimitsSchema, MeshingSchema, RequestsSchema
+from workers.document.supports import SupportList
+from workers.document.units import FORCE_UNITS, LENGTH_UNITS
+from workers.job import Job, Units
+
+MOST_MATERIALS = 10_000
+
+
+class JobSchema(Record):
+    """One plate with all its load cases.
+
+    `load` gives a `Job`, or ValidationError with every fault; `dump` gives the document again.
+    """
+
+    makes = Job
+
+    title = Text("What is checked, for people", most=200, required=True)
+    label = Text("Batch that the job belongs to", most=200)
+    units = Part(UnitsSchema, "Units of all plain numbers", required=True)
+    materials = MapOf(
+        Part(MaterialSchema, "A material"),
+        "Materials by name",
+        least=1,
+        most=MOST_MATERIALS,
+        required=True,
+    )
+    geometry = Part(
+        GeometrySchema, "The plate: exactly one of outline, patches and mesh", required=True
+    )
+    plate = Part(PlateSchema, "Section of whatever no region overrides", required=True)
+    meshing = Part(MeshingSchema, "How the plate is meshed")
+    supports = SupportList("What holds the plate", required=True)
+    load_cases = LoadCases(
+        "Load cases by name; the loads of a case act together. A case without loads needs a "
+        "support with a prescribed value",
+        required=True,
+    )
+    combinations = Combinations("Combinations of load cases, by name")
+    requests = Part(RequestsSchema, "What the results should hold beside the peaks")
+    limits = Part(LimitsSchema, "What the results are measured against")
+
+    def load(self, data: Any, **options: Any) -> Any:
+        with reading(_units_of(data)):
+            return super().load(data, **options)
+
+    @validates_schema(pass_original=True, skip_on_field_errors=False)
+    def _parts_agree(self, data: Any, original: Any, **_: Any) -> None:
+        if isinstance(original, Mapping):
+            found = [*names.faults(original), *consistency.faults(original)]
+            if found:
+                raise ValidationError(nest(found))
+
+
+def _units_of(document: Any) -> Units:
+    """The declared units; where they are themselves at fault any will do, for nothing is built."""
+    units = names.table(names.table(document).get("units"))
+    length, force = units.get("length"), units.get("force")
+    if isinstance(length, str) and length in LENGTH_UNITS:
+        if isinstance(force, str) and force in FORCE_UNITS:
+            return Units(length, force)
+    return Units("m", "N")
