@@ -1,0 +1,116 @@
+"""The OpenAPI document says exactly what the routes answer."""
+
+import re
+from collections import defaultdict
+from collections.abc import Callable
+from typing import Any
+
+import pytest
+from flask import Flask
+from flask.testing import FlaskClient
+from jsonschema import Draft202012Validator
+
+from api.openapi import Blueprint
+from tests.job_documents import strip
+from tests.walk import visit_all
+
+# Described as possible everywhere a queue or store is used; provoked in test_outages.py.
+OUTAGES = {"500", "503"}
+
+
+@pytest.fixture
+def document(client: FlaskClient) -> dict[str, Any]:
+    found: dict[str, Any] = client.get("/openapi.json").get_json()
+    return found
+
+
+def validator(schema: dict[str, Any], document: dict[str, Any]) -> Draft202012Validator:
+    """OpenAPI 3.1 schemas are JSON Schema 2020-12; references go to the document's components."""
+    return Draft202012Validator({**schema, "components": document["components"]})
+
+
+def resolve(part: dict[str, Any], document: dict[str, Any]) -> dict[str, Any]:
+    if "$ref" not in part:
+        return part
+    found = document
+    for step in part["$ref"].removeprefix("#/").split("/"):
+        found = found[step]
+    return found
+
+
+def test_routes_answer_what_the_document_says(
+    app: Flask,
+    document: dict[str, Any],
+    finish: Callable[[str], None],
+    monkeypatch: pytest.MonkeyPatch,
+) -> None:
+    """Status, media type and body of every answer; and every status described does occur."""
+    seen: dict[tuple[str, str], set[str]] = defaultdict(set)
+    for visit in visit_all(app, finish, monkeypatch):
+        path = re.sub(r"<(\w+)>", r"{\1}", visit.rule.rule)
+        operation = document["paths"].get(path, {}).get(visit.method.lower())
+        if operation is None:
+            assert visit.method in ("PUT", "HEAD", "OPTIONS") or path in ("/docs", "/openapi.json")
+            continue
+        status = str(visit.answer.status_code)
+        where = f"{visit.method} {path} {status}"
+        assert status in operation["responses"], f"{where} is not described"
+        described = resolve(operation["responses"][status], document)
+        assert visit.answer.mimetype in described["content"], where
+        schema = described["content"][visit.answer.mimetype].get("schema")
+        if schema and visit.answer.is_json:
+            errors = validator(schema, document).iter_errors(visit.answer.get_json())
+            assert not [f"{where} {e.json_path}: {e.message}" for e in errors]
+        assert set(described.get("headers", ())) <= {*visit.answer.headers.keys()}, where
+        seen[visit.method.lower(), path].add(status)
+    for path, item in document["paths"].items():
+        for method in item.keys() - {"parameters"}:
+            described = item[method]["responses"].keys() - OUTAGES - {"default"}
+            assert described <= seen[method, path], f"{method} {path} never answers so"
+
+
+def test_every_api_route_is_described(app: Flask, document: dict[str, Any]) -> None:
+    for rule in app.url_map.iter_rules():
+        if isinstance(app.blueprints[rule.endpoint.split(".")[0]], Blueprint):
+            assert re.sub(r"<(\w+)>", r"{\1}", rule.rule) in document["paths"]
+
+
+def test_all_schemas_are_json_schema(document: dict[str, Any]) -> None:
+    for schema in document["components"]["schemas"].values():
+        Draft202012Validator.check_schema(schema)
+
+
+def test_only_x_keys_are_added_to_the_standard_document(document: dict[str, Any]) -> None:
+    """OpenAPI 3.1 section 4.9: foreign fields must begin with x-."""
+    standard = {"openapi", "info", "servers", "paths", "components", "security", "tags",
+                "externalDocs", "jsonSchemaDialect", "webhooks"}  # fmt: skip
+    assert document["openapi"].startswith("3.1.")
+    assert {key for key in document if not key.startswith("x-")} <= standard
+
+
+def test_the_document_schema_admits_a_job_and_names_what_is_wrong(document: dict[str, Any]) -> None:
+    """The published schema and the reader agree on a good job and on a misspelt key."""
+    check = validator({"$ref": "#/components/schemas/Job"}, document)
+    assert not list(check.iter_errors(strip()))
+    assert list(check.iter_errors({**strip(), "titel": "x"}))
+
+
+def test_the_page_for_people_needs_nothing_from_elsewhere(client: FlaskClient) -> None:
+    """It must work on a machine without the internet: no script, font, style or image by address."""
+    answer = client.get("/docs")
+    assert answer.mimetype == "text/html"
+    assert "default-src 'none'" in answer.headers["Content-Security-Policy"]
+    assert not re.search(r"<(script|link|img|iframe)\b|@import|url\(|https?://", answer.text)
+
+
+def test_the_page_for_people_shows_every_operation_problem_and_caution(
+    client: FlaskClient, document: dict[str, Any]
+) -> None:
+    text = client.get("/docs").text
+    for path, item in document["paths"].items():
+        for method in item.keys() - {"parameters"}:
+            assert f'id="{method.upper()}{path}"' in text
+    for caution in document["x-cautions"]:
+        assert caution["message"] in text
+    for address in set(re.findall(r'href="#([^"]+)"', text)):
+        assert f'id="{address}"' in text, address

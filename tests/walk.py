@@ -1,0 +1,105 @@
+"""Visits every address of the application with every method, jobs in every state and faults too.
+
+The addresses come from the application's own URL map, so a new route is visited without being
+named here; one that cannot be reached with the values below makes `visit_all` fail.
+"""
+
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass
+from typing import Any
+
+from flask import Flask
+from werkzeug.routing import Rule
+from werkzeug.test import TestResponse
+
+from api.services import KEY, Services
+from tests.job_documents import strip
+from workers.errors import Fault
+from workers.queue import Answer
+from workers.record import CANCELLED, FAILED, RUNNING
+
+# Values for the variable parts of addresses, good and bad ones.
+VALUES: dict[str, tuple[str, ...]] = {
+    "case": ("pull", "pull, factored", "no such case"),
+    "quantity": ("model", "von_mises", "colour"),
+    "name": ("peaks", "lines", "no such table"),
+}
+# What a method needs to succeed where its address alone is not enough.
+REQUESTS: dict[tuple[str, str], list[dict[str, Any]]] = {
+    ("POST", "/v1/jobs"): [
+        {"json": strip()},
+        {"json": strip(), "headers": {"Idempotency-Key": "a"}},
+        {"json": strip(), "headers": {"Idempotency-Key": "a"}},
+        {"json": strip(length=50.0), "headers": {"Idempotency-Key": "a"}},
+        {"json": strip(), "headers": {"Idempotency-Key": "x" * 1000}},
+        {"json": {}},
+        {"data": b"{"},
+        {"data": b"{}", "content_type": "text/plain"},
+        {"data": b" " * 200_000, "content_type": "application/json"},
+    ],
+    ("GET", "/v1/jobs"): [
+        {},
+        {"query_string": {"limit": 1}},
+        {"query_string": {"limit": 0, "state": "lost", "colour": "red"}},
+    ],
+}
+ANSWERS = {  # of the workers, when a file must be made; by quantity, None for a field
+    "von_mises": Answer("done", {"ok": False, "error": "PicturesUnavailableError", "reason": "x"}),
+    "model": Answer("pending"),
+    None: Answer("failed", reason="the worker process ended before it had an answer"),
+}
+Finish = Callable[[str], None]
+
+
+@dataclass(frozen=True)
+class Visit:
+    rule: Rule
+    method: str
+    answer: TestResponse
+
+
+def visit_all(app: Flask, finish: Finish, monkeypatch: Any) -> list[Visit]:
+    """One visit for every combination; the application must accept 100 kB bodies at most."""
+    services: Services = app.extensions[KEY]
+
+    def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None,
+                      *, wait: float) -> Answer:  # fmt: skip
+        return ANSWERS[quantity]
+
+    monkeypatch.setattr(services.queue, "make_artefact", make_artefact)
+    visits = []
+    for rule in app.url_map.iter_rules():
+        for method in sorted({*(rule.methods or ()), "PUT"}):
+            for address in addresses(app, rule, finish):
+                for request in REQUESTS.get((method, rule.rule), [{}]):
+                    answer = app.test_client().open(address, method=method, **request)
+                    visits.append(Visit(rule, method, answer))
+    return visits
+
+
+def addresses(app: Flask, rule: Rule, finish: Finish) -> Iterator[str]:
+    """The address of a rule with all combinations of values, and fresh jobs in all states."""
+    partial: list[dict[str, str]] = [{}]
+    for name in sorted(rule.arguments):
+        values = jobs(app, finish) if name == "job_id" else VALUES[name]
+        partial = [{**given, name: value} for given in partial for value in values]
+    with app.test_request_context():
+        adapter = app.create_url_adapter(None)
+        assert adapter is not None
+        for values in partial:
+            yield adapter.build(rule.endpoint, values)
+
+
+def jobs(app: Flask, finish: Finish) -> tuple[str, ...]:
+    """Ids of new jobs in every state, and one that belongs to no job."""
+    services: Services = app.extensions[KEY]
+    queued, running, finished, failed, cancelled = (
+        services.store.accept(b"{}", title=str(n)).record.id for n in range(5)
+    )
+    services.store.transition(running, RUNNING)
+    services.queue.set_progress(running, "solving", 0.5)
+    finish(finished)
+    services.store.transition(failed, RUNNING)
+    services.store.transition(failed, FAILED, reason="why", faults=(Fault("/plate", "thin"),))
+    services.store.transition(cancelled, CANCELLED)
+    return (queued, running, finished, failed, cancelled, "unknown")
