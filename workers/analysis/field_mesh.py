@@ -62,18 +62,22 @@ class FieldMesh:
     @cached_property
     def on_border(self) -> NDArray[np.bool_]:
         """(P,) True where a point lies on the border of its region, the plate's edge included."""
-        sides = [
-            points[:, list(side)]
-            for block, points in zip(self.mesh.blocks, self.connectivity, strict=True)
-            for side in block.element.sides
-        ]
-        ends = np.concatenate([np.sort(side[:, :2], axis=1) for side in sides]).astype(np.int64)
-        keys = ends[:, 0] * self.point_count + ends[:, 1]
-        _, inverse, owners = np.unique(keys, return_inverse=True, return_counts=True)
-        lone = owners[inverse] == 1
+        edges = self.mesh.edges
+        first, counts = edges.first[:-1], edges.counts
+        lone = edges.facets[first[counts == 1]]
+        one, other = (self.mesh.facet_of(edges.facets[first[counts == 2] + i]) for i in (0, 1))
+        parted = self._facet_region(one) != self._facet_region(other)
         border = np.zeros(self.point_count, dtype=bool)
-        start = 0
-        for side in sides:
-            border[side[lone[start : start + len(side)]]] = True
-            start += len(side)
+        for group in self.mesh.facet_groups(
+            np.concatenate((self.mesh.facet_of(lone), one[parted], other[parted]))
+        ):
+            side = list(self.mesh.blocks[group.block].element.sides[group.side])
+            border[self.connectivity[group.block][group.elements][:, side]] = True
         return border
+
+    def _facet_region(self, facets: NDArray[np.int32]) -> Indices:
+        region = np.empty(len(facets), np.int32)
+        for number, block in enumerate(self.mesh.blocks):
+            here = facets[:, 0] == number
+            region[here] = block.region[facets[here, 1]]
+        return region

@@ -1,0 +1,126 @@
+"""From displacements to stresses: the elements' own, and recovered at the field points.
+
+All states at once, in chunks of elements; a state is a column. Von Mises and the like are formed
+by whoever wants them, after superposition. How samples become nodal values is in
+`patch_recovery.py`.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import csr_array
+
+from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.model import Model
+from workers.analysis.patch_recovery import recovery_operator
+from workers.analysis.plane_stress import thermal_strain
+
+Array = NDArray[np.float64]
+Temperature = tuple[Array, ...] | None  # for each block (m, k) [K]
+
+ELEMENTS_AT_ONCE = 512  # operators and gathered displacements of a chunk stay in the cache
+
+
+@dataclass(frozen=True, eq=False)
+class Recovery:
+    """Stress recovery on one mesh; the operator serves every state.
+
+    model : Model
+    field_mesh : FieldMesh        its P points carry the recovered stress
+    operator : (P, Q) matrix      from the Q superconvergent samples
+    """
+
+    model: Model
+    field_mesh: FieldMesh
+    operator: csr_array
+
+    @classmethod
+    def build(cls, model: Model) -> "Recovery":
+        field_mesh = FieldMesh.build(model.mesh)
+        return cls(model, field_mesh, recovery_operator(field_mesh))
+
+    def sample_stress(self, displacement: Array, temperature: Temperature = None) -> Array:
+        """The elements' stress at their superconvergent points, (Q, 3, k) [F/L^2].
+
+        displacement : (N, 2, k) [L]; temperature : for each block (m, k) [K].
+        """
+        sampled = [
+            raw_stress(
+                self.model, number, block.element.recovery_points(), displacement, temperature
+            ).reshape(-1, 3, displacement.shape[2])
+            for number, block in enumerate(self.model.mesh.blocks)
+        ]
+        return sampled[0] if len(sampled) == 1 else np.concatenate(sampled)
+
+    def nodal_stress(self, displacement: Array, temperature: Temperature = None) -> Array:
+        """Recovered stress at the field points, (P, 3, k) [F/L^2]."""
+        samples = self.sample_stress(displacement, temperature)
+        flat = self.operator @ samples.reshape(len(samples), -1)
+        return flat.reshape(-1, 3, displacement.shape[2])
+
+
+def raw_stress(
+    model: Model,
+    block: int,
+    points: Array,
+    displacement: Array,
+    temperature: Temperature = None,
+    *,
+    elements: NDArray[np.intp] | None = None,
+) -> Array:
+    """The elements' own stress at natural points, discontinuous from element to element.
+
+    Parameters
+    ----------
+    block : index into model.mesh.blocks
+    points : (q, 2) natural coordinates
+    displacement : (N, 2, k) [L]
+    temperature : for each block (m, k) temperature change [K], or None
+    elements : (e,) numbers in the block; all of it if None
+
+    Returns
+    -------
+    (e, q, 3, k) array   D (B u - alpha dT) [F/L^2]
+    """
+    mesh_block, section = model.mesh.blocks[block], model.sections[block]
+    if elements is None:
+        elements = np.arange(mesh_block.element_count)
+    states = displacement.shape[2]
+    stress = np.empty((len(elements), len(points), 3, states))
+    for start in range(0, len(elements), ELEMENTS_AT_ONCE):
+        chunk = elements[start : start + ELEMENTS_AT_ONCE]
+        nodes = mesh_block.connectivity[chunk]
+        D = section.constitutive[chunk]
+        operator = mesh_block.element.stress_operator(model.mesh.nodes[nodes], D, points)
+        here = displacement[nodes].reshape(len(chunk), -1, states)
+        np.matmul(
+            operator.reshape(len(chunk), -1, here.shape[1]),
+            here,
+            out=stress[start : start + len(chunk)].reshape(len(chunk), -1, states),
+        )
+    if temperature is not None:
+        change = temperature[block][elements]
+        stress -= thermal_stress(model, block, change, elements)[:, None]
+    return stress
+
+
+def region_value(model: Model, name: str) -> Array:
+    """A value of `Sections` by region, (regions,); nan for a region without elements."""
+    value = np.full(len(model.mesh.regions), np.nan)
+    for block, section in zip(model.mesh.blocks, model.sections, strict=True):
+        value[block.region] = getattr(section, name)
+    return value
+
+
+def thermal_stress(
+    model: Model, block: int, change: Array, elements: NDArray[np.intp] | slice = slice(None)
+) -> Array:
+    """D alpha dT: what a temperature change takes off the stress, (e, 3, k) [F/L^2].
+
+    change : (e, k) of the elements [K]. Zero where there is no change, whatever alpha is.
+    """
+    section = model.sections[block]
+    expansion = section.thermal_expansion[elements][:, None]
+    free = thermal_strain(np.where(change == 0, 0.0, expansion), change)
+    return np.einsum("eij,ekj->eik", section.constitutive[elements], free)
