@@ -35,10 +35,10 @@ def decouple(matrix: bsr_array, held: Mask) -> None:
     at_node = held.any(axis=1)
     touched = np.flatnonzero(at_node[rows] | at_node[matrix.indices])
     row, column = rows[touched], matrix.indices[touched]
-    blocks = matrix.data[touched]
-    keep = np.logical_not(held[row][:, :, None] | held[column][:, None, :])
-    keep[row == column] |= np.eye(2, dtype=bool)
-    matrix.data[touched] = blocks * keep
+    gone = held[row][:, :, None] | held[column][:, None, :]
+    on_diagonal: Mask = np.asarray(row == column)
+    gone &= ~(on_diagonal[:, None, None] & np.eye(2, dtype=bool))
+    matrix.data[touched] = np.where(gone, 0.0, matrix.data[touched])
 
 
 def turn_vectors(vectors: Array, nodes: NDArray, axes: Array, *, back: bool = False) -> None:
