@@ -1,0 +1,225 @@
+"""Pictures of a solved state: filled stress fields and the deformed shape."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.fields import Fields
+from workers.analysis.plane_stress import principal, von_mises
+from workers.job import Job
+from workers.outputs.drawing.canvas import Canvas
+from workers.outputs.drawing.labels import Labels
+from workers.outputs.drawing.legend import Scale, draw_isoline, draw_legend, legend_size
+from workers.outputs.drawing.numbers import round_factor, show, vector
+from workers.outputs.drawing.page import HEIGHT, WIDTH, Page, over
+from workers.outputs.drawing.palette import INK, PAPER
+from workers.outputs.drawing.plate import draw_mesh, draw_outline
+from workers.outputs.drawing.raster import isolines, paint
+from workers.outputs.drawing.tessellation import Surface, tessellate
+from workers.outputs.drawing.view import Box, View
+
+Array = NDArray[np.floating[Any]]
+Limits = tuple[float, float]
+
+# A stress below this part of Young's modulus, or of the state's largest stress, is rounding.
+ROUNDING_OF_MODULUS, ROUNDING_OF_STATE = 1e-12, 1e-9
+DEFORMED_PART = 0.07  # the largest displacement is drawn as about this part of the plate's diagonal
+AIR = 34  # between the plate and the edge of its room, for the peak's mark [pixels]
+TICK_SPACING = 44.0  # of the ticks along principal directions [pixels]
+CALLOUT = 62  # above and below the plate, for the peak's label [pixels]
+
+
+@dataclass(frozen=True)
+class StressQuantity:
+    """A scalar of the stress state that is drawn as a filled field."""
+
+    heading: str
+    of_stress: Callable[[Array], Array]
+    peak: Callable[[Array], np.intp]
+    signed: bool
+
+
+STRESS_QUANTITIES = {
+    "von_mises": StressQuantity("Von Mises stress", von_mises, np.argmax, signed=False),
+    "principal_max": StressQuantity(
+        "Larger principal stress", lambda s: principal(s)[0], np.argmax, signed=True
+    ),
+    "principal_min": StressQuantity(
+        "Smaller principal stress", lambda s: principal(s)[1], np.argmin, signed=True
+    ),
+}
+
+
+def draw_stress(
+    page: Page,
+    job: Job,
+    mesh: FieldMesh,
+    fields: Fields,
+    name: str,
+    *,
+    limits: Limits | None,
+    directions: bool,
+) -> None:
+    """Fill the plate with a stress; mark its peak."""
+    quantity = STRESS_QUANTITIES[name]
+    nodal = quantity.of_stress(fields.stress)
+    scale = stress_scale(nodal, limits, _rounding(job, fields), quantity.signed)
+    heading = (quantity.heading, f"[{job.units.stress}]")
+    low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
+    view = _lay_out(page, scale, heading, low, high)
+    surface = _surface(mesh, view, np.column_stack((mesh.points, fields.stress)))
+    values = quantity.of_stress(surface.values[:, 2:])
+    _fill(page, view, surface, values, scale)
+    draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes)
+    if directions:
+        _draw_directions(page.canvas, mesh, view, fields, quantity)
+    peak = int(quantity.peak(nodal))
+    text = f"{show(nodal[peak])} {job.units.stress} at {_place(mesh, peak)} {job.units.length}"
+    mark_peak(page, view, mesh.points[peak], text)
+
+
+def stress_scale(nodal: Array, limits: Limits | None, rounding: float, signed: bool) -> Scale:
+    """The range of a legend: as given, else from the field; never a range of mere rounding."""
+    low, high = limits if limits is not None else (float(nodal.min()), float(nodal.max()))
+    if not signed:
+        low = 0.0 if limits is None else low
+    low, high = (0.0 if abs(v) <= rounding else v for v in (low, high))
+    if high - low <= rounding:
+        low, high = _widened(low, high)
+    return Scale.diverging(low, high) if signed else Scale.sequential(low, high)
+
+
+def _widened(low: float, high: float) -> Limits:
+    """A range around a uniform value: down (or up) to zero, or one unit where all is zero."""
+    if high > 0:
+        return 0.0, high
+    return (low, 0.0) if low < 0 else (0.0, 1.0)
+
+
+def _rounding(job: Job, fields: Fields) -> float:
+    modulus = max(m.youngs_modulus for m in job.materials.values())
+    largest = float(np.abs(fields.von_mises).max())
+    return max(ROUNDING_OF_MODULUS * modulus, ROUNDING_OF_STATE * largest)
+
+
+# --- layout and painting -----------------------------------------------------------------------
+
+
+def _lay_out(page: Page, scale: Scale, heading: tuple[str, ...], low: Array, high: Array) -> View:
+    """Draw the legend where it costs least room, and fit the plate into the rest."""
+    room = page.drawing
+    width, height = high - low
+    upright = width * room.height < 1.25 * height * room.width
+    size = legend_size(page.canvas, scale, heading, upright)
+    if upright:
+        middle, tall = (room.bottom + room.top) / 2, min(room.height - 20, 720)
+        box = Box(room.right - size, middle - tall / 2, room.right, middle + tall / 2)
+        view = View.fit(low, high, room.inset(AIR, CALLOUT, AIR + size + 30, CALLOUT))
+    else:
+        view = View.fit(low, high, room.inset(AIR, size + 10 + CALLOUT, AIR, CALLOUT))
+        wide = min(room.width - 120, 1100)
+        middle, below = (room.left + room.right) / 2, view.pixels(low)[1] - CALLOUT
+        bottom = max(room.bottom, below - size - 30)
+        box = Box(middle - wide / 2, bottom, middle + wide / 2, bottom + size)
+    draw_legend(page.canvas, box, scale, heading, upright)
+    return view
+
+
+def _surface(mesh: FieldMesh, view: View, nodal: Array) -> Surface:
+    elements = [block.element for block in mesh.mesh.blocks]
+    return tessellate(elements, mesh.connectivity, nodal, view.scale)
+
+
+def _fill(page: Page, view: View, surface: Surface, values: Array, scale: Scale) -> None:
+    """Paint the field onto the paper of the page, with an isoline at each tick of the legend."""
+    points = view.pixels(surface.values[:, :2])
+    painted = paint(
+        (WIDTH, HEIGHT),
+        points,
+        surface.triangles,
+        values,
+        colours=scale.colours,
+        limits=scale.reach,
+    )
+    sheet = Canvas(WIDTH, HEIGHT)
+    for level in scale.ticks:
+        for line in isolines(points, surface.triangles, values, level):
+            draw_isoline(sheet, line, level)
+    page.paper = over(painted, sheet.pixels())
+
+
+def mark_peak(page: Page, view: View, at: Array, text: str) -> None:
+    """A ring around the place and a label with its value."""
+    place = view.pixels(at)
+    page.canvas.disc(place, 11, fill=None, edge=PAPER, width=6.5)
+    page.canvas.disc(place, 11, fill=None, edge=INK, width=3)
+    Labels(page.canvas, page.drawing, page.paper).place(place, [text], bold=True)
+
+
+def _draw_directions(
+    canvas: Canvas, mesh: FieldMesh, view: View, fields: Fields, quantity: StressQuantity
+) -> None:
+    """Ticks along the principal direction in a thinned set of element centres."""
+    corners = [
+        points[:, : block.element.corners]
+        for block, points in zip(mesh.mesh.blocks, mesh.connectivity, strict=True)
+    ]
+    centres = view.pixels(np.concatenate([mesh.points[c].mean(axis=1) for c in corners]))
+    stress = np.concatenate([fields.stress[c].mean(axis=1) for c in corners])
+    cells = np.floor(centres / TICK_SPACING).astype(int)
+    _, chosen = np.unique(cells, axis=0, return_index=True)
+    xx, yy, xy = stress[chosen].T
+    angle = 0.5 * np.arctan2(2 * xy, xx - yy) + (np.pi / 2 if quantity.peak is np.argmin else 0.0)
+    half = 0.3 * TICK_SPACING * np.column_stack((np.cos(angle), np.sin(angle)))
+    canvas.line(np.stack((centres[chosen] - half, centres[chosen] + half), axis=1), INK, 2.0)
+
+
+# --- deformed shape ------------------------------------------------------------------------------
+
+
+def deformation_factor(mesh: FieldMesh, displacement: Array) -> float:
+    """A round factor that makes the displacements visible; 1 when nothing moves."""
+    largest = float(np.linalg.norm(displacement, axis=1).max())
+    if largest <= 1e-15 * mesh.mesh.diagonal:
+        return 1.0
+    return round_factor(DEFORMED_PART * mesh.mesh.diagonal / largest)
+
+
+def draw_deformed(page: Page, job: Job, mesh: FieldMesh, fields: Fields, factor: float) -> None:
+    """The deformed shape, filled by the size of the displacement, over the undeformed outline."""
+    size = np.linalg.norm(fields.displacement, axis=1)
+    largest = float(size.max())
+    scale = Scale.sequential(0.0, largest if largest > 0 else 1.0)
+    unit = job.units.length
+    moved = mesh.points + factor * fields.displacement
+    both = np.vstack((mesh.points, moved))
+    view = _lay_out(page, scale, ("Displacement", f"[{unit}]"), both.min(axis=0), both.max(axis=0))
+    surface = _surface(mesh, view, np.column_stack((moved, fields.displacement)))
+    _fill(page, view, surface, np.linalg.norm(surface.values[:, 2:], axis=1), scale)
+    positions = _by_node(mesh, moved)
+    sheet = Canvas(WIDTH, HEIGHT)
+    draw_mesh(sheet, mesh.mesh, view, positions)
+    page.paper = over(page.paper, sheet.pixels())
+    draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes, dashed=True)
+    draw_outline(page.canvas, mesh.mesh, view, positions)
+    peak = int(np.argmax(size))
+    text = f"{show(largest)} {unit}, point {_place(mesh, peak)} {unit}"
+    mark_peak(page, view, moved[peak], text)
+
+
+def _place(mesh: FieldMesh, point: int) -> str:
+    """A position to four digits; what is rounding against the size of the plate is zero."""
+    place = mesh.points[point]
+    x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)
+    return vector(x, y, digits=4)
+
+
+def _by_node(mesh: FieldMesh, values: Array) -> Array:
+    """Values of the field points at the mesh nodes; displacements are the same in each region."""
+    found = mesh.mesh.nodes.copy()
+    found[mesh.origin] = values
+    return found

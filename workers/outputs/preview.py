@@ -1,0 +1,75 @@
+"""Pictures of a job as PNG files, drawn off-screen.
+
+Each picture carries the job's title, the case and the review cautions, in the picture and as text
+in the file. A machine that cannot render off-screen raises PicturesUnavailableError with the
+reason; its jobs finish without pictures.
+"""
+
+from collections.abc import Sequence
+from pathlib import Path
+
+from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.fields import Fields
+from workers.cautions import Caution
+from workers.job import Job
+from workers.outputs.drawing.fields import (
+    STRESS_QUANTITIES,
+    deformation_factor,
+    draw_deformed,
+    draw_stress,
+)
+from workers.outputs.drawing.numbers import TIMES, show
+from workers.outputs.drawing.offscreen import probe, require
+from workers.outputs.drawing.page import Page
+
+__all__ = ["QUANTITIES", "probe", "render_deformed", "render_field"]
+
+QUANTITIES = ("model", "deformed", *STRESS_QUANTITIES)
+
+
+def render_field(
+    path: Path,
+    job: Job,
+    mesh: FieldMesh,
+    fields: Fields,
+    quantity: str,
+    *,
+    cautions: Sequence[Caution],
+    limits: tuple[float, float] | None = None,
+    directions: bool = False,
+) -> None:
+    """Draw "von_mises", "principal_max" or "principal_min" of a state as a filled field.
+
+    limits : the range of the legend [F/L^2], so that pictures of several states compare
+    directions : add ticks along the principal direction
+
+    Raises
+    ------
+    PicturesUnavailableError   this machine cannot render
+    KeyError                   no such quantity
+    OSError                    the file could not be written
+    """
+    heading = STRESS_QUANTITIES[quantity].heading
+    require()
+    page = Page(job.title, f"{fields.name} · {heading}", cautions)
+    draw_stress(page, job, mesh, fields, quantity, limits=limits, directions=directions)
+    page.save(path, _facts(fields.name, quantity, job.units.stress))
+
+
+def render_deformed(
+    path: Path, job: Job, mesh: FieldMesh, fields: Fields, *, cautions: Sequence[Caution]
+) -> None:
+    """Draw the deformed shape of a state over the undeformed outline, scale stated.
+
+    Raises PicturesUnavailableError and OSError as `render_field` does.
+    """
+    require()
+    factor = deformation_factor(mesh, fields.displacement)
+    subtitle = f"{fields.name} · Deformed shape, displacements drawn {TIMES} {show(factor, 1)}"
+    page = Page(job.title, subtitle, cautions)
+    draw_deformed(page, job, mesh, fields, factor)
+    page.save(path, _facts(fields.name, "deformed", job.units.length))
+
+
+def _facts(case: str, quantity: str, unit: str) -> dict[str, str]:
+    return {"Case": case, "Quantity": quantity, "Unit": unit, "Software": "Fishplate"}
