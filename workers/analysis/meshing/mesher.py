@@ -22,7 +22,8 @@ from netgen.meshing import MeshingParameters, NgException
 from numpy.typing import NDArray
 
 from elements.errors import FishplateError
-from workers.analysis.meshing.drawing import AnyEdge, ArcEdge, Drawing
+from workers.analysis.meshing.curves import Arc
+from workers.analysis.meshing.drawing import Drawing, Edge
 from workers.job import Vector
 
 Array = NDArray[np.float64]
@@ -147,8 +148,8 @@ def _lower_limit(kind: int, limit: int) -> None:
 class _Frame:
     """The library's coordinates: relative to the middle, over the diagonal, rounded."""
 
-    def __init__(self, edges: tuple[AnyEdge, ...]) -> None:
-        places = np.concatenate([edge.at(np.linspace(0.0, 1.0, 9)) for edge in edges])
+    def __init__(self, edges: tuple[Edge, ...]) -> None:
+        places = np.concatenate([edge.curve.at(np.linspace(0.0, 1.0, 9)) for edge in edges])
         low, high = places.min(axis=0), places.max(axis=0)
         self.middle = (low + high) / 2
         self.scale = float(np.linalg.norm(high - low))
@@ -186,8 +187,8 @@ def _geometry(drawing: Drawing, sizes: Sizes, frame: _Frame) -> tuple[SplineGeom
         size = min(sizes.edges[number], sizes.general) / frame.scale
         places = [edge.start, *_inner_ends(edge), edge.end]
         for start, end in itertools.pairwise(places):
-            if isinstance(edge, ArcEdge):
-                control = geometry.AppendPoint(*frame.inward(_control(edge, start, end)))
+            if isinstance(edge.curve, Arc):
+                control = geometry.AppendPoint(*frame.inward(_control(edge.curve, start, end)))
                 piece = ["spline3", vertex(start), control, vertex(end)]
             else:
                 piece = ["line", vertex(start), vertex(end)]
@@ -196,20 +197,19 @@ def _geometry(drawing: Drawing, sizes: Sizes, frame: _Frame) -> tuple[SplineGeom
     return geometry, owners
 
 
-def _inner_ends(edge: AnyEdge) -> list[Vector]:
+def _inner_ends(edge: Edge) -> list[Vector]:
     """Where an arc is divided so that no piece turns by more than a right angle."""
-    if not isinstance(edge, ArcEdge):
+    if not isinstance(edge.curve, Arc):
         return []
-    pieces = max(1, math.ceil(abs(edge.sweep) / WIDEST_PIECE - 1e-9))
-    return [(float(x), float(y)) for x, y in edge.at(np.arange(1, pieces) / pieces)]
+    pieces = max(1, math.ceil(abs(edge.curve.sweep) / WIDEST_PIECE - 1e-9))
+    return [(float(x), float(y)) for x, y in edge.curve.at(np.arange(1, pieces) / pieces)]
 
 
-def _control(edge: ArcEdge, start: Vector, end: Vector) -> Array:
+def _control(arc: Arc, start: Vector, end: Vector) -> Array:
     """Where the tangents at both ends meet: the middle control point of the rational spline."""
-    centre = np.asarray(edge.centre)
-    middle = (np.asarray(start) + np.asarray(end)) / 2 - centre
+    middle = (np.asarray(start) + np.asarray(end)) / 2 - arc.centre
     # radius / cos(half angle) along the bisector; cos(half angle) = |middle| / radius
-    return centre + middle * (edge.radius / float(np.linalg.norm(middle))) ** 2
+    return arc.centre + middle * (arc.radius / float(np.linalg.norm(middle))) ** 2
 
 
 def _read(made: object, owners: list[int], drawing: Drawing, frame: _Frame) -> RawMesh:
@@ -236,7 +236,7 @@ def _onto_edges(nodes: Array, segments: Indices, edge: Indices, drawing: Drawing
     nodes = nodes.copy()
     for number in np.unique(edge):
         own = np.unique(segments[edge == number])
-        nodes[own] = drawing.edges[number].project(nodes[own])
+        nodes[own] = drawing.edges[number].curve.project(nodes[own])
     ends = np.array([place for e in drawing.edges for place in (e.start, e.end)])
     lone = np.unique(ends, axis=0)
     on_edges = np.unique(segments)
