@@ -150,7 +150,10 @@ class Queue:
 
         When the answer is "done" the file is in the results folder, whole.
         """
-        return self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait)
+        answer = self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait)
+        if answer.state == "done" and not answer.value["ok"]:
+            return Answer("failed", reason=answer.value["reason"])
+        return answer
 
     def ask(self, function: str, *arguments: Any, wait: float = 0.0) -> Answer:
         """Have a worker call a function ahead of all jobs; wait that many seconds for its answer.

@@ -43,7 +43,7 @@ class Settings:
     store           folder of all jobs; shared by every machine that works on them
     redis_url       e.g. "redis://host:6379/0" or "unix:///path/redis.sock"; None: a private server
     workers         jobs worked on at a time on this machine
-    host, port      where the API listens
+    host, port      where the API listens; port 0 is any free one
     api_threads     requests that the API answers at a time
     body_bytes      largest job document [bytes]; "64MiB" is understood
     time_limit      longest run of one job [s]
@@ -141,7 +141,7 @@ _READERS: dict[str, Callable[[str], Any]] = {
     "redis_url": _redis_url,
     "workers": _whole(1, 1024),
     "host": str,
-    "port": _whole(1, 65535),
+    "port": _whole(0, 65535),
     "api_threads": _whole(2, 1024),
     "body_bytes": _size,
     "time_limit": _whole(1, 604_800),

@@ -1,0 +1,93 @@
+"""A real pool with real forking workers on a real Redis, for the tests of the service."""
+
+import json
+import os
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Callable, Iterator
+from contextlib import contextmanager
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+import psutil
+
+from workers.queue import Queue
+from workers.record import Record
+from workers.settings import Settings
+from workers.store import Store
+
+ROOT = Path(__file__).parent.parent
+PATIENCE = 30.0  # far beyond what anything here takes; only a failing test waits that long [s]
+
+
+def eventually(what: Callable[[], Any], patience: float = PATIENCE) -> Any:
+    """What the function gives as soon as that is true."""
+    until = time.monotonic() + patience
+    while not (found := what()):
+        assert time.monotonic() < until, "it did not happen"
+        time.sleep(0.02)
+    return found
+
+
+@dataclass
+class Service:
+    """A pool under test, with the client's side of its store and queue."""
+
+    settings: Settings
+    store: Store
+    queue: Queue
+    process: "subprocess.Popen[bytes]"
+
+    def submit(self, do: str, **order: Any) -> str:
+        job_id = accept(self.store, do, **order)
+        self.queue.submit(job_id)
+        return job_id
+
+    def ended(self, job_id: str) -> Record:
+        """The record of a job once it is final."""
+        return eventually(lambda: (r := self.store.record(job_id)).is_final and r)
+
+    def begun(self, job_id: str) -> None:
+        """Wait until the pipeline works on the job."""
+        eventually(lambda: attempts_in(self.store, job_id))
+
+    def workers(self) -> list[psutil.Process]:
+        children = psutil.Process(self.process.pid).children()
+        return [child for child in children if "redis-server" not in child.name()]
+
+    def horses(self) -> list[psutil.Process]:
+        return [horse for worker in self.workers() for horse in worker.children()]
+
+    def stop(self, number: signal.Signals = signal.SIGTERM) -> int:
+        self.process.send_signal(number)
+        return self.process.wait(timeout=PATIENCE)
+
+
+def accept(store: Store, do: str, **order: Any) -> str:
+    document = json.dumps({"do": do, **order}).encode()
+    return store.accept(document, title=do).record.id
+
+
+def attempts_in(store: Store, job_id: str) -> int:
+    """How often the stand-in pipeline was entered for a job."""
+    return len(list(store.jobs.path(job_id).glob("begun-*")))
+
+
+@contextmanager
+def running_pool(settings: Settings, module: str = "tests.standin_pipeline") -> Iterator[Service]:
+    process = subprocess.Popen(
+        [sys.executable, "-m", module],
+        cwd=ROOT,
+        env={**os.environ, **settings.as_environment()},
+        stderr=subprocess.PIPE if settings.redis_url is None else subprocess.DEVNULL,
+    )
+    queue = Queue(settings)
+    try:
+        yield Service(settings, queue.store, queue, process)
+    finally:
+        process.kill()  # its workers end with it
+        process.communicate()
+        queue.connection.close()
