@@ -126,19 +126,21 @@ class Mesh:
         facets[:, 1], facets[:, 2] = np.divmod(flat - self._facet_offsets[facets[:, 0]], sides)
         return facets
 
-    def _all_corners(self) -> tuple[NDArray[np.int32], NDArray[np.int32]]:
-        """Start and end node of every facet, by flat facet number."""
-        starts, ends = [], []
+    def flat_table(self) -> NDArray[np.int32]:
+        """Start, end and mid-side node (or -1) of every facet, by flat number, (F, 3)."""
+        tables = []
         for block in self.blocks:
             sides = block.element.sides
-            starts.append(block.connectivity[:, [side[0] for side in sides]].ravel())
-            ends.append(block.connectivity[:, [side[1] for side in sides]].ravel())
-        return np.concatenate(starts), np.concatenate(ends)
+            table = np.full((block.element_count, len(sides), 3), -1, np.int32)
+            for number, local in enumerate(sides):
+                table[:, number, : len(local)] = block.connectivity[:, list(local)]
+            tables.append(table.reshape(-1, 3))
+        return np.concatenate(tables)
 
     @cached_property
     def edges(self) -> Edges:
         """All element sides, gathered by edge; within an edge by flat facet number."""
-        start, end = self._all_corners()
+        start, end, _ = self.flat_table().T
         low, high = np.minimum(start, end), np.maximum(start, end)
         key = low.astype(np.int64) * self.node_count + high
         order = np.argsort(key)
@@ -162,6 +164,28 @@ class Mesh:
         edges = self.edges
         pairs = edges.first[:-1][edges.counts == 2]
         return self.facet_of(edges.facets[pairs]), self.facet_of(edges.facets[pairs + 1])
+
+    def find_facets(self, pairs: NDArray) -> Facets:
+        """The facet between two corner nodes each, (k, 3); block -1 where there is none.
+
+        Inside the mesh an edge has two facets: the one that runs from the first node to the
+        second is taken, with its element on the left.
+        """
+        pairs = np.asarray(pairs).reshape(-1, 2)
+        start, end, _ = self.flat_table().T
+        wanted = np.zeros(self.node_count, bool)
+        wanted[pairs] = True
+        near = np.flatnonzero(wanted[start] & wanted[end])
+        key = start[near].astype(np.int64) * self.node_count + end[near]
+        order = np.argsort(key, kind="stable")
+        near, key = near[order], key[order]
+        found = np.full((len(pairs), 3), -1, np.int32)
+        for one, other in ((1, 0), (0, 1)):
+            sought = pairs[:, one].astype(np.int64) * self.node_count + pairs[:, other]
+            place = np.minimum(np.searchsorted(key, sought), max(len(key) - 1, 0))
+            hit = key[place] == sought if len(key) else np.zeros(len(pairs), bool)
+            found[hit] = self.facet_of(near[place[hit]])
+        return found
 
     def facet_groups(self, facets: Facets) -> Iterator[FacetGroup]:
         """The facets, gathered by block and local side."""
