@@ -24,6 +24,7 @@ from numpy.typing import NDArray
 from elements.errors import FishplateError
 from workers.analysis.meshing.curves import Arc
 from workers.analysis.meshing.drawing import Drawing, Edge
+from workers.analysis.meshing.flat_mesh import FlatMesh
 from workers.job import Vector
 
 Array = NDArray[np.float64]
@@ -53,26 +54,7 @@ class Sizes(NamedTuple):
     points: Array
 
 
-class RawMesh(NamedTuple):
-    """What the library made, in the drawing's own coordinates.
-
-    nodes : (N, 2) [L]
-    triangles : (m, 3), quadrilaterals : (k, 4)     counter-clockwise
-    triangle_domain, quadrilateral_domain : (m,), (k,)   domains of the drawing, from 1
-    segments : (s, 2) node numbers on edges, from start to end of the edge
-    segment_edge : (s,) index into drawing.edges
-    """
-
-    nodes: Array
-    triangles: Indices
-    quadrilaterals: Indices
-    triangle_domain: Indices
-    quadrilateral_domain: Indices
-    segments: Indices
-    segment_edge: Indices
-
-
-def run_mesher(drawing: Drawing, sizes: Sizes, *, quads: bool, seconds: float) -> RawMesh:
+def run_mesher(drawing: Drawing, sizes: Sizes, *, quads: bool, seconds: float) -> FlatMesh:
     """Mesh a checked drawing with straight-sided elements, in a child process.
 
     quads : quadrilaterals with a few triangles instead of triangles alone.
@@ -100,11 +82,11 @@ def _receive(
     receiver: multiprocessing.connection.Connection,
     child: multiprocessing.process.BaseProcess,
     seconds: float,
-) -> RawMesh:
+) -> FlatMesh:
     if not receiver.poll(seconds):
         raise MesherFailedError(f"the mesher did not end within {seconds:g} s and was stopped")
     try:
-        outcome = receiver.recv()
+        outcome: FlatMesh | str = receiver.recv()
     except EOFError:
         child.join()
         raise MesherFailedError(
@@ -112,7 +94,7 @@ def _receive(
         ) from None
     if isinstance(outcome, str):
         raise MesherFailedError(outcome)
-    return RawMesh(*outcome)
+    return outcome
 
 
 def _child(
@@ -126,9 +108,9 @@ def _child(
     pages = int(Path("/proc/self/statm").read_text().split()[0])
     _lower_limit(resource.RLIMIT_AS, pages * resource.getpagesize() + MEMORY)
     _lower_limit(resource.RLIMIT_CPU, math.ceil(seconds) + 1)
-    outcome: tuple | str
+    outcome: FlatMesh | str
     try:
-        outcome = tuple(_mesh(drawing, sizes, quads))
+        outcome = _mesh(drawing, sizes, quads)
     except MemoryError:
         outcome = "the mesher ran out of memory"
     except NgException as error:
@@ -162,7 +144,7 @@ class _Frame:
         return places * self.scale + self.middle
 
 
-def _mesh(drawing: Drawing, sizes: Sizes, quads: bool) -> RawMesh:
+def _mesh(drawing: Drawing, sizes: Sizes, quads: bool) -> FlatMesh:
     frame = _Frame(drawing.edges)
     geometry, owners = _geometry(drawing, sizes, frame)
     parameters = MeshingParameters(maxh=sizes.general / frame.scale, grading=GRADING)
@@ -212,7 +194,7 @@ def _control(arc: Arc, start: Vector, end: Vector) -> Array:
     return arc.centre + middle * (arc.radius / float(np.linalg.norm(middle))) ** 2
 
 
-def _read(made: object, owners: list[int], drawing: Drawing, frame: _Frame) -> RawMesh:
+def _read(made: object, owners: list[int], drawing: Drawing, frame: _Frame) -> FlatMesh:
     nodes = frame.outward(np.array(made.Coordinates())[:, :2])  # type: ignore[attr-defined]
     cells = made.Elements2D().NumPy()  # type: ignore[attr-defined]
     lines = made.Elements1D().NumPy()  # type: ignore[attr-defined]
@@ -220,7 +202,7 @@ def _read(made: object, owners: list[int], drawing: Drawing, frame: _Frame) -> R
     triangle, quadrilateral = kind == TRIANGLE, kind == QUADRILATERAL
     edge = np.array(owners, np.int32)[np.array(lines["index"]) - 1]
     segments = np.array(lines["nodes"][:, :2] - 1, np.int32)
-    return RawMesh(
+    return FlatMesh(
         nodes=_onto_edges(nodes, segments, edge, drawing),
         triangles=np.array(numbers[triangle][:, :3], np.int32),
         quadrilaterals=np.array(numbers[quadrilateral][:, :4], np.int32),
