@@ -41,6 +41,11 @@ def inside(token: str | int | None) -> Iterator[None]:
         place.pop()
 
 
+def current_place() -> list[str | int]:
+    """The place itself, for those who keep it in a loop."""
+    return _READING.get().place
+
+
 def here() -> str:
     """JSON pointer of the place that is being read."""
     return pointer(*_READING.get().place)

@@ -13,7 +13,7 @@ from marshmallow import ValidationError, fields
 from marshmallow.exceptions import SCHEMA
 from marshmallow.types import ErrorMessages
 
-from workers.document.context import declared_units, inside
+from workers.document.context import current_place, declared_units, inside
 from workers.document.faults import seen
 from workers.document.units import Dimension, to_number
 
@@ -64,8 +64,7 @@ class Name(Plain, fields.Field[str]):
     """A name that can be used in file names and addresses."""
 
     def __init__(self, description: str, **options: Any) -> None:
-        schema = described(f"{description}: {NAME_RULE}", type="string", minLength=1,
-                           maxLength=LONGEST_NAME)  # fmt: skip
+        schema = described(description, type="string", minLength=1, maxLength=LONGEST_NAME)
         super().__init__(metadata=schema, **options)
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> str:
@@ -128,17 +127,18 @@ class Number(Plain, fields.Field[float]):
         return finite(value)
 
     def _within_limits(self, number: float, value: Any) -> float:
-        rules = (
-            ("above", self.above, lambda limit: number > limit),
-            ("at least", self.least, lambda limit: number >= limit),
-            ("below", self.below, lambda limit: number < limit),
-            ("at most", self.most, lambda limit: number <= limit),
-        )
-        broken = any(limit is not None and not holds(limit) for _, limit, holds in rules)
-        if broken:
-            limits = " and ".join(f"{word} {limit:g}" for word, limit, _ in rules
-                                  if limit is not None)  # fmt: skip
-            raise ValidationError(f"must be {limits}, not {seen(value)}")
+        if (
+            (self.above is not None and number <= self.above)
+            or (self.least is not None and number < self.least)
+            or (self.below is not None and number >= self.below)
+            or (self.most is not None and number > self.most)
+        ):
+            limits = {"above": self.above, "at least": self.least, "below": self.below,
+                      "at most": self.most}  # fmt: skip
+            allowed = " and ".join(
+                f"{w} {limit:g}" for w, limit in limits.items() if limit is not None
+            )
+            raise ValidationError(f"must be {allowed}, not {seen(value)}")
         return number
 
 
@@ -220,8 +220,7 @@ class MapOf(Plain, fields.Dict):
         self, inner: fields.Field, description: str, *, least: int = 0, most: int, **options: Any
     ) -> None:
         self.least, self.most = least, most
-        schema = described(f"{description}. Keys: {NAME_RULE}.", type="object",
-                           minProperties=least, maxProperties=most)  # fmt: skip
+        schema = described(description, type="object", minProperties=least, maxProperties=most)
         super().__init__(values=inner, metadata=schema, **options)
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
@@ -239,15 +238,17 @@ class MapOf(Plain, fields.Dict):
 
 def _each(inner: Any, entries: Any, attr: str | None, errors: Any = None) -> dict[Any, Any]:
     """Read the entries of a list or map, each in its place; all their errors together."""
-    errors, result = dict(errors or {}), {}
+    errors, result, place = dict(errors or {}), {}, current_place()
     with inside(attr):
         for key, value in entries:
-            with inside(key):
-                try:
-                    result[key] = inner.deserialize(value)
-                except ValidationError as error:
-                    messages = error.messages
-                    errors[key] = messages if isinstance(messages, dict) else {SCHEMA: messages}
+            place.append(key)
+            try:
+                result[key] = inner.deserialize(value)
+            except ValidationError as error:
+                messages = error.messages
+                errors[key] = messages if isinstance(messages, dict) else {SCHEMA: messages}
+            finally:
+                place.pop()
     if errors:
         raise ValidationError(errors)
     return result
@@ -260,6 +261,20 @@ class Vector(ListOf):
         text = "x or y component"
         inner = Quantity(*dimensions, description=text) if dimensions else Number(text)
         super().__init__(inner, description, least=2, most=2, **options)
+
+
+def json_schema(field: fields.Field) -> JsonSchema:
+    """The JSON Schema of a field, with that of its parts written out."""
+    if not isinstance(field, Part):
+        return dict(field.metadata)
+    inner = {f.data_key or name: f for name, f in field.schema.fields.items()}
+    return {
+        **field.metadata,
+        "type": "object",
+        "properties": {key: json_schema(f) for key, f in inner.items()},
+        "required": [key for key, f in inner.items() if f.required],
+        "additionalProperties": False,
+    }
 
 
 class Varying(Plain, fields.Field[tuple[Any, Any]]):
@@ -304,7 +319,9 @@ class Part(Plain, fields.Nested):
     """An object with a schema of its own."""
 
     def __init__(self, schema: Any, description: str, **options: Any) -> None:
-        super().__init__(schema, metadata=described(description), **options)
+        choices = [{"required": [key]} for key in schema.one_of]
+        rule = {"oneOf": choices} if choices else {}
+        super().__init__(schema, metadata=described(description, **rule), **options)
 
     def _deserialize(self, value: Any, attr: Any, data: Any, *args: Any, **kwargs: Any) -> Any:
         if not isinstance(value, Mapping):

@@ -24,6 +24,9 @@ MOST_MATERIALS = 10_000
 class JobSchema(Record):
     """One plate with all its load cases.
 
+    Names, here as keys and as values, are 1 to 80 letters (of any script), digits, spaces and
+    ._-+()#,= and do not start with a full stop or a space.
+
     `load` gives a `Job`, or ValidationError with every fault; `dump` gives the document again.
     """
 
@@ -70,7 +73,11 @@ def _units_of(document: Any) -> Units:
     """The declared units; where they are themselves at fault any will do, for nothing is built."""
     units = names.table(names.table(document).get("units"))
     length, force = units.get("length"), units.get("force")
-    if isinstance(length, str) and length in LENGTH_UNITS:
-        if isinstance(force, str) and force in FORCE_UNITS:
-            return Units(length, force)
+    if (
+        isinstance(length, str)
+        and isinstance(force, str)
+        and length in LENGTH_UNITS
+        and force in FORCE_UNITS
+    ):
+        return Units(length, force)
     return Units("m", "N")

@@ -10,6 +10,8 @@ from workers.job import Material, Plate, Units
 
 
 class UnitsSchema(Record):
+    """Consistent units: length and force are declared, everything else follows."""
+
     makes = Units
 
     length = Choice("Unit of every length", among=tuple(LENGTH_UNITS), required=True)

@@ -5,6 +5,7 @@ A new key is a line in a schema and a field of the same name in `workers/job.py`
 
 import dataclasses
 from collections.abc import Mapping
+from inspect import getdoc
 from typing import Any, ClassVar
 
 from marshmallow import (
@@ -33,6 +34,15 @@ class Record(Schema):
 
     class Meta:
         unknown = RAISE
+
+    def __init_subclass__(cls, **options: Any) -> None:
+        """The first line of the docstring is the title in the reference.
+
+        Not the description: where apispec finds one, it leaves out that the object is strict.
+        """
+        super().__init_subclass__(**options)
+        title = (getdoc(cls) or "").partition("\n")[0].removesuffix(".")
+        cls.Meta = type("Meta", (Record.Meta,), {"title": title})  # type: ignore[assignment,misc]
 
     def __init__(self, **options: Any) -> None:
         super().__init__(**options)
@@ -89,11 +99,6 @@ def defaults_of(made: Any) -> dict[str, Any]:
         elif field.default_factory is not dataclasses.MISSING:
             found[field.name] = field.default_factory()
     return found
-
-
-def exactly_one_of(*keys: str) -> dict[str, Any]:
-    """JSON Schema of the rule."""
-    return {"oneOf": [{"required": [key]} for key in keys]}
 
 
 def only_with(data: Mapping[str, Any], key: str, other: str) -> None:

@@ -67,6 +67,8 @@ class CutSchema(_FromTo):
 
 
 class RequestsSchema(Record):
+    """Places where results are wanted, each under a name."""
+
     makes = Requests
 
     probes = MapOf(
@@ -87,6 +89,8 @@ class RequestsSchema(Record):
 
 
 class LimitsSchema(Record):
+    """What the results are measured against."""
+
     makes = Limits
 
     displacement = Quantity(LENGTH, description="Largest displacement allowed", above=0)

@@ -7,8 +7,18 @@ from marshmallow import ValidationError, fields
 
 from workers.document.context import inside
 from workers.document.faults import seen
-from workers.document.fields import ListOf, Name, Part, Plain, Quantity, Vector, Whole, described
-from workers.document.record import Record, exactly_one_of
+from workers.document.fields import (
+    ListOf,
+    Name,
+    Part,
+    Plain,
+    Quantity,
+    Vector,
+    Whole,
+    described,
+    json_schema,
+)
+from workers.document.record import Record
 from workers.document.units import LENGTH
 from workers.job import Box, CircleShape, Named, Nodes, OnCircle, Segment, Target
 
@@ -16,6 +26,8 @@ MOST_NODES = 20_000_000
 
 
 class CircleSchema(Record):
+    """A full circle."""
+
     makes = CircleShape
 
     centre = Vector(LENGTH, description="Centre of the circle [x, y]", required=True)
@@ -83,16 +95,11 @@ class On(Plain, fields.Field[Target]):
 
     def __init__(self, description: str, **options: Any) -> None:
         self.name_field = Name("Name of a side, hole, region or point")
-        self.selector = SelectorSchema()
-        selector = {
-            "type": "object",
-            "description": "A selector: exactly one of segment, box, circle and nodes",
-            "properties": {name: f.metadata for name, f in self.selector.fields.items()},
-            "additionalProperties": False,
-            **exactly_one_of(*SelectorSchema.one_of),
-        }
-        metadata = described(description, anyOf=[self.name_field.metadata, selector])
-        super().__init__(metadata=metadata, **options)
+        self.selector = Part(
+            SelectorSchema, "A selector: exactly one of segment, box, circle, nodes"
+        )
+        ways = [json_schema(self.name_field), json_schema(self.selector)]
+        super().__init__(metadata=described(description, anyOf=ways), **options)
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Target:
         if isinstance(value, str):
@@ -103,10 +110,10 @@ class On(Plain, fields.Field[Target]):
                 f"{', '.join(SelectorSchema.one_of)}), not {seen(value)}"
             )
         with inside(attr):
-            target: Target = self.selector.load(value)
+            target: Target = self.selector.deserialize(value)
         return target
 
     def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
         if value is None or isinstance(value, Named):
             return value.name if value else None
-        return self.selector.dump(value)
+        return self.selector.schema.dump(value)

@@ -137,7 +137,7 @@ def to_number(text: str, dimensions: Sequence[Dimension], units: Units) -> float
     value = float(found[1])
     if math.isfinite(value):
         try:
-            value = float(Fraction(value) * factor / _scale(exponents, units))
+            value = float(Fraction(value) * (factor / _scale(exponents, units)))
         except OverflowError:
             value = math.inf
     if not math.isfinite(value):
