@@ -1,0 +1,176 @@
+"""Stress and displacement at given points: which element holds a point, and where in it."""
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.sparse import coo_array, csr_array
+from scipy.spatial import cKDTree
+
+from elements.contract import ElementType
+from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.mesh import Mesh
+from workers.errors import Fault, MeshError
+
+Array = NDArray[np.float64]
+
+CANDIDATES = 12  # nearest elements that are tried before a wider search
+INSIDE = 1e-9  # in natural coordinates
+# A point on a true arc lies outside the chords of T3 and Q4 (by 5 % of their length at 16 chords
+# to the circle). So near the border the nearest point of the plate is taken.
+BESIDE = 0.05  # of the element's size, the root of its area
+
+
+@dataclass(frozen=True, eq=False)
+class Located:
+    """Points found in elements.
+
+    block, element : (p,)    the lowest, where elements share the point
+    natural : (p, 2)         natural coordinates
+    position : (p, 2)        [L]; the points asked for, or the nearest on the border (`BESIDE`)
+    """
+
+    block: NDArray[np.int64]
+    element: NDArray[np.int64]
+    natural: Array
+    position: Array
+
+
+def locate(mesh: Mesh, points: Array, pointers: Sequence[str]) -> Located:
+    """Find the elements that hold points (p, 2) [L].
+
+    Raises
+    ------
+    MeshError   points outside the plate, each with its pointer (one for each point).
+    """
+    tree, owner = _centres(mesh)
+    found = Located(
+        np.full(len(points), -1), np.full(len(points), -1),
+        np.zeros((len(points), 2)), np.array(points, float),
+    )  # fmt: skip
+    if not len(points):
+        return found
+    _, near = tree.query(points, k=min(CANDIDATES, len(owner)))
+    near = near.reshape(len(points), -1)
+    _try(mesh, found, np.repeat(np.arange(len(points)), near.shape[1]), owner[near.ravel()])
+    for lost in np.flatnonzero(found.block < 0).tolist():
+        boxed = _boxed(mesh, points[lost])
+        _try(mesh, found, np.full(len(boxed), lost), boxed)
+        if found.block[lost] < 0:
+            _snap(mesh, found, lost, np.concatenate((owner[near[lost]], boxed)))
+    faults = [
+        _outside(tree, points[lost], pointers[lost])
+        for lost in np.flatnonzero(found.block < 0).tolist()
+    ]
+    if faults:
+        raise MeshError(faults)
+    return found
+
+
+def interpolation(field_mesh: FieldMesh, located: Located) -> csr_array:
+    """(p, P) operator from values at the field points to values at the located points."""
+    rows, columns, values = [], [], []
+    for number, block in enumerate(field_mesh.mesh.blocks):
+        here = np.flatnonzero(located.block == number)
+        columns.append(field_mesh.connectivity[number][located.element[here]].ravel())
+        values.append(block.element.shape_functions(located.natural[here]).ravel())
+        rows.append(np.repeat(here, block.element.node_count))
+    entries = np.concatenate(values), (np.concatenate(rows), np.concatenate(columns))
+    return coo_array(entries, shape=(len(located.block), field_mesh.point_count)).tocsr()
+
+
+def _centres(mesh: Mesh) -> tuple[cKDTree, NDArray[np.int64]]:
+    """Search tree of the elements' centres, and (block, element) of each, (M, 2)."""
+    centres, owners = [], []
+    for number, block in enumerate(mesh.blocks):
+        corners = block.connectivity[:, : block.element.corners]
+        centres.append(mesh.nodes[corners].mean(axis=1))
+        count = block.element_count
+        owners.append(np.column_stack((np.full(count, number), np.arange(count))))
+    return cKDTree(np.concatenate(centres)), np.concatenate(owners)
+
+
+def _boxed(mesh: Mesh, point: Array) -> NDArray[np.int64]:
+    """(block, element) of all elements whose upright box, a little enlarged, holds a point."""
+    found = []
+    for number in range(len(mesh.blocks)):
+        coords = mesh.coords(number)
+        low, high = coords.min(axis=1), coords.max(axis=1)
+        margin = 0.2 * (high - low).max(axis=1, keepdims=True)  # for sides that bulge
+        holds = ((low - margin <= point) & (point <= high + margin)).all(axis=1)
+        elements = np.flatnonzero(holds)
+        found.append(np.column_stack((np.full(len(elements), number), elements)))
+    return np.concatenate(found)
+
+
+def _try(mesh: Mesh, found: Located, point: NDArray, owner: NDArray[np.int64]) -> None:
+    """Enter in `found` the lowest of the candidates (c,) that holds each point."""
+    for number, element, mine, natural in _mapped(mesh, found.position[point], owner):
+        hit = element.inside(natural, INSIDE)
+        rows = point[mine[hit]]
+        # Candidates come in descending order, and of repeated rows the last entry stays.
+        found.block[rows], found.element[rows] = number, owner[mine[hit], 1]
+        found.natural[rows] = natural[hit]
+
+
+def _snap(mesh: Mesh, found: Located, lost: int, owner: NDArray[np.int64]) -> None:
+    """Enter the nearest point of the candidates (c,), if it is no further than BESIDE."""
+    at = np.tile(found.position[lost], (len(owner), 1))
+    best = np.inf
+    for number, element, mine, beyond in _mapped(mesh, at, owner):
+        natural = _clamp(beyond, triangle=element.is_triangle)
+        coords = mesh.nodes[mesh.blocks[number].connectivity[owner[mine, 1]]]
+        nearest = np.einsum("cn,cni->ci", element.shape_functions(natural), coords)
+        corners = coords[:, : element.corners]
+        size = np.sqrt(np.abs(_shoelace(corners)))
+        off = np.linalg.norm(nearest - found.position[lost], axis=1) / size
+        row = int(off.argmin()) if len(off) else 0
+        if len(off) and off[row] < min(best, BESIDE):
+            best = off[row]
+            found.block[lost], found.element[lost] = number, owner[mine[row], 1]
+            found.natural[lost], moved = natural[row], nearest[row]
+    if best <= BESIDE:
+        found.position[lost] = moved
+
+
+def _mapped(
+    mesh: Mesh, points: Array, owner: NDArray[np.int64]
+) -> Iterator[tuple[int, ElementType, NDArray[np.intp], Array]]:
+    """Natural coordinates of points (c, 2) in candidates (c, 2), block by block.
+
+    Yields block, element type, rows of the candidates that have a solution, and the coordinates;
+    blocks and elements in descending order.
+    """
+    for number in reversed(range(len(mesh.blocks))):
+        block = mesh.blocks[number]
+        mine = np.flatnonzero(owner[:, 0] == number)
+        mine = mine[np.argsort(-owner[mine, 1], kind="stable")]
+        coords = mesh.nodes[block.connectivity[owner[mine, 1]]]
+        natural, converged = block.element.natural_coordinates(coords, points[mine])
+        yield number, block.element, mine[converged], natural[converged]
+
+
+def _clamp(natural: Array, *, triangle: bool) -> Array:
+    """The natural points (m, 2) drawn back into the reference shape."""
+    if not triangle:
+        return np.clip(natural, -1.0, 1.0)
+    r, s = natural.T
+    barycentric = np.maximum(np.column_stack((1 - r - s, r, s)), 0.0)
+    return (barycentric / barycentric.sum(axis=1, keepdims=True))[:, 1:]
+
+
+def _shoelace(corners: Array) -> Array:
+    """Area of polygons, (m, c, 2) -> (m,) [L^2]."""
+    x, y = corners[..., 0], corners[..., 1]
+    following = np.roll(x, -1, axis=1), np.roll(y, -1, axis=1)
+    return (x * following[1] - following[0] * y).sum(axis=1) / 2
+
+
+def _outside(tree: cKDTree, point: Array, pointer: str) -> Fault:
+    near = tree.data[tree.query(point)[1]]
+    message = (
+        f"({point[0]:g}, {point[1]:g}) is outside the plate; the nearest element has its centre "
+        f"at ({near[0]:g}, {near[1]:g})"
+    )
+    return Fault(pointer, message)

@@ -1,0 +1,106 @@
+"""Reactions of the supports, and whether loads and reactions balance.
+
+Moments are counter-clockwise positive. Everything is linear in the loads, so these are figures of
+the c load cases; `combine.superpose` makes those of the combinations.
+"""
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.mesh import Mesh
+from workers.analysis.solution import Solution
+
+Array = NDArray[np.float64]
+
+
+@dataclass(frozen=True, eq=False)
+class Reaction:
+    """What a support does to the plate.
+
+    about (2,) : centroid of its nodes [L]; resultant (3, c) : force x, y [F] and moment about
+    there [F L].
+    """
+
+    label: str
+    about: Array
+    resultant: Array
+
+
+@dataclass(frozen=True, eq=False)
+class Equilibrium:
+    """Loads against reactions, about the centroid of the plate's area.
+
+    about (2,) [L]
+    applied, reaction (3, c) : force x, y [F] and moment [F L]
+    size (2, c) : sums of the sizes of all nodal forces [F] and of force times arm [F L]
+    """
+
+    about: Array
+    applied: Array
+    reaction: Array
+    size: Array
+
+
+def reactions(solution: Solution) -> tuple[Reaction, ...]:
+    """Resultant of each support, springs included."""
+    nodes = solution.model.mesh.nodes
+    found = []
+    for support in solution.support_forces:
+        at = nodes[support.nodes]
+        about = at.mean(axis=0)
+        found.append(Reaction(support.label, about, resultant(at, support.force, about)))
+    return tuple(found)
+
+
+def equilibrium(solution: Solution) -> Equilibrium:
+    """Resultants of all loads and of all reactions.
+
+    Temperature changes have no resultant and do not appear.
+    """
+    mesh = solution.model.mesh
+    about = centroid(mesh)
+    parts = [(mesh.nodes[s.nodes], s.force) for s in solution.support_forces]
+    reaction = np.zeros((3, len(solution.cases)))
+    size = _size(mesh.nodes - about, solution.applied)
+    for at, force in parts:
+        reaction += resultant(at, force, about)
+        size += _size(at - about, force)
+    return Equilibrium(about, resultant(mesh.nodes, solution.applied, about), reaction, size)
+
+
+def imbalance(applied: Array, reaction: Array, size: Array) -> Array:
+    """What is left of loads plus reactions, relative, (3, k), (3, k), (2, k) -> (k,).
+
+    The largest of force x, force y and moment, each over the sizes of what was summed; zero where
+    nothing acts.
+    """
+    left = np.abs(applied + reaction)
+    scale = size[[0, 0, 1]]
+    return np.divide(left, scale, out=np.zeros_like(left), where=scale > 0).max(axis=0)
+
+
+def resultant(points: Array, force: Array, about: Array) -> Array:
+    """Force and moment of nodal forces, (k, 2) and (k, 2, c) -> (3, c)."""
+    arm = points - about
+    moment = arm[:, 0] @ force[:, 1] - arm[:, 1] @ force[:, 0]
+    return np.vstack((force.sum(axis=0), moment))
+
+
+def centroid(mesh: Mesh) -> Array:
+    """Centroid of the area of all elements, (2,) [L]."""
+    area, moment = 0.0, np.zeros(2)
+    for number, block in enumerate(mesh.blocks):
+        points, weights = block.element.load_rule()
+        coords = mesh.coords(number)
+        _, det_J = block.element.jacobian(coords, points)
+        position = np.matmul(block.element.shape_functions(points), coords)
+        area += float((det_J @ weights).sum())
+        moment += np.einsum("mq,q,mqi->i", det_J, weights, position)
+    return moment / area
+
+
+def _size(arm: Array, force: Array) -> Array:
+    size = np.linalg.norm(force, axis=1)
+    return np.vstack((size.sum(axis=0), np.linalg.norm(arm, axis=1) @ size))
