@@ -3,7 +3,7 @@
 The job document itself is described in `workers/document/`, the results in `result_schemas.py`.
 """
 
-from marshmallow import EXCLUDE, INCLUDE, RAISE, Schema, fields, validate
+from marshmallow import INCLUDE, RAISE, Schema, ValidationError, fields, validate
 
 from workers.cautions import SEVERITIES
 from workers.record import STATES, is_id
@@ -11,6 +11,11 @@ from workers.record import STATES, is_id
 
 def text(description: str, **options: object) -> fields.String:
     return fields.String(metadata={"description": description}, **options)  # type: ignore[arg-type]
+
+
+def job_id(value: str) -> None:
+    if not is_id(value):
+        raise ValidationError("Not the id of a job.")
 
 
 class Answer(Schema):
@@ -130,7 +135,7 @@ class JobQuerySchema(Schema):
         validate=validate.OneOf(STATES), metadata={"description": "Only jobs in this state"}
     )
     label = text("Only jobs with this label")
-    after = text("Continue after this job id (from `next` of the page before)", validate=is_id)
+    after = text("Continue after this job id (from `next` of the page before)", validate=job_id)
     limit = fields.Integer(
         load_default=50,
         validate=validate.Range(1, 200),
@@ -165,9 +170,6 @@ class ElementsSchema(CautiousAnswer):
 
 
 class RuleSchema(Answer):
-    class Meta:
-        unknown = EXCLUDE
-
     code = text("`code` of the cautions that this rule raises", required=True)
     severity = text("How grave they are", required=True)
     title = text("In a few words", required=True)

@@ -20,7 +20,7 @@ def strip(
     return {
         "title": "Slipway tie strip",
         "units": {"length": "mm", "force": "N"},
-        "materials": {"steel": STEEL},
+        "materials": {"steel": dict(STEEL)},
         "geometry": {
             "patches": [
                 {

@@ -2,6 +2,8 @@
 
 from typing import Any
 
+from workers.cautions import STANDING
+
 CAUTION = {
     "code": "a-rule",
     "severity": "check",
@@ -10,9 +12,9 @@ CAUTION = {
     "action": "Look at it.",
 }
 PEAK = {"value": 100.0, "at": [50.0, 20.0], "error": 0.5, "region": "plate"}
+QUANTITIES = ("von_mises", "principal_max", "principal_min", "shear_max", "displacement")
 STATE = {
-    **{q: PEAK for q in ("von_mises", "principal_max", "principal_min", "shear_max",
-                         "displacement")},
+    **dict.fromkeys(QUANTITIES, PEAK),
     "reactions": {"left": {"force": [-32000.0, 0.0], "moment": 0.0, "about": [0.0, 20.0]}},
     "equilibrium": {"applied": [32000.0, 0.0, 0.0], "reaction": [-32000.0, 0.0, 0.0],
                     "residual": 1e-15, "about": [50.0, 20.0]},
@@ -30,7 +32,7 @@ RESULTS: dict[str, Any] = {
     "lines": {},
     "cuts": {},
     "convergence": None,
-    "cautions": [CAUTION],
+    "cautions": [CAUTION, *(caution.as_json() for caution in STANDING)],
     "files": {"fields": {"pull": "fields/pull.vtu"}, "previews": {"pull": {}}},
     "pictures": {"available": True},
 }  # fmt: skip
