@@ -7,7 +7,8 @@ from collections.abc import Iterator, Mapping
 from typing import Any
 
 from workers.document.faults import pointer, seen
-from workers.document.names import KINDS_OF_GEOMETRY, loads_of, rows, table
+from workers.document.inventory import KINDS_OF_GEOMETRY
+from workers.document.raw import loads_of, rows, table
 from workers.document.supports import PRESCRIBED
 from workers.errors import Fault
 

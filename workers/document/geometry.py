@@ -5,7 +5,8 @@ from typing import Any
 
 from marshmallow import ValidationError, validates_schema
 
-from workers.document.fields import ListOf, MapOf, Name, Number, Part, Quantity, Vector, Whole
+from workers.document.containers import ListOf, MapOf, Part, Vector
+from workers.document.fields import Name, Number, Quantity, Whole
 from workers.document.mesh import MeshSchema
 from workers.document.record import Record, only_with
 from workers.document.targets import CircleSchema
@@ -21,8 +22,6 @@ from workers.job import (
     Region,
     Vertex,
 )
-
-WHOLE_PLATE = "plate"  # name of what no region covers; no part may take it
 
 MOST_VERTICES = 20_000
 MOST_PARTS = 20_000  # holes, regions, patches, points: each

@@ -6,12 +6,14 @@ from typing import Any
 from marshmallow import ValidationError, validates_schema
 
 from workers.document import consistency, names
+from workers.document.containers import MapOf, Part
 from workers.document.context import reading
 from workers.document.faults import nest
-from workers.document.fields import MapOf, Part, Text
+from workers.document.fields import Text
 from workers.document.geometry import GeometrySchema
 from workers.document.loads import Combinations, LoadCases
 from workers.document.materials import MaterialSchema, PlateSchema, UnitsSchema
+from workers.document.raw import table
 from workers.document.record import Record
 from workers.document.requests import LimitsSchema, MeshingSchema, RequestsSchema
 from workers.document.supports import SupportList
@@ -71,7 +73,7 @@ class JobSchema(Record):
 
 def _units_of(document: Any) -> Units:
     """The declared units; where they are themselves at fault any will do, for nothing is built."""
-    units = names.table(names.table(document).get("units"))
+    units = table(table(document).get("units"))
     length, force = units.get("length"), units.get("force")
     if (
         isinstance(length, str)

@@ -9,9 +9,10 @@ from typing import Any, Literal, NamedTuple
 
 from marshmallow import ValidationError, validates_schema
 
+from workers.document.containers import ListOf, MapOf, Part, Varying, Vector
 from workers.document.context import here, inside
 from workers.document.faults import pointer
-from workers.document.fields import ListOf, MapOf, Number, Part, Quantity, Varying, Vector
+from workers.document.fields import Number, Quantity
 from workers.document.record import Record
 from workers.document.targets import On
 from workers.document.units import (

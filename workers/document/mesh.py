@@ -1,161 +1,28 @@
-"""The client's own mesh: long arrays, checked and converted as a whole.
+"""The client's own mesh: nodes and elements, as they are to be used."""
 
-Only when the whole is wrong is it searched for the entries that are.
-"""
-
-from collections.abc import Iterator, Mapping
-from itertools import chain, islice
+from collections.abc import Mapping
 from typing import Any
 
-import numpy as np
-from marshmallow import ValidationError, fields, validates_schema
-from marshmallow.exceptions import SCHEMA
-from numpy.typing import NDArray
+from marshmallow import ValidationError, validates_schema
 
-from elements.errors import ElementError
-from elements.registry import get
-from workers.document.faults import seen
-from workers.document.fields import ListOf, MapOf, Name, Part, Plain, Whole, described, finite
+from workers.document.arrays import (
+    Connectivity,
+    Edges,
+    ElementName,
+    Nodes,
+    beyond,
+    beyond_rows,
+    first_of,
+    no_node,
+)
+from workers.document.containers import ListOf, MapOf, Part
+from workers.document.fields import Name, Whole
 from workers.document.record import Record
 from workers.document.targets import MOST_NODES
 from workers.job import MeshBlock
 
-MOST_ELEMENTS = 20_000_000
 MOST_BLOCKS = 10_000
 MOST_NAMES = 20_000
-REPORTED = 20  # bad entries of one array
-
-Errors = dict[Any, Any]
-
-
-class ElementName(Plain, fields.Field[str]):
-    """An installed element type."""
-
-    def __init__(self, description: str, **options: Any) -> None:
-        metadata = described(description, type="string", examples=["Q8", "Q4", "T6", "T3"])
-        super().__init__(metadata=metadata, **options)
-
-    def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> str:
-        if not isinstance(value, str):
-            raise ValidationError(f"must be the name of an element type, not {seen(value)}")
-        try:
-            get(value)
-        except ElementError as error:
-            raise ValidationError(str(error)) from None
-        return value
-
-
-class Rows(Plain, fields.Field[Any]):
-    """A list of rows of plain numbers, as one array or as tuples."""
-
-    def __init__(
-        self, description: str, *, whole: bool, widths: tuple[int, ...], most: int, **options: Any
-    ) -> None:
-        self.whole, self.widths, self.most = whole, widths, most
-        number = {"type": "integer", "minimum": 0} if whole else {"type": "number"}
-        row = {"type": "array", "items": number, "minItems": widths[0], "maxItems": widths[-1]}
-        metadata = described(description, type="array", items=row, minItems=1, maxItems=most)
-        super().__init__(metadata=metadata, **options)
-
-    def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
-        if not isinstance(value, list | tuple):
-            raise ValidationError(f"must be a list, not {seen(value)}")
-        if not 1 <= len(value) <= self.most:
-            raise ValidationError(f"must have 1 to {self.most} entries, not {len(value)}")
-        flat = self._flat(value)
-        if flat is None:
-            raise ValidationError(_first(self._search(value)))
-        return self._shaped(flat, value)
-
-    def _shaped(self, flat: NDArray[Any], rows: Any) -> Any:
-        return flat.reshape(len(rows), -1)
-
-    def _flat(self, rows: Any) -> NDArray[Any] | None:
-        """All numbers in one go; None when any of them is not what it should be."""
-        kinds = {int} if self.whole else {int, float}
-        if not set(map(type, rows)) <= {list, tuple} or not set(map(len, rows)) <= {*self.widths}:
-            return None
-        if not set(map(type, chain.from_iterable(rows))) <= kinds:
-            return None
-        count = sum(map(len, rows)) if len(self.widths) > 1 else len(rows) * len(rows[0])
-        try:
-            flat = np.fromiter(
-                chain.from_iterable(rows), np.int64 if self.whole else np.float64, count
-            )
-        except OverflowError:
-            return None
-        if self.whole:
-            good = flat.min() >= 0 and flat.max() < MOST_NODES
-            return flat.astype(np.int32) if good else None
-        return flat if np.isfinite(flat).all() else None
-
-    def _search(self, rows: Any) -> Iterator[tuple[int, Any]]:
-        """Bad rows with their errors."""
-        allowed = " or ".join(map(str, self.widths))
-        for i, row in enumerate(rows):
-            if not isinstance(row, list | tuple):
-                yield i, {SCHEMA: [f"must be a list of {allowed} numbers, not {seen(row)}"]}
-            elif len(row) not in self.widths:
-                yield i, {SCHEMA: [f"must have {allowed} numbers, not {len(row)}"]}
-            else:
-                errors = {j: [text] for j, entry in enumerate(row) if (text := self._fault(entry))}
-                if errors:
-                    yield i, errors
-
-    def _fault(self, value: Any) -> str | None:
-        if not self.whole:
-            try:
-                finite(value, "a plain number, in the job's length unit")
-            except ValidationError as error:
-                return str(error.messages[0])
-            return None
-        if isinstance(value, bool) or not isinstance(value, int):
-            return f"must be a node number, not {seen(value)}"
-        if not 0 <= value < MOST_NODES:
-            return f"must be a node number from 0 to {MOST_NODES - 1}, not {seen(value)}"
-        return None
-
-
-class Connectivity(Rows):
-    """Node numbers of each element; the width is that of the first row."""
-
-    def __init__(self, description: str, **options: Any) -> None:
-        super().__init__(description, whole=True, widths=(1, 64), most=MOST_ELEMENTS, **options)
-
-    def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
-        try:
-            self.widths = (get(data["element"]).node_count,)
-        except (ElementError, KeyError, TypeError):
-            # The type itself is at fault, and said to be; any even width will do.
-            first = value[0] if isinstance(value, list | tuple) and value else None
-            self.widths = (len(first) if isinstance(first, list | tuple) else 3,)
-        return super()._deserialize(value, attr, data, **kwargs)
-
-    def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
-        return value.tolist()
-
-
-class Nodes(Rows):
-    """Positions of the nodes."""
-
-    def __init__(self, description: str, **options: Any) -> None:
-        super().__init__(description, whole=False, widths=(2,), most=MOST_NODES, **options)
-
-    def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
-        return value.tolist()
-
-
-class Edges(Rows):
-    """Element edges along a side, as tuples because they may differ in length."""
-
-    def __init__(self, description: str, **options: Any) -> None:
-        super().__init__(description, whole=True, widths=(2, 3), most=MOST_NODES, **options)
-
-    def _shaped(self, flat: NDArray[Any], rows: Any) -> Any:
-        return tuple(tuple(row) for row in rows)
-
-    def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
-        return [list(row) for row in value]
 
 
 class BlockSchema(Record):
@@ -210,39 +77,11 @@ class MeshSchema(Record):
             return
         count = len(data["nodes"])
         blocks = {i: {"connectivity": found} for i, block in enumerate(data.get("blocks", ()))
-                  if (found := _beyond(block.connectivity, count))}  # fmt: skip
+                  if (found := beyond(block.connectivity, count))}  # fmt: skip
         sides = {name: found for name, edges in data.get("sides", {}).items()
-                 if (found := _first(_beyond_rows(edges, count)))}  # fmt: skip
-        points = {name: [_no_node(n, count)] for name, n in data.get("points", {}).items()
+                 if (found := first_of(beyond_rows(edges, count)))}  # fmt: skip
+        points = {name: [no_node(n, count)] for name, n in data.get("points", {}).items()
                   if n >= count}  # fmt: skip
         errors = {"blocks": blocks, "sides": sides, "points": points}
         if any(errors.values()):
             raise ValidationError({key: found for key, found in errors.items() if found})
-
-
-def _beyond(connectivity: NDArray[np.int32], count: int) -> Errors:
-    """Node numbers of which there is no node."""
-    if connectivity.max() < count:
-        return {}
-    rows = np.unique(np.nonzero(connectivity >= count)[0])[: REPORTED + 1].tolist()
-    found = _beyond_rows([connectivity[i].tolist() for i in rows], count)
-    return _first((rows[k], error) for k, error in found)
-
-
-def _beyond_rows(rows: Any, count: int) -> Iterator[tuple[int, Errors]]:
-    for i, row in enumerate(rows):
-        if max(row) >= count:
-            yield i, {j: [_no_node(n, count)] for j, n in enumerate(row) if n >= count}
-
-
-def _no_node(number: int, count: int) -> str:
-    return f"there is no node {number}; the {count} nodes are numbered from 0 to {count - 1}"
-
-
-def _first(found: Iterator[tuple[int, Any]]) -> Errors:
-    """The first bad rows; one more message when there are others."""
-    rows = list(islice(found, REPORTED + 1))
-    errors: Errors = dict(rows[:REPORTED])
-    if len(rows) > REPORTED:
-        errors[SCHEMA] = [f"more entries are wrong than these {REPORTED}"]
-    return errors

@@ -1,17 +1,15 @@
 """Names in a document: each is given once, and whatever refers to one finds it.
 
-Works on the document as it was written, so that these faults are found beside those of form. What
-is not of the right form is passed over here: the schemas report it.
+Works on the document as it was written, so that these faults are found beside those of form.
 """
 
-from collections import defaultdict
 from collections.abc import Iterator, Mapping
-from dataclasses import dataclass, field
 from typing import Any
 
 from workers.document.faults import pointer, seen, unknown
-from workers.document.geometry import WHOLE_PLATE
+from workers.document.inventory import Inventory, take_inventory
 from workers.document.loads import KINDS
+from workers.document.raw import loads_of, rows, table
 from workers.document.units import POINT_SPRING, SIDE_SPRING, exponents_of
 from workers.errors import Fault
 
@@ -19,7 +17,6 @@ INSTEAD = {
     "point": "; total_force spreads a force over a side",
     "area": "; without on it acts on the whole plate",
 }
-KINDS_OF_GEOMETRY = ("outline", "patches", "mesh")
 
 
 def faults(document: Mapping[str, Any]) -> Iterator[Fault]:
@@ -33,124 +30,6 @@ def faults(document: Mapping[str, Any]) -> Iterator[Fault]:
         yield from _sizes(document, inventory)
         yield from _supports(document, inventory)
         yield from _loads(document, inventory)
-
-
-# --- reading what may have any form ------------------------------------------------------------
-
-
-def table(value: Any) -> Mapping[str, Any]:
-    """An object, empty where there is none."""
-    return value if isinstance(value, Mapping) else {}
-
-
-def rows(value: Any) -> Iterator[tuple[int, Mapping[str, Any]]]:
-    """The objects in a list, with their positions."""
-    for i, item in enumerate(value if isinstance(value, list | tuple) else ()):
-        if isinstance(item, Mapping):
-            yield i, item
-
-
-def loads_of(document: Mapping[str, Any]) -> Iterator[tuple[str, str, Mapping[str, Any]]]:
-    """Every load: its place, its key and itself."""
-    for case, loads in table(document.get("load_cases")).items():
-        for i, load in rows(loads):
-            key = next((k for k in KINDS if k in load), None)
-            if key is not None:
-                yield pointer("load_cases", case, i), key, load
-
-
-# --- what the geometry names -------------------------------------------------------------------
-
-
-@dataclass
-class Inventory:
-    """Names of the geometry by what they name."""
-
-    kind: str | None
-    sides: set[str] = field(default_factory=set)
-    holes: set[str] = field(default_factory=set)
-    regions: set[str] = field(default_factory=set)
-    points: set[str] = field(default_factory=set)
-    faults: list[Fault] = field(default_factory=list)
-
-    @property
-    def all(self) -> set[str]:
-        return self.sides | self.holes | self.regions | self.points
-
-    def what(self, name: str) -> str:
-        """side, hole, region or point."""
-        named = {"side": self.sides, "hole": self.holes, "region": self.regions}
-        return next((what for what, names in named.items() if name in names), "point")
-
-
-def take_inventory(geometry: Mapping[str, Any]) -> Inventory:
-    """Names of all sides, holes, regions and points; faults where one is given twice."""
-    kinds = [kind for kind in KINDS_OF_GEOMETRY if kind in geometry]
-    found = Inventory(kinds[0] if len(kinds) == 1 else None)
-    given: dict[str, str] = {}  # what each name was first given to
-    for what, name, place in _given(geometry):
-        first = given.get(name)
-        given.setdefault(name, what)
-        if name == WHOLE_PLATE:
-            text = f'"{WHOLE_PLATE}" is what no region covers; choose another name for this {what}'
-        elif first is not None and not first == what == "side":
-            text = f"{seen(name)} is already the name of a {first}; each name stands for one thing"
-        else:
-            text = ""
-        if text:
-            found.faults.append(Fault(place, text))
-        getattr(found, f"{what}s").add(name)
-    found.faults += _doubles("patch", geometry.get("patches"), pointer("geometry", "patches"))
-    return found
-
-
-def _given(geometry: Mapping[str, Any]) -> Iterator[tuple[str, str, str]]:
-    """What is named, its name, and where."""
-    for what, name, place in _given_anything(geometry):
-        if isinstance(name, str):
-            yield what, name, pointer("geometry", *place)
-
-
-def _given_anything(
-    geometry: Mapping[str, Any],
-) -> Iterator[tuple[str, Any, tuple[str | int, ...]]]:
-    yield from _loop_sides(geometry.get("outline"), ("outline",))
-    for key, what in (("holes", "hole"), ("regions", "region")):
-        for i, part in rows(geometry.get(key)):
-            yield what, part.get("name"), (key, i, "name")
-            yield from _loop_sides(part.get("outline"), (key, i, "outline"))
-    for i, patch in rows(geometry.get("patches")):
-        sides = patch.get("sides")
-        for j, name in enumerate(sides if isinstance(sides, list | tuple) else ()):
-            yield "side", name, ("patches", i, "sides", j)
-    for name in table(geometry.get("points")):
-        yield "point", name, ("points", name)
-    mesh = table(geometry.get("mesh"))
-    for key in ("sides", "points"):
-        for name in table(mesh.get(key)):
-            yield key[:-1], name, ("mesh", key, name)
-
-
-def _loop_sides(
-    loop: Any, place: tuple[str | int, ...]
-) -> Iterator[tuple[str, Any, tuple[str | int, ...]]]:
-    for i, vertex in rows(loop):
-        for key in ("side", "fillet_side"):
-            yield "side", vertex.get(key), (*place, i, key)
-
-
-def _doubles(what: str, listed: Any, place: str) -> list[Fault]:
-    found: dict[str, list[int]] = defaultdict(list)
-    for i, part in rows(listed):
-        if isinstance(part.get("name"), str):
-            found[part["name"]].append(i)
-    return [
-        Fault(f"{place}/{i}/name", f"another {what} is named {seen(name)}")
-        for name, positions in found.items() for i in positions[1:]
-    ]  # fmt: skip
-
-
-# --- what refers to a name ---------------------------------------------------------------------
 
 
 def _materials(document: Mapping[str, Any]) -> Iterator[Fault]:

@@ -4,8 +4,9 @@ from typing import Any
 
 from marshmallow import ValidationError, validates_schema
 
-from workers.document.fields import Choice, MapOf, Number, Part, Quantity, Vector, Whole
-from workers.document.mesh import ElementName
+from workers.document.arrays import ElementName
+from workers.document.containers import MapOf, Part, Vector
+from workers.document.fields import Choice, Number, Quantity, Whole
 from workers.document.record import Record, only_with
 from workers.document.units import LENGTH
 from workers.job import Cut, Limits, Line, Meshing, Requests

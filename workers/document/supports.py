@@ -7,7 +7,8 @@ from typing import Any
 
 from marshmallow import ValidationError, validates_schema
 
-from workers.document.fields import LONGEST_NAME, ListOf, Name, Part, Quantity, Vector
+from workers.document.containers import ListOf, Part, Vector
+from workers.document.fields import LONGEST_NAME, Name, Quantity
 from workers.document.record import Record, only_with
 from workers.document.targets import On
 from workers.document.units import LENGTH, POINT_SPRING, SIDE_SPRING

@@ -5,19 +5,10 @@ from typing import Any
 
 from marshmallow import ValidationError, fields
 
+from workers.document.containers import ListOf, Part, Vector, json_schema
 from workers.document.context import inside
 from workers.document.faults import seen
-from workers.document.fields import (
-    ListOf,
-    Name,
-    Part,
-    Plain,
-    Quantity,
-    Vector,
-    Whole,
-    described,
-    json_schema,
-)
+from workers.document.fields import Name, Plain, Quantity, Whole, described
 from workers.document.record import Record
 from workers.document.units import LENGTH
 from workers.job import Box, CircleShape, Named, Nodes, OnCircle, Segment, Target
