@@ -32,7 +32,7 @@ def decouple(matrix: bsr_array, held: Mask) -> None:
     """Zero the rows and columns of held dofs (N, 2) in place; keep their diagonal as the scale."""
     size = len(matrix.indptr) - 1
     rows = np.repeat(np.arange(size), np.diff(matrix.indptr))
-    at_node = held.any(axis=1)
+    at_node = held[:, 0] | held[:, 1]
     touched = np.flatnonzero(at_node[rows] | at_node[matrix.indices])
     row, column = rows[touched], matrix.indices[touched]
     gone = held[row][:, :, None] | held[column][:, None, :]
