@@ -5,6 +5,7 @@ judged alone and exactly, whatever the order: the result is deterministic and no
 worse than the worst of its neighbours was.
 """
 
+from collections.abc import Callable
 from dataclasses import replace
 from typing import NamedTuple
 
@@ -14,6 +15,8 @@ from numpy.typing import NDArray
 from workers.analysis.meshing.flat_mesh import FlatMesh
 
 Array = NDArray[np.float64]
+# (k, 2) places, (k, 2) means of their neighbours and (k,) distances give (k, 2) places to try.
+Candidates = Callable[[Array, Array, Array], list[Array]]
 
 SWEEPS = 4  # of moves towards the middle of the neighbours; more gains little
 SEARCH_SWEEPS = 12  # of the search around nodes whose elements stay poor
@@ -122,7 +125,7 @@ def _independent(mesh: FlatMesh, free: NDArray[np.bool_]) -> list[NDArray[np.boo
 # --- one visit to an independent set --------------------------------------------------------------
 
 
-def _visit(nodes: Array, parts: list[_Pairs], candidates, enough: float) -> None:
+def _visit(nodes: Array, parts: list[_Pairs], candidates: Candidates, enough: float) -> None:
     """Try candidate places for every node of the set whose worst element is below `enough`."""
     worst = np.full(len(nodes), np.inf)
     for pairs, quality in zip(parts, QUALITY, strict=True):
@@ -170,7 +173,7 @@ def _to_the_middle(now: Array, middle: Array, reach: Array) -> list[Array]:
     return [middle, (now + middle) / 2]
 
 
-def _around(step: float):
+def _around(step: float) -> Candidates:
     """Eight places around the node, and the middle of its neighbours."""
 
     def candidates(now: Array, middle: Array, reach: Array) -> list[Array]:
