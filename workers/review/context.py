@@ -1,0 +1,174 @@
+"""What the review rules read: the job, its mesh, its results, and the displacements behind them.
+
+Rules for a job that was not solved yet see empty `states` and find what can be said without.
+"""
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass, field
+from functools import cached_property
+from typing import TYPE_CHECKING, Any, NamedTuple
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.mesh import Mesh
+from workers.analysis.selection import Selection, select
+from workers.job import Job, Target
+
+if TYPE_CHECKING:  # the solution brings SciPy, which the API process must not load
+    from workers.analysis.solution import Solution
+
+Array = NDArray[np.float64]
+
+
+class Peak(NamedTuple):
+    """The largest value of a quantity over the states, where it is, and in which state.
+
+    record : the whole entry of the results, `value` and `at` included.
+    """
+
+    value: float
+    at: list[float]
+    case: str
+    record: Mapping[str, Any]
+
+
+@dataclass(frozen=True, eq=False)
+class ReviewContext:
+    """One job under review.
+
+    results : as in results.json, cautions not needed; {} before the solution.
+    solution : None where only the results are known.
+    """
+
+    job: Job
+    mesh: Mesh
+    results: Mapping[str, Any] = field(default_factory=dict)
+    solution: "Solution | None" = None
+
+    # --- states: load cases and combinations -------------------------------------------------
+
+    @cached_property
+    def states(self) -> dict[str, Mapping[str, Any]]:
+        """Results of every load case and combination, by name."""
+        return {**self.results.get("cases", {}), **self.results.get("combinations", {})}
+
+    @cached_property
+    def factors(self) -> dict[str, dict[str, float]]:
+        """For every state the load cases that take part, with their factors, zeros left out."""
+        own = {case.name: {case.name: 1.0} for case in self.job.load_cases}
+        combined = {
+            combination.name: {name: f for name, f in combination.factors.items() if f != 0}
+            for combination in self.job.combinations
+        }
+        return {**own, **combined}
+
+    def peaks(self, quantity: str) -> list[Peak]:
+        """The peak of a quantity in every state that has one, largest magnitude first."""
+        found = [
+            Peak(float(record["value"]), record["at"], name, record)
+            for name, state in self.states.items()
+            if (record := state.get(quantity)) is not None
+        ]
+        return sorted(found, key=lambda peak: -abs(peak.value))
+
+    def worst(self, quantity: str) -> Peak | None:
+        return next(iter(self.peaks(quantity)), None)
+
+    @cached_property
+    def governing(self) -> list[str]:
+        """States that hold the largest value of some quantity: where field checks are made."""
+        peaks = map(self.worst, ("von_mises", "principal_max", "principal_min", "displacement"))
+        return list(dict.fromkeys(peak.case for peak in peaks if peak is not None))
+
+    # --- displacements -----------------------------------------------------------------------
+
+    def displacement(self, state: str) -> Array | None:
+        """Displacement of the nodes in a state, (N, 2) [L]; None without a solution."""
+        if self.solution is None:
+            return None
+        return self.solution.displacement @ self._columns(state)
+
+    def displacement_gradients(self, state: str) -> list[Array]:
+        """At the centre of every element, for each block (m, 2, 2): [i, j] = d u_j / d x_i.
+
+        Empty without a solution.
+        """
+        u = self.displacement(state)
+        if u is None:
+            return []
+        pairs = zip(self._centre_gradients, self.mesh.blocks, strict=True)
+        return [G @ u[block.connectivity] for G, block in pairs]
+
+    def free_strain(self, state: str) -> list[Array]:
+        """Thermal strain alpha dT of every element in a state, for each block (m,)."""
+        alpha = [self.job.material_of(name).thermal_expansion or 0.0 for name in self.mesh.regions]
+        strains = [np.array(alpha)[block.region] for block in self.mesh.blocks]
+        if self.solution is None or self.solution.temperature is None:
+            return [0 * strain for strain in strains]
+        factors = self._columns(state)
+        pairs = zip(strains, self.solution.temperature, strict=True)
+        return [strain * (temperature @ factors) for strain, temperature in pairs]
+
+    def _columns(self, state: str) -> Array:
+        """Factor of each load case of the solution in a state, (c,)."""
+        taking_part = self.factors[state]
+        assert self.solution is not None
+        return np.array([taking_part.get(case, 0.0) for case in self.solution.cases])
+
+    @cached_property
+    def _centre_gradients(self) -> list[Array]:
+        """Derivatives of the shape functions at element centres, for each block (m, 2, n)."""
+        found = []
+        for number, block in enumerate(self.mesh.blocks):
+            element = block.element
+            centre = element.natural_nodes[: element.corners].mean(axis=0, keepdims=True)
+            found.append(element.cartesian_gradients(self.mesh.coords(number), centre)[0][:, 0])
+        return found
+
+    # --- places ------------------------------------------------------------------------------
+
+    def select(self, target: Target, pointer: str) -> Selection:
+        """What a target of the job catches; remembered, because many loads share a target."""
+        if target not in self._selections:
+            self._selections[target] = select(self.mesh, target, pointer)
+        return self._selections[target]
+
+    @cached_property
+    def _selections(self) -> dict[Target, Selection]:
+        return {}
+
+    @cached_property
+    def element_size(self) -> Array:
+        """Longest distance between corners of the elements at each node, (N,) [L]."""
+        size = np.zeros(self.mesh.node_count)
+        for number, block in enumerate(self.mesh.blocks):
+            corners = self.mesh.coords(number)[:, : block.element.corners]
+            apart = np.linalg.norm(corners[:, :, None] - corners[:, None], axis=-1).max(axis=(1, 2))
+            for column in block.connectivity.T:
+                np.maximum.at(size, column, apart)
+        return size
+
+    @cached_property
+    def regions_used(self) -> list[str]:
+        """Names of the regions that have elements, in the order of the mesh."""
+        used = np.unique(np.concatenate([block.region for block in self.mesh.blocks]))
+        return [self.mesh.regions[number] for number in used]
+
+    # --- words -------------------------------------------------------------------------------
+
+    def stress(self, value: float) -> str:
+        return f"{value:.4g} {self.job.units.stress}"
+
+    def length(self, value: float) -> str:
+        return f"{value:.4g} {self.job.units.length}"
+
+
+NAMES_SHOWN = 6
+
+
+def listed(names: Iterable[str]) -> str:
+    """'a', 'b' and 3 more."""
+    quoted = [repr(name) for name in names]
+    more = f" and {len(quoted) - NAMES_SHOWN} more" if len(quoted) > NAMES_SHOWN else ""
+    return ", ".join(quoted[:NAMES_SHOWN]) + more
