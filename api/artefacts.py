@@ -24,9 +24,5 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
             ARTEFACT_LATE, "A worker will make this file.", headers={"Retry-After": "5"}
         )
     if answer.state == "failed":
-        raise RefusalError(ARTEFACT_FAILED, answer.reason or "The worker failed.")
-    if not answer.value["ok"]:
-        away = answer.value["error"] == PicturesUnavailableError.__name__
-        raise RefusalError(
-            PICTURES_UNAVAILABLE if away else ARTEFACT_FAILED, answer.value["reason"]
-        )
+        away = answer.error == PicturesUnavailableError.__name__
+        raise RefusalError(PICTURES_UNAVAILABLE if away else ARTEFACT_FAILED, answer.reason or "")

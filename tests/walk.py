@@ -44,7 +44,7 @@ REQUESTS: dict[tuple[str, str], list[dict[str, Any]]] = {
     ],
 }
 ANSWERS = {  # of the workers, when a file must be made; by quantity, None for a field
-    "von_mises": Answer("done", {"ok": False, "error": "PicturesUnavailableError", "reason": "x"}),
+    "von_mises": Answer("failed", reason="no libEGL", error="PicturesUnavailableError"),
     "model": Answer("pending"),
     None: Answer("failed", reason="the worker process ended before it had an answer"),
 }

@@ -59,11 +59,13 @@ class Answer:
 
     value  : what the function returned; None while it is pending and when it failed.
     reason : why there is none, in plain words, when it failed.
+    error  : name of the error's class, when it failed with one of ours.
     """
 
     state: str  # "done" | "pending" | "failed"
     value: Any = None
     reason: str | None = None
+    error: str | None = None
 
 
 class Queue:
@@ -152,7 +154,7 @@ class Queue:
         """
         answer = self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait)
         if answer.state == "done" and not answer.value["ok"]:
-            return Answer("failed", reason=answer.value["reason"])
+            return Answer("failed", reason=answer.value["reason"], error=answer.value["error"])
         return answer
 
     def ask(self, function: str, *arguments: Any, wait: float = 0.0) -> Answer:

@@ -122,7 +122,7 @@ def _reporter(store: Store, queue: Queue, job_id: str) -> Callable[[str, float],
 def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None) -> dict[str, Any]:
     """Make one file of a finished job from its stored displacements.
 
-    Returns {"ok": True}, or {"ok": False, "reason": plain words}.
+    Returns {"ok": True}, or {"ok": False, "error": class name, "reason": plain words}.
     """
     settings = Settings.from_environment()
     try:
@@ -135,5 +135,6 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
             else:
                 raise StoreError(f"there is no artefact {kind!r} of quantity {quantity!r}")
     except (FishplateError, MemoryError) as error:
-        return {"ok": False, **_explain(error, settings)}
+        reason = _explain(error, settings)["reason"]
+        return {"ok": False, "error": type(error).__name__, "reason": reason}
     return {"ok": True}
