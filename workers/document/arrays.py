@@ -42,41 +42,49 @@ class ElementName(Plain, fields.Field[str]):
 
 
 class Rows(Plain, fields.Field[Any]):
-    """A list of rows of plain numbers, as one array or as tuples."""
+    """A list of rows of plain numbers."""
 
     def __init__(
         self, description: str, *, whole: bool, widths: tuple[int, ...], most: int, **options: Any
     ) -> None:
         self.whole, self.widths, self.most = whole, widths, most
         number = {"type": "integer", "minimum": 0} if whole else {"type": "number"}
-        row = {"type": "array", "items": number, "minItems": widths[0], "maxItems": widths[-1]}
+        row: dict[str, Any] = {"type": "array", "items": number}
+        if widths:
+            row |= {"minItems": widths[0], "maxItems": widths[-1]}
         metadata = described(description, type="array", items=row, minItems=1, maxItems=most)
         super().__init__(metadata=metadata, **options)
+
+    def _widths(self, rows: Any, beside: Any) -> tuple[int, ...]:
+        """Lengths that a row may have; `beside` is the object that holds the list."""
+        return self.widths
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
         if not isinstance(value, list | tuple):
             raise ValidationError(f"must be a list, not {seen(value)}")
         if not 1 <= len(value) <= self.most:
             raise ValidationError(f"must have 1 to {self.most} entries, not {len(value)}")
-        flat = self._flat(value)
+        widths = self._widths(value, data)
+        flat = self._flat(value, widths)
         if flat is None:
-            raise ValidationError(first_of(self._search(value)))
+            raise ValidationError(first_of(self._search(value, widths)))
         return self._shaped(flat, value)
 
     def _shaped(self, flat: NDArray[Any], rows: Any) -> Any:
         return flat.reshape(len(rows), -1)
 
-    def _flat(self, rows: Any) -> NDArray[Any] | None:
+    def _flat(self, rows: Any, widths: tuple[int, ...]) -> NDArray[Any] | None:
         """All numbers in one go; None when any of them is not what it should be."""
         kinds = {int} if self.whole else {int, float}
-        if not set(map(type, rows)) <= {list, tuple} or not set(map(len, rows)) <= {*self.widths}:
+        if not set(map(type, rows)) <= {list, tuple} or not set(map(len, rows)) <= {*widths}:
             return None
         if not set(map(type, chain.from_iterable(rows))) <= kinds:
             return None
-        count = sum(map(len, rows)) if len(self.widths) > 1 else len(rows) * len(rows[0])
         try:
             flat = np.fromiter(
-                chain.from_iterable(rows), np.int64 if self.whole else np.float64, count
+                chain.from_iterable(rows),
+                np.int64 if self.whole else np.float64,
+                sum(map(len, rows)),
             )
         except OverflowError:
             return None
@@ -85,13 +93,13 @@ class Rows(Plain, fields.Field[Any]):
             return flat.astype(np.int32) if good else None
         return flat if np.isfinite(flat).all() else None
 
-    def _search(self, rows: Any) -> Iterator[tuple[int, Any]]:
+    def _search(self, rows: Any, widths: tuple[int, ...]) -> Iterator[tuple[int, Any]]:
         """Bad rows with their errors."""
-        allowed = " or ".join(map(str, self.widths))
+        allowed = " or ".join(map(str, widths))
         for i, row in enumerate(rows):
             if not isinstance(row, list | tuple):
                 yield i, {SCHEMA: [f"must be a list of {allowed} numbers, not {seen(row)}"]}
-            elif len(row) not in self.widths:
+            elif len(row) not in widths:
                 yield i, {SCHEMA: [f"must have {allowed} numbers, not {len(row)}"]}
             else:
                 errors = {j: [text] for j, entry in enumerate(row) if (text := self._fault(entry))}
@@ -113,19 +121,17 @@ class Rows(Plain, fields.Field[Any]):
 
 
 class Connectivity(Rows):
-    """Node numbers of each element; the width is that of the first row."""
+    """Node numbers of each element, as many as the type beside them has nodes."""
 
     def __init__(self, description: str, **options: Any) -> None:
-        super().__init__(description, whole=True, widths=(1, 64), most=MOST_ELEMENTS, **options)
+        super().__init__(description, whole=True, widths=(), most=MOST_ELEMENTS, **options)
 
-    def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
+    def _widths(self, rows: Any, beside: Any) -> tuple[int, ...]:
         try:
-            self.widths = (get(data["element"]).node_count,)
+            return (get(beside["element"]).node_count,)
         except (ElementError, KeyError, TypeError):
-            # The type itself is at fault, and said to be; any even width will do.
-            first = value[0] if isinstance(value, list | tuple) and value else None
-            self.widths = (len(first) if isinstance(first, list | tuple) else 3,)
-        return super()._deserialize(value, attr, data, **kwargs)
+            # The type is at fault, and said to be; so as many as the first row has, if any.
+            return (len(rows[0]) if isinstance(rows[0], list | tuple) and rows[0] else 3,)
 
     def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
         return value.tolist()
