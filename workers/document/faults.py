@@ -9,6 +9,9 @@ from marshmallow.exceptions import SCHEMA
 
 from workers.errors import Fault
 
+MOST_FAULTS = 1000  # of one document
+MOST_COMPARED = 200
+
 Tokens = tuple[str | int, ...]
 
 
@@ -38,7 +41,8 @@ def seen(value: Any) -> str:
 def unknown(what: str, name: str, known: Iterable[str]) -> str:
     """Message for a name that refers to nothing."""
     names = sorted(known)
-    close = get_close_matches(name, names, n=1)
+    # Likeness to thousands of names would take seconds, and no reader would miss it.
+    close = get_close_matches(name, names, n=1) if len(names) <= MOST_COMPARED else []
     hint = f"; did you mean {seen(close[0])}?" if close else ""
     listed = ", ".join(names[:12]) + (f" and {len(names) - 12} more" if len(names) > 12 else "")
     return f"there is no {what} named {seen(name)}{hint}; there is: {listed or 'none'}"

@@ -3,6 +3,7 @@
 from collections import defaultdict
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Any
 
 from workers.document.faults import pointer, seen
@@ -26,7 +27,7 @@ class Inventory:
     points: set[str] = field(default_factory=set)
     faults: list[Fault] = field(default_factory=list)
 
-    @property
+    @cached_property
     def all(self) -> set[str]:
         return self.sides | self.holes | self.regions | self.points
 

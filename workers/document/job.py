@@ -1,6 +1,7 @@
 """The whole document as one schema; what its parts say of each other is in `names.py`."""
 
 from collections.abc import Mapping
+from itertools import chain, islice
 from typing import Any
 
 from marshmallow import ValidationError, validates_schema
@@ -8,7 +9,7 @@ from marshmallow import ValidationError, validates_schema
 from workers.document import consistency, names
 from workers.document.containers import MapOf, Part
 from workers.document.context import reading
-from workers.document.faults import nest
+from workers.document.faults import MOST_FAULTS, nest
 from workers.document.fields import Text
 from workers.document.geometry import GeometrySchema
 from workers.document.loads import Combinations, LoadCases
@@ -66,7 +67,8 @@ class JobSchema(Record):
     @validates_schema(pass_original=True, skip_on_field_errors=False)
     def _parts_agree(self, data: Any, original: Any, **_: Any) -> None:
         if isinstance(original, Mapping):
-            found = [*names.faults(original), *consistency.faults(original)]
+            lazily = chain(names.faults(original), consistency.faults(original))
+            found = list(islice(lazily, MOST_FAULTS))
             if found:
                 raise ValidationError(nest(found))
 

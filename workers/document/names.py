@@ -91,37 +91,49 @@ def _supports(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fau
     for i, support in rows(document.get("supports")):
         place, on = pointer("supports", i), support.get("on")
         yield from _selector(on, place, inventory)
-        if not isinstance(on, str):
-            continue
-        if on not in inventory.all:
+        if isinstance(on, Mapping):
+            what = "side" if {"segment", "circle"} & on.keys() else "selection"
+            yield from _spring_units(table(support.get("spring")), place, what)
+        elif isinstance(on, str) and on in inventory.all:
+            yield from _named_support(support, place, on, inventory.what(on))
+        elif isinstance(on, str):
             yield Fault(f"{place}/on", unknown("side, hole, region or point", on, inventory.all))
-            continue
-        what, springs = inventory.what(on), table(support.get("spring"))
-        if "normal" in support and what in ("point", "region"):
-            yield Fault(
-                f"{place}/normal", f"{seen(on)} is a {what} and has no normal; use ux, uy or along"
-            )
-        for key in ("normal", "tangential"):
-            if key in springs and what == "point":
-                yield Fault(f"{place}/spring/{key}", f"{seen(on)} is a point; use x and y")
-        if springs and what == "region":
-            yield Fault(
-                f"{place}/spring", f"{seen(on)} is a region; springs are on sides and points"
-            )
-        else:
-            yield from _spring_units(springs, place, what)
+
+
+def _named_support(support: Mapping[str, Any], place: str, on: str, what: str) -> Iterator[Fault]:
+    """What a point or a region cannot do."""
+    springs = table(support.get("spring"))
+    if "normal" in support and what in ("point", "region"):
+        text = f"{seen(on)} is a {what} and has no normal; use ux, uy or along"
+        yield Fault(f"{place}/normal", text)
+    if springs and what == "region":
+        text = f"{seen(on)} is a region; springs act on sides and at points"
+        yield Fault(f"{place}/spring", text)
+        return
+    for key in ("normal", "tangential"):
+        if key in springs and what == "point":
+            yield Fault(f"{place}/spring/{key}", f"{seen(on)} is a point; use x and y")
+    yield from _spring_units(springs, place, what)
 
 
 def _spring_units(springs: Mapping[str, Any], place: str, what: str) -> Iterator[Fault]:
-    """A spring on a side is stiffness per length; at a point it is not."""
+    """A spring on a side is stiffness per length; at a point it is not.
+
+    Whether the nodes in a box or list form a side is only known on the mesh, so that a unit there
+    could be of the other kind: a plain number is the only one that cannot be misread.
+    """
     right, wrong = (POINT_SPRING, SIDE_SPRING) if what == "point" else (SIDE_SPRING, POINT_SPRING)
     for key, value in springs.items():
-        if isinstance(value, str) and exponents_of(value) == wrong.exponents:
-            yield Fault(
-                f"{place}/spring" + pointer(key),
-                f"{seen(value)} is {wrong.name}; on a {what} it must be {right.name} such as "
-                f'"{right.example}"',
-            )
+        exponents = exponents_of(value) if isinstance(value, str) else None
+        if exponents not in (right.exponents, wrong.exponents):
+            continue
+        text = f"{seen(value)} is {wrong.name}; on a {what} it must be {right.name} such as "
+        text += f'"{right.example}"'
+        if what == "selection":
+            text = "must be a plain number on a box or nodes, which may be sides or points"
+        elif exponents == right.exponents:
+            continue
+        yield Fault(f"{place}/spring" + pointer(key), text)
 
 
 def _loads(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fault]:

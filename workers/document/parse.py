@@ -8,6 +8,7 @@ import codecs
 import json
 import math
 import re
+from collections import Counter
 from collections.abc import Iterator
 from typing import Any
 
@@ -57,13 +58,14 @@ def _object(pairs: list[tuple[str, Any]]) -> dict[str, Any]:
     plain = dict(pairs)
     if len(plain) == len(pairs):
         return plain
-    keys = [key for key, _ in pairs]
     found = _Repeating(plain)
-    found.repeated = frozenset(key for key in plain if keys.count(key) > 1)
+    counts = Counter(key for key, _ in pairs)
+    found.repeated = frozenset(key for key, count in counts.items() if count > 1)
     return found
 
 
 def _parse_slowly(data: bytes) -> tuple[Any, list[Fault]] | None:
+    """None where the library gives up: no JSON, or nested deeper than any job document."""
     try:
         document = json.loads(data, object_pairs_hook=_object)
     except (ValueError, RecursionError):

@@ -5,7 +5,7 @@ from typing import Any, cast
 
 from marshmallow import ValidationError
 
-from workers.document.faults import flatten, in_document_order, seen
+from workers.document.faults import MOST_FAULTS, flatten, in_document_order, seen
 from workers.document.job import JobSchema
 from workers.document.parse import parse_leniently
 from workers.errors import DocumentError, Fault
@@ -45,5 +45,9 @@ def _load(document: Any, known: list[Fault]) -> Job:
         places = {fault.pointer for fault in known}
         found = [fault for fault in flatten(error.messages) if fault.pointer not in places]
     if known or found:
-        raise DocumentError(in_document_order([*known, *found], document))
+        faults = in_document_order([*known, *found], document)
+        if len(faults) > MOST_FAULTS:
+            left_out = Fault("", f"only the first {MOST_FAULTS} of {len(faults)} faults are listed")
+            faults = [left_out, *faults[:MOST_FAULTS]]
+        raise DocumentError(faults)
     return job
