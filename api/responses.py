@@ -66,4 +66,5 @@ def text_answer(text: str, mimetype: str, cautions_at: str = ABOUT_CAUTIONS) -> 
     answer = Response(text, mimetype=mimetype)
     answer.headers["Link"] = described_by(cautions_at)
     answer.add_etag()
-    return answer.make_conditional(flask.request)
+    answer.make_conditional(flask.request)
+    return answer

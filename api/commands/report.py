@@ -1,115 +1,72 @@
 """Results for people at a terminal: cautions first, then peaks, then what the supports carry."""
 
-from collections.abc import Iterable, Mapping
-from itertools import islice
+from collections.abc import Iterator, Mapping
 from typing import Any
 
 from rich.console import Console
-from rich.markup import escape
-from rich.table import Table
 
-from workers.cautions import SEVERITIES
+from api.commands.layout import number, place, print_cautions, print_table
 
-MOST_ROWS = 20  # a job of hundreds of cases is read in the results, not on a terminal
-STYLES = {"stop": "bold red", "check": "yellow", "note": "dim"}
+MOST_STATES = 20  # a job of hundreds of cases is read in the results, not on a terminal
+
+States = list[tuple[str, Mapping[str, Any]]]
 
 
 def print_results(console: Console, results: Mapping[str, Any]) -> None:
     """Summary of a results object (DESIGN.md, "The results")."""
     print_cautions(console, results["cautions"])
-    states = {**results["cases"], **results.get("combinations", {})}
-    worst_first = sorted(states.items(), key=lambda item: -item[1]["von_mises"]["value"])
-    console.print()
-    console.print(_peaks(worst_first, results["units"]))
-    _say_omitted(console, worst_first)
-    console.print(_reactions(worst_first, results["units"]))
-    _say_omitted(console, worst_first)
-    mesh, solver = results["mesh"], results["solver"]
-    console.print(
-        f"{mesh['nodes']} nodes, {_elements(mesh['elements'])}, {mesh['dofs']} dofs; "
-        f"{solver['name']}, largest relative residual {solver['residual']:.1e}",
-        style="dim",
-    )
-
-
-def print_cautions(console: Console, cautions: Iterable[Mapping[str, Any]]) -> None:
-    """The gravest first, each with what to do."""
-    order = list(SEVERITIES)
-    for caution in sorted(cautions, key=lambda c: order.index(c["severity"])):
-        style = STYLES[caution["severity"]]
-        console.print(
-            f"[{style}]{caution['severity']:>5}[/]  {escape(caution['message'])} "
-            f"[italic]{escape(caution['action'])}[/italic]"
-        )
-
-
-def _peaks(states: list[tuple[str, Mapping[str, Any]]], units: Mapping[str, str]) -> Table:
-    stress, length = units["stress"], units["length"]
-    table = _table(
+    units = results["units"]
+    stress, force, length = units["stress"], units["force"], units["length"]
+    every = {**results["cases"], **results["combinations"]}
+    states = sorted(every.items(), key=lambda item: -item[1]["von_mises"]["value"])
+    shown = states[:MOST_STATES]
+    print_table(
+        console,
         "Peaks, the highest stress first",
         ("case", f"von Mises [{stress}]", f"at [{length}]", "of yield", f"moves [{length}]",
          "error estimate"),
+        _peaks(shown),
+        words=1,
     )  # fmt: skip
-    for name, state in states[:MOST_ROWS]:
-        peak = state["von_mises"]
-        table.add_row(
-            escape(name),
-            number(peak["value"]) + _doubt(peak.get("error")),
-            place(peak["at"]),
-            _share(state.get("utilisation")),
-            number(state["displacement"]["value"]),
-            f"{state['error_estimate']['relative']:.1%}",
-        )
-    return table
-
-
-def _reactions(states: list[tuple[str, Mapping[str, Any]]], units: Mapping[str, str]) -> Table:
-    force, length = units["force"], units["length"]
-    table = _table(
+    print_table(
+        console,
         "What the supports do to the plate",
         ("case", "support", f"x [{force}]", f"y [{force}]", f"moment [{force} {length}]",
          f"about [{length}]"),
+        _reactions(shown),
+        words=2,
     )  # fmt: skip
-    for name, state in states[:MOST_ROWS]:
+    if len(states) > len(shown):
+        console.print(f"\n... and {len(states) - len(shown)} more cases in the results")
+    _print_size(console, results)
+
+
+def _peaks(states: States) -> Iterator[tuple[str, ...]]:
+    for name, state in states:
+        peak, use = state["von_mises"], state["utilisation"]
+        doubt = peak.get("error")
+        yield (
+            name,
+            number(peak["value"]) + ("" if doubt is None else f" ± {number(doubt)}"),
+            place(peak["at"]),
+            "-" if use is None else f"{use['value']:.0%}",
+            number(state["displacement"]["value"]),
+            f"{state['error_estimate']['relative']:.1%}",
+        )
+
+
+def _reactions(states: States) -> Iterator[tuple[str, ...]]:
+    for name, state in states:
         for label, reaction in state["reactions"].items():
-            fx, fy = reaction["force"]
-            table.add_row(
-                escape(name), escape(label), number(fx), number(fy),
-                number(reaction["moment"]), place(reaction["about"]),
-            )  # fmt: skip
-    return table
+            numbers = (*reaction["force"], reaction["moment"])
+            yield name, label, *map(number, numbers), place(reaction["about"])
 
 
-def _table(title: str, columns: Iterable[str]) -> Table:
-    table = Table(
-        title=title, title_justify="left", box=None, header_style="italic", pad_edge=False
+def _print_size(console: Console, results: Mapping[str, Any]) -> None:
+    mesh, solver = results["mesh"], results["solver"]
+    elements = ", ".join(f"{count} {name}" for name, count in mesh["elements"].items())
+    console.print(
+        f"\n{mesh['nodes']} nodes, {elements}, {mesh['dofs']} dofs; {solver['name']}, largest "
+        f"relative residual {solver['residual']:.1e}",
+        style="dim",
     )
-    for i, column in enumerate(columns):
-        table.add_column(escape(column), justify="left" if i == 0 else "right")
-    return table
-
-
-def _say_omitted(console: Console, states: list[Any]) -> None:
-    if len(states) > MOST_ROWS:
-        console.print(f"... and {len(states) - MOST_ROWS} more in the results", style="dim")
-
-
-def _elements(counts: Mapping[str, int]) -> str:
-    return ", ".join(f"{count} {name}" for name, count in islice(counts.items(), 8))
-
-
-def _share(utilisation: Mapping[str, Any] | None) -> str:
-    return "-" if utilisation is None else f"{utilisation['value']:.0%}"
-
-
-def _doubt(error: float | None) -> str:
-    return "" if error is None else f" ± {number(error)}"
-
-
-def number(value: float) -> str:
-    """Five digits are more than any of these numbers can be trusted for."""
-    return f"{value:.5g}"
-
-
-def place(at: Iterable[float]) -> str:
-    return "(" + ", ".join(number(c) for c in at) + ")"

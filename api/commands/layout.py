@@ -1,0 +1,47 @@
+"""How numbers, cautions and tables look on a terminal."""
+
+from collections.abc import Iterable, Mapping, Sequence
+from typing import Any
+
+from rich.console import Console
+from rich.markup import escape
+from rich.table import Table
+
+from workers.cautions import SEVERITIES
+
+STYLES = {"stop": "bold red", "check": "yellow", "note": "dim"}
+
+
+def number(value: float) -> str:
+    """Five digits: more than any of these numbers can be trusted for."""
+    return f"{float(f'{value:.5g}'):.12g}"
+
+
+def place(at: Iterable[float]) -> str:
+    return "(" + ", ".join(number(c) for c in at) + ")"
+
+
+def print_cautions(console: Console, cautions: Iterable[Mapping[str, Any]]) -> None:
+    """The gravest first, each with what to do."""
+    order = list(SEVERITIES)
+    grid = Table.grid(padding=(0, 2))
+    for caution in sorted(cautions, key=lambda c: order.index(c["severity"])):
+        style = STYLES[caution["severity"]]
+        grid.add_row(
+            f"[{style}]{caution['severity']}[/]",
+            f"{escape(caution['message'])} [italic]{escape(caution['action'])}[/italic]",
+        )
+    console.print(grid)
+
+
+def print_table(
+    console: Console, title: str, columns: Sequence[str], rows: Iterable[Sequence[str]], words: int
+) -> None:
+    """A table under its title; the first `words` columns hold words, the others numbers."""
+    table = Table(box=None, header_style="italic", pad_edge=False, padding=(0, 2, 0, 0))
+    for i, column in enumerate(columns):
+        table.add_column(escape(column), justify="left" if i < words else "right")
+    for row in rows:
+        table.add_row(*map(escape, row))
+    console.print(f"\n[bold]{escape(title)}[/bold]", soft_wrap=True)
+    console.print(table)
