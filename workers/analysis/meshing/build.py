@@ -1,10 +1,8 @@
 """From a job to its mesh, whatever way its geometry is given."""
 
-from elements.registry import get
 from workers.analysis.mesh import Mesh
-from workers.analysis.meshing.explicit import mesh_explicit
-from workers.analysis.meshing.patches import mesh_patches
-from workers.job import Job, MeshGeometry, PatchGeometry
+from workers.analysis.meshing.direct import mesh_directly
+from workers.job import Job
 
 
 def mesh_job(job: Job) -> Mesh:
@@ -12,11 +10,10 @@ def mesh_job(job: Job) -> Mesh:
 
     Raises
     ------
-    MeshError          the geometry does not give a sound mesh; carries every fault found.
+    MeshError             the geometry gives no sound mesh; carries every fault found.
     UnknownElementError   the element type is not installed.
     """
-    if isinstance(job.geometry, MeshGeometry):
-        return mesh_explicit(job.geometry)
-    if isinstance(job.geometry, PatchGeometry):
-        return mesh_patches(job.geometry, get(job.meshing.element))
-    raise TypeError(f"no mesher for {type(job.geometry).__name__}")
+    mesh = mesh_directly(job)
+    if mesh is None:
+        raise TypeError(f"no mesher for {type(job.geometry).__name__}")
+    return mesh

@@ -10,6 +10,7 @@ from typing import NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.analysis.border import Border, border_of, windings
 from workers.analysis.connected import label_components
 from workers.analysis.mesh import Mesh
 from workers.analysis.nearby import segment_candidates
@@ -19,9 +20,6 @@ Array = NDArray[np.float64]
 Numbers = NDArray[np.intp]
 Mask = NDArray[np.bool_]
 
-PIECES = 4  # chords for a curved facet: they leave its curve by a sixteenth of its rise
-STRAIGHT = 1e-9  # rise over length below which one chord is enough
-
 
 class OverlapFault(NamedTuple):
     """A boundary facet (block, element, side) where the mesh is not sound, and what was seen."""
@@ -30,90 +28,53 @@ class OverlapFault(NamedTuple):
     message: str
 
 
-class Outline(NamedTuple):
-    """The boundary as s chords.
-
-    row : (s,) place of the facet in `mesh.boundary`
-    start, end : (s, 2) positions of the ends [L]
-    first, last : (s,) numbers of the ends: nodes, or beyond them the joints of a curved facet
-    """
-
-    row: Numbers
-    start: Array
-    end: Array
-    first: Numbers
-    last: Numbers
-
-
 def overlap_faults(mesh: Mesh, most: int = 20) -> list[OverlapFault]:
     """Places where the mesh overlaps or touches itself, the first `most` of them.
 
     Expects elements of sound shape, edges of at most two elements and no coincident nodes.
     """
-    outline = _outline(mesh)
+    border = border_of(mesh)
     # Where the boundary crosses itself, what lies inside what has no clear answer.
-    return (_contact_faults(mesh, outline, most) or _buried_faults(mesh, outline))[:most]
-
-
-def _outline(mesh: Mesh) -> Outline:
-    """Chords of the boundary facets: one for a straight facet, PIECES for a curved one."""
-    table = mesh.facet_table(mesh.boundary).astype(np.intp)
-    a, b = mesh.nodes[table[:, 0]], mesh.nodes[table[:, 1]]
-    rise = np.where(table[:, 2:] < 0, 0, mesh.nodes[table[:, 2]] - (a + b) / 2)
-    curved = np.linalg.norm(rise, axis=1) > STRAIGHT * np.linalg.norm(b - a, axis=1)
-    straight, bent = np.flatnonzero(~curved), np.flatnonzero(curved)
-    t = np.arange(PIECES + 1)[:, None] / PIECES
-    points = (1 - t) * a[bent, None] + t * b[bent, None] + 4 * t * (1 - t) * rise[bent, None]
-    joints = mesh.node_count + np.arange(len(bent) * (PIECES + 1)).reshape(-1, PIECES + 1)
-    joints[:, 0], joints[:, -1] = table[bent, 0], table[bent, 1]
-    return Outline(
-        np.concatenate((straight, np.repeat(bent, PIECES))),
-        np.concatenate((a[straight], points[:, :-1].reshape(-1, 2))),
-        np.concatenate((b[straight], points[:, 1:].reshape(-1, 2))),
-        np.concatenate((table[straight, 0], joints[:, :-1].ravel())),
-        np.concatenate((table[straight, 1], joints[:, 1:].ravel())),
-    )
+    return (_contact_faults(mesh, border, most) or _buried_faults(mesh, border))[:most]
 
 
 # --- the boundary touches or crosses itself ------------------------------------------------------
 
 
-def _contact_faults(mesh: Mesh, outline: Outline, most: int) -> list[OverlapFault]:
+def _contact_faults(mesh: Mesh, border: Border, most: int) -> list[OverlapFault]:
     tolerance = TOLERANCE * mesh.diagonal
     faults: list[OverlapFault] = []
-    for near in segment_candidates(outline.start, outline.end, tolerance):
-        pairs = near[outline.row[near[:, 0]] != outline.row[near[:, 1]]]
+    for near in segment_candidates(border.start, border.end, tolerance):
+        pairs = near[border.row[near[:, 0]] != border.row[near[:, 1]]]
         for one, other in (pairs.T, pairs.T[::-1]):
-            on = np.flatnonzero(_starts_on(outline, one, other, tolerance))
-            faults += [_say_hanging(mesh, outline, one[k], other[k]) for k in on[:most]]
+            on = np.flatnonzero(_starts_on(border, one, other, tolerance))
+            faults += [_say_hanging(mesh, border, one[k], other[k]) for k in on[:most]]
         one, other = pairs.T
-        crossing = np.flatnonzero(_crosses(outline, one, other))
-        faults += [_say_crossing(mesh, outline, one[k], other[k]) for k in crossing[:most]]
+        crossing = np.flatnonzero(_crosses(border, one, other))
+        faults += [_say_crossing(mesh, border, one[k], other[k]) for k in crossing[:most]]
         if len(faults) >= most:
             break
     return faults
 
 
-def _starts_on(outline: Outline, one: Numbers, other: Numbers, tolerance: float) -> Mask:
+def _starts_on(border: Border, one: Numbers, other: Numbers, tolerance: float) -> Mask:
     """Does chord `one` start on chord `other` without sharing that end? Chords form loops, so
     that every end is the start of one of them.
     """
-    apart = (outline.first[one] != outline.first[other]) & (
-        outline.first[one] != outline.last[other]
-    )
-    a, b, point = outline.start[other], outline.end[other], outline.start[one]
+    apart = (border.first[one] != border.first[other]) & (border.first[one] != border.last[other])
+    a, b, point = border.start[other], border.end[other], border.start[one]
     along = ((point - a) * (b - a)).sum(axis=1) / ((b - a) ** 2).sum(axis=1)
     foot = a + np.clip(along, 0, 1)[:, None] * (b - a)
     return apart & (np.linalg.norm(point - foot, axis=1) <= tolerance)
 
 
-def _crosses(outline: Outline, one: Numbers, other: Numbers) -> Mask:
+def _crosses(border: Border, one: Numbers, other: Numbers) -> Mask:
     """Do two chords cross inside both?"""
-    a, b, c, d = outline.start[one], outline.end[one], outline.start[other], outline.end[other]
+    a, b, c, d = border.start[one], border.end[one], border.start[other], border.end[other]
     apart = (_turn(a, b, c) > 0) != (_turn(a, b, d) > 0)
     crossed = apart & ((_turn(c, d, a) > 0) != (_turn(c, d, b) > 0))
-    ends = (outline.first[one], outline.last[one])
-    for end in (outline.first[other], outline.last[other]):
+    ends = (border.first[one], border.last[one])
+    for end in (border.first[other], border.last[other]):
         crossed &= (end != ends[0]) & (end != ends[1])
     return crossed
 
@@ -124,29 +85,29 @@ def _turn(a: Array, b: Array, c: Array) -> Array:
     return u[:, 0] * v[:, 1] - u[:, 1] * v[:, 0]
 
 
-def _say_hanging(mesh: Mesh, outline: Outline, one: int, other: int) -> OverlapFault:
-    facet = mesh.boundary[outline.row[other]]
-    number, place = outline.first[one], _at(outline.start[one])
+def _say_hanging(mesh: Mesh, border: Border, one: int, other: int) -> OverlapFault:
+    facet = mesh.boundary[border.row[other]]
+    number, place = border.first[one], _at(border.start[one])
     if number < mesh.node_count:
         return OverlapFault(
             facet,
-            f"node {number} at {place} lies on the {_side(mesh, outline, other)} without being a "
+            f"node {number} at {place} lies on the {_side(mesh, border, other)} without being a "
             "node of it; elements must share whole sides",
         )
     return OverlapFault(
         facet,
-        f"the {_side(mesh, outline, one)} touches the {_side(mesh, outline, other)} at {place}; "
+        f"the {_side(mesh, border, one)} touches the {_side(mesh, border, other)} at {place}; "
         "elements must share whole sides or stay apart",
     )
 
 
-def _say_crossing(mesh: Mesh, outline: Outline, one: int, other: int) -> OverlapFault:
-    a, b = outline.start[[one]], outline.end[[one]]
-    before, behind = (_turn(outline.start[[other]], outline.end[[other]], end) for end in (a, b))
+def _say_crossing(mesh: Mesh, border: Border, one: int, other: int) -> OverlapFault:
+    a, b = border.start[[one]], border.end[[one]]
+    before, behind = (_turn(border.start[[other]], border.end[[other]], end) for end in (a, b))
     place = (a + (b - a) * before / (before - behind))[0]
     return OverlapFault(
-        mesh.boundary[outline.row[one]],
-        f"the {_side(mesh, outline, one)} crosses the {_side(mesh, outline, other)} at "
+        mesh.boundary[border.row[one]],
+        f"the {_side(mesh, border, one)} crosses the {_side(mesh, border, other)} at "
         f"{_at(place)}; the mesh must not lie on top of itself",
     )
 
@@ -154,32 +115,34 @@ def _say_crossing(mesh: Mesh, outline: Outline, one: int, other: int) -> Overlap
 # --- the boundary has material on both sides -----------------------------------------------------
 
 
-def _buried_faults(mesh: Mesh, outline: Outline) -> list[OverlapFault]:
+def _buried_faults(mesh: Mesh, border: Border) -> list[OverlapFault]:
     """Parts of the boundary that lie inside an element.
 
     Nothing crosses here, so that one chord of each loop speaks for the loop. Where loops share a
     node each chord at it is asked.
     """
     faults = []
-    for chord in _speakers(outline):
-        if _windings_above(outline, chord) != (outline.end[chord, 0] > outline.start[chord, 0]):
-            middle = (outline.start[chord] + outline.end[chord]) / 2
+    for chord in _speakers(border):
+        middle = (border.start[chord] + border.end[chord]) / 2
+        # The material is on the left: above a chord that runs to the right.
+        expected = int(border.end[chord, 0] > border.start[chord, 0])
+        if windings(border, middle, besides=chord) != expected:
             faults.append(
                 OverlapFault(
-                    mesh.boundary[outline.row[chord]],
-                    f"the {_side(mesh, outline, chord)} lies inside another element, near "
+                    mesh.boundary[border.row[chord]],
+                    f"the {_side(mesh, border, chord)} lies inside another element, near "
                     f"{_at(middle)}; the mesh must not lie on top of itself",
                 )
             )
     return faults
 
 
-def _speakers(outline: Outline) -> Numbers:
+def _speakers(border: Border) -> Numbers:
     """For each loop its chord of widest reach in x, and all chords at nodes that loops share."""
-    numbers, ends = np.unique(np.stack((outline.first, outline.last)), return_inverse=True)
+    numbers, ends = np.unique(np.stack((border.first, border.last)), return_inverse=True)
     first, last = ends.reshape(2, -1)
     loop = label_components(len(numbers), first, last)[first]
-    reach = np.abs(outline.end[:, 0] - outline.start[:, 0])
+    reach = np.abs(border.end[:, 0] - border.start[:, 0])
     order = np.lexsort((reach, loop))
     widest = order[np.flatnonzero(np.append(np.diff(loop[order]) != 0, True))]
     leaving = np.bincount(first, minlength=len(numbers))
@@ -187,25 +150,11 @@ def _speakers(outline: Outline) -> Numbers:
     return np.union1d(widest, shared)
 
 
-def _windings_above(outline: Outline, chord: int) -> int:
-    """How often the boundary goes round a point just above the middle of a chord.
-
-    Counted on the ray upwards: chords that run to the left count one, to the right minus one.
-    """
-    x, y = (outline.start[chord] + outline.end[chord]) / 2
-    left, right = outline.start[:, 0] <= x, outline.end[:, 0] <= x
-    hit = np.flatnonzero(left != right)
-    hit = hit[hit != chord]
-    a, b = outline.start[hit], outline.end[hit]
-    above = a[:, 1] + (x - a[:, 0]) * (b[:, 1] - a[:, 1]) / (b[:, 0] - a[:, 0]) > y
-    return int(np.where(right[hit], 1, -1)[above].sum())
-
-
 # --- words ---------------------------------------------------------------------------------------
 
 
-def _side(mesh: Mesh, outline: Outline, chord: int) -> str:
-    facet = mesh.boundary[outline.row[chord]]
+def _side(mesh: Mesh, border: Border, chord: int) -> str:
+    facet = mesh.boundary[border.row[chord]]
     block, element, _ = facet.tolist()
     a, b = mesh.facet_ends(facet[None])[0]
     where = f" of block {block}" if len(mesh.blocks) > 1 else ""
