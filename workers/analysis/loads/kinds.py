@@ -131,15 +131,32 @@ def _(load: PointForce, places: Places) -> NodalLoad:
     return NodalLoad(selection.nodes.astype(np.int64), np.array([load.force], float))
 
 
-@nodal_load.register
-def _(load: TotalForce, places: Places) -> NodalLoad:
+@nodal_load.register(TotalForce | TotalMoment | Traction | LineLoad | Pressure | Shear | Bearing)
+def _(load: Load, places: Places) -> NodalLoad:
+    side, force = side_force(load, places)
+    return NodalLoad(side.nodes, side.nodal(force))
+
+
+@singledispatch
+def side_force(load: Load, places: Places) -> tuple[Side, Array]:
+    """The side that a load acts on, and its force per length at the points there (p, 2) [F/L].
+
+    Raises
+    ------
+    MeshError   as `nodal_load`.
+    """
+    raise TypeError(f"{type(load).__name__} does not act on a side")
+
+
+@side_force.register
+def _(load: TotalForce, places: Places) -> tuple[Side, Array]:
     side = places.side(load)
-    share = side.shape @ side.length / side.length.sum()
-    return NodalLoad(side.nodes, share[:, None] * np.asarray(load.force))
+    even = np.asarray(load.force) / side.length.sum()
+    return side, np.tile(even, (len(side.length), 1))
 
 
-@nodal_load.register
-def _(load: TotalMoment, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: TotalMoment, places: Places) -> tuple[Side, Array]:
     """A normal traction that is linear along the side and has no resultant force."""
     side = places.side(load)
     normal = side.normal[0]
@@ -151,44 +168,42 @@ def _(load: TotalMoment, places: Places) -> NodalLoad:
     unit = np.outer(along, normal)
     arm = side.position - centre
     moment = side.length @ (arm[:, 0] * unit[:, 1] - arm[:, 1] * unit[:, 0])
-    return NodalLoad(side.nodes, side.nodal(unit * (load.moment / moment)))
+    return side, unit * (load.moment / moment)
 
 
-@nodal_load.register
-def _(load: Traction, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: Traction, places: Places) -> tuple[Side, Array]:
     side = places.side(load)
     force = _varying(load, np.asarray(load.start), np.asarray(load.end), side, places)
-    return NodalLoad(side.nodes, side.nodal(force * side.thickness[:, None]))
+    return side, force * side.thickness[:, None]
 
 
-@nodal_load.register
-def _(load: LineLoad, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: LineLoad, places: Places) -> tuple[Side, Array]:
     side = places.side(load)
     force = _varying(load, np.asarray(load.start), np.asarray(load.end), side, places)
-    return NodalLoad(side.nodes, side.nodal(force))
+    return side, force
 
 
-@nodal_load.register
-def _(load: Pressure, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: Pressure, places: Places) -> tuple[Side, Array]:
     side = places.free_side(load)
     size = _varying(load, np.array([load.start]), np.array([load.end]), side, places)
-    return NodalLoad(side.nodes, side.nodal(-size * side.thickness[:, None] * side.normal))
+    return side, -size * side.thickness[:, None] * side.normal
 
 
-@nodal_load.register
-def _(load: Shear, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: Shear, places: Places) -> tuple[Side, Array]:
     side = places.free_side(load)
     size = _varying(load, np.array([load.start]), np.array([load.end]), side, places)
-    return NodalLoad(side.nodes, side.nodal(size * side.thickness[:, None] * side.tangent))
+    return side, size * side.thickness[:, None] * side.tangent
 
 
-@nodal_load.register
-def _(load: Bearing, places: Places) -> NodalLoad:
+@side_force.register
+def _(load: Bearing, places: Places) -> tuple[Side, Array]:
     side = places.free_side(load)
     positions = places.model.mesh.nodes[side.nodes]
-    return NodalLoad(
-        side.nodes, side.nodal(bearing_load(side, positions, load.force, load.pointer))
-    )
+    return side, bearing_load(side, positions, load.force, load.pointer)
 
 
 @nodal_load.register
