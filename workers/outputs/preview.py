@@ -10,6 +10,7 @@ from pathlib import Path
 
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
+from workers.analysis.mesh import Mesh
 from workers.cautions import Caution
 from workers.job import Job
 from workers.outputs.drawing.fields import (
@@ -18,13 +19,39 @@ from workers.outputs.drawing.fields import (
     draw_deformed,
     draw_stress,
 )
+from workers.outputs.drawing.model import draw_model
 from workers.outputs.drawing.numbers import TIMES, show
 from workers.outputs.drawing.offscreen import probe, require
 from workers.outputs.drawing.page import Page
 
-__all__ = ["QUANTITIES", "probe", "render_deformed", "render_field"]
+__all__ = ["QUANTITIES", "probe", "render_deformed", "render_field", "render_model"]
 
 QUANTITIES = ("model", "deformed", *STRESS_QUANTITIES)
+
+
+def render_model(
+    path: Path,
+    job: Job,
+    mesh: Mesh,
+    *,
+    case: str | None,
+    cautions: Sequence[Caution],
+) -> None:
+    """Draw plate, mesh, dimensions, supports, and the loads of one case or combination.
+
+    Needs nothing solved; with no case, no loads.
+
+    Raises
+    ------
+    KeyError    no case and no combination has that name
+    MeshError   a support or load acts on something that the mesh does not have
+    and PicturesUnavailableError, OSError as `render_field` does.
+    """
+    require()
+    subtitle = "Model" if case is None else f"{case} · Model and loads"
+    page = Page(job.title, subtitle, cautions)
+    draw_model(page, job, mesh, case)
+    page.save(path, _facts(case or "", "model", job.units.length))
 
 
 def render_field(

@@ -5,7 +5,7 @@ and the fonts are matplotlib's Agg backend and its DejaVu, used bare.
 """
 
 from collections.abc import Sequence
-from functools import cache
+from functools import cache, lru_cache
 from pathlib import Path as FilePath
 from typing import Literal
 
@@ -47,6 +47,14 @@ def printable(text: str, bold: bool = False) -> str:
     known = _characters(bold)
     plain = (" " if ord(c) < 32 or c.isspace() else c for c in text)
     return "".join(c if ord(c) in known else MISSING for c in plain)
+
+
+@lru_cache(maxsize=4096)
+def _text_width(text: str, size: float, bold: bool) -> float:
+    """Titles and cautions are the same on many pictures, and measuring takes milliseconds."""
+    ruler = RendererAgg(1, 1, POINTS_PER_INCH)
+    shown = printable(text, bold)
+    return float(ruler.get_text_width_height_descent(shown, _font(size, bold), False)[0])
 
 
 class Canvas:
@@ -117,9 +125,7 @@ class Canvas:
 
     def measure(self, text: str, size: float, *, bold: bool = False) -> Size:
         """Width of the text and height of its line; the same height for every text of a size."""
-        font = _font(size, bold)
-        width, _, _ = self._agg.get_text_width_height_descent(printable(text, bold), font, False)
-        return width, 1.2 * size
+        return _text_width(text, size, bold), 1.2 * size
 
     def text(
         self,

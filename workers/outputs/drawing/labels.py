@@ -36,7 +36,7 @@ class Labels:
     def __init__(self, canvas: Canvas, room: Box, paper: NDArray[np.uint8]) -> None:
         self._canvas, self._room = canvas, room
         inked = canvas.pixels()[..., 3] > 24
-        painted = paper.min(axis=2) < 250
+        painted = (paper[..., 0] < 250) | (paper[..., 1] < 250) | (paper[..., 2] < 250)
         self._ink: NDArray[np.float64] = np.maximum(
             _any_in_cell(inked), PAINTED * _any_in_cell(painted)
         )

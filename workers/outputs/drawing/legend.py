@@ -2,6 +2,7 @@
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -122,7 +123,7 @@ def _tick(canvas: Canvas, ends: list[tuple[float, float]], value: float) -> None
     draw_isoline(canvas, np.array(ends), value)
 
 
-def draw_isoline(canvas: Canvas, points: NDArray[np.float64], value: float) -> None:
+def draw_isoline(canvas: Canvas, points: NDArray[np.floating[Any]], value: float) -> None:
     """Solid where the value is positive, dashed where negative, heavy at zero."""
     dash = NEGATIVE_DASH if value < 0 else None
     canvas.line(points, INK, 2 * ISOLINE if value == 0 else ISOLINE, dash=dash, alpha=0.55)

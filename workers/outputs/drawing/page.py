@@ -112,11 +112,10 @@ class Page:
 
 
 def over(paper: Pixels, sheet: Pixels) -> Pixels:
-    """A transparent sheet laid over opaque paper."""
-    alpha = sheet[..., 3:].astype(np.uint16)
-    # Agg keeps colours unmultiplied by opacity.
-    mixed = sheet[..., :3] * alpha + paper * (255 - alpha)
-    return ((mixed + 127) // 255).astype(np.uint8)
+    """A transparent sheet (height, width, 4) laid over opaque paper (height, width, 3)."""
+    mixed = Image.fromarray(paper).convert("RGBA")
+    mixed.alpha_composite(Image.fromarray(sheet))
+    return np.asarray(mixed.convert("RGB"))
 
 
 def _is_latin(text: str) -> bool:

@@ -45,6 +45,7 @@ def paint(
     )
     plotter = pyvista.Plotter(off_screen=True, window_size=[width, height])
     try:
+        plotter.disable_anti_aliasing()  # edges are overdrawn with smooth lines
         plotter.background_color = pyvista.Color("white")
         plotter.add_mesh(
             surface,
@@ -92,4 +93,4 @@ def _cells(flat: NDArray) -> list[NDArray]:
 
 def _polydata(points: Array, triangles: NDArray[np.int64]) -> pyvista.PolyData:
     space = np.column_stack((points, np.zeros(len(points))))
-    return pyvista.PolyData.from_regular_faces(space, triangles.astype(int))
+    return pyvista.PolyData.from_regular_faces(space.astype(float), triangles.astype(int))

@@ -29,14 +29,16 @@ class Surface:
 
     values : (n, k)   whatever was interpolated; elements do not share corners
     triangles : (t, 3)
+    counts : how many of the n belong to each block
     """
 
     values: Array
     triangles: NDArray[np.int64]
+    counts: tuple[int, ...]
 
 
 @cache
-def lattice(triangle: bool, pieces: int) -> tuple[Array, NDArray[np.int64]]:
+def lattice(triangle: bool, pieces: int) -> tuple[NDArray[np.float64], NDArray[np.int64]]:
     """Natural points (q, 2) and counter-clockwise triangles (t, 3) that cut an element."""
     i, j = np.meshgrid(np.arange(pieces + 1), np.arange(pieces + 1))
     number = np.full(i.shape, -1)
@@ -75,7 +77,7 @@ def tessellate(
         )
         values.append(block.reshape(-1, nodal.shape[1]))
         start += len(values[-1])
-    return Surface(np.concatenate(values), np.concatenate(triangles))
+    return Surface(np.concatenate(values), np.concatenate(triangles), tuple(len(v) for v in values))
 
 
 def _pieces(corners: Array, room: float) -> int:

@@ -1,0 +1,181 @@
+"""What a load is in words, and as vectors along a side, ready to be drawn.
+
+Combinations scale the loads of their cases by a factor; what is shown is the scaled value.
+"""
+
+from functools import singledispatch
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.job import (
+    Acceleration,
+    Bearing,
+    BodyForce,
+    LineLoad,
+    Load,
+    Named,
+    PointForce,
+    Pressure,
+    Shear,
+    Spin,
+    TemperatureChange,
+    TotalForce,
+    TotalMoment,
+    Traction,
+    Units,
+    Vector,
+)
+from workers.outputs.drawing.numbers import TIMES, show, vector
+
+Array = NDArray[np.floating[Any]]
+
+
+def target_name(load: Load, whole: str = "whole plate") -> str:
+    """The name of what a load acts on; "" for a selector, which the picture shows."""
+    if load.on is None:
+        return whole
+    return load.on.name if isinstance(load.on, Named) else ""
+
+
+# --- in words ------------------------------------------------------------------------------------
+
+
+@singledispatch
+def describe(load: Load, factor: float, units: Units) -> str:
+    """One line for a load, e.g. "pressure 0 to 5 MPa"."""
+    raise TypeError(f"{type(load).__name__} is not a load")
+
+
+@describe.register(PointForce)
+def _(load: PointForce, factor: float, units: Units) -> str:
+    return _vector(load.force, factor, units.force)
+
+
+@describe.register(TotalForce)
+def _(load: TotalForce, factor: float, units: Units) -> str:
+    return f"total {_vector(load.force, factor, units.force)}"
+
+
+@describe.register(Bearing)
+def _(load: Bearing, factor: float, units: Units) -> str:
+    return f"bearing {_vector(load.force, factor, units.force)}"
+
+
+@describe.register(TotalMoment)
+def _(load: TotalMoment, factor: float, units: Units) -> str:
+    return f"moment {show(factor * load.moment)} {units.force}·{units.length}"
+
+
+@describe.register(Traction)
+def _(load: Traction, factor: float, units: Units) -> str:
+    return f"traction {_vectors(load.start, load.end, factor, units.stress)}"
+
+
+@describe.register(LineLoad)
+def _(load: LineLoad, factor: float, units: Units) -> str:
+    return _vectors(load.start, load.end, factor, f"{units.force}/{units.length}")
+
+
+@describe.register(Pressure)
+def _(load: Pressure, factor: float, units: Units) -> str:
+    return f"pressure {_range(load.start, load.end, factor, units.stress)}"
+
+
+@describe.register(Shear)
+def _(load: Shear, factor: float, units: Units) -> str:
+    return f"shear {_range(load.start, load.end, factor, units.stress)}"
+
+
+@describe.register(Acceleration)
+def _(load: Acceleration, factor: float, units: Units) -> str:
+    return f"acceleration {_vector(load.acceleration, factor, f'{units.length}/s²')}"
+
+
+@describe.register(BodyForce)
+def _(load: BodyForce, factor: float, units: Units) -> str:
+    return f"body force {_vector(load.force, factor, f'{units.force}/{units.length}³')}"
+
+
+@describe.register(Spin)
+def _(load: Spin, factor: float, units: Units) -> str:
+    times = "" if factor == 1 else f", its forces {TIMES} {show(factor)}"
+    return f"spin {show(load.speed)} rad/s about {vector(*load.about)} {units.length}{times}"
+
+
+@describe.register(TemperatureChange)
+def _(load: TemperatureChange, factor: float, units: Units) -> str:
+    change = factor * load.change
+    return f"temperature {'+' if change > 0 else ''}{show(change)} K"
+
+
+def _vector(v: Vector, factor: float, unit: str) -> str:
+    """A vector on an axis by its size (the arrow shows the way), any other by its components."""
+    x, y = factor * v[0], factor * v[1]
+    if x == 0 or y == 0:
+        return f"{show(abs(x + y))} {unit}"
+    return f"{vector(x, y)} {unit}"
+
+
+def _vectors(start: Vector, end: Vector, factor: float, unit: str) -> str:
+    if start == end:
+        return _vector(start, factor, unit)
+    first, last = (vector(factor * x, factor * y) for x, y in (start, end))
+    return f"{first} to {last} {unit}"
+
+
+def _range(start: float, end: float, factor: float, unit: str) -> str:
+    if start == end:
+        return f"{show(factor * start)} {unit}"
+    return f"{show(factor * start)} to {show(factor * end)} {unit}"
+
+
+# --- as vectors along a side ---------------------------------------------------------------------
+
+
+@singledispatch
+def along_side(load: Load, outward: Array, part: Array) -> Array | None:
+    """The direction and relative size of a load at places on a side, (k, 2).
+
+    outward : (k, 2) unit normals away from the material; part : (k,) of the length of the side.
+    None for a load that does not act on sides.
+    """
+    return None
+
+
+@along_side.register(TotalForce)
+def _(load: TotalForce, outward: Array, part: Array) -> Array:
+    return np.broadcast_to(np.array(load.force), outward.shape)
+
+
+@along_side.register(Traction)
+@along_side.register(LineLoad)
+def _(load: Traction | LineLoad, outward: Array, part: Array) -> Array:
+    start, end = np.array(load.start), np.array(load.end)
+    return (1 - part)[:, None] * start + part[:, None] * end
+
+
+@along_side.register(Pressure)
+def _(load: Pressure, outward: Array, part: Array) -> Array:
+    return -((1 - part) * load.start + part * load.end)[:, None] * outward
+
+
+@along_side.register(Shear)
+def _(load: Shear, outward: Array, part: Array) -> Array:
+    tangent = np.column_stack((-outward[:, 1], outward[:, 0]))
+    return ((1 - part) * load.start + part * load.end)[:, None] * tangent
+
+
+@along_side.register(Bearing)
+def _(load: Bearing, outward: Array, part: Array) -> Array:
+    size = np.hypot(*load.force)
+    pressed = np.maximum(0.0, -outward @ np.array(load.force) / size) if size else 0 * part
+    return -size * pressed[:, None] * outward
+
+
+@along_side.register(TotalMoment)
+def _(load: TotalMoment, outward: Array, part: Array) -> Array:
+    # With the material on the left, a push into it at the start and a pull at the end turns the
+    # side clockwise as seen from its middle.
+    return load.moment * (1 - 2 * part)[:, None] * outward

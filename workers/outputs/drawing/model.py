@@ -1,0 +1,155 @@
+"""The picture of the model: plate and mesh, dimensions, supports, and the loads of one case.
+
+Needs only the job and its mesh, so it can be drawn before anything is solved.
+"""
+
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.mesh import PLATE as PLATE_REGION
+from workers.analysis.mesh import Mesh
+from workers.job import Job
+from workers.outputs.drawing.canvas import Canvas
+from workers.outputs.drawing.labels import Labels
+from workers.outputs.drawing.loads import (
+    ROW,
+    acting_loads,
+    body_loads,
+    draw_body_loads,
+    draw_loads,
+)
+from workers.outputs.drawing.numbers import show
+from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page, over
+from workers.outputs.drawing.palette import FAINT, INK, PLATE, PLATE_THICK, PLATE_THIN
+from workers.outputs.drawing.plate import draw_mesh, draw_outline
+from workers.outputs.drawing.raster import paint
+from workers.outputs.drawing.supports import draw_moves, draw_supports
+from workers.outputs.drawing.symbols import arrow, dimension
+from workers.outputs.drawing.tessellation import tessellate
+from workers.outputs.drawing.view import View
+
+Array = NDArray[np.floating[Any]]
+
+SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 170.0, 105.0, 165.0  # for signs, labels and dimensions
+DIMENSION_CLEAR = 30.0  # between a dimension line and whatever is drawn below it
+SMALL = 22.0
+TINTS = (PLATE_THIN, PLATE, PLATE_THICK)
+
+
+def draw_model(page: Page, job: Job, mesh: Mesh, state: str | None) -> None:
+    """Draw the model with the loads of a case or combination; with none of them for None."""
+    acting = acting_loads(job, state)
+    listed = len(body_loads(acting)) * ROW
+    room = page.drawing.inset(SIDE_ROOM, BOTTOM_ROOM, SIDE_ROOM, TOP_ROOM + listed)
+    low, high = mesh.nodes.min(axis=0), mesh.nodes.max(axis=0)
+    view = View.fit(low, high, room)
+    _paint_plate(page, job, mesh, view)
+    canvas = page.canvas
+    draw_outline(canvas, mesh, view, mesh.nodes)
+    notes = draw_supports(canvas, job, mesh, view)
+    draw_moves(canvas, job, mesh, view, state)
+    notes += draw_loads(canvas, job, mesh, view, acting)
+    draw_body_loads(canvas, job, view, acting, (page.drawing.left, page.drawing.top))
+    _draw_axes(page)
+    _draw_caption(page, job, mesh)
+    labels = Labels(canvas, page.drawing, page.paper)
+    for note in notes:
+        labels.place(note.anchor, note.lines, colour=note.colour, toward=note.toward)
+    _label_regions(labels, job, mesh, view)
+    _draw_dimensions(page, job, view, low, high)
+
+
+def _paint_plate(page: Page, job: Job, mesh: Mesh, view: View) -> None:
+    """Fill the plate, thicker regions darker, and draw the mesh where it can be told apart."""
+    tint = np.array([_tint(job, name) for name in mesh.regions], float)
+    elements, chosen, levels = [], [], []
+    for block in mesh.blocks:
+        for level in np.unique(tint[block.region]):
+            elements.append(block.element)
+            chosen.append(block.connectivity[tint[block.region] == level])
+            levels.append(level)
+    surface = tessellate(elements, chosen, mesh.nodes, view.scale)
+    painted = paint(
+        (WIDTH, HEIGHT),
+        view.pixels(surface.values),
+        surface.triangles,
+        np.repeat(levels, surface.counts),
+        colours=np.array([_rgb(colour) for colour in TINTS], np.uint8),
+        limits=(0.0, len(TINTS) - 1.0),
+    )
+    sheet = Canvas(WIDTH, HEIGHT)
+    draw_mesh(sheet, mesh, view, mesh.nodes)
+    page.paper = over(painted, sheet.pixels())
+
+
+def _tint(job: Job, region: str) -> int:
+    """Index into TINTS: thinner than the plate, its own thickness, thicker."""
+    return 1 + int(np.sign(job.thickness_of(region) - job.plate.thickness))
+
+
+def _rgb(colour: str) -> tuple[int, ...]:
+    return tuple(int(colour[i : i + 2], 16) for i in (1, 3, 5))
+
+
+# --- dimensions, axes, captions ------------------------------------------------------------------
+
+
+def _draw_dimensions(page: Page, job: Job, view: View, low: Array, high: Array) -> None:
+    """Overall width below and height beside the plate, clear of what is drawn there."""
+    canvas, room, unit = page.canvas, page.drawing, job.units.length
+    inked = canvas.pixels()[::-1, :, 3] > 24
+    left, bottom = view.pixels(low)
+    right, top = view.pixels(high)
+    columns = slice(int(left), int(right) + 1)
+    rows = slice(int(bottom), int(top) + 1)
+    below = np.flatnonzero(inked[int(room.bottom) : int(bottom) - 4, columns].any(axis=1))
+    lowest = room.bottom + below[0] if len(below) else bottom
+    y = max(room.bottom + SMALL + 14, lowest - DIMENSION_CLEAR)
+    width, height = (f"{show(v, 4)} {unit}" for v in high - low)
+    dimension(
+        canvas, np.array([left, bottom]), np.array([right, bottom]),
+        np.array([0.0, y - bottom]), width, LABEL_SIZE,
+    )  # fmt: skip
+    beside = np.flatnonzero(inked[rows, int(right) + 4 : int(room.right)].any(axis=0))
+    furthest = right + 4 + beside[-1] if len(beside) else right
+    x = min(room.right - LABEL_SIZE, furthest + DIMENSION_CLEAR)
+    dimension(
+        canvas, np.array([right, bottom]), np.array([right, top]),
+        np.array([x - right, 0.0]), height, LABEL_SIZE,
+    )  # fmt: skip
+
+
+def _draw_axes(page: Page) -> None:
+    corner = np.array([page.drawing.left + 6, page.drawing.bottom + 12])
+    for direction, name in ((np.array([1.0, 0.0]), "x"), (np.array([0.0, 1.0]), "y")):
+        tip = corner + 52 * direction
+        arrow(page.canvas, corner, tip, FAINT, width=2.0)
+        page.canvas.text(tip + 13 * direction, name, SMALL, colour=FAINT, align="centre")
+
+
+def _draw_caption(page: Page, job: Job, mesh: Mesh) -> None:
+    """Elements, nodes and section, at the lower right."""
+    counts: dict[str, int] = {}
+    for block in mesh.blocks:
+        name = block.element.name
+        counts[name] = counts.get(name, 0) + block.element_count
+    elements = " + ".join(f"{count} {name}" for name, count in counts.items())
+    section = f"t = {show(job.plate.thickness)} {job.units.length}, {job.plate.material}"
+    text = f"{section} · {elements}, {mesh.node_count} nodes"
+    at = (page.drawing.right, page.drawing.bottom + 14)
+    page.canvas.text(at, text, SMALL, colour=FAINT, align="right")
+
+
+def _label_regions(labels: Labels, job: Job, mesh: Mesh, view: View) -> None:
+    for number, name in enumerate(mesh.regions):
+        nodes = [b.connectivity[b.region == number].ravel() for b in mesh.blocks]
+        inside = mesh.nodes[np.unique(np.concatenate(nodes))]
+        if name == PLATE_REGION or not len(inside):
+            continue
+        middle = inside[np.argmin(np.linalg.norm(inside - inside.mean(axis=0), axis=1))]
+        section = f"t = {show(job.thickness_of(name))} {job.units.length}"
+        material = job.material_of(name).name
+        shown = f"{section}, {material}" if material != job.plate.material else section
+        labels.place(view.pixels(middle), (f"{name}: {shown}",), colour=INK)
