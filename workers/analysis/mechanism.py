@@ -27,7 +27,10 @@ def describe_motion(mesh: Mesh, motion: Array) -> str:
     inertia = (arm**2).sum()
     turn = (arm[:, 0] * moved[:, 1] - arm[:, 1] * moved[:, 0]).sum() / inertia if inertia else 0.0
     rigid = shift + turn * np.stack([-arm[:, 1], arm[:, 0]], axis=1)
-    what = _moving_part(mesh, moving, middle)
+    everywhere = mesh.nodes - middle
+    carried = shift + turn * np.stack([-everywhere[:, 1], everywhere[:, 0]], axis=1)
+    whole = np.abs(carried - motion / size.max()).max() < RIGID
+    what = "the plate" if whole else _moving_part(moving, middle)
     if np.abs(rigid - moved).max() > RIGID:
         x, y = mesh.nodes[np.argmax(size)]
         return f"{what} can move without resistance, most of all at ({x:.4g}, {y:.4g})"
@@ -38,9 +41,7 @@ def describe_motion(mesh: Mesh, motion: Array) -> str:
     return f"{what} can rotate about ({_tidy(x, tiny)}, {_tidy(y, tiny)})"
 
 
-def _moving_part(mesh: Mesh, moving: NDArray[np.bool_], middle: Array) -> str:
-    if moving.all():
-        return "the plate"
+def _moving_part(moving: NDArray[np.bool_], middle: Array) -> str:
     x, y = middle
     return f"a part of the plate ({moving.sum()} nodes around ({x:.4g}, {y:.4g}))"
 

@@ -13,9 +13,11 @@ from numpy.typing import NDArray
 from workers.analysis.loads.cases import Loads, resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model, build_model
+from workers.analysis.motions import free_motions
 from workers.analysis.stopwatch import Stopwatch
 from workers.analysis.supports import Supports, resolve_supports
 from workers.analysis.system import System, build_system
+from workers.errors import MechanismError
 from workers.job import Job
 
 Array = NDArray[np.float64]
@@ -101,6 +103,8 @@ def solve(job: Job, mesh: Mesh, progress: Progress | None = None) -> Solution:
     model = build_model(job, mesh)
     with watch("loads and supports"):
         supports = resolve_supports(job, mesh)
+        if motions := free_motions(mesh, *supports.holding()):
+            raise MechanismError(motions)
         loads = resolve_loads(model)
     system = build_system(model, supports, watch, report)
     report("solving", 0.0)

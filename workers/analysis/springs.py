@@ -12,6 +12,8 @@ from workers.job import Named, Spring, Support
 
 Array = NDArray[np.float64]
 
+NO_STIFFNESS = 1e-12  # of the stiffness the other way: rounding of the turned spring
+
 
 @dataclass(frozen=True, eq=False)
 class SpringBlocks:
@@ -30,6 +32,16 @@ class SpringBlocks:
         force = np.zeros((len(nodes), *displacement.shape[1:]))
         np.subtract.at(force, row, self.blocks @ displacement[self.columns])
         return force
+
+    def holding(self) -> tuple[NDArray[np.int64], Array]:
+        """Nodes (r,) and directions (r, 2) in which the springs resist."""
+        own = self.rows == self.columns
+        nodes, row = np.unique(self.rows[own], return_inverse=True)
+        stiffness = np.zeros((len(nodes), 2, 2))
+        np.add.at(stiffness, row, self.blocks[own])
+        size, axes = np.linalg.eigh(stiffness)
+        node, axis = np.nonzero(size > NO_STIFFNESS * size[:, 1:])
+        return nodes[node], axes[node, :, axis]
 
     @property
     def nodes(self) -> NDArray[np.int64]:

@@ -63,6 +63,14 @@ class Supports:
         """Numbers of the nodes at which something is held."""
         return np.flatnonzero(self.held.any(axis=1))
 
+    def holding(self) -> tuple[NDArray[np.int64], Array]:
+        """Every node (r,) and direction (r, 2) in which a support or a spring resists."""
+        parts = [(share.nodes, share.direction) for share in self.shares]
+        parts += [spring.holding() for spring in self.springs]
+        nodes = [np.empty(0, np.int64), *(part[0] for part in parts)]
+        directions = [np.empty((0, 2)), *(part[1] for part in parts)]
+        return np.concatenate(nodes), np.concatenate(directions)
+
 
 def resolve_supports(job: Job, mesh: Mesh) -> Supports:
     """Put the supports of a job on a mesh.

@@ -32,8 +32,13 @@ from workers.errors import AnalysisError, Fault, MechanismError
 Array = NDArray[np.float64]
 
 RESIDUAL = 1e-10  # norm of the residual over that of the load, after at most one refinement
-BACKWARD = 1e-13  # backward error of a sound solution whose plate is too slender for RESIDUAL
-# A mechanism comes out at 1e-17 to 3e-16 here, a strip of 1 to 1000 at 1e-12 to 1e-13.
+# A slender or weakly held plate moves so far that rounding its displacements alone leaves more than
+# that; a backward error this small excuses it, up to the second limit (a strip of 1 to 300 leaves
+# 2e-6, one of 1 to 1000 2e-4).
+BACKWARD = 1e-13
+EXCUSABLE = 1e-4
+# Mechanisms come out below 1e-17 (all elements, 4 x 4 to 100 x 100 cells), a strip of 1 to 1000 at
+# 2e-14.
 SINGULAR = 1e-15
 SHIFT = 1e-8  # of the diagonal: makes a mechanism solvable so that its motion can be seen
 
@@ -116,8 +121,9 @@ class System:
             if len(still := self._poor(solution, right, left, residual)):
                 message = (
                     "the equations could not be solved: the forces out of balance are "
-                    f"{residual[still].max():.1e} of the load; look for parts that are nearly "
-                    "free to move and for extreme ratios of stiffness"
+                    f"{residual[still].max():.1e} of the load (reciprocal condition "
+                    f"{self.reciprocal_condition:.1e}); look for parts that are nearly free to "
+                    "move, and for extreme ratios of stiffness or length"
                 )
                 raise AnalysisError([Fault("", message)])
         return solution, residual
@@ -127,14 +133,13 @@ class System:
     ) -> NDArray[np.int64]:
         """Columns that are worse than the plate itself excuses.
 
-        The displacements of a slender plate are large against its load, and rounding them alone
-        leaves more than RESIDUAL out of balance; the backward error tells such a plate from a
-        failed solution.
+        The backward error tells a slender plate from a failed solution.
         """
         poor = np.flatnonzero(~(residual <= RESIDUAL))
         if len(poor):
             columns = (a[:, poor] for a in (solution, right, left))
-            poor = poor[~(backward_error(self.matrix, *columns) <= BACKWARD)]
+            sound = backward_error(self.matrix, *columns) <= BACKWARD
+            poor = poor[~(sound & (residual[poor] <= EXCUSABLE))]
         return poor
 
 
