@@ -21,7 +21,7 @@ MOST_SIDES = 4  # of an element
 Facets = NDArray[np.int32]  # (f, 3): block, element, local side
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Block:
     """Elements of one type.
 
@@ -71,7 +71,7 @@ class BrokenChainError(ValueError):
     """Facets do not follow each other from one start to one end (or around one loop)."""
 
 
-@dataclass(frozen=True, eq=False)
+@dataclass(frozen=True, eq=False, repr=False)
 class Mesh:
     """A plane mesh.
 
@@ -86,6 +86,10 @@ class Mesh:
     regions: tuple[str, ...] = (PLATE,)
     sides: Mapping[str, Facets] = field(default_factory=dict)
     points: Mapping[str, int] = field(default_factory=dict)
+
+    def __repr__(self) -> str:
+        kinds = ", ".join(f"{block.element_count} {block.element.name}" for block in self.blocks)
+        return f"Mesh({self.node_count} nodes, {kinds})"
 
     # --- sizes -----------------------------------------------------------------------------
 

@@ -4,7 +4,7 @@ A target that catches nothing is a fault, and so is a segment that ends inside a
 where the document says, or not at all.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from difflib import get_close_matches
 from functools import singledispatch
 
@@ -53,6 +53,26 @@ def select(mesh: Mesh, target: Target, pointer: str) -> Selection:
         would have been nearest.
     """
     return _catch(target, mesh, pointer)
+
+
+@dataclass(frozen=True, eq=False)
+class Finder:
+    """Selections on one mesh, each target looked up once however often it is used."""
+
+    mesh: Mesh
+    known: dict[Target, Selection | tuple[Fault, ...]] = field(default_factory=dict)
+
+    def find(self, target: Target, pointer: str) -> Selection:
+        """As `select`."""
+        if target not in self.known:
+            try:
+                self.known[target] = select(self.mesh, target, "")
+            except MeshError as error:
+                self.known[target] = error.faults
+        found = self.known[target]
+        if isinstance(found, Selection):
+            return found
+        raise MeshError(Fault(pointer + fault.pointer, fault.message) for fault in found)
 
 
 @singledispatch

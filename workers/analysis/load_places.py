@@ -1,0 +1,119 @@
+"""Can every load act where the document puts it? Said without computing any load.
+
+What a load comes to is in `loads/`, which also says what only its figures can tell: a hole that is
+not round, a material without density.
+"""
+
+from collections.abc import Callable, Iterator, Mapping
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.mesh import BrokenChainError, Facets, Mesh
+from workers.analysis.selection import Finder, Selection
+from workers.errors import Fault, FaultyError
+from workers.job import (
+    Acceleration,
+    Bearing,
+    BodyForce,
+    Job,
+    LineLoad,
+    Load,
+    Named,
+    PointForce,
+    Pressure,
+    Shear,
+    Spin,
+    TemperatureChange,
+    TotalForce,
+    TotalMoment,
+    Traction,
+)
+
+Check = Callable[[Load, Selection, Mesh], str | None]
+
+
+def load_faults(job: Job, finder: Finder) -> Iterator[Fault]:
+    """Loads that find no place on the mesh, or the wrong kind of place."""
+    for case in job.load_cases:
+        for load in case.loads:
+            if load.on is None:
+                if type(load) not in ON_AN_AREA:
+                    yield Fault(load.pointer, "this load needs `on`: where does it act?")
+                continue
+            try:
+                selection = finder.find(load.on, f"{load.pointer}/on")
+            except FaultyError as error:
+                yield from error.faults
+                continue
+            messages = (check(load, selection, finder.mesh) for check in CHECKS[type(load)])
+            first = next((message for message in messages if message), None)
+            if first:
+                yield Fault(f"{load.pointer}/on", first)
+
+
+def _is_a_point(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    count = len(selection.nodes)
+    if count == 1:
+        return None
+    return (
+        f"`force` acts at one point, and there are {count} nodes here; `total_force` spreads a "
+        "force over a side"
+    )
+
+
+def _is_a_side(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    if isinstance(load.on, Named) and load.on.name in mesh.regions:
+        return f"this load acts on a side, and {load.on.name!r} is a region"
+    if not len(selection.facets):
+        return "this load acts on a side, and there are only points here; `force` acts at a point"
+    return None
+
+
+def _is_border(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    inside = ~_among(selection.facets, mesh.boundary)
+    if not inside.any():
+        return None
+    x, y = mesh.nodes[mesh.facet_ends(selection.facets[inside][:1])[0]].mean(axis=0)
+    return (
+        f"this load acts on the border of the plate, and there is material on both sides at "
+        f"({x:.6g}, {y:.6g}); `line_load` and `traction` may act inside"
+    )
+
+
+def _is_one_side_if_varying(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    if not isinstance(load, VARYING) or np.array_equal(load.start, load.end):
+        return None
+    try:
+        mesh.chain(selection.facets)
+    except BrokenChainError as error:
+        return f"a load that varies needs one connected side, but {error}; load it in pieces"
+    return None
+
+
+def _is_an_area(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    if selection.element_count:
+        return None
+    return "this load acts on an area: name a region, or leave `on` out for the whole plate"
+
+
+def _among(facets: Facets, others: Facets) -> NDArray[np.bool_]:
+    """Which facets (f, 3) are among the others."""
+    size = np.array([1, 1 << 8, 1 << 40])  # side, element, block
+    codes = [f[:, ::-1].astype(np.int64) @ size for f in (facets, others)]
+    return np.isin(*codes)
+
+
+VARYING = (Traction, LineLoad, Pressure, Shear)
+ON_AN_AREA = (Acceleration, BodyForce, Spin, TemperatureChange)
+CHECKS: Mapping[type[Load], tuple[Check, ...]] = {
+    PointForce: (_is_a_point,),
+    TotalForce: (_is_a_side,),
+    TotalMoment: (_is_a_side,),
+    Traction: (_is_a_side, _is_one_side_if_varying),
+    LineLoad: (_is_a_side, _is_one_side_if_varying),
+    Pressure: (_is_a_side, _is_border, _is_one_side_if_varying),
+    Shear: (_is_a_side, _is_border, _is_one_side_if_varying),
+    Bearing: (_is_a_side, _is_border),
+    **dict.fromkeys(ON_AN_AREA, (_is_an_area,)),
+}
