@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any, NamedTuple
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.analysis.combine import States, load_states
 from workers.analysis.mesh import Mesh
 from workers.analysis.selection import Selection, select
 from workers.job import Job, Target
@@ -53,15 +54,13 @@ class ReviewContext:
         """Results of every load case and combination, by name."""
         return {**self.results.get("cases", {}), **self.results.get("combinations", {})}
 
+    def factors(self, state: str) -> Array:
+        """Factor of every load case in a state, in the order of the job, (c,)."""
+        return self._load_states.factors[:, self._load_states.index(state)]
+
     @cached_property
-    def factors(self) -> dict[str, dict[str, float]]:
-        """For every state the load cases that take part, with their factors, zeros left out."""
-        own = {case.name: {case.name: 1.0} for case in self.job.load_cases}
-        combined = {
-            combination.name: {name: f for name, f in combination.factors.items() if f != 0}
-            for combination in self.job.combinations
-        }
-        return {**own, **combined}
+    def _load_states(self) -> States:
+        return load_states(self.job)
 
     def peaks(self, quantity: str) -> list[Peak]:
         """The peak of a quantity in every state that has one, largest magnitude first."""
@@ -87,7 +86,7 @@ class ReviewContext:
         """Displacement of the nodes in a state, (N, 2) [L]; None without a solution."""
         if self.solution is None:
             return None
-        return self.solution.displacement @ self._columns(state)
+        return self.solution.displacement @ self.factors(state)
 
     def displacement_gradients(self, state: str) -> list[Array]:
         """At the centre of every element, for each block (m, 2, 2): [i, j] = d u_j / d x_i.
@@ -106,15 +105,8 @@ class ReviewContext:
         strains = [np.array(alpha)[block.region] for block in self.mesh.blocks]
         if self.solution is None or self.solution.temperature is None:
             return [0 * strain for strain in strains]
-        factors = self._columns(state)
         pairs = zip(strains, self.solution.temperature, strict=True)
-        return [strain * (temperature @ factors) for strain, temperature in pairs]
-
-    def _columns(self, state: str) -> Array:
-        """Factor of each load case of the solution in a state, (c,)."""
-        taking_part = self.factors[state]
-        assert self.solution is not None
-        return np.array([taking_part.get(case, 0.0) for case in self.solution.cases])
+        return [strain * (change @ self.factors(state)) for strain, change in pairs]
 
     @cached_property
     def _centre_gradients(self) -> list[Array]:

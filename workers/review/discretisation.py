@@ -14,8 +14,10 @@ PEAK_ERROR = 0.10  # of the peak von Mises stress; common practice
 SCALED_JACOBIAN = 0.2  # 1 is a square or an equilateral triangle
 ANGLE = 15.0  # degrees
 ASPECT = 10.0
-# Of the strain energy of T3 or Q4 elements; see `bending_share.py`.
-BENDING_SHARE = 0.03
+# Of the strain energy, see `bending_share.py`. Cantilevers of n squares across the depth: share
+# 1.5/n^2 for both, deflection short by 0.4 shares (Q4), 1.7 shares (T3). So 1 or 2 % is missing
+# here, at n = 7 (Q4) and n = 12 (T3); tension past a hole has 0.7 % on the coarsest useful mesh.
+BENDING_SHARE = {"Q4": 0.03, "T3": 0.01}
 
 
 @rule(
@@ -102,13 +104,13 @@ def low_order_bending(context: ReviewContext) -> Iterator[Finding]:
         for name, share in bending_shares(context, state).items():
             worst[name] = max(worst.get(name, (0.0, state)), (share, state))
     for name, (share, state) in worst.items():
-        if share > BENDING_SHARE:
+        if share > BENDING_SHARE[name]:
             yield finding(
                 f"In {state!r} {share:.1%} of the strain energy of the {name} elements comes from "
                 "stress that changes across an element: they carry bending, or are far too "
                 "coarse.",
                 value=share,
-                limit=BENDING_SHARE,
+                limit=BENDING_SHARE[name],
                 case=state,
                 element=name,
             )

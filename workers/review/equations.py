@@ -57,10 +57,9 @@ def near_mechanism(context: ReviewContext) -> Iterator[Finding]:
 def _free_strain(context: ReviewContext, state: str) -> float:
     """Largest thermal strain of a state, which moves the plate without stress."""
     largest = max((m.thermal_expansion or 0.0 for m in context.job.materials.values()), default=0.0)
-    factors = context.factors[state]
     return largest * sum(
-        abs(factors.get(case.name, 0.0) * load.change)
-        for case in context.job.load_cases
+        abs(factor * load.change)
+        for factor, case in zip(context.factors(state), context.job.load_cases, strict=True)
         for load in case.loads
         if isinstance(load, TemperatureChange)
     )

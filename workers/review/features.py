@@ -55,16 +55,28 @@ def _loops(mesh: Mesh) -> list[_Loop]:
     start, end = mesh.facet_ends(facets).T
     label = label_components(mesh.node_count, start, end)[start]
     _, number = np.unique(label, return_inverse=True)
-    a, b = mesh.nodes[start], mesh.nodes[end]
-    area = np.bincount(number, (a[:, 0] * b[:, 1] - b[:, 0] * a[:, 1]) / 2)
+    area = np.bincount(number, _swept_areas(mesh))
     perimeter = np.bincount(number, mesh.facet_lengths(facets))
     first = np.unique(number, return_index=True)[1]
-    where = a[first].tolist()
+    where = mesh.nodes[start[first]].tolist()
     part = mesh.components[start[first]].tolist()
     return [
         _Loop(float(area[i]), float(perimeter[i]), (where[i][0], where[i][1]), part[i])
         for i in range(len(first))
     ]
+
+
+def _swept_areas(mesh: Mesh) -> Array:
+    """Area between each boundary facet, along its curve, and the origin; Green's theorem."""
+    facets = mesh.boundary
+    area = np.empty(len(facets))
+    for group in mesh.facet_groups(facets):
+        element = mesh.blocks[group.block].element
+        coords = mesh.nodes[mesh.blocks[group.block].connectivity[group.elements]]
+        x, t = element.side_points(coords, group.side)
+        twice = x[..., 0] * t[..., 1] - x[..., 1] * t[..., 0]
+        area[group.rows] = twice @ element.side_rule().weights / 2
+    return area
 
 
 def arcs(job: Job) -> Iterator[Feature]:

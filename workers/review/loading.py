@@ -80,13 +80,13 @@ def settlement_factored(context: ReviewContext) -> Iterator[Finding]:
     "stress is infinite, and the number only tells the size of the elements.",
 )
 def stress_at_point_load(context: ReviewContext) -> Iterator[Finding]:
-    loaded = {
-        case.name: _point_load_nodes(context, [x for x in case.loads if isinstance(x, PointForce)])
+    loaded = [
+        _point_load_nodes(context, [load for load in case.loads if isinstance(load, PointForce)])
         for case in context.job.load_cases
-    }
+    ]
     found = []
     for peak in context.peaks("von_mises"):
-        parts = [loaded[case] for case in context.factors[peak.case]]
+        parts = [loaded[case] for case in np.flatnonzero(context.factors(peak.case))]
         node = _near(context, peak, np.concatenate(parts) if parts else np.empty(0, np.intp))
         if node is not None:
             found.append((peak, node))
