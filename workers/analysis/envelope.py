@@ -56,7 +56,7 @@ class Envelope:
     def include(self, columns: range, values: Mapping[str, NDArray]) -> None:
         """Take in the measures (P, k) of some states."""
         for name, sign in WORST.items():
-            worst = (sign * values[name]).argmax(axis=1)
+            worst = values[name].argmax(axis=1) if sign > 0 else values[name].argmin(axis=1)
             value = np.take_along_axis(values[name], worst[:, None], axis=1)[:, 0]
             state = (worst + columns.start).astype(np.int32)
             if name not in self.value:

@@ -29,11 +29,13 @@ class Peak:
 
     value : (k,)
     point : (k,)         number of the field point
+    least : (k,)         the other end of the field's range
     error : (k,) or None    estimated, same dimension as the value
     """
 
-    value: Array
+    value: Measure
     point: NDArray[np.intp]
+    least: Measure
     error: Array | None
 
 
@@ -51,7 +53,7 @@ def find_peaks(
     values : measure -> (P, k), as `envelope.measures` makes them
     displacement : (N, 2, k) [L]; stress : (P, 3, k) recovered [F/L^2]; temperature : per block
     """
-    point = {name: (sign * values[name]).argmax(axis=0) for name, sign in WORST.items()}
+    point = {name: worst(values[name], sign) for name, sign in WORST.items()}
     stressed = [name for name in WORST if name != "displacement"]
     error = {name: np.empty(displacement.shape[2]) for name in stressed}
     for place in np.unique(np.concatenate([point[name] for name in stressed])):
@@ -69,10 +71,16 @@ def find_peaks(
         name: Peak(
             np.take_along_axis(values[name], point[name][None], axis=0)[0],
             point[name],
+            values[name].min(axis=0) if sign > 0 else values[name].max(axis=0),
             error.get(name),
         )
-        for name in WORST
+        for name, sign in WORST.items()
     }
+
+
+def worst(values: Measure, sign: int, axis: int = 0) -> NDArray[np.intp]:
+    """Where values are largest (sign +1) or smallest (-1) along an axis."""
+    return values.argmax(axis=axis) if sign > 0 else values.argmin(axis=axis)
 
 
 def _own_stress(

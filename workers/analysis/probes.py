@@ -19,7 +19,7 @@ CANDIDATES = 12  # nearest elements that are tried before a wider search
 INSIDE = 1e-9  # in natural coordinates
 # A point on a true arc lies outside the chords of T3 and Q4 (by 5 % of their length at 16 chords
 # to the circle). So near the border the nearest point of the plate is taken.
-BESIDE = 0.05  # of the element's size, the root of its area
+BESIDE = 0.05  # of the element's longest side
 
 
 @dataclass(frozen=True, eq=False)
@@ -123,7 +123,7 @@ def _snap(mesh: Mesh, found: Located, lost: int, owner: NDArray[np.int64]) -> No
         coords = mesh.nodes[mesh.blocks[number].connectivity[owner[mine, 1]]]
         nearest = np.einsum("cn,cni->ci", element.shape_functions(natural), coords)
         corners = coords[:, : element.corners]
-        size = np.sqrt(np.abs(_shoelace(corners)))
+        size = np.linalg.norm(corners - np.roll(corners, -1, axis=1), axis=2).max(axis=1)
         off = np.linalg.norm(nearest - found.position[lost], axis=1) / size
         row = int(off.argmin()) if len(off) else 0
         if len(off) and off[row] < min(best, BESIDE):
@@ -158,13 +158,6 @@ def _clamp(natural: Array, *, triangle: bool) -> Array:
     r, s = natural.T
     barycentric = np.maximum(np.column_stack((1 - r - s, r, s)), 0.0)
     return (barycentric / barycentric.sum(axis=1, keepdims=True))[:, 1:]
-
-
-def _shoelace(corners: Array) -> Array:
-    """Area of polygons, (m, c, 2) -> (m,) [L^2]."""
-    x, y = corners[..., 0], corners[..., 1]
-    following = np.roll(x, -1, axis=1), np.roll(y, -1, axis=1)
-    return (x * following[1] - following[0] * y).sum(axis=1) / 2
 
 
 def _outside(tree: cKDTree, point: Array, pointer: str) -> Fault:

@@ -1,0 +1,273 @@
+"""The results of a solution as plain numbers, ready for JSON.
+
+States stream through in chunks, so that memory does not grow with their number. The job's own
+particulars, cautions, files and pictures are added by later rooms.
+"""
+
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+from numpy.typing import NDArray
+
+from workers.analysis.combine import States, superpose, superpose_blocks
+from workers.analysis.cuts import cut_forces
+from workers.analysis.envelope import WORST, Envelope, measures
+from workers.analysis.error_estimate import element_volumes, estimate_error
+from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.loads.kinds import Places
+from workers.analysis.model import Model
+from workers.analysis.peaks import Peak, find_peaks, find_utilisation
+from workers.analysis.quality import mesh_quality
+from workers.analysis.recovery import Recovery
+from workers.analysis.resultants import equilibrium, imbalance, reactions
+from workers.analysis.samples import Samples
+from workers.analysis.solution import Solution, SolverReport
+from workers.errors import Fault, MeshError
+
+Array = NDArray[np.float64]
+Json = dict[str, Any]
+Progress = Callable[[str, float], None]
+
+CHUNK_BYTES = 200e6  # for the states that are worked on together
+STAGE = "recovering"
+
+
+def summarise(
+    solution: Solution,
+    recovery: Recovery,
+    states: States,
+    progress: Progress | None = None,
+    envelope: Envelope | None = None,
+) -> Json:
+    """Results of all states.
+
+    Parameters
+    ----------
+    progress : called with the stage and the fraction of it that is done
+    envelope : takes in every state, for whoever wants its fields afterwards
+
+    Returns
+    -------
+    dict with `units`, `solver`, `mesh`, `cases`, `combinations`, `envelope`, `probes`, `lines`,
+    `cuts` and `convergence`; plain floats, strings and lists.
+
+    Raises
+    ------
+    MeshError   a probe, line or cut cannot be where the job puts it; carries all such faults.
+    """
+    job = solution.model.job
+    samples = Samples(recovery.field_mesh, job.requests, states)
+    cuts = _cuts(solution, states)
+    by_state = _balances(solution, states)
+    for columns in states.chunks(_states_at_once(recovery)):
+        results = _strain_and_stress(solution, recovery, states, columns, samples, envelope)
+        for column, result in zip(columns, results, strict=True):
+            by_state[column] = result | by_state[column]
+        if progress is not None:
+            progress(STAGE, columns.stop / len(states))
+    named = list(zip(states.names, states.kinds, by_state, strict=True))
+    return {
+        "units": {
+            "length": job.units.length,
+            "force": job.units.force,
+            "stress": job.units.stress,
+        },
+        "solver": _solver(solution.solver),
+        "mesh": mesh_figures(solution.model),
+        "cases": {name: result for name, kind, result in named if kind == "case"},
+        "combinations": {name: result for name, kind, result in named if kind == "combination"},
+        "envelope": _governing(states, by_state),
+        "probes": samples.probes(),
+        "lines": samples.lines(),
+        "cuts": cuts,
+        "convergence": None,
+    }
+
+
+def _states_at_once(recovery: Recovery) -> int:
+    """How many states fit CHUNK_BYTES: displacements, samples, recovered stress and measures."""
+    points, samples = recovery.operator.shape
+    numbers = 2 * recovery.model.mesh.node_count + 3 * samples + (2 + 3 + 3 + 8) * points
+    return max(1, int(CHUNK_BYTES / (8 * numbers)))
+
+
+# --- one chunk of states -------------------------------------------------------------------------
+
+
+def _strain_and_stress(
+    solution: Solution,
+    recovery: Recovery,
+    states: States,
+    columns: range,
+    samples: Samples,
+    envelope: Envelope | None,
+) -> list[Json]:
+    """Peaks, error estimate and utilisation of some states; feeds samples and envelope."""
+    field_mesh = recovery.field_mesh
+    displacement = superpose(solution.displacement, states, columns)
+    temperature = superpose_blocks(solution.temperature, states, columns)
+    stress = recovery.nodal_stress(displacement, temperature)
+    estimate = estimate_error(recovery, displacement, stress, temperature)
+    at_points = displacement[field_mesh.origin]
+    samples.include(columns, at_points, stress)
+    values = measures(at_points, stress)
+    if envelope is not None:
+        envelope.include(columns, values)
+    peaks = find_peaks(recovery, values, displacement, stress, temperature)
+    results: list[Json] = [
+        {name: _peak(peak, row, field_mesh) for name, peak in peaks.items()}
+        for row in range(len(columns))
+    ]
+    errors = zip(estimate.relative.tolist(), estimate.energy_norm.tolist(), strict=True)
+    for result, (relative, norm) in zip(results, errors, strict=True):
+        result["error_estimate"] = {"relative": relative, "energy_norm": norm}
+    strength = _yield_strength(solution.model)[field_mesh.region]
+    utilisation = find_utilisation(values["von_mises"], strength)
+    for row, result in enumerate(results):
+        result["utilisation"] = utilisation and {
+            "value": float(utilisation.value[row]),
+            "yield_strength": float(strength[utilisation.point[row]]),
+            **_place(utilisation.point[row], field_mesh),
+        }
+    return results
+
+
+def _peak(peak: Peak, row: int, field_mesh: FieldMesh) -> Json:
+    return {
+        "value": float(peak.value[row]),
+        "error": None if peak.error is None else float(peak.error[row]),
+        "least": {"value": float(peak.least[row])},
+        **_place(peak.point[row], field_mesh),
+    }
+
+
+def _place(point: np.intp, field_mesh: FieldMesh) -> Json:
+    return {
+        "at": field_mesh.points[point].tolist(),
+        "region": field_mesh.mesh.regions[field_mesh.region[point]],
+    }
+
+
+def _yield_strength(model: Model) -> Array:
+    """By region; nan where the material does not say, (regions,) [F/L^2]."""
+    stated = [model.job.material_of(region).yield_strength for region in model.mesh.regions]
+    return np.array([np.nan if value is None else value for value in stated])
+
+
+# --- what is linear in the loads -----------------------------------------------------------------
+
+
+def _balances(solution: Solution, states: States) -> list[Json]:
+    """Reactions and equilibrium of every state."""
+    everything = range(len(states))
+    at_supports = [
+        (support, superpose(support.resultant, states, everything))
+        for support in reactions(solution)
+    ]
+    balance = equilibrium(solution)
+    applied, reaction = (
+        superpose(part, states, everything) for part in (balance.applied, balance.reaction)
+    )
+    residual = imbalance(applied, reaction, balance.size @ np.abs(states.factors))
+    return [
+        {
+            "reactions": {
+                support.label: {
+                    "force": resultant[:2, column].tolist(),
+                    "moment": float(resultant[2, column]),
+                    "about": support.about.tolist(),
+                }
+                for support, resultant in at_supports
+            },
+            "equilibrium": {
+                "applied": applied[:, column].tolist(),
+                "reaction": reaction[:, column].tolist(),
+                "residual": float(residual[column]),
+                "about": balance.about.tolist(),
+            },
+        }
+        for column in everything
+    ]
+
+
+def _cuts(solution: Solution, states: States) -> Json:
+    """Forces through all cuts; MeshError carries the faults of all."""
+    found: Json = {}
+    faults: list[Fault] = []
+    places = Places(solution.model)
+    for name, cut in solution.model.job.requests.cuts.items():
+        try:
+            carried = cut_forces(solution, cut, places)
+        except MeshError as error:
+            faults.extend(error.faults)
+            continue
+        parts = np.vstack((carried.normal, carried.shear, carried.moment))
+        columns = superpose(parts, states, range(len(states))).T.tolist()
+        found[name] = {
+            state: {
+                "normal": normal, "shear": shear, "moment": moment, "about": carried.about.tolist(),
+            }
+            for state, (normal, shear, moment) in zip(states.names, columns, strict=True)
+        }  # fmt: skip
+    if faults:
+        raise MeshError(faults)
+    return found
+
+
+# --- the job as a whole --------------------------------------------------------------------------
+
+
+def _governing(states: States, by_state: list[Json]) -> Json:
+    """The worst of all states for each measure, and the state's name."""
+    found: Json = {}
+    for name, sign in {**WORST, "utilisation": 1}.items():
+        stated = [n for n, result in enumerate(by_state) if result[name] is not None]
+        if not stated:
+            found[name] = None
+            continue
+        worst = max(stated, key=lambda n: sign * by_state[n][name]["value"])
+        peak = {key: value for key, value in by_state[worst][name].items() if key != "least"}
+        found[name] = peak | {"governs": states.names[worst]}
+    return found
+
+
+def _solver(report: SolverReport) -> Json:
+    return {
+        "name": report.name,
+        "ordering": report.ordering,
+        "dofs": report.dofs,
+        "free_dofs": report.free_dofs,
+        "factor_entries": report.factor_entries,
+        "residual": float(report.residual.max()),
+        "refinements": report.refinements,
+        "reciprocal_condition": float(report.reciprocal_condition),
+        "seconds": {stage: float(seconds) for stage, seconds in report.seconds.items()},
+    }
+
+
+def mesh_figures(model: Model) -> Json:
+    """What the mesh consists of: needed before and after a solution."""
+    mesh, job = model.mesh, model.job
+    elements: dict[str, int] = {}
+    areas = np.zeros(len(mesh.regions))
+    for block, section, volume in zip(
+        mesh.blocks, model.sections, element_volumes(model), strict=True
+    ):
+        elements[block.element.name] = elements.get(block.element.name, 0) + block.element_count
+        areas += np.bincount(block.region, volume / section.thickness, minlength=len(areas))
+    return {
+        "nodes": mesh.node_count,
+        "elements": elements,
+        "dofs": mesh.dof_count,
+        "regions": {
+            name: {
+                "thickness": job.thickness_of(name),
+                "material": job.material_of(name).name,
+                "area": float(area),
+            }
+            for name, area in zip(mesh.regions, areas, strict=True)
+        },
+        "quality": mesh_quality(mesh),
+        "parts": mesh.component_count,
+    }
