@@ -19,7 +19,7 @@ def create_app(settings: Settings | None = None) -> Flask:
     settings = settings or Settings.from_environment()
     app = Flask("api", static_folder=None)
     app.config.update(SETTINGS)
-    app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes
+    app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes + 1  # see bodies.py
     app.json = CautiousJSON(app)
     app.extensions[KEY] = Services(
         settings, Store(settings.store), Queue(settings), WaitingRoom(settings.api_threads // 2)

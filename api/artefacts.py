@@ -1,6 +1,7 @@
 """Files of a finished job that a worker makes when somebody asks for them."""
 
-from api.problems import ARTEFACT_FAILED, ARTEFACT_LATE, PICTURES_UNAVAILABLE, RefusalError
+from api.problem_types import ARTEFACT_FAILED, ARTEFACT_LATE, PICTURES_UNAVAILABLE
+from api.problems import RefusalError
 from api.services import services
 from workers.errors import PicturesUnavailableError
 

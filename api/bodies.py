@@ -7,7 +7,8 @@ import zlib
 
 from flask import Request
 
-from api.problems import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN, RefusalError
+from api.problem_types import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN
+from api.problems import RefusalError
 
 CHUNK = 1 << 16
 GZIP_WINDOW = 16 + zlib.MAX_WBITS  # zlib's way to say: gzip header and trailer
@@ -16,7 +17,8 @@ GZIP_WINDOW = 16 + zlib.MAX_WBITS  # zlib's way to say: gzip header and trailer
 def read_document_bytes(request: Request, limit: int) -> bytes:
     """The JSON document in the body, decompressed.
 
-    limit : bytes that the document may have; Flask holds the raw body to the same limit.
+    limit : bytes that the document may have. Flask is told to read one byte more at most: of a
+        body without Content-Length it hands over what fits, and says nothing of the rest.
     """
     if request.mimetype != "application/json":
         seen = request.mimetype or "no Content-Type"
@@ -26,10 +28,11 @@ def read_document_bytes(request: Request, limit: int) -> bytes:
             headers={"Accept": "application/json"},
         )
     encoding = request.headers.get("Content-Encoding", "identity").strip().lower()
-    if encoding == "identity":
-        return request.get_data(cache=False)
-    if encoding == "gzip":
-        return gunzip(request.get_data(cache=False), limit)
+    if encoding in ("identity", "gzip"):
+        body = request.get_data(cache=False)
+        if len(body) > limit:
+            raise RefusalError(BODY_TOO_LARGE, f"The body has more than the {limit} bytes allowed.")
+        return gunzip(body, limit) if encoding == "gzip" else body
     raise RefusalError(
         MEDIA_TYPE_UNKNOWN,
         f"Content-Encoding {encoding} is not understood; send gzip or nothing.",

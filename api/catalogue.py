@@ -2,7 +2,6 @@
 
 from typing import Any
 
-
 from api.openapi import Blueprint
 from api.schemas import ElementsSchema, RulesSchema
 from elements import registry

@@ -7,7 +7,7 @@ import orjson
 from flask import Blueprint, Response, current_app
 from flask_smorest import Api
 
-from api import problems
+from api import problem_types
 from api.responses import text_answer, with_cautions
 from workers.cautions import STANDING
 
@@ -32,7 +32,7 @@ def page() -> Response:
         "docs.html",
         document=document,
         operations=list(_operations(document)),
-        problem_types=problems.TYPES,
+        problem_types=problem_types.TYPES,
         cautions=STANDING,
     )
     answer = text_answer(html, "text/html")

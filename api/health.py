@@ -6,7 +6,8 @@ from typing import Any
 from redis.exceptions import RedisError
 
 from api.openapi import Blueprint, problems_of
-from api.problems import NOT_READY, RefusalError
+from api.problem_types import NOT_READY
+from api.problems import RefusalError
 from api.schemas import LiveSchema, ReadySchema
 from api.services import services
 from workers.errors import StoreError

@@ -15,7 +15,8 @@ from redis.exceptions import RedisError
 from api.bodies import read_document_bytes
 from api.openapi import Blueprint, problems_of
 from api.preferences import applied, wanted_wait
-from api.problems import BAD_REQUEST, RefusalError, parameter_fault
+from api.problem_types import BAD_REQUEST
+from api.problems import RefusalError, parameter_fault
 from api.schemas import (
     JobPageSchema,
     JobQuerySchema,

@@ -14,13 +14,8 @@ from flask import Response
 from api.artefacts import make_artefact
 from api.jobs import address
 from api.openapi import Blueprint, describe_file, problems_of
-from api.problems import (
-    JOB_CANCELLED,
-    JOB_FAILED,
-    NOT_FINAL,
-    NOTHING_OF_THAT_NAME,
-    RefusalError,
-)
+from api.problem_types import JOB_CANCELLED, JOB_FAILED, NOT_FINAL, NOTHING_OF_THAT_NAME
+from api.problems import RefusalError
 from api.responses import file_answer, text_answer
 from api.services import services
 from workers.outputs.names import file_name

@@ -84,8 +84,18 @@ class Client:
                 error.code,
                 problem.get("errors", ()),
             ) from error
-        except (URLError, OSError) as error:
-            raise ServerError(f"{self.url} does not answer: {error}") from error
+        except OSError as error:
+            raise ServerError(self._why_silent(error)) from error
+
+    def _why_silent(self, error: OSError) -> str:
+        reason = error.reason if isinstance(error, URLError) else error
+        if isinstance(reason, BrokenPipeError | ConnectionResetError):
+            # What a server does that refuses a large body before it has read all of it.
+            return (
+                f"{self.url} closed the connection while the document was on its way; it is "
+                "probably larger than the server accepts"
+            )
+        return f"{self.url} does not answer: {reason}"
 
 
 def _problem(error: HTTPError) -> Mapping[str, Any]:

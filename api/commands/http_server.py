@@ -38,12 +38,13 @@ def http_server(settings: Settings) -> Iterator["tuple[str, subprocess.Popen[byt
     with _listen(settings.host, settings.port) as listener:
         host, port = listener.getsockname()[:2]
         process = _start(settings, listener)
-        try:
-            _await(process, host, port)
-            yield f"http://{f'[{host}]' if ':' in host else host}:{port}", process
-        finally:
-            process.terminate()
-            process.wait()
+    # From here on the socket is gunicorn's alone: should it end, nobody waits for an answer.
+    try:
+        _await(process, host, port)
+        yield f"http://{f'[{host}]' if ':' in host else host}:{port}", process
+    finally:
+        process.terminate()
+        process.wait()
 
 
 def _listen(host: str, port: int) -> socket.socket:

@@ -13,15 +13,15 @@ from api.app import create_app
 from api.services import KEY, Services
 from tests.job_documents import strip
 from tests.small_results import RESULTS
-from workers.private_redis import private_redis
+from workers.private_redis import PrivateRedis
 from workers.record import RUNNING
 from workers.settings import Settings
 
 
 @pytest.fixture(scope="session")
 def redis_url(tmp_path_factory: pytest.TempPathFactory) -> Iterator[str]:
-    with private_redis(tmp_path_factory.mktemp("redis")) as url:
-        yield url
+    with PrivateRedis(tmp_path_factory.mktemp("redis")) as server:
+        yield server.url
 
 
 @pytest.fixture

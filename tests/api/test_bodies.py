@@ -6,7 +6,8 @@ import pytest
 from flask import Flask, request
 
 from api.bodies import gunzip, read_document_bytes
-from api.problems import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN, RefusalError
+from api.problem_types import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN
+from api.problems import RefusalError
 
 LIMIT = 1000
 

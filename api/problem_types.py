@@ -1,0 +1,106 @@
+"""The kinds of problem that answers name (RFC 9457), as the documentation page lists them."""
+
+from dataclasses import dataclass
+
+
+@dataclass(frozen=True)
+class ProblemType:
+    """A kind of problem; `meaning` is what the documentation page says about it."""
+
+    slug: str
+    status: int
+    title: str
+    meaning: str
+
+    @property
+    def address(self) -> str:
+        return f"/docs#problem-{self.slug}"
+
+
+INVALID_DOCUMENT = ProblemType(
+    "invalid-document", 422, "The job document is wrong",
+    "`errors` lists every fault that was found, each with the JSON pointer of its place and what "
+    "is allowed there. Correct them all and send the document again.",
+)  # fmt: skip
+UNMESHABLE = ProblemType(
+    "unmeshable-plate", 422, "The plate cannot be meshed",
+    "The geometry, or something named on it, cannot be brought onto a mesh; `errors` says where.",
+)  # fmt: skip
+UNSOLVABLE = ProblemType(
+    "unsolvable-plate", 422, "The plate cannot be solved",
+    "The equations have no reliable solution, mostly because a part is free to move.",
+)  # fmt: skip
+BAD_REQUEST = ProblemType(
+    "bad-request", 400, "The request is wrong",
+    "A query parameter or a header is not what this address allows; `errors` names each of them.",
+)  # fmt: skip
+BODY_TOO_LARGE = ProblemType(
+    "body-too-large", 413, "The body is too large",
+    "The body, after decompression, is larger than this server accepts.",
+)  # fmt: skip
+MEDIA_TYPE_UNKNOWN = ProblemType(
+    "unsupported-media-type", 415, "The body has a type that is not understood here",
+    "Send `Content-Type: application/json`, plain or with `Content-Encoding: gzip`.",
+)  # fmt: skip
+KEY_REUSED = ProblemType(
+    "idempotency-key-reused", 422, "The Idempotency-Key belongs to another document",
+    "One key stands for one document. Send the same bytes to repeat a request, or use a new key.",
+)  # fmt: skip
+UNKNOWN_JOB = ProblemType(
+    "unknown-job", 404, "There is no such job",
+    "No job has this id; it was never accepted here, or it was removed.",
+)  # fmt: skip
+NOTHING_OF_THAT_NAME = ProblemType(
+    "unknown-name", 404, "The job has nothing of that name",
+    "The job has no case, combination, quantity or table of this name; `available` lists them.",
+)  # fmt: skip
+NOT_FINAL = ProblemType(
+    "not-finished", 409, "The job is not finished",
+    "Results exist only when the job is finished. Ask for the job with `Prefer: wait=30`.",
+)  # fmt: skip
+JOB_FAILED = ProblemType(
+    "job-failed", 409, "The job has no results because it failed",
+    "The job ended without results; `errors` says why. Correct the document and submit it anew.",
+)  # fmt: skip
+JOB_CANCELLED = ProblemType(
+    "job-cancelled", 409, "The job has no results because it was cancelled",
+    "Submit the document again if its results are wanted after all.",
+)  # fmt: skip
+NOT_READY = ProblemType(
+    "not-ready", 503, "The server is not ready",
+    "`checks` says which part is missing: the queue, the store, or the workers.",
+)  # fmt: skip
+OVERTAKEN = ProblemType(
+    "overtaken", 409, "The job went on in the meantime",
+    "The job changed its state while the request was under way. Look at it and decide again.",
+)  # fmt: skip
+ARTEFACT_LATE = ProblemType(
+    "not-made-yet", 503, "The file is not made yet",
+    "A worker makes this file on request; it was not done within the waiting time. Ask again "
+    "after `Retry-After` seconds.",
+)  # fmt: skip
+ARTEFACT_FAILED = ProblemType(
+    "file-not-made", 500, "The file could not be made",
+    "A worker tried to make this file and failed; `detail` gives the reason.",
+)  # fmt: skip
+PICTURES_UNAVAILABLE = ProblemType(
+    "pictures-unavailable", 503, "This server cannot make pictures",
+    "The machine of the workers cannot render off-screen; numbers and fields are not affected.",
+)  # fmt: skip
+STORE_REFUSED = ProblemType(
+    "store-refused", 503, "The job store refused",
+    "The store could not write or read, for instance because the disk is full. Nothing was "
+    "accepted.",
+)  # fmt: skip
+QUEUE_AWAY = ProblemType(
+    "queue-away", 503, "The queue cannot be reached",
+    "Redis does not answer. Accepted jobs are safe and are queued when it is back.",
+)  # fmt: skip
+UNEXPECTED = ProblemType(
+    "unexpected", 500, "Something went wrong inside the server",
+    "A fault of the server, not of the request. Its log has the details under `reference`.",
+)  # fmt: skip
+
+TYPES: tuple[ProblemType, ...] = tuple(
+    value for value in list(globals().values()) if isinstance(value, ProblemType)
+)
