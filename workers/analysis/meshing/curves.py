@@ -119,3 +119,11 @@ def arc_through(start: Array, through: Array, end: Array) -> Arc:
     sweep = turn * np.mod(turn * (last - first), 2 * np.pi)
     radius = float(np.linalg.norm(to_centre))
     return Arc(start, end, start + to_centre, radius, float(first), float(sweep))
+
+
+def enclosed(curve: Curve) -> float:
+    """What a curve adds to the area on its left: half the integral of x dy - y dx [L^2]."""
+    chord = float(curve.start[0] * curve.end[1] - curve.start[1] * curve.end[0]) / 2
+    if isinstance(curve, Arc):
+        return chord + curve.radius**2 * (curve.sweep - np.sin(curve.sweep)) / 2
+    return chord

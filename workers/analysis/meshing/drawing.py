@@ -7,7 +7,7 @@ be wrong with it, is in `outline.py`; what meshes it is in `free.py`."""
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 
-from workers.analysis.meshing.curves import Curve
+from workers.analysis.meshing.curves import Curve, enclosed
 from workers.job import Vector
 
 OUTSIDE = 0  # the domain beyond the plate's edge and inside holes
@@ -51,3 +51,11 @@ class Drawing:
     edges: tuple[Edge, ...]
     regions: tuple[str, ...]
     points: Mapping[str, Vector] = field(default_factory=dict)
+
+    @property
+    def area(self) -> float:
+        """Of the plate, arcs included [L^2]."""
+        return sum(
+            enclosed(edge.curve) * ((edge.left != OUTSIDE) - (edge.right != OUTSIDE))
+            for edge in self.edges
+        )
