@@ -10,6 +10,7 @@ from typing import Any
 
 from tests.plates import grid
 from workers.analysis.mesh import Mesh
+from workers.analysis.quality import mesh_quality
 from workers.cautions import STANDING, Caution
 from workers.job import (
     Job,
@@ -79,13 +80,8 @@ def stressed(von_mises: float, at: tuple[float, float] = (30.0, 50.0), error: fl
 def sound_results(
     states: dict[str, dict] | None = None, combinations: dict[str, dict] | None = None
 ) -> dict[str, Any]:
-    quality = {
-        "min_scaled_jacobian": {"value": 1.0, "at": [10.0, 10.0]},
-        "min_angle": {"value": 90.0, "at": [10.0, 10.0]},
-        "max_aspect": {"value": 1.0, "at": [10.0, 10.0]},
-    }
     return {
-        "mesh": {"quality": quality},
+        "mesh": {"quality": mesh_quality(sound_mesh())},
         "cases": deepcopy(states) or {"pull": sound_state()},
         "combinations": combinations or {},
     }

@@ -3,9 +3,11 @@
 import numpy as np
 import pytest
 
+from elements.registry import get
 from tests.plates import grid
 from tests.reviewed import raised, sound_job, sound_results, sound_state, stressed
-from workers.analysis.mesh import Mesh
+from workers.analysis.mesh import Block, Mesh
+from workers.analysis.quality import mesh_quality
 from workers.analysis.solution import solve
 from workers.job import Job, LoadCase, Named, Segment, Support, TemperatureChange, TotalForce
 from workers.review.bending_share import bending_shares
@@ -40,41 +42,48 @@ def test_a_small_error_of_the_peak_stress_is_silent(error: float) -> None:
     assert raised(results=sound_results({"pull": stressed(100.0, error=error)})) == {}
 
 
-def shaped(**worst: float) -> dict:
-    results = sound_results()
-    for key, value in worst.items():
-        results["mesh"]["quality"][key] = {"value": value, "at": [1.0, 2.0]}
-    return raised(results=results)
+def one_quadrilateral(*corners: tuple[float, float]) -> dict:
+    """Cautions about the shape of one element, by the measure that is poor."""
+    block = Block(get("Q4"), np.array([[0, 1, 2, 3]], np.int32), np.zeros(1, np.int32))
+    mesh = Mesh(np.array(corners) * 100, (block,))
+    results = sound_results() | {"mesh": {"quality": mesh_quality(mesh)}}
+    cautions = raised(sound_job(supports=()), results, mesh=mesh).get("distorted-elements", [])
+    return {caution.evidence["quantity"]: caution.evidence for caution in cautions}
 
 
-@pytest.mark.parametrize(
-    ("key", "value"),
-    [
-        ("min_scaled_jacobian", 0.19),
-        ("min_scaled_jacobian", 0.01),
-        ("min_angle", 14.9),
-        ("min_angle", 2.0),
-        ("max_aspect", 10.1),
-        ("max_aspect", 200.0),
-    ],
-)
-def test_a_badly_shaped_element_is_told_with_its_place(key: str, value: float) -> None:
-    (caution,) = shaped(**{key: value})["distorted-elements"]
-    assert caution.evidence["quantity"] == key
-    assert caution.evidence["at"] == [1, 2]
+def skewed(degrees: float) -> dict:
+    """A rhombus of unit sides with that corner angle; its scaled Jacobian is the angle's sine."""
+    dx, dy = np.cos(np.radians(degrees)), np.sin(np.radians(degrees))
+    return one_quadrilateral((0.0, 0.0), (1.0, 0.0), (1 + dx, dy), (dx, dy))
 
 
-@pytest.mark.parametrize(
-    "worst",
-    [
-        {"min_scaled_jacobian": 0.21},
-        {"min_angle": 15.1},
-        {"max_aspect": 9.9},
-        {"min_scaled_jacobian": 0.3, "min_angle": 25.0, "max_aspect": 6.0},
-    ],
-)
-def test_a_fairly_shaped_element_is_silent(worst: dict) -> None:
-    assert shaped(**worst) == {}
+@pytest.mark.parametrize("degrees", [19.0, 10.0])
+def test_an_element_with_a_sharp_corner_is_told_with_its_place(degrees: float) -> None:
+    evidence = skewed(degrees)["min_angle"]
+    assert evidence["value"] == pytest.approx(degrees)
+    assert evidence["at"][1] == pytest.approx(50 * np.sin(np.radians(degrees)))
+
+
+@pytest.mark.parametrize("degrees", [11.0, 1.0])
+def test_an_element_that_is_nearly_flat_has_a_small_scaled_jacobian(degrees: float) -> None:
+    evidence = skewed(degrees)["min_scaled_jacobian"]
+    assert evidence["value"] == pytest.approx(np.sin(np.radians(degrees)))
+
+
+@pytest.mark.parametrize("aspect", [10.5, 400.0])
+def test_a_long_element_is_told(aspect: float) -> None:
+    found = one_quadrilateral((0.0, 0.0), (aspect, 0.0), (aspect, 1.0), (0.0, 1.0))
+    assert found["max_aspect"]["value"] == pytest.approx(aspect)
+
+
+@pytest.mark.parametrize("degrees", [21.0, 45.0, 90.0])
+def test_a_moderately_skewed_element_is_silent(degrees: float) -> None:
+    assert skewed(degrees) == {}
+
+
+@pytest.mark.parametrize("aspect", [1.0, 9.5])
+def test_a_moderately_long_element_is_silent(aspect: float) -> None:
+    assert one_quadrilateral((0.0, 0.0), (aspect, 0.0), (aspect, 1.0), (0.0, 1.0)) == {}
 
 
 # --- low-order elements in bending -------------------------------------------------------------

@@ -10,10 +10,6 @@ from workers.review.rule import Finding, finding, rule
 # Numer. Meth. Engng 24, 1987); at twice that a person should look. Common practice.
 ENERGY_ERROR = 0.10
 PEAK_ERROR = 0.10  # of the peak von Mises stress; common practice
-# Quality of shape, common practice: outside these the interpolation error grows quickly.
-SCALED_JACOBIAN = 0.2  # 1 is a square or an equilateral triangle
-ANGLE = 15.0  # degrees
-ASPECT = 10.0
 # Of the strain energy, see `bending_share.py`. Cantilevers of n squares across the depth: share
 # 1.5/n^2 for both, deflection short by 0.4 shares (Q4), 1.7 shares (T3). So 1 or 2 % is missing
 # here, at n = 7 (Q4) and n = 12 (T3); tension past a hole has 0.7 % on the coarsest useful mesh.
@@ -72,20 +68,22 @@ def error_high(context: ReviewContext) -> Iterator[Finding]:
 )
 def distorted_elements(context: ReviewContext) -> Iterator[Finding]:
     quality = context.results.get("mesh", {}).get("quality", {})
-    for key, words, limit, is_bad in (
-        ("min_scaled_jacobian", "scaled Jacobian of {:.2g}", SCALED_JACOBIAN, float.__lt__),
-        ("min_angle", "corner angle of {:.3g} degrees", ANGLE, float.__lt__),
-        ("max_aspect", "aspect ratio of {:.3g}", ASPECT, float.__gt__),
+    for key, words in (
+        ("min_scaled_jacobian", "scaled Jacobian of {:.2g}"),
+        ("min_angle", "corner angle of {:.3g} degrees"),
+        ("max_aspect", "aspect ratio of {:.3g}"),
     ):
         measure = quality.get(key)
-        if measure and is_bad(float(measure["value"]), limit):
+        if measure and measure["bad"]:  # `analysis/quality.py` holds the limits
             x, y = measure["at"]
             yield finding(
-                f"An element at ({x:.4g}, {y:.4g}) has a {words.format(measure['value'])}.",
+                f"The worst element, at ({x:.4g}, {y:.4g}), has a {words.format(measure['value'])};"
+                f" {measure['bad']} are beyond {measure['limit']:g}.",
                 quantity=key,
                 value=measure["value"],
-                limit=limit,
+                limit=measure["limit"],
                 at=measure["at"],
+                elements=measure["bad"],
             )
 
 
