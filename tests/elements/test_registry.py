@@ -56,7 +56,7 @@ class Unfinished(ElementType):
 
 
 class Undeclared(ElementType):
-    shape_functions = gradients = stiffness_rule = load_rule = recovery_points = None  # type: ignore[assignment]
+    shape_functions = gradients = stiffness_rule = load_rule = recovery_points = None
 
 
 NOT_A_CLASS = 42
@@ -68,12 +68,12 @@ class FakeDistribution(Distribution):
     def __init__(self, name: str) -> None:
         self._name = name
 
-    metadata = property(lambda self: {"Name": self._name, "Version": "1.2"})  # type: ignore[assignment]
+    metadata = property(lambda self: {"Name": self._name, "Version": "1.2"})
 
     def read_text(self, filename: str) -> str | None:
         return None
 
-    def locate_file(self, path: object) -> SimpleNamespace:  # type: ignore[override]
+    def locate_file(self, path: object) -> SimpleNamespace:
         return SimpleNamespace(path=path)
 
 
@@ -97,7 +97,7 @@ def claim(
 ) -> EntryPoint:
     value = f"{module or 'invented_plugin'}:{attribute or name}"
     point = EntryPoint(name=name, value=value, group=registry.GROUP)
-    return point._for(FakeDistribution(owner))  # type: ignore[attr-defined]
+    return point._for(FakeDistribution(owner))
 
 
 def test_the_four_built_in_types_are_installed_without_faults() -> None:
