@@ -28,6 +28,7 @@ from workers.analysis.combine import States, load_states, superpose, superpose_b
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields, displacement_fields
 from workers.analysis.loads.cases import resolve_loads
+from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.build import mesh_job
 from workers.analysis.model import Model, build_model
 from workers.analysis.recovery import Recovery, Temperature
@@ -35,11 +36,11 @@ from workers.analysis.solution import solve
 from workers.analysis.summary import summarise
 from workers.cautions import Caution
 from workers.document.read import read_document
-from workers.errors import PicturesUnavailableError
+from workers.errors import MeshError, PicturesUnavailableError
 from workers.job import Job
 from workers.outputs import preview, vtu
 from workers.outputs.names import file_name
-from workers.preflight import preflight
+from workers.preflight import placing_faults, preflight
 from workers.review.review import review
 
 Progress = Callable[[str, float], None]
@@ -85,8 +86,7 @@ def run(
         progress("reading", 0.0)
         job = read_document(document)
         progress("meshing", 0.0)
-        # Faults that need no mesher are told all at once; the mesh made for that is kept.
-        mesh = preflight(job) or mesh_job(job)
+        mesh = prepare(job)
         solution = solve(job, mesh, progress)
         progress("recovering", 0.0)
         work = Work(solution.model, solution.displacement, solution.temperature)
@@ -111,6 +111,21 @@ def run(
         results["files"]["previews"], results["pictures"] = filed.draw_some(pictures, progress)
         (folder / RESULTS).write_bytes(orjson.dumps(results, option=orjson.OPT_INDENT_2))
     return results
+
+
+def prepare(job: Job) -> Mesh:
+    """The mesh of a job, with everything that the job puts on it looked over.
+
+    Raises
+    ------
+    DocumentError, MeshError   carry all faults that show before solving.
+    """
+    mesh = preflight(job)
+    if mesh is None:
+        mesh = mesh_job(job)
+        if faults := placing_faults(job, mesh):
+            raise MeshError(faults)
+    return mesh
 
 
 def write_fields(folder: Path, state: str) -> Path:
@@ -199,7 +214,9 @@ class Filing:
         path.parent.mkdir(parents=True, exist_ok=True)
         work = self.work
         if quantity == "model":
-            preview.render_model(path, work.job, work.model.mesh, state, cautions=self.cautions)
+            preview.render_model(
+                path, work.job, work.model.mesh, case=state, cautions=self.cautions
+            )
             return path
         fields = work.fields(state)
         if quantity == "deformed":

@@ -1,8 +1,8 @@
 """What can be known to be wrong with a job before anything is solved.
 
 Makes the mesh where that needs no mesher (patches, the client's own mesh), puts supports, loads and
-requests on it, and looks for free motions. Numpy only, so that the API can answer at once. What is
-wrong with an outline shows in a worker.
+requests on it, and looks for free motions. NumPy and shapely only, so that the API can answer at
+once. An outline is checked as a drawing; what finds no place on its mesh shows in a worker.
 """
 
 import numpy as np
@@ -11,13 +11,14 @@ from numpy.typing import NDArray
 from workers.analysis.load_places import load_faults
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
+from workers.analysis.meshing.outline import draw
 from workers.analysis.motions import free_motions
 from workers.analysis.request_places import request_faults
 from workers.analysis.selection import Finder
 from workers.analysis.springs import spring_blocks
 from workers.analysis.support_rows import support_rows
 from workers.errors import DocumentError, Fault, FaultyError, MechanismError, MeshError
-from workers.job import Job, Load, MeshGeometry, Nodes, Support
+from workers.job import Job, Load, MeshGeometry, Nodes, OutlineGeometry, Support
 
 Array = NDArray[np.float64]
 
@@ -35,6 +36,8 @@ def preflight(job: Job) -> Mesh | None:
         supports, loads, requests and free motions.
     UnknownElementError   the element type is not installed.
     """
+    if isinstance(job.geometry, OutlineGeometry):
+        draw(job.geometry)
     try:
         mesh = mesh_directly(job)
     except MeshError as error:

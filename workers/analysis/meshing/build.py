@@ -2,7 +2,9 @@
 
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
-from workers.job import Job
+from workers.analysis.meshing.free import mesh_drawing
+from workers.analysis.meshing.outline import draw
+from workers.job import Job, OutlineGeometry
 
 
 def mesh_job(job: Job) -> Mesh:
@@ -10,9 +12,12 @@ def mesh_job(job: Job) -> Mesh:
 
     Raises
     ------
+    DocumentError         the outline is wrong; carries every fault found.
     MeshError             the geometry gives no sound mesh; carries every fault found.
     UnknownElementError   the element type is not installed.
     """
+    if isinstance(job.geometry, OutlineGeometry):
+        return mesh_drawing(draw(job.geometry), job.meshing)
     mesh = mesh_directly(job)
     if mesh is None:
         raise TypeError(f"no mesher for {type(job.geometry).__name__}")

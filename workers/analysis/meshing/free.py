@@ -34,16 +34,14 @@ POOR_QUADRILATERAL = 0.3  # scaled Jacobian below which two triangles may do bet
 TRIANGLE_LIKE: Mapping[int, str] = {1: "T3", 2: "T6"}
 
 
-def mesh_drawing(drawing: Drawing, area: float, meshing: Meshing) -> Mesh:
+def mesh_drawing(drawing: Drawing, meshing: Meshing) -> Mesh:
     """Mesh a checked drawing.
-
-    area : of the plate [L^2]
 
     Raises
     ------
     MeshError   too many elements would be needed, or the library failed.
     """
-    element = registry.get(meshing.element)
+    element, area = registry.get(meshing.element), drawing.area
     sizes = choose_sizes(drawing, element.order, area, meshing.size, meshing.sizes)
     _check_count(area, sizes)
     flat = _flat_mesh(drawing, sizes, quads=not element.is_triangle)

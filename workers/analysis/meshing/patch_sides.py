@@ -21,6 +21,8 @@ from workers.job import Patch
 Array = NDArray[np.float64]
 
 SIDES = ("1-2", "2-3", "3-4", "4-1")
+WIDEST = 180.01  # degrees; a smooth joint of two arcs is left to the check of the elements
+NEXT_TO = 1e-6  # parameter of a point so near to a corner that it shows the direction
 SAME_GRADING = 1e-9  # relative: gradings are typed, and one of the two may be a reciprocal
 
 
@@ -110,6 +112,24 @@ def _lone_faults(patch: Patch, vertices: NDArray) -> Iterator[Fault]:
             f"the corners of patch {patch.name!r} run clockwise (area {area:.6g}): "
             f"{_listed(patch.corners)}; list them counter-clockwise",
         )
+        return
+    for corner in range(4):
+        angle = _angle(curves[corner - 1], curves[corner])
+        if angle > WIDEST:
+            yield Fault(
+                f"{patch.pointer}/corners/{corner}",
+                f"corner {corner + 1} of patch {patch.name!r}, {_at(patch.corners[corner])}, has "
+                f"an angle of {angle:.6g} degrees; it must be below 180 degrees",
+            )
+
+
+def _angle(before: Curve, behind: Curve) -> float:
+    """Angle inside the patch between two sides at their common corner [degrees]."""
+    corner = behind.at(np.array([0.0]))[0]
+    back = before.at(np.array([1 - NEXT_TO]))[0] - corner
+    ahead = behind.at(np.array([NEXT_TO]))[0] - corner
+    turn = np.arctan2(back[1], back[0]) - np.arctan2(ahead[1], ahead[0])
+    return float(np.degrees(turn) % 360)
 
 
 def _sides(patch: Patch) -> list[PatchSide]:
