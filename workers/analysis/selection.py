@@ -98,10 +98,10 @@ def unknown_name(name: str, mesh: Mesh) -> str:
     """Sentence that says what there is instead of an unknown name."""
     known = [*mesh.sides, *mesh.points, *mesh.regions]
     close = get_close_matches(name, known, n=1)
-    hint = f"; did you mean {close[0]!r}?" if close else ""
+    hint = f"; did you mean {close[0]!r}? Known:" if close else "; known:"
     kinds = (("sides", mesh.sides), ("points", mesh.points), ("regions", mesh.regions))
     listed = [f"{kind} {_listed(list(names))}" for kind, names in kinds if len(names)]
-    return f"there is no side, point or region {name!r}{hint} Known: {'; '.join(listed)}"
+    return f"there is no side, point or region {name!r}{hint} {'; '.join(listed)}"
 
 
 def _listed(names: list[str]) -> str:
