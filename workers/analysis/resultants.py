@@ -34,7 +34,8 @@ class Equilibrium:
 
     about (2,) [L]
     applied, reaction (3, c) : force x, y [F] and moment [F L]
-    size (2, c) : sums of the sizes of all nodal forces [F] and of force times arm [F L]
+    size (2, c) : sums of the sizes of all nodal forces [F] and of force times arm [F L], with
+        what imposed strain and movement would call up (see `_imposed`)
     """
 
     about: Array
@@ -64,6 +65,7 @@ def equilibrium(solution: Solution) -> Equilibrium:
     parts = [(mesh.nodes[s.nodes], s.force) for s in solution.support_forces]
     reaction = np.zeros((3, len(solution.cases)))
     size = _size(mesh.nodes - about, solution.applied)
+    size += _imposed(solution) * np.array([[1.0], [mesh.diagonal]])
     for at, force in parts:
         reaction += resultant(at, force, about)
         size += _size(at - about, force)
@@ -99,6 +101,29 @@ def centroid(mesh: Mesh) -> Array:
         area += float((det_J @ weights).sum())
         moment += np.einsum("mq,q,mqi->i", det_J, weights, position)
     return moment / area
+
+
+def _imposed(solution: Solution) -> Array:
+    """Force that the cases' temperature changes and settlements could call up, (c,) [F].
+
+    E t (alpha dT d + settlement), d the plate's diagonal. A plate that is free to follow them has
+    no forces but rounding, which must be measured against something.
+    """
+    model = solution.model
+    stiffness, expansion = 0.0, np.zeros(len(solution.cases))
+    for number, section in enumerate(model.sections):
+        stiffness = max(stiffness, float((section.youngs_modulus * section.thickness).max()))
+        if solution.temperature is not None:
+            change = solution.temperature[number]
+            alpha = np.where(change.any(axis=1), section.thermal_expansion, 0.0)
+            expansion = np.maximum(expansion, np.abs(alpha[:, None] * change).max(axis=0))
+    settlement = np.zeros(len(solution.cases))
+    for support in model.job.supports:
+        given = (support.ux, support.uy, support.normal, support.displacement)
+        largest = max(abs(value or 0.0) for value in given)
+        acts = np.array([support.case in (None, case) for case in solution.cases])
+        settlement = np.maximum(settlement, largest * acts)
+    return stiffness * (expansion * model.mesh.diagonal + settlement)
 
 
 def _size(arm: Array, force: Array) -> Array:
