@@ -15,10 +15,12 @@ from typing import Any
 import psutil
 
 from workers.queue import Queue
-from workers.record import Record
+from workers.record import Event, Record
 from workers.settings import Settings
 from workers.store import Store
 
+# What the stand-in pipeline writes (tests/standin_pipeline.py).
+RESULTS = ("results.json", "fields/lift.vtu", "previews/lift/von_mises.png")
 ROOT = Path(__file__).parent.parent
 PATIENCE = 30.0  # far beyond what anything here takes; only a failing test waits that long [s]
 
@@ -71,6 +73,10 @@ def accept(store: Store, do: str, **order: Any) -> str:
     return store.accept(document, title=do).record.id
 
 
+def final_events(record: Record) -> list[Event]:
+    return [e for e in record.history if e.state in ("finished", "failed", "cancelled")]
+
+
 def attempts_in(store: Store, job_id: str) -> int:
     """How often the stand-in pipeline was entered for a job."""
     return len(list(store.jobs.path(job_id).glob("begun-*")))
@@ -82,12 +88,12 @@ def running_pool(settings: Settings, module: str = "tests.standin_pipeline") -> 
         [sys.executable, "-m", module],
         cwd=ROOT,
         env={**os.environ, **settings.as_environment()},
-        stderr=subprocess.PIPE if settings.redis_url is None else subprocess.DEVNULL,
+        stderr=subprocess.DEVNULL,
     )
     queue = Queue(settings)
     try:
         yield Service(settings, queue.store, queue, process)
     finally:
         process.kill()  # its workers end with it
-        process.communicate()
+        process.wait()
         queue.connection.close()

@@ -67,6 +67,15 @@ def do_die(folder: Path, progress: Progress, times: int, signal_number: int = 9)
         os.kill(os.getpid(), signal_number)
 
 
+def do_leave_child(folder: Path, progress: Progress) -> None:
+    """Start a process that holds whatever this one holds, and be killed in the first attempt."""
+    if len(list(folder.parent.glob("begun-*"))) == 1:
+        if os.fork() == 0:
+            (folder.parent / f"child-{os.getpid()}").touch()
+            time.sleep(60.0)
+        os.kill(os.getpid(), signal.SIGKILL)
+
+
 def do_block(folder: Path, progress: Progress, seconds: int) -> None:
     """Sit in one call into compiled code that holds the interpreter lock."""
     signal.pthread_sigmask(signal.SIG_BLOCK, {signal.SIGALRM})

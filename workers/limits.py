@@ -13,6 +13,10 @@ import psutil
 class TimeLimitError(BaseException):
     """The time is up. Not an Exception, so that no library on the way swallows it."""
 
+    def __init__(self, seconds: int) -> None:
+        self.seconds = seconds
+        super().__init__(f"more than {seconds} s")
+
 
 @contextmanager
 def time_limit(seconds: int) -> Iterator[None]:
@@ -23,7 +27,7 @@ def time_limit(seconds: int) -> Iterator[None]:
     """
 
     def ring(_number: int, _frame: FrameType | None) -> NoReturn:
-        raise TimeLimitError
+        raise TimeLimitError(seconds)
 
     before = signal.signal(signal.SIGALRM, ring)
     signal.alarm(seconds)

@@ -19,7 +19,7 @@ import redis
 
 from workers.errors import FishplateError, StoreError
 from workers.lineage import die_with_parent
-from workers.private_redis import private_redis
+from workers.private_redis import PrivateRedis
 from workers.queue import Queue
 from workers.reconcile import reconcile
 from workers.settings import PREFIX, Settings
@@ -28,6 +28,8 @@ from workers.store import Store
 TICK = 0.5  # longest time until a signal is noticed [s]
 RESTART_PAUSE = 1.0  # between two starts of workers, so that a broken one does not spin [s]
 LAST_WAIT = 10.0  # for workers that were told to stop at once [s]
+
+STOP_SIGNALS = (signal.SIGTERM, signal.SIGINT)
 
 # One thread for each worker: the machine is filled by working on several jobs at a time.
 ONE_THREAD = {f"{library}_NUM_THREADS": "1" for library in ("OMP", "OPENBLAS", "MKL", "NUMEXPR")}
@@ -39,8 +41,9 @@ log = logging.getLogger(__name__)
 class Pool:
     """The workers of one machine."""
 
-    def __init__(self, settings: Settings) -> None:
+    def __init__(self, settings: Settings, server: PrivateRedis | None = None) -> None:
         self.settings = settings
+        self.server = server
         self.store = Store(settings.store)
         self.queue = Queue(settings)
         self.workers: list[multiprocessing.process.BaseProcess] = []
@@ -49,10 +52,12 @@ class Pool:
 
     def run(self) -> None:
         """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
-        for number in (signal.SIGTERM, signal.SIGINT):
+        for number in STOP_SIGNALS:
             signal.signal(number, self._request_stop)
         self.store.reindex()
         while not self._stopping:
+            if self.server is not None:
+                self.server.keep_alive()
             self._replace_dead()
             self._reconcile()
             multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
@@ -69,10 +74,13 @@ class Pool:
         self.workers = alive
         if len(alive) < self.settings.workers and time.monotonic() >= self._next_start:
             self._next_start = time.monotonic() + RESTART_PAUSE
+            # A signal must not meet a child that still has our handlers.
+            signal.pthread_sigmask(signal.SIG_BLOCK, STOP_SIGNALS)
             for _ in range(self.settings.workers - len(alive)):
                 worker = _fork.Process(target=_be_worker, args=(self.settings, os.getpid()))
                 worker.start()
                 self.workers.append(worker)
+            signal.pthread_sigmask(signal.SIG_UNBLOCK, STOP_SIGNALS)
 
     def _reconcile(self) -> None:
         if time.monotonic() < self._next_look:
@@ -101,8 +109,9 @@ class Pool:
 def _be_worker(settings: Settings, parent: int) -> None:
     """First function of a worker process."""
     os.setpgrp()  # an interrupt from the terminal reaches the pool only, which passes it on
-    for number in (signal.SIGTERM, signal.SIGINT):
+    for number in STOP_SIGNALS:
         signal.signal(number, signal.SIG_DFL)
+    signal.pthread_sigmask(signal.SIG_UNBLOCK, STOP_SIGNALS)
     die_with_parent(signal.SIGTERM, parent=parent)
     importlib.import_module("workers.worker").work(settings)
 
@@ -120,8 +129,8 @@ def run_pool(settings: Settings) -> None:
     if settings.redis_url is not None:
         Pool(settings).run()
         return
-    with private_redis(settings.store):
-        Pool(settings).run()
+    with PrivateRedis(settings.store) as server:
+        Pool(settings, server).run()
 
 
 def main() -> int:

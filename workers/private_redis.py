@@ -6,16 +6,14 @@ process that started it. Whoever comes second to the same store shares the first
 
 import fcntl
 import hashlib
-import logging
 import os
 import shutil
 import signal
 import subprocess
 import tempfile
 import time
-from collections.abc import Iterator
-from contextlib import contextmanager
 from pathlib import Path
+from typing import Self
 
 import redis
 
@@ -24,7 +22,6 @@ from workers.lineage import die_with_parent
 
 LONGEST_SOCKET_PATH = 100  # sockaddr_un holds 108 bytes; the server adds a suffix of its own
 PATIENCE = 20.0  # for the server to come up, with a long append-only file to read [s]
-log = logging.getLogger(__name__)
 
 
 def socket_path(store: Path) -> Path:
@@ -41,57 +38,95 @@ def address(store: Path) -> str:
     return f"unix://{socket_path(store)}"
 
 
-@contextmanager
-def private_redis(store: Path) -> Iterator[str]:
-    """Have the private server of a store running; yields its URL.
+class PrivateRedis:
+    """The private server of one store; a context manager, inside which it is running.
 
     Raises
     ------
     StoreError   no redis-server is installed, or it does not come up.
     """
-    folder = store / "redis"
-    path = socket_path(store)
-    for needed in (folder, path.parent):
-        needed.mkdir(parents=True, exist_ok=True, mode=0o700)
-    if path.parent.stat().st_uid != os.getuid():
-        raise StoreError(f"{path.parent} belongs to another user; set FISHPLATE_REDIS_URL instead")
-    server = _start(folder, path)
-    try:
-        _await(path, server, folder)
-        yield address(store)
-    finally:
-        if server is not None:
-            server.terminate()
-            server.wait()
 
+    def __init__(self, store: Path) -> None:
+        self.folder = store / "redis"
+        self.socket = socket_path(store)
+        self.url = address(store)
+        self._process: subprocess.Popen[bytes] | None = None
 
-def _start(folder: Path, path: Path) -> "subprocess.Popen[bytes] | None":
-    """Start the server unless one is running; the server itself holds the lock while it lives."""
-    program = shutil.which("redis-server")
-    descriptor = os.open(folder / "server.lock", os.O_RDWR | os.O_CREAT, 0o600)
-    try:
-        fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
-        if program is None:
+    def __enter__(self) -> Self:
+        for needed in (self.folder, self.socket.parent):
+            needed.mkdir(parents=True, exist_ok=True, mode=0o700)
+        if self.socket.parent.stat().st_uid != os.getuid():
             raise StoreError(
-                "no redis-server is installed on this machine; install it (Debian: apt install "
-                "redis-server) or set FISHPLATE_REDIS_URL to a server that runs elsewhere"
+                f"{self.socket.parent} belongs to another user; set FISHPLATE_REDIS_URL instead"
             )
-        with (folder / "redis.log").open("ab") as output:
-            return subprocess.Popen(
-                [program, *_options(folder, path)],
-                stdin=subprocess.DEVNULL,
-                stdout=output,
-                stderr=output,
-                pass_fds=(descriptor,),
-                # Not in our process group: an interrupt from the terminal is for us to pass on.
-                start_new_session=True,
-                preexec_fn=lambda: die_with_parent(signal.SIGTERM),  # noqa: PLW1509
-            )
-    except BlockingIOError:
-        log.info("sharing the Redis server that already serves %s", folder.parent)
-        return None
-    finally:
-        os.close(descriptor)
+        self.keep_alive()
+        try:
+            self._await()
+        except StoreError:
+            self.__exit__()
+            raise
+        return self
+
+    def __exit__(self, *_exception: object) -> None:
+        if self._process is not None:
+            self._process.terminate()
+            self._process.wait()
+
+    def keep_alive(self) -> None:
+        """Start the server if neither we nor anybody else has it running."""
+        if self._process is None or self._process.poll() is not None:
+            self._process = self._start()
+
+    def _start(self) -> "subprocess.Popen[bytes] | None":
+        """Start the server unless one is running: it holds the lock itself, as long as it lives."""
+        descriptor = os.open(self.folder / "server.lock", os.O_RDWR | os.O_CREAT, 0o600)
+        try:
+            fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
+            with (self.folder / "redis.log").open("ab") as output:
+                return subprocess.Popen(
+                    [_program(), *_options(self.folder, self.socket)],
+                    stdin=subprocess.DEVNULL,
+                    stdout=output,
+                    stderr=output,
+                    pass_fds=(descriptor,),
+                    # Not in our process group: an interrupt from the terminal is for us to pass on.
+                    start_new_session=True,
+                    preexec_fn=lambda: die_with_parent(signal.SIGTERM),  # noqa: PLW1509
+                )
+        except BlockingIOError:
+            return None
+        finally:
+            os.close(descriptor)
+
+    def _await(self) -> None:
+        until = time.monotonic() + PATIENCE
+        with redis.Redis(unix_socket_path=str(self.socket), socket_timeout=1.0) as client:
+            while True:
+                try:
+                    client.ping()
+                    return
+                except redis.RedisError as error:
+                    self._give_up_if_hopeless(error, until)
+                time.sleep(0.05)
+
+    def _give_up_if_hopeless(self, error: redis.RedisError, until: float) -> None:
+        if self._process is not None and self._process.poll() is not None:
+            raise StoreError(
+                f"redis-server ended with status {self._process.returncode}; see "
+                f"{self.folder / 'redis.log'}"
+            ) from error
+        if time.monotonic() > until:
+            raise StoreError(f"redis-server does not answer on {self.socket}: {error}") from error
+
+
+def _program() -> str:
+    program = shutil.which("redis-server")
+    if program is None:
+        raise StoreError(
+            "no redis-server is installed on this machine; install it (Debian: apt install "
+            "redis-server) or set FISHPLATE_REDIS_URL to a server that runs elsewhere"
+        )
+    return program
 
 
 def _options(folder: Path, path: Path) -> list[str]:
@@ -107,20 +142,3 @@ def _options(folder: Path, path: Path) -> list[str]:
         "maxmemory-policy": "noeviction",
     }
     return [part for name, value in options.items() for part in (f"--{name}", value)]
-
-
-def _await(path: Path, server: "subprocess.Popen[bytes] | None", folder: Path) -> None:
-    until = time.monotonic() + PATIENCE
-    with redis.Redis(unix_socket_path=str(path), socket_timeout=1.0) as client:
-        while True:
-            try:
-                client.ping()
-                return
-            except redis.RedisError as error:
-                if server is not None and server.poll() is not None:
-                    raise StoreError(
-                        f"redis-server ended with code {server.returncode}; see {folder}/redis.log"
-                    ) from error
-                if time.monotonic() > until:
-                    raise StoreError(f"redis-server does not answer on {path}: {error}") from error
-            time.sleep(0.05)

@@ -170,7 +170,7 @@ class Queue:
                 function,
                 args=arguments,
                 job_id=question_id,
-                timeout=ANSWER_LIMIT,
+                timeout=ANSWER_LIMIT + BACKSTOP,
                 result_ttl=ANSWER_KEPT,
                 failure_ttl=ANSWER_KEPT,
                 description=f"{function} {question_id}",

@@ -6,7 +6,7 @@ the store while no process holds it had its worker killed: it is queued once mor
 
 import logging
 
-from workers.errors import TransitionError, UnknownJobError
+from workers.errors import StoreError, TransitionError, UnknownJobError
 from workers.queue import Queue
 from workers.record import FAILED, QUEUED, RUNNING
 from workers.store import Store
@@ -33,7 +33,10 @@ def reconcile(store: Store, queue: Queue) -> None:
     waiting = queue.waiting()
     for job_id in store.unfinished():
         if job_id not in waiting:
-            settle(store, queue, job_id)
+            try:
+                settle(store, queue, job_id)
+            except StoreError:  # one job that cannot be helped must not hold up the others
+                log.exception("job %s could not be looked after", job_id)
 
 
 def settle(
@@ -43,20 +46,22 @@ def settle(
     *,
     verdict: str | None = None,
     handed_back: bool = False,
-) -> None:
-    """Decide what happens to a job that nobody works on; does nothing when somebody does.
+) -> bool:
+    """Decide what happens to a job that nobody works on; returns False when somebody does.
 
     verdict     : why the worker was killed, when that was on purpose: the job has failed.
     handed_back : the worker was shut down in order: the attempt does not count.
     """
     try:
-        with store.working(job_id) as staging:
-            if staging is not None:
+        with store.claimed(job_id) as mine:
+            if mine:
                 _settle(store, queue, job_id, verdict, handed_back)
+            return mine
     except UnknownJobError:
-        store.tidy_index(job_id)  # a crash left an entry without a job
+        store.forget_unknown(job_id)
     except TransitionError:
         log.info("job %s was cancelled meanwhile", job_id)
+    return True
 
 
 def _settle(
@@ -64,7 +69,7 @@ def _settle(
 ) -> None:
     record = store.record(job_id)
     if record.is_final:
-        store.tidy_index(job_id)
+        store.tidy_index(record)
         return
     if record.state == RUNNING:
         if store.recover_published(job_id):

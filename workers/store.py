@@ -15,11 +15,13 @@ system refuses (full disk, no permission), and UnknownJobError for an id without
 """
 
 import hashlib
+import logging
 import shutil
 import time
 from collections.abc import Iterator, Mapping, Sequence
-from contextlib import contextmanager
+from contextlib import ExitStack, contextmanager
 from pathlib import Path
+from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 from urllib.parse import quote
 
@@ -30,7 +32,10 @@ from workers.record import FINISHED, QUEUED, RUNNING, STATES, Event, Record, is_
 
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
+STAGING = "staging"
 ABANDONED = 86_400.0  # age at which something in incoming/ is nobody's any more [s]
+
+log = logging.getLogger(__name__)
 
 
 class Acceptance(NamedTuple):
@@ -149,6 +154,8 @@ class Store:
                     return Record.from_bytes((self.jobs.path(job_id) / "record.json").read_bytes())
                 except FileNotFoundError:
                     pass
+                except (ValueError, TypeError, LookupError) as error:
+                    raise StoreError(f"the record of job {job_id} is damaged: {error}") from error
         raise UnknownJobError(f"there is no job {job_id!r}")
 
     def document(self, job_id: str) -> bytes:
@@ -182,7 +189,7 @@ class Store:
         records: tuple[Record, ...] = ()
         with _telling("the jobs could not be listed"):
             for job_id in self._index(state, label).newest_first(after):
-                record = self._present(job_id)
+                record = self._readable(job_id)
                 if record and state in (None, record.state) and label in (None, record.label):
                     if len(records) == limit:
                         return Page(records, records[-1].id)
@@ -199,10 +206,14 @@ class Store:
         self.record(job_id)
         return self.jobs.path(job_id)
 
-    def _present(self, job_id: str) -> Record | None:
+    def _readable(self, job_id: str) -> Record | None:
+        """The record for a list, which a single damaged one must not break."""
         try:
             return self.record(job_id)
         except UnknownJobError:
+            return None
+        except StoreError:
+            log.exception("job %s is left out of a list", job_id)
             return None
 
     # --- changing --------------------------------------------------------------------------------
@@ -255,27 +266,45 @@ class Store:
             return True
 
     @contextmanager
-    def working(self, job_id: str) -> Iterator[Path | None]:
-        """Be the one process that works on a job; yields an empty staging folder.
+    def claimed(self, job_id: str) -> Iterator[bool]:
+        """Be the one process that has to do with a job; yields False when another one is.
 
-        Yields None when another process works on it. The kernel ends the claim when the process
-        dies, so "running, and nobody works on it" means that the worker was killed.
+        The kernel ends the claim when the process dies: "running, and nobody has claimed it" means
+        that its worker was killed. What that one left half-done is cleared away.
         """
-        folder = self._folder(job_id)
-        with (
-            _telling(f"job {job_id} could not be begun"),
-            durable.lock(folder / "run.lock", wait=False) as mine,
-        ):
+        staging = self._folder(job_id) / STAGING
+        with ExitStack() as held:
+            with _telling(f"job {job_id} could not be begun"):
+                mine = held.enter_context(durable.lock(staging.with_name("run.lock"), wait=False))
+            if not mine:
+                yield False
+                return
+            shutil.rmtree(staging, ignore_errors=True)
+            try:
+                yield True
+            finally:
+                shutil.rmtree(staging, ignore_errors=True)
+
+    @contextmanager
+    def working(self, job_id: str) -> Iterator[Path | None]:
+        """Claim a job and have an empty folder for its results; yields None if another has it."""
+        with self.claimed(job_id) as mine:
             if not mine:
                 yield None
                 return
-            staging = folder / "staging"
-            shutil.rmtree(staging, ignore_errors=True)
-            staging.mkdir()
-            try:
-                yield staging
-            finally:
-                shutil.rmtree(staging, ignore_errors=True)
+            staging = self.jobs.path(job_id) / STAGING
+            with _telling(f"job {job_id} could not be begun"):
+                staging.mkdir()
+            yield staging
+
+    @contextmanager
+    def scratch(self) -> Iterator[Path]:
+        """A folder on the file system of the store, gone afterwards."""
+        with _telling("the job store cannot be written"):
+            durable.make_folder(self._incoming)
+            folder = TemporaryDirectory(dir=self._incoming)
+        with folder as path:
+            yield Path(path)
 
     def remove(self, job_id: str) -> None:
         """Forget a final job and everything of it.
@@ -300,7 +329,7 @@ class Store:
         """Rebuild the indexes from the records, and clear what crashes left behind."""
         with _telling("the job store could not be tidied"):
             for job_id in self.jobs.newest_first():
-                if record := self._present(job_id):
+                if record := self._readable(job_id):
                     self._state_index(record.state).add(job_id)
                     if record.label is not None:
                         self._label_index(record.label).add(job_id)
@@ -309,15 +338,18 @@ class Store:
                 if time.time() - path.stat().st_mtime > ABANDONED:
                     shutil.rmtree(path) if path.is_dir() else path.unlink()
 
-    def tidy_index(self, job_id: str) -> None:
-        """Take out index entries that a crash left for a job that is final or never was."""
-        if (self._incoming / job_id).exists():
-            return  # being accepted just now; looked at first, since it moves to jobs/ from there
-        record = self._present(job_id)
-        if record is None or record.is_final:
+    def tidy_index(self, record: Record) -> None:
+        """Take a job out of the indexes of all states but its own."""
+        for state in STATES:
+            if state != record.state:
+                self._state_index(state).discard(record.id)
+
+    def forget_unknown(self, job_id: str) -> None:
+        """Take out the index entries that a crash left for a job that never was."""
+        # A job being accepted is in incoming/ until the moment it is in jobs/: look there first.
+        if not (self._incoming / job_id).exists() and not self.jobs.path(job_id).exists():
             for state in STATES:
-                if record is None or state != record.state:
-                    self._state_index(state).discard(job_id)
+                self._state_index(state).discard(job_id)
 
     @contextmanager
     def _changing(self, job_id: str) -> Iterator[Path]:
@@ -332,9 +364,10 @@ class Store:
     def _replace(self, folder: Path, record: Record) -> Record:
         self._state_index(record.state).add(record.id)
         durable.replace(folder / "record.json", record.as_bytes())
-        for state in STATES:
-            if state != record.state:
-                self._state_index(state).discard(record.id)
+        # A job cancelled at work stays among the running ones until its worker, or the reconciler
+        # in its place, has cleared away what it leaves.
+        if not (record.is_final and (folder / STAGING).exists()):
+            self.tidy_index(record)
         return record
 
     # --- indexes ---------------------------------------------------------------------------------

@@ -16,9 +16,9 @@ import redis
 
 from elements.errors import FishplateError
 from workers import pipeline
-from workers.errors import FaultyError, StoreError, TransitionError, UnknownJobError
+from workers.errors import Fault, FaultyError, TransitionError, UnknownJobError
 from workers.limits import TimeLimitError, memory_limit, time_limit
-from workers.queue import Queue
+from workers.queue import ANSWER_LIMIT, Queue
 from workers.record import FAILED, QUEUED, RUNNING
 from workers.settings import GIBIBYTE, Settings
 from workers.store import Store
@@ -29,17 +29,17 @@ UNHEARD = object()  # stands for a stage that Redis did not take
 LOOK_EVERY = 1.0  # between two looks whether the job was cancelled [s]
 
 OUT_OF_TIME = (
-    "The job took longer than the {seconds} s allowed. Use a coarser mesh, fewer load cases at a "
+    "It took longer than the {seconds} s allowed. Use a coarser mesh, fewer load cases at a "
     "time, or have the time limit raised."
 )
 OUT_OF_MEMORY = (
-    "The job needed more than the {gibibytes:.1f} GiB of memory allowed. Use a coarser mesh, fewer "
+    "It needed more than the {gibibytes:.1f} GiB of memory allowed. Use a coarser mesh, fewer "
     "load cases at a time, or have the memory limit raised."
 )
 DISK_FULL = "The disk of the job store is full; the results could not be written."
 OUR_FAULT = (
-    "Fishplate itself failed on this job ({error}); no result was made. Please report it together "
-    "with the job document."
+    "Fishplate itself failed here ({error}); nothing was made. Please report it together with the "
+    "job document."
 )
 
 log = logging.getLogger(__name__)
@@ -82,11 +82,11 @@ def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
 
 
 def _explain(error: BaseException, settings: Settings) -> dict[str, Any]:
-    """Why a job failed, in plain words."""
+    """What went wrong, in plain words; with the faults of the document, if it is to blame."""
     if isinstance(error, FaultyError):
-        return {"reason": str(error), "faults": error.faults}
+        return {"reason": _summary(error.faults), "faults": error.faults}
     if isinstance(error, TimeLimitError):
-        return {"reason": OUT_OF_TIME.format(seconds=settings.time_limit)}
+        return {"reason": OUT_OF_TIME.format(seconds=error.seconds)}
     if isinstance(error, MemoryError):
         return {"reason": OUT_OF_MEMORY.format(gibibytes=settings.memory_limit / GIBIBYTE)}
     if isinstance(error, OSError) and error.errno in (errno.ENOSPC, errno.EDQUOT, errno.EFBIG):
@@ -94,6 +94,11 @@ def _explain(error: BaseException, settings: Settings) -> dict[str, Any]:
     if isinstance(error, FishplateError):
         return {"reason": str(error)}
     return {"reason": OUR_FAULT.format(error=f"{type(error).__name__}: {error}")}
+
+
+def _summary(faults: tuple[Fault, ...]) -> str:
+    more = f" (and {len(faults) - 1} more)" if len(faults) > 1 else ""
+    return f"{faults[0].pointer or '/'}: {faults[0].message}{more}"
 
 
 def _reporter(store: Store, queue: Queue, job_id: str) -> Callable[[str, float], None]:
@@ -125,16 +130,34 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
     Returns {"ok": True}, or {"ok": False, "error": class name, "reason": plain words}.
     """
     settings = Settings.from_environment()
+    store = Store(settings.store)
     try:
-        folder = Store(settings.store).results_path(job_id)
-        with memory_limit(settings.memory_limit):
-            if kind == "field":
-                pipeline.write_fields(folder, case)
-            elif kind == "preview" and quantity is not None:
-                pipeline.render(folder, case, quantity)
-            else:
-                raise StoreError(f"there is no artefact {kind!r} of quantity {quantity!r}")
-    except (FishplateError, MemoryError) as error:
-        reason = _explain(error, settings)["reason"]
-        return {"ok": False, "error": type(error).__name__, "reason": reason}
+        with time_limit(ANSWER_LIMIT), memory_limit(settings.memory_limit):
+            _make(store, store.results_path(job_id), kind, case, quantity)
+    except KeyError as error:
+        return _refusal(error, f"the job has nothing of the name {error}")
+    except (Exception, TimeLimitError) as error:
+        log.warning("no %s of job %s", kind, job_id, exc_info=error)
+        return _refusal(error, _explain(error, settings)["reason"])
     return {"ok": True}
+
+
+def _refusal(error: BaseException, reason: str) -> dict[str, Any]:
+    return {"ok": False, "error": type(error).__name__, "reason": reason}
+
+
+def _make(store: Store, folder: Path, kind: str, case: str, quantity: str | None) -> None:
+    """Make the file in a copy of the folder, so that it is whole when it gets its place."""
+    with store.scratch() as scratch:
+        for path in folder.iterdir():
+            if path.is_file():
+                (scratch / path.name).hardlink_to(path)
+        if kind == "field":
+            made = pipeline.write_fields(scratch, case)
+        elif kind == "preview" and quantity is not None:
+            made = pipeline.render(scratch, case, quantity)
+        else:
+            raise KeyError(kind)
+        place = folder / made.relative_to(scratch)
+        place.parent.mkdir(parents=True, exist_ok=True)
+        made.replace(place)

@@ -1,6 +1,7 @@
 """One worker process: takes tasks off the queues and forks a work-horse for each."""
 
 import logging
+import os
 import signal
 import time
 from types import FrameType
@@ -18,6 +19,7 @@ from workers.settings import Settings
 from workers.tasks import OUT_OF_TIME
 
 HEARTBEAT = 15  # between two signs of life while idle [s]; rq adds its own margin of 15 s
+LAST_BREATH = 2.0  # for killed processes to let go of a job [s]
 MONITOR = 5  # between two looks at a work-horse [s]
 
 log = logging.getLogger(__name__)
@@ -32,6 +34,7 @@ class Worker(rq.Worker):
         self.settings = settings
         self.jobs = Queue(settings)
         self._handing_back = False
+        self._group = 0  # process group of the work-horse
         super().__init__(
             [INTERACTIVE, BULK],
             connection=connect(settings),
@@ -45,21 +48,44 @@ class Worker(rq.Worker):
         try:
             super().execute_job(job, queue)
         finally:
+            elapsed = time.monotonic() - began
+            left_something = self._kill_rest()
             if queue.name == BULK:
-                self._settle(job.args[0], time.monotonic() - began)
+                self._settle(job.args[0], elapsed, LAST_BREATH if left_something else 0.0)
 
-    def _settle(self, job_id: str, elapsed: float) -> None:
+    def fork_work_horse(self, job: Job, queue: rq.Queue) -> None:
+        super().fork_work_horse(job, queue)
+        self._group = self.horse_pid
+
+    def _kill_rest(self) -> bool:
+        """Kill what the work-horse started and left behind; True if there was anything.
+
+        Whatever it forked has inherited its claim on the job.
+        """
+        group, self._group = self._group, 0
+        try:
+            if group:
+                os.killpg(group, signal.SIGKILL)
+            return bool(group)
+        except ProcessLookupError:
+            return False
+
+    def _settle(self, job_id: str, elapsed: float, patience: float) -> None:
         # A call into compiled code can outlast the limit inside the work-horse; then rq killed it.
         limit = self.settings.time_limit
         verdict = OUT_OF_TIME.format(seconds=limit) if elapsed > limit else None
+        until = time.monotonic() + patience
         try:
-            settle(
+            while not settle(
                 self.jobs.store,
                 self.jobs,
                 job_id,
                 verdict=verdict,
                 handed_back=self._handing_back,
-            )
+            ):
+                if time.monotonic() >= until:
+                    break
+                time.sleep(0.01)
         except (StoreError, redis.RedisError) as error:
             log.warning("job %s is left to the reconciler: %s", job_id, error)
 

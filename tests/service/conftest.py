@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from tests.service_pool import Service, running_pool
-from workers.private_redis import private_redis
+from workers.private_redis import PrivateRedis
 from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
@@ -21,10 +21,10 @@ def store(tmp_path: Path) -> Store:
 @pytest.fixture
 def settings(store: Store, tmp_path: Path) -> Iterator[Settings]:
     """Settings with an empty Redis of the test's own."""
-    with private_redis(tmp_path / "server") as url:
+    with PrivateRedis(tmp_path / "server") as server:
         yield Settings(
             store=store.root,
-            redis_url=url,
+            redis_url=server.url,
             workers=1,
             time_limit=20,
             memory_limit=1024**3,

@@ -478,21 +478,21 @@ def test_an_index_entry_too_many_is_not_listed_and_can_be_tidied(store: Store) -
     store._state_index("queued").add(done)
     assert store.list(state="queued").records == ()
     assert store.unfinished() == (done,)
-    store.tidy_index(done)
+    store.tidy_index(store.record(done))
     assert store.unfinished() == ()
     assert [r.id for r in store.list(state="finished").records] == [done]
 
 
-def test_tidying_leaves_a_job_alone_that_is_just_being_accepted(
+def test_a_job_that_is_just_being_accepted_is_not_taken_for_an_unknown_one(
     store: Store, monkeypatch: pytest.MonkeyPatch
 ) -> None:
     real_move = durable.move
 
-    def tidy_then_move(source: Path, target: Path) -> None:
-        store.tidy_index(source.name)
+    def forget_then_move(source: Path, target: Path) -> None:
+        store.forget_unknown(source.name)
         real_move(source, target)
 
-    monkeypatch.setattr(durable, "move", tidy_then_move)
+    monkeypatch.setattr(durable, "move", forget_then_move)
     job_id = accept(store)
     assert store.unfinished() == (job_id,)
 
