@@ -42,7 +42,10 @@ def preflight(job: Job) -> Mesh | None:
         mesh = mesh_directly(job)
     except MeshError as error:
         raise DocumentError(error.faults) from error
-    if mesh is not None and (faults := [*_numbering_faults(job), *placing_faults(job, mesh)]):
+    faults = _numbering_faults(job)
+    if mesh is not None:
+        faults += placing_faults(job, mesh)
+    if faults:
         raise DocumentError(faults)
     return mesh
 

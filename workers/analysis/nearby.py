@@ -41,7 +41,7 @@ def close_pairs(points: Array, tolerance: float, most: int | None = None) -> Pai
 
 
 def segment_candidates(start: Array, end: Array, tolerance: float) -> Iterator[Pairs]:
-    """Pairs of segments whose skew boxes come within `tolerance`, in chunks of (k, 2).
+    """Pairs of segments whose skew boxes come within `tolerance`, in chunks of (k, 2), lower first.
 
     Parameters
     ----------
@@ -63,7 +63,7 @@ def segment_candidates(start: Array, end: Array, tolerance: float) -> Iterator[P
         begins = np.repeat(reached[row:until] - counts[row:until], counts[row:until])
         other = one + 1 + np.arange(len(one)) + done - begins
         near = (below[one] <= above[other] + tolerance) & (below[other] <= above[one] + tolerance)
-        yield np.stack((order[one[near]], order[other[near]]), axis=1)
+        yield np.sort(np.stack((order[one[near]], order[other[near]]), axis=1), axis=1)
         row = until
 
 

@@ -17,9 +17,9 @@ def named_sides(geometry: MeshGeometry, mesh: Mesh) -> tuple[dict[str, Facets], 
     counts = [len(edges) for edges in geometry.sides.values()]
     pairs = [edge[:2] for edges in geometry.sides.values() for edge in edges]
     strange = _side_number_faults(geometry, mesh)
-    if strange or not pairs:
+    if strange or not geometry.sides:
         return {}, strange
-    facets = np.split(mesh.find_facets(np.array(pairs)), np.cumsum(counts)[:-1])
+    facets = np.split(mesh.find_facets(np.array(pairs, np.intp)), np.cumsum(counts)[:-1])
     sides = dict(zip(geometry.sides, facets, strict=True))
     faults = [
         fault

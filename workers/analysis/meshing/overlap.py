@@ -106,7 +106,7 @@ def _say_crossing(mesh: Mesh, border: Border, one: int, other: int) -> OverlapFa
     before, behind = (_turn(border.start[[other]], border.end[[other]], end) for end in (a, b))
     place = (a + (b - a) * before / (before - behind))[0]
     return OverlapFault(
-        mesh.boundary[border.row[one]],
+        mesh.boundary[max(border.row[one], border.row[other])],
         f"the {_side(mesh, border, one)} crosses the {_side(mesh, border, other)} at "
         f"{_at(place)}; the mesh must not lie on top of itself",
     )
