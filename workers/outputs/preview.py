@@ -48,7 +48,7 @@ def render_model(
     and PicturesUnavailableError, OSError as `render_field` does.
     """
     require()
-    subtitle = "Model" if case is None else f"{case} · Model and loads"
+    subtitle = "Model" if case is None else f"{_with_factors(job, case)} · Model and loads"
     page = Page(job.title, subtitle, cautions)
     draw_model(page, job, mesh, case)
     page.save(path, _facts(case or "", "model", job.units.length))
@@ -96,6 +96,15 @@ def render_deformed(
     page = Page(job.title, subtitle, cautions)
     draw_deformed(page, job, mesh, fields, factor)
     page.save(path, _facts(fields.name, "deformed", job.units.length))
+
+
+def _with_factors(job: Job, state: str) -> str:
+    """A combination with its factors, e.g. "ULS = 1.5 × lift + 1.35 × self weight"."""
+    for combination in job.combinations:
+        if combination.name == state:
+            terms = (f"{show(k, 4)} {TIMES} {case}" for case, k in combination.factors.items())
+            return f"{state} = {' + '.join(terms)}"
+    return state
 
 
 def _facts(case: str, quantity: str, unit: str) -> dict[str, str]:

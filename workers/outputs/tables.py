@@ -80,9 +80,7 @@ def _lines(results: Results) -> Iterator[Row]:
             columns = (line["distance"], line["points"], found["stress"], found["von_mises"],
                        found["displacement"])  # fmt: skip
             for distance, point, tensor, von_mises, moved in zip(*columns, strict=True):
-                # A point of the line outside the plate has no values.
-                yield [name, case, distance, *point, *(tensor or [None] * 3), von_mises,
-                       *(moved or [None] * 2)]  # fmt: skip
+                yield [name, case, distance, *point, *tensor, von_mises, *moved]
 
 
 def _cuts(results: Results) -> Iterator[Row]:

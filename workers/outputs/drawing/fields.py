@@ -12,7 +12,7 @@ from workers.analysis.fields import Fields
 from workers.analysis.plane_stress import principal, von_mises
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.labels import Labels
+from workers.outputs.drawing.labels import Label, Labels
 from workers.outputs.drawing.legend import Scale, draw_isoline, draw_legend, legend_size
 from workers.outputs.drawing.numbers import round_factor, show, vector
 from workers.outputs.drawing.page import HEIGHT, WIDTH, Page, over
@@ -78,8 +78,8 @@ def draw_stress(
     if directions:
         _draw_directions(page.canvas, mesh, view, fields, quantity)
     peak = int(quantity.peak(nodal))
-    text = f"{show(nodal[peak])} {job.units.stress} at {_place(mesh, peak)} {job.units.length}"
-    mark_peak(page, view, mesh.points[peak], text)
+    value = f"{show(nodal[peak])} {job.units.stress}"
+    mark_peak(page, view, mesh.points[peak], value, _where(mesh, peak, job))
 
 
 def stress_scale(nodal: Array, limits: Limits | None, rounding: float, signed: bool) -> Scale:
@@ -152,12 +152,13 @@ def _fill(page: Page, view: View, surface: Surface, values: Array, scale: Scale)
     page.paper = over(painted, sheet.pixels())
 
 
-def mark_peak(page: Page, view: View, at: Array, text: str) -> None:
-    """A ring around the place and a label with its value."""
+def mark_peak(page: Page, view: View, at: Array, value: str, where: str) -> None:
+    """A ring around the place and a label with its value, on one line or two."""
     place = view.pixels(at)
     page.canvas.disc(place, 11, fill=None, edge=PAPER, width=6.5)
     page.canvas.disc(place, 11, fill=None, edge=INK, width=3)
-    Labels(page.canvas, page.drawing, page.paper).place(place, [text], bold=True)
+    labels = Labels(page.canvas, page.drawing, page.paper)
+    labels.place(Label(place, [(f"{value} {where}",), (value, where)], bold=True))
 
 
 def _draw_directions(
@@ -207,15 +208,15 @@ def draw_deformed(page: Page, job: Job, mesh: FieldMesh, fields: Fields, factor:
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes, dashed=True)
     draw_outline(page.canvas, mesh.mesh, view, positions)
     peak = int(np.argmax(size))
-    text = f"{show(largest)} {unit}, point {_place(mesh, peak)} {unit}"
-    mark_peak(page, view, moved[peak], text)
+    value = f"{show(largest)} {unit}"
+    mark_peak(page, view, moved[peak], value, _where(mesh, peak, job))
 
 
-def _place(mesh: FieldMesh, point: int) -> str:
+def _where(mesh: FieldMesh, point: int, job: Job) -> str:
     """A position to four digits; what is rounding against the size of the plate is zero."""
     place = mesh.points[point]
     x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)
-    return vector(x, y, digits=4)
+    return f"at {vector(x, y, digits=4)} {job.units.length}"
 
 
 def _by_node(mesh: FieldMesh, values: Array) -> Array:

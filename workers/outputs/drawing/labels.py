@@ -1,11 +1,13 @@
 """Labels that find their own place: near what they name, on nothing else.
 
 What is already drawn is read back from the canvas, so nobody keeps a list of it. A label tries
-places around its anchor, nearest first, and takes the cheapest: ink under it costs most, then ink
-under its leader, then distance.
+many places around its anchor and takes the cheapest: ink under it costs most, then what its leader
+crosses, then distance.
 """
 
 from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 from numpy.typing import ArrayLike, NDArray
@@ -15,16 +17,102 @@ from workers.outputs.drawing.page import LABEL_SIZE
 from workers.outputs.drawing.palette import INK, PAPER
 from workers.outputs.drawing.view import Box
 
+Array = NDArray[np.floating[Any]]
+
 CELL = 4  # the canvas is looked at in squares of so many pixels
-PADDING = 5
-DISTANCES = (24, 40, 60, 85, 115, 150, 190, 240, 300, 380, 480, 600)
-ANGLES = np.radians(np.arange(0, 360, 22.5))
-PAINTED = 0.03  # a painted plate may lie under a label rather than other ink
-INK_COST, LEADER_COST = 40.0, 12.0
+PADDING = 5  # kept free around a label
+DISTANCES = (12, 20, 30, 42, 56, 72, 90, 110, 135, 165, 200, 250, 310, 380, 470, 580)
+ANGLES = np.radians(np.arange(0, 360, 11.25))
+SAMPLES = 24  # points of a leader at which it is looked for crossings
+LINE = 1.22  # distance of lines over the size of the text
+LEADER_FROM = 10  # a gap between label and anchor that needs a line to bridge it [pixels]
+
+# Costs; distance costs 1 per pixel.
+ON_INK, ON_PLATE = 40.0, 1.0  # per cell under the label
+CROSSING_INK, CROSSING_PLATE = 10.0, 0.6  # per pixel of leader
+WRONG_WAY = 45.0  # for going away from the wanted direction, twice that for the opposite
 LEFT: Align = "left"
 RIGHT: Align = "right"
-LINE = 1.22  # distance of lines over the size of the text
-LEADER_FROM = 14  # a gap between label and anchor that needs a line to bridge it
+
+
+@dataclass(frozen=True, eq=False)
+class Label:
+    """What is to be said at a place.
+
+    anchor : (2,) pixels
+    layouts : the same text broken into lines in different ways, the preferred one first
+    toward : the direction in which the label should rather go
+    covering : whether it may stand on its anchor
+    """
+
+    anchor: Array
+    layouts: Sequence[Sequence[str]]
+    colour: str = INK
+    bold: bool = False
+    toward: Array | None = None
+    covering: bool = False
+
+
+def layouts(name: str, lines: Sequence[str]) -> list[list[str]]:
+    """A name and what there is to say of it: behind the name, below it, and narrower still."""
+    head = [f"{name}:"] if name else []
+    below = [*head, *lines]
+    narrow = [*head, *(part for line in lines for part in _halves(line))]
+    beside = [f"{name}: {lines[0]}", *lines[1:]] if name and lines else below
+    return [beside, below, narrow]
+
+
+def _halves(line: str) -> list[str]:
+    """A line broken at the blank nearest to its middle."""
+    blanks = [number for number, c in enumerate(line) if c == " "]
+    if not blanks:
+        return [line]
+    at = min(blanks, key=lambda number: abs(number - len(line) / 2))
+    return [line[:at], line[at + 1 :]]
+
+
+@dataclass(frozen=True, eq=False)
+class _Places:
+    """Candidate boxes of a label: lower left and upper right corners (c, 2) [pixels]."""
+
+    low: Array
+    high: Array
+
+    @property
+    def middle(self) -> Array:
+        return (self.low + self.high) / 2
+
+
+class _Marked:
+    """Cells of the picture that are marked, with a table of their running sums."""
+
+    def __init__(self, cells: NDArray[np.bool_]) -> None:
+        self._cells = cells
+        self._sums = np.zeros((cells.shape[0] + 1, cells.shape[1] + 1), np.int32)
+        self._sums[1:, 1:] = cells.cumsum(axis=0, dtype=np.int32).cumsum(axis=1)
+
+    def with_box(self, box: Box) -> "_Marked":
+        cells = self._cells.copy()
+        rows = slice(max(0, int(box.bottom // CELL)), int(box.top // CELL) + 1)
+        columns = slice(max(0, int(box.left // CELL)), int(box.right // CELL) + 1)
+        cells[rows, columns] = True
+        return _Marked(cells)
+
+    def under(self, places: _Places) -> Array:
+        """How many marked cells lie under each box, (c,)."""
+        limit = np.array(self._cells.shape[::-1])
+        low = np.clip(((places.low - PADDING) // CELL).astype(int), 0, limit)
+        high = np.clip(((places.high + PADDING) // CELL).astype(int) + 1, 0, limit)
+        (x0, y0), (x1, y1) = low.T, high.T
+        sums = self._sums
+        return (sums[y1, x1] - sums[y0, x1] - sums[y1, x0] + sums[y0, x0]).astype(float)
+
+    def part_of(self, points: Array) -> Array:
+        """The part of each column of points (s, c, 2) that is marked, (c,)."""
+        cells = (points // CELL).astype(int)
+        rows = np.clip(cells[..., 1], 0, self._cells.shape[0] - 1)
+        columns = np.clip(cells[..., 0], 0, self._cells.shape[1] - 1)
+        return np.asarray(self._cells[rows, columns].mean(axis=0))
 
 
 class Labels:
@@ -35,120 +123,84 @@ class Labels:
 
     def __init__(self, canvas: Canvas, room: Box, paper: NDArray[np.uint8]) -> None:
         self._canvas, self._room = canvas, room
-        inked = canvas.pixels()[..., 3] > 24
+        self._ink = _Marked(_any_in_cell(canvas.pixels()[..., 3] > 24))
         painted = (paper[..., 0] < 250) | (paper[..., 1] < 250) | (paper[..., 2] < 250)
-        self._ink: NDArray[np.float64] = np.maximum(
-            _any_in_cell(inked), PAINTED * _any_in_cell(painted)
-        )
+        self._plate = _Marked(_any_in_cell(painted))
 
-    def place(
-        self,
-        anchor: ArrayLike,
-        lines: Sequence[str],
-        *,
-        colour: str = INK,
-        size: float = LABEL_SIZE,
-        bold: bool = False,
-        toward: ArrayLike | None = None,
-    ) -> Box:
-        """Draw a label of one or more lines near its anchor [pixels] and say where it went.
-
-        toward : the direction in which the label should rather go
-        """
-        at = np.asarray(anchor, float)
-        widths = [self._canvas.measure(line, size, bold=bold)[0] for line in lines]
-        extent = np.array([max(widths), LINE * size * len(lines)])
-        wanted = None if toward is None else _unit(np.asarray(toward, float))
-        box = min(self._candidates(at, extent), key=lambda b: self._cost(b, at, wanted))
-        self._draw_leader(box, at, colour)
-        self._draw_lines(box, lines, right=box.right < at[0], colour=colour, size=size, bold=bold)
-        rows, columns = self._cells(box, 0)
-        self._ink[rows, columns] = 1.0
+    def place(self, label: Label) -> Box:
+        """Draw a label where it costs least and say where it went."""
+        chosen, cheapest = None, np.inf
+        for rank, lines in enumerate(label.layouts):
+            extent = self._extent(lines, label.bold)
+            places = self._candidates(label, extent)
+            cost = self._costs(places, label) + 4.0 * rank
+            best = int(np.argmin(cost))
+            if cost[best] < cheapest:
+                box = Box(*map(float, (*places.low[best], *places.high[best])))
+                chosen, cheapest = (box, lines), cost[best]
+        if chosen is None:
+            raise ValueError("a label without text")
+        box, lines = chosen
+        self._draw(label, box, lines)
+        self._ink = self._ink.with_box(box)
         return box
 
-    def _candidates(self, at: NDArray, extent: NDArray) -> list[Box]:
-        found = []
-        for distance in DISTANCES:
-            for angle in ANGLES:
-                direction = np.array([np.cos(angle), np.sin(angle)])
-                # The nearest point of the box lies at about this distance from the anchor.
-                middle = at + direction * distance + np.sign(np.round(direction, 3)) * extent / 2
-                low, high = middle - extent / 2, middle + extent / 2
-                box = Box(*low, *high)
-                if self._inside(box):
-                    found.append(box)
-        return found or [self._pushed_inside(at, extent)]
+    def _extent(self, lines: Sequence[str], bold: bool) -> Array:
+        widths = [self._canvas.measure(line, LABEL_SIZE, bold=bold)[0] for line in lines]
+        return np.array([max(widths), LINE * LABEL_SIZE * len(lines)])
 
-    def _inside(self, box: Box) -> bool:
-        room = self._room
-        return (
-            box.left >= room.left
-            and box.right <= room.right
-            and box.bottom >= room.bottom
-            and box.top <= room.top
-        )
+    def _candidates(self, label: Label, extent: Array) -> _Places:
+        direction = np.column_stack((np.cos(ANGLES), np.sin(ANGLES)))
+        distance = np.array(DISTANCES, float)[:, None, None]
+        # The side of the box that faces the anchor lies at about this distance from it.
+        middle = (label.anchor + direction * (distance + extent / 2)).reshape(-1, 2)
+        if label.covering:
+            middle = np.vstack((label.anchor, middle))
+        half = extent / 2
+        room_low = np.array([self._room.left, self._room.bottom])
+        room_high = np.array([self._room.right, self._room.top])
+        inside = ((middle - half >= room_low) & (middle + half <= room_high)).all(axis=1)
+        if not inside.any():
+            middle = np.clip(label.anchor, room_low + half, np.maximum(room_low, room_high) - half)
+            return _Places(middle[None] - half, middle[None] + half)
+        return _Places(middle[inside] - half, middle[inside] + half)
 
-    def _pushed_inside(self, at: NDArray, extent: NDArray) -> Box:
-        room = self._room
-        low = np.array([room.left, room.bottom])
-        high = np.maximum(low, np.array([room.right, room.top]) - extent)
-        corner = np.clip(at, low, high)
-        return Box(*corner, *(corner + extent))
+    def _costs(self, places: _Places, label: Label) -> Array:
+        ends = _facing(places, label.anchor)
+        gap = np.linalg.norm(ends - label.anchor, axis=1)
+        steps = np.linspace(0.08, 1.0, SAMPLES)[:, None, None]
+        along = label.anchor + steps * (ends - label.anchor)
+        crossed = CROSSING_INK * self._ink.part_of(along)
+        crossed += CROSSING_PLATE * self._plate.part_of(along)
+        cost = gap + gap * crossed + ON_INK * self._ink.under(places)
+        if not label.covering:
+            cost += ON_PLATE * self._plate.under(places)
+        if label.toward is not None:
+            way = places.middle - label.anchor
+            way = way / np.maximum(np.linalg.norm(way, axis=1), 1e-9)[:, None]
+            cost = cost + WRONG_WAY * (1.0 - way @ label.toward)
+        return cost
 
-    def _cells(self, box: Box, padding: float) -> tuple[slice, slice]:
-        rows = slice(
-            max(0, int((box.bottom - padding) // CELL)), int((box.top + padding) // CELL) + 1
-        )
-        columns = slice(
-            max(0, int((box.left - padding) // CELL)), int((box.right + padding) // CELL) + 1
-        )
-        return rows, columns
-
-    def _cost(self, box: Box, at: NDArray, wanted: NDArray | None) -> float:
-        rows, columns = self._cells(box, PADDING)
-        end = _nearest(box, at)
-        gap = float(np.linalg.norm(end - at))
-        steps = np.linspace(0.1, 0.95, max(2, int(gap // 8)))[:, None]
-        cells = ((at + steps * (end - at)) // CELL).astype(int)
-        crossed = self._ink[
-            np.clip(cells[:, 1], 0, len(self._ink) - 1),
-            np.clip(cells[:, 0], 0, self._ink.shape[1] - 1),
-        ].sum()
-        cost = INK_COST * self._ink[rows, columns].sum() + LEADER_COST * crossed + gap
-        if wanted is not None:
-            middle = np.array([box.left + box.right, box.bottom + box.top]) / 2
-            cost += 60.0 * (1.0 - float(_unit(middle - at) @ wanted))
-        return float(cost)
-
-    def _draw_leader(self, box: Box, at: NDArray, colour: str) -> None:
-        end = _nearest(box, at)
+    def _draw(self, label: Label, box: Box, lines: Sequence[str]) -> None:
+        canvas, at = self._canvas, label.anchor
+        end = _facing(_Places(*np.array(box).reshape(2, 1, 2)), at)[0]
         if np.linalg.norm(end - at) > LEADER_FROM:
-            self._canvas.line([at, end], colour, 1.5, alpha=0.8)
-        self._canvas.box((box.left - 4, box.bottom), (box.right + 4, box.top), PAPER, alpha=0.82)
-
-    def _draw_lines(
-        self, box: Box, lines: Sequence[str], *, right: bool, colour: str, size: float, bold: bool
-    ) -> None:
-        x, align = (box.right, RIGHT) if right else (box.left, LEFT)
+            canvas.line([at, end], label.colour, 1.5, alpha=0.8)
+        canvas.box((box.left - 4, box.bottom), (box.right + 4, box.top), PAPER, alpha=0.82)
+        x, align = (box.right, RIGHT) if box.right < at[0] else (box.left, LEFT)
         for number, line in enumerate(lines):
-            y = box.top - (number + 0.5) * LINE * size
-            self._canvas.text((x, y), line, size, colour=colour, bold=bold, align=align)
+            y = box.top - (number + 0.5) * LINE * LABEL_SIZE
+            canvas.text((x, y), line, LABEL_SIZE, colour=label.colour, bold=label.bold, align=align)
 
 
-def _any_in_cell(marked: NDArray[np.bool_]) -> NDArray[np.float64]:
+def _facing(places: _Places, at: ArrayLike) -> Array:
+    """The point of each box (with a little air around it) that is nearest to the anchor."""
+    air = np.array([6.0, -2.0])
+    return np.clip(np.asarray(at, float), places.low - air, places.high + air)
+
+
+def _any_in_cell(marked: NDArray[np.bool_]) -> NDArray[np.bool_]:
     """Cells of the picture in which anything is marked, bottom row first."""
     height, width = (n // CELL for n in marked.shape)
     upward = marked[::-1][: height * CELL, : width * CELL]
-    return upward.reshape(height, CELL, width, CELL).any(axis=(1, 3)).astype(float)
-
-
-def _nearest(box: Box, at: NDArray) -> NDArray:
-    """The point of the box (with a little air around it) that is nearest to the anchor."""
-    low = np.array([box.left - 6, box.bottom + 2])
-    high = np.array([box.right + 6, box.top - 2])
-    return np.clip(at, low, high)
-
-
-def _unit(v: NDArray) -> NDArray:
-    length = float(np.linalg.norm(v))
-    return v / length if length else v
+    return np.asarray(upward.reshape(height, CELL, width, CELL).any(axis=(1, 3)))

@@ -27,9 +27,22 @@ from workers.job import (
     Units,
     Vector,
 )
-from workers.outputs.drawing.numbers import TIMES, show, vector
+from workers.outputs.drawing import numbers
+from workers.outputs.drawing.numbers import TIMES
+
+DIGITS = 5  # a load is given, so it is shown as given
+
+
+def show(value: float) -> str:
+    return numbers.show(value, DIGITS)
+
+
+def vector(x: float, y: float) -> str:
+    return numbers.vector(x, y, DIGITS)
+
 
 Array = NDArray[np.floating[Any]]
+Varying = Traction | LineLoad | Pressure | Shear  # the loads that have a start and an end
 
 
 def target_name(load: Load, whole: str = "whole plate") -> str:
@@ -44,7 +57,7 @@ def target_name(load: Load, whole: str = "whole plate") -> str:
 
 @singledispatch
 def describe(load: Load, factor: float, units: Units) -> str:
-    """One line for a load, e.g. "pressure 0 to 5 MPa"."""
+    """One line for a load, e.g. "pressure 5 MPa"."""
     raise TypeError(f"{type(load).__name__} is not a load")
 
 
@@ -70,22 +83,22 @@ def _(load: TotalMoment, factor: float, units: Units) -> str:
 
 @describe.register(Traction)
 def _(load: Traction, factor: float, units: Units) -> str:
-    return f"traction {_vectors(load.start, load.end, factor, units.stress)}"
+    return f"traction {_constant(load, factor, units)}".strip()
 
 
 @describe.register(LineLoad)
 def _(load: LineLoad, factor: float, units: Units) -> str:
-    return _vectors(load.start, load.end, factor, f"{units.force}/{units.length}")
+    return f"line load {_constant(load, factor, units)}".strip()
 
 
 @describe.register(Pressure)
 def _(load: Pressure, factor: float, units: Units) -> str:
-    return f"pressure {_range(load.start, load.end, factor, units.stress)}"
+    return f"pressure {_constant(load, factor, units)}".strip()
 
 
 @describe.register(Shear)
 def _(load: Shear, factor: float, units: Units) -> str:
-    return f"shear {_range(load.start, load.end, factor, units.stress)}"
+    return f"shear {_constant(load, factor, units)}".strip()
 
 
 @describe.register(Acceleration)
@@ -118,30 +131,35 @@ def _vector(v: Vector, factor: float, unit: str) -> str:
     return f"{vector(x, y)} {unit}"
 
 
-def _vectors(start: Vector, end: Vector, factor: float, unit: str) -> str:
-    if start == end:
-        return _vector(start, factor, unit)
-    first, last = (vector(factor * x, factor * y) for x, y in (start, end))
-    return f"{first} to {last} {unit}"
+def _constant(load: Varying, factor: float, units: Units) -> str:
+    """The value of an even load; nothing for one that varies, which is labelled at its ends."""
+    return "" if varies(load) else end_values(load, factor, units)[0]
 
 
-def _range(start: float, end: float, factor: float, unit: str) -> str:
-    if start == end:
-        return f"{show(factor * start)} {unit}"
-    return f"{show(factor * start)} to {show(factor * end)} {unit}"
+def varies(load: Load) -> bool:
+    return isinstance(load, Varying) and load.start != load.end
+
+
+def end_values(load: Varying, factor: float, units: Units) -> tuple[str, str]:
+    """The values of a load at the start and at the end of its side."""
+    unit = f"{units.force}/{units.length}" if isinstance(load, LineLoad) else units.stress
+    if isinstance(load, Pressure | Shear):
+        start, end = (f"{show(factor * value)} {unit}" for value in (load.start, load.end))
+    else:
+        start, end = (_vector(value, factor, unit) for value in (load.start, load.end))
+    return start, end
 
 
 # --- as vectors along a side ---------------------------------------------------------------------
 
 
 @singledispatch
-def along_side(load: Load, outward: Array, part: Array) -> Array | None:
+def along_side(load: Load, outward: Array, part: Array) -> Array:
     """The direction and relative size of a load at places on a side, (k, 2).
 
     outward : (k, 2) unit normals away from the material; part : (k,) of the length of the side.
-    None for a load that does not act on sides.
     """
-    return None
+    raise TypeError(f"a {type(load).__name__} does not act on sides")
 
 
 @along_side.register(TotalForce)

@@ -3,6 +3,7 @@
 Needs only the job and its mesh, so it can be drawn before anything is solved.
 """
 
+from collections.abc import Iterator, Sequence
 from typing import Any
 
 import numpy as np
@@ -12,7 +13,7 @@ from workers.analysis.mesh import PLATE as PLATE_REGION
 from workers.analysis.mesh import Mesh
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.labels import Labels
+from workers.outputs.drawing.labels import Label, Labels, layouts
 from workers.outputs.drawing.loads import (
     ROW,
     acting_loads,
@@ -22,7 +23,7 @@ from workers.outputs.drawing.loads import (
 )
 from workers.outputs.drawing.numbers import show
 from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page, over
-from workers.outputs.drawing.palette import FAINT, INK, PLATE, PLATE_THICK, PLATE_THIN
+from workers.outputs.drawing.palette import FAINT, PLATE, PLATE_THICK, PLATE_THIN
 from workers.outputs.drawing.plate import draw_mesh, draw_outline
 from workers.outputs.drawing.raster import paint
 from workers.outputs.drawing.supports import draw_moves, draw_supports
@@ -32,8 +33,9 @@ from workers.outputs.drawing.view import View
 
 Array = NDArray[np.floating[Any]]
 
-SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 170.0, 105.0, 165.0  # for signs, labels and dimensions
-DIMENSION_CLEAR = 30.0  # between a dimension line and whatever is drawn below it
+SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 225.0, 105.0, 175.0  # for signs, labels and dimensions
+STRIP = 18  # half the strip that a dimension line takes [pixels]
+LABEL_BAND = 46  # left free for a label between the signs at the plate and a dimension line
 SMALL = 22.0
 TINTS = (PLATE_THIN, PLATE, PLATE_THICK)
 
@@ -48,17 +50,16 @@ def draw_model(page: Page, job: Job, mesh: Mesh, state: str | None) -> None:
     _paint_plate(page, job, mesh, view)
     canvas = page.canvas
     draw_outline(canvas, mesh, view, mesh.nodes)
-    notes = draw_supports(canvas, job, mesh, view)
+    wanted = draw_supports(canvas, job, mesh, view)
     draw_moves(canvas, job, mesh, view, state)
-    notes += draw_loads(canvas, job, mesh, view, acting)
+    wanted += draw_loads(canvas, job, mesh, view, acting)
     draw_body_loads(canvas, job, view, acting, (page.drawing.left, page.drawing.top))
     _draw_axes(page)
     _draw_caption(page, job, mesh)
+    _draw_dimensions(page, job.units.length, view, (low, high), wanted)
     labels = Labels(canvas, page.drawing, page.paper)
-    for note in notes:
-        labels.place(note.anchor, note.lines, colour=note.colour, toward=note.toward)
-    _label_regions(labels, job, mesh, view)
-    _draw_dimensions(page, job, view, low, high)
+    for label in [*_region_labels(job, mesh, view), *wanted]:
+        labels.place(label)
 
 
 def _paint_plate(page: Page, job: Job, mesh: Mesh, view: View) -> None:
@@ -96,29 +97,46 @@ def _rgb(colour: str) -> tuple[int, ...]:
 # --- dimensions, axes, captions ------------------------------------------------------------------
 
 
-def _draw_dimensions(page: Page, job: Job, view: View, low: Array, high: Array) -> None:
-    """Overall width below and height beside the plate, clear of what is drawn there."""
-    canvas, room, unit = page.canvas, page.drawing, job.units.length
-    inked = canvas.pixels()[::-1, :, 3] > 24
-    left, bottom = view.pixels(low)
-    right, top = view.pixels(high)
-    columns = slice(int(left), int(right) + 1)
-    rows = slice(int(bottom), int(top) + 1)
-    below = np.flatnonzero(inked[int(room.bottom) : int(bottom) - 4, columns].any(axis=1))
-    lowest = room.bottom + below[0] if len(below) else bottom
-    y = max(room.bottom + SMALL + 14, lowest - DIMENSION_CLEAR)
+def _draw_dimensions(
+    page: Page, unit: str, view: View, corners: tuple[Array, Array], wanted: Sequence[Label]
+) -> None:
+    """Overall width below the plate and height beside it, where there is a free strip."""
+    canvas, room = page.canvas, page.drawing
+    low, high = corners
+    (left, bottom), (right, top) = view.pixels(low), view.pixels(high)
+    inked = np.asarray(canvas.pixels()[::-1, :, 3] > 24)
+    rows = np.asarray(inked[:, int(left) : int(right) + 1].any(axis=1))
+    y = bottom - _free_strip(rows[int(room.bottom) : int(bottom) - 4][::-1], LABEL_BAND)
     width, height = (f"{show(v, 4)} {unit}" for v in high - low)
-    dimension(
-        canvas, np.array([left, bottom]), np.array([right, bottom]),
-        np.array([0.0, y - bottom]), width, LABEL_SIZE,
-    )  # fmt: skip
-    beside = np.flatnonzero(inked[rows, int(right) + 4 : int(room.right)].any(axis=0))
-    furthest = right + 4 + beside[-1] if len(beside) else right
-    x = min(room.right - LABEL_SIZE, furthest + DIMENSION_CLEAR)
-    dimension(
-        canvas, np.array([right, bottom]), np.array([right, top]),
-        np.array([x - right, 0.0]), height, LABEL_SIZE,
-    )  # fmt: skip
+    start, end = np.array([left, bottom]), np.array([right, bottom])
+    dimension(canvas, start, end, np.array([0.0, y - bottom]), width, LABEL_SIZE)
+    columns = np.asarray(inked[int(bottom) : int(top) + 1].any(axis=0))
+    # Labels beside the plate are wide: the height goes where fewer of them will be.
+    labels_right = sum(label.anchor[0] > right - 20 for label in wanted)
+    labels_left = sum(label.anchor[0] < left + 20 for label in wanted)
+    if labels_right > labels_left:
+        free = columns[int(room.left) : int(left) - 4][::-1]
+        x, edge = left - _free_strip(free, 0), left
+    else:
+        free = columns[int(right) + 4 : int(room.right)]
+        x, edge = right + _free_strip(free, 0), right
+    start, end = np.array([edge, bottom]), np.array([edge, top])
+    dimension(canvas, start, end, np.array([x - edge, 0.0]), height, LABEL_SIZE)
+
+
+def _free_strip(inked: NDArray[np.bool_], band: int) -> int:
+    """Distance from the plate to the middle of the first strip free of ink.
+
+    inked : whether there is ink at 4, 5, 6, ... pixels from the plate
+    band : what must be free between strip and ink, for a label
+    """
+    last = 0
+    for number in range(len(inked)):
+        if inked[number]:
+            last = number + 1
+        elif number - last >= 2 * STRIP + (band if last else 0):
+            return number + 4 - STRIP
+    return min(last + 4 + STRIP, len(inked) + 4 - STRIP)
 
 
 def _draw_axes(page: Page) -> None:
@@ -142,7 +160,8 @@ def _draw_caption(page: Page, job: Job, mesh: Mesh) -> None:
     page.canvas.text(at, text, SMALL, colour=FAINT, align="right")
 
 
-def _label_regions(labels: Labels, job: Job, mesh: Mesh, view: View) -> None:
+def _region_labels(job: Job, mesh: Mesh, view: View) -> Iterator[Label]:
+    """Name, thickness and material of each region that is not the plate."""
     for number, name in enumerate(mesh.regions):
         nodes = [b.connectivity[b.region == number].ravel() for b in mesh.blocks]
         inside = mesh.nodes[np.unique(np.concatenate(nodes))]
@@ -151,5 +170,5 @@ def _label_regions(labels: Labels, job: Job, mesh: Mesh, view: View) -> None:
         middle = inside[np.argmin(np.linalg.norm(inside - inside.mean(axis=0), axis=1))]
         section = f"t = {show(job.thickness_of(name))} {job.units.length}"
         material = job.material_of(name).name
-        shown = f"{section}, {material}" if material != job.plate.material else section
-        labels.place(view.pixels(middle), (f"{name}: {shown}",), colour=INK)
+        lines = [section] if material == job.plate.material else [section, material]
+        yield Label(view.pixels(middle), layouts(name, lines), covering=True)

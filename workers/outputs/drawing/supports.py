@@ -15,9 +15,10 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.selection import select
 from workers.job import Job, Support, Units
 from workers.outputs.drawing.canvas import Canvas
+from workers.outputs.drawing.labels import Label, layouts
 from workers.outputs.drawing.numbers import show, vector
 from workers.outputs.drawing.palette import SUPPORT
-from workers.outputs.drawing.stations import lone_nodes, outward_at, runs
+from workers.outputs.drawing.stations import Run, lone_nodes, outward_at, runs
 from workers.outputs.drawing.symbols import (
     arrow,
     ground,
@@ -33,20 +34,11 @@ from workers.outputs.drawing.view import View
 Array = NDArray[np.floating[Any]]
 
 SPACING = 74.0  # of rollers and springs along a side [pixels]
+CLEAR_OF_SIGNS = 52.0  # from the outline to what stands behind a roller
 MOVE = 46.0  # length of the arrow of a prescribed displacement
 ALONG_THE_SIDE = 0.2  # cosine of the angle to the normal below which a direction lies in the side
 BELOW = np.array([-0.1, -1.0])  # where the sign of a support goes if the side does not say
 DOWN = np.array([0.0, -1.0])
-
-
-@dataclass(frozen=True, eq=False)
-class Note:
-    """A label still to be placed: near `anchor` [pixels], rather towards `toward`."""
-
-    anchor: Array
-    lines: tuple[str, ...]
-    colour: str
-    toward: Array | None = None
 
 
 @dataclass(frozen=True, eq=False)
@@ -58,17 +50,17 @@ class Place:
     scale: float
 
 
-def draw_supports(canvas: Canvas, job: Job, mesh: Mesh, view: View) -> list[Note]:
+def draw_supports(canvas: Canvas, job: Job, mesh: Mesh, view: View) -> list[Label]:
     """Draw every support and say which labels they want."""
     return [_draw_support(canvas, job, mesh, view, support) for support in job.supports]
 
 
-def _draw_support(canvas: Canvas, job: Job, mesh: Mesh, view: View, support: Support) -> Note:
+def _draw_support(canvas: Canvas, job: Job, mesh: Mesh, view: View, support: Support) -> Label:
     selection = select(mesh, support.on, f"{support.pointer}/on")
     sides = runs(mesh, selection.facets, view)
     places: list[Place] = []
     for run in sides:
-        scale = float(np.clip(run.length / 150.0, 0.45, 1.0))
+        scale = _scale(run)
         if _is_fixed(support):
             ground(canvas, run.points, run.outward, SUPPORT, scale=scale)
         points, outward, _ = run.stations(SPACING * scale)
@@ -77,9 +69,24 @@ def _draw_support(canvas: Canvas, job: Job, mesh: Mesh, view: View, support: Sup
     if _is_fixed(support):
         for place in lone:
             pin(canvas, place.at, place.outward, SUPPORT)
-    for place in [*places, *lone]:
-        _draw_signs(canvas, support, place, fixed=_is_fixed(support))
-    return _note(job.units, support, [*places, *lone], on_side=bool(sides))
+    for number, place in enumerate(places):
+        _draw_signs(canvas, support, place, turn=number)
+    for place in lone:
+        _draw_signs(canvas, support, place, turn=None)
+    label_at = _middle(sides) if sides else lone[len(lone) // 2]
+    return _label(job.units, support, label_at, on_side=bool(sides))
+
+
+def _middle(sides: Sequence[Run]) -> Place:
+    """The middle of the longest run of a support."""
+    longest = max(sides, key=lambda run: run.length)
+    outward = np.array([np.interp(longest.length / 2, longest.at, c) for c in longest.outward.T])
+    return Place(longest.middle, unit(outward), _scale(longest))
+
+
+def _scale(run: Run) -> float:
+    """Signs shrink with the side that they stand on."""
+    return float(np.clip(run.length / 150.0, 0.45, 1.0))
 
 
 def _is_fixed(support: Support) -> bool:
@@ -91,12 +98,16 @@ def _point_place(mesh: Mesh, view: View, node: int) -> Place:
     return Place(view.pixels(mesh.nodes[node]), DOWN if outward is None else outward, 1.0)
 
 
-def _draw_signs(canvas: Canvas, support: Support, place: Place, *, fixed: bool) -> None:
-    if not fixed:
-        for direction, _ in _held_directions(support, place.outward):
-            _draw_sign(canvas, roller, direction, place)
-    for direction in _spring_directions(support, place.outward):
-        _draw_sign(canvas, spring, direction, place)
+def _draw_signs(canvas: Canvas, support: Support, place: Place, *, turn: int | None) -> None:
+    """The signs of a support at one place; along a side the kinds of signs take turns."""
+    signs: list[tuple[Callable[..., None], Array]] = []
+    if not _is_fixed(support):
+        signs += [(roller, direction) for direction, _ in _held(support, place.outward)]
+    signs += [(spring, direction) for direction in _spring_directions(support, place.outward)]
+    if signs and turn is not None:
+        signs = [signs[turn % len(signs)]]
+    for sign, direction in signs:
+        _draw_sign(canvas, sign, direction, place)
 
 
 def _draw_sign(canvas: Canvas, sign: Callable[..., None], direction: Array, place: Place) -> None:
@@ -109,7 +120,7 @@ def _draw_sign(canvas: Canvas, sign: Callable[..., None], direction: Array, plac
     sign(canvas, at, direction if lean > 0 else -direction, SUPPORT, scale=place.scale)
 
 
-def _held_directions(support: Support, outward: Array) -> Iterable[tuple[Array, float]]:
+def _held(support: Support, outward: Array) -> Iterable[tuple[Array, float]]:
     """Directions in which the support holds, and by how much it moves the plate that way."""
     if support.ux is not None:
         yield np.array([1.0, 0.0]), support.ux
@@ -153,19 +164,23 @@ def draw_moves(canvas: Canvas, job: Job, mesh: Mesh, view: View, case: str | Non
 
 
 def _draw_move(canvas: Canvas, support: Support, at: Array, outward: Array) -> None:
-    for direction, value in _held_directions(support, outward):
+    for direction, value in _held(support, outward):
         if value:
-            step = MOVE * np.sign(value) * direction
-            start = at + 12 * outward
-            arrow(canvas, start, start + step, SUPPORT, width=4.0)
+            way = np.sign(value) * direction
+            beyond = CLEAR_OF_SIGNS * (direction if direction @ outward > 0 else -direction)
+            start = at + beyond - (MOVE * way if way @ beyond < 0 else 0.0 * way)
+            arrow(canvas, start, start + MOVE * way, SUPPORT, width=4.0)
 
 
-def _note(units: Units, support: Support, places: Sequence[Place], *, on_side: bool) -> Note:
-    middle = places[len(places) // 2]
-    reach = 40.0 * middle.scale
-    lines = (support.label, *_conditions(units, support, on_side))
-    shown = (f"{lines[0]}: {lines[1]}", *lines[2:]) if len(lines) > 1 else lines
-    return Note(middle.at + reach * middle.outward, shown, SUPPORT, middle.outward)
+def _label(units: Units, support: Support, place: Place, *, on_side: bool) -> Label:
+    reach = (16.0 if _is_fixed(support) and on_side else 40.0) * place.scale
+    conditions = _conditions(units, support, on_side)
+    return Label(
+        place.at + reach * place.outward,
+        layouts(support.label, conditions),
+        colour=SUPPORT,
+        toward=place.outward,
+    )
 
 
 def _conditions(units: Units, support: Support, on_side: bool) -> list[str]:

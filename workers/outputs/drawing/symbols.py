@@ -36,9 +36,13 @@ def arrow(
     start, end = np.asarray(tail, float), np.asarray(tip, float)
     direction = unit(end - start)
     head = min(HEAD * width / STROKE, 0.6 * float(np.linalg.norm(end - start)))
-    neck, across = end - head * direction, 0.36 * head * left_of(direction)
-    canvas.line([start, neck], colour, width)
-    canvas.area([end, neck + across, neck - across], colour)
+    canvas.line([start, end - head * direction], colour, width)
+    arrow_head(canvas, end, direction, head, colour)
+
+
+def arrow_head(canvas: Canvas, tip: Array, direction: Array, size: float, colour: str) -> None:
+    neck, across = tip - size * direction, 0.36 * size * left_of(direction)
+    canvas.area([tip, neck + across, neck - across], colour)
 
 
 def block_arrow(canvas: Canvas, tail: ArrayLike, tip: ArrayLike, colour: str) -> None:
@@ -63,10 +67,12 @@ def turning_arrow(
     canvas: Canvas, centre: ArrayLike, radius: float, colour: str, *, clockwise: bool
 ) -> None:
     """Three quarters of a circle with a head: a moment or a spin."""
-    angle = np.radians(np.linspace(200, -70, 40) if clockwise else np.linspace(-20, 250, 40))
+    angle = np.radians(np.linspace(200, -60, 40) if clockwise else np.linspace(-20, 240, 40))
     ring = np.asarray(centre) + radius * np.column_stack((np.cos(angle), np.sin(angle)))
-    canvas.line(ring[:-3], colour, STROKE)
-    arrow(canvas, ring[-6], ring[-1] + 0.6 * (ring[-1] - ring[-2]), colour)
+    canvas.line(ring, colour, STROKE)
+    head = min(HEAD, 0.8 * radius)
+    direction = unit(ring[-1] - ring[-2])
+    arrow_head(canvas, ring[-1] + 0.8 * head * direction, direction, head, colour)
 
 
 # --- supports ------------------------------------------------------------------------------------
