@@ -24,6 +24,7 @@ PADDING = 5  # kept free around a label
 DISTANCES = (12, 20, 30, 42, 56, 72, 90, 110, 135, 165, 200, 250, 310, 380, 470, 580)
 ANGLES = np.radians(np.arange(0, 360, 11.25))
 SAMPLES = 24  # points of a leader at which it is looked for crossings
+SHORT_LINE = 12  # letters; not worth breaking
 LINE = 1.22  # distance of lines over the size of the text
 LEADER_FROM = 10  # a gap between label and anchor that needs a line to bridge it [pixels]
 
@@ -63,9 +64,14 @@ def layouts(name: str, lines: Sequence[str]) -> list[list[str]]:
 
 
 def _halves(line: str) -> list[str]:
-    """A line broken at the blank nearest to its middle."""
-    blanks = [number for number, c in enumerate(line) if c == " "]
-    if not blanks:
+    """A long line broken near its middle, but not inside brackets or an equation."""
+    blanks = [
+        number
+        for number, c in enumerate(line)
+        if c == " " and line[:number].count("(") == line[:number].count(")")
+        and "=" not in (line[number - 1], line[number + 1])
+    ]  # fmt: skip
+    if len(line) <= SHORT_LINE or not blanks:
         return [line]
     at = min(blanks, key=lambda number: abs(number - len(line) / 2))
     return [line[:at], line[at + 1 :]]

@@ -1,13 +1,15 @@
 """Fields as pixels: triangles with values at their corners, painted off-screen by PyVista.
 
 Call `offscreen.require()` first: on a machine without off-screen OpenGL the first render ends the
-process.
+process. The plotting half of PyVista, which it loads by itself only when the first window opens, is
+loaded here: a worker imports this before it forks.
 """
 
 from typing import Any
 
 import numpy as np
 import pyvista
+import pyvista.plotting
 from numpy.typing import NDArray
 
 Array = NDArray[np.floating[Any]]
