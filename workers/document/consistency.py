@@ -99,7 +99,7 @@ def _empty_cases(document: Mapping[str, Any]) -> Iterator[Fault]:
 def _node_numbers(document: Mapping[str, Any]) -> Iterator[Fault]:
     """Node numbers of selectors exist."""
     nodes = table(table(document.get("geometry")).get("mesh")).get("nodes")
-    if not isinstance(nodes, list):
+    if not isinstance(nodes, list) or not nodes:
         return
     places = [(pointer("supports", i), s) for i, s in rows(document.get("supports"))]
     places += [(place, load) for place, _, load in loads_of(document)]

@@ -42,9 +42,9 @@ class VertexSchema(Record):
     fillet = Quantity(LENGTH, description="Radius that rounds this vertex", above=0)
     fillet_side = Name("Name of the round")
 
-    @validates_schema
-    def _fillet_side_needs_fillet(self, data: dict[str, Any], **_: Any) -> None:
-        only_with(data, "fillet_side", "fillet")
+    @validates_schema(pass_original=True, skip_on_field_errors=False)
+    def _fillet_side_needs_fillet(self, data: Any, original: Any, **_: Any) -> None:
+        only_with(original, "fillet_side", "fillet")
 
 
 def _loop(description: str, **options: Any) -> ListOf:

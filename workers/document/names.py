@@ -62,22 +62,19 @@ def _regions_used(document: Mapping[str, Any], inventory: Inventory) -> Iterator
     """Regions of patches and blocks exist, and no region is without any."""
     if inventory.kind == "outline":
         return
-    geometry, used = table(document["geometry"]), set()
-    place = ("patches",) if inventory.kind == "patches" else ("mesh", "blocks")
-    parts = geometry.get("patches") if len(place) == 1 else table(geometry["mesh"]).get("blocks")
-    for i, part in rows(parts):
-        name = part.get("region")
-        if isinstance(name, str):
-            used.add(name)
-            if name not in inventory.regions:
-                where = pointer("geometry", *place, i, "region")
-                yield Fault(where, unknown("region", name, inventory.regions))
+    geometry = table(document["geometry"])
+    word, place, parts = "patch", "/geometry/patches", geometry.get("patches")
+    if inventory.kind == "mesh":
+        word, place, parts = "block", "/geometry/mesh/blocks", table(geometry["mesh"]).get("blocks")
+    used = {i: p["region"] for i, p in rows(parts) if isinstance(p.get("region"), str)}
+    lost = {i: name for i, name in used.items() if name not in inventory.regions}
+    named = set(used.values())
+    for i, name in lost.items():
+        yield Fault(f"{place}/{i}/region", unknown("region", name, inventory.regions))
     for i, region in rows(geometry.get("regions")):
-        if isinstance(region.get("name"), str) and region["name"] not in used:
-            word = "patch" if len(place) == 1 else "block"
-            yield Fault(
-                pointer("geometry", "regions", i, "name"), f"no {word} belongs to this region"
-            )
+        # Where a name is lost, it may be this region that was meant.
+        if not lost and isinstance(region.get("name"), str) and region["name"] not in named:
+            yield Fault(f"/geometry/regions/{i}/name", f"no {word} belongs to this region")
 
 
 def _sizes(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fault]:

@@ -85,7 +85,8 @@ class Record(Schema):
         if not self.one_of or not isinstance(original, Mapping):
             return
         found = [key for key in self.one_of if key in original]
-        if len(found) != 1:
+        misspelt = original.keys() - {f.data_key or name for name, f in self.fields.items()}
+        if len(found) > 1 or not (found or misspelt):
             there = " and ".join(found) if found else "none"
             raise ValidationError(f"needs exactly one of {', '.join(self.one_of)}; found {there}")
 
@@ -101,7 +102,7 @@ def defaults_of(made: Any) -> dict[str, Any]:
     return found
 
 
-def only_with(data: Mapping[str, Any], key: str, other: str) -> None:
+def only_with(data: Any, key: str, other: str) -> None:
     """ValidationError when `key` is there without the key that it depends on."""
-    if key in data and other not in data:
+    if isinstance(data, Mapping) and key in data and other not in data:
         raise ValidationError({key: [f"needs {other} beside it, not {seen(data[key])} alone"]})

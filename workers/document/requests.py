@@ -34,9 +34,9 @@ class MeshingSchema(Record):
     )
     max_dofs = Whole("Stop refining at this number of unknowns", least=100, most=MOST_DOFS)
 
-    @validates_schema(skip_on_field_errors=False)
-    def _limit_needs_target(self, data: dict[str, Any], **_: Any) -> None:
-        only_with(data, "max_dofs", "target_error")
+    @validates_schema(pass_original=True, skip_on_field_errors=False)
+    def _limit_needs_target(self, data: Any, original: Any, **_: Any) -> None:
+        only_with(original, "max_dofs", "target_error")
 
     def build(self, data: dict[str, Any]) -> Meshing:
         data.pop("method", None)  # there is one only

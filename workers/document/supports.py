@@ -1,6 +1,5 @@
 """Supports: what holds the plate."""
 
-from collections import Counter
 from collections.abc import Mapping
 from dataclasses import replace
 from typing import Any
@@ -66,10 +65,9 @@ class SupportSchema(Record):
 
     @validates_schema(pass_original=True, skip_on_field_errors=False)
     def _holds_something(self, data: dict[str, Any], original: Any, **_: Any) -> None:
-        if isinstance(original, Mapping):
-            if not any(key in original for key in HOLDS):
-                raise ValidationError(f"holds nothing: needs at least one of {', '.join(HOLDS)}")
-            only_with(original, "displacement", "along")
+        only_with(original, "displacement", "along")
+        if isinstance(original, Mapping) and not any(key in original for key in HOLDS):
+            raise ValidationError(f"holds nothing: needs at least one of {', '.join(HOLDS)}")
 
     def build(self, data: dict[str, Any]) -> Support:
         errors = {}
@@ -97,10 +95,10 @@ class SupportList(ListOf):
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
         supports = super()._deserialize(value, attr, data, **kwargs)
-        counts = Counter(s.label for s in supports if s.label)
+        first: dict[str, int] = {}
         doubles = {
             i: {"name": ["another support has this name"]}
-            for i, s in enumerate(supports) if counts[s.label] > 1
+            for i, s in enumerate(supports) if s.label and first.setdefault(s.label, i) != i
         }  # fmt: skip
         if doubles:
             raise ValidationError(doubles)
