@@ -1,11 +1,11 @@
 """Peaks of a state: the worst value of each measure, where it is, and how far to trust it.
 
-The error of a peak is estimated from the stresses around it: the difference between the recovered
-stress there and the stress that each element at the point gives by itself, the largest of the
-elements. Von Mises and the largest principal stress in size are norms of the stress tensor, so a
-measure of that difference bounds the difference of the measures. On Kirsch's plate, for all four
-element types and from 4 to 64 elements around a quarter of the hole, the estimate was never below
-the true error and mostly two to five times above it.
+The error of a peak is estimated from the stresses around it: the recovered stress there, less the
+stress that each element at the point gives by itself, the largest of the elements. Von Mises and
+the largest principal stress in size are norms of the stress tensor, so that this jump of the
+tensor bounds the jump of the measures. On some 400 meshes of Kirsch's plate, of all four elements,
+the true error of the peak was at most 1.3 times the jump, mostly a tenth to two thirds of it; the
+estimate is the jump times `SAFETY`. It cannot see a singularity: there every mesh is wrong.
 """
 
 from collections.abc import Iterable, Mapping
@@ -18,6 +18,8 @@ from numpy.typing import NDArray
 from workers.analysis.envelope import WORST
 from workers.analysis.plane_stress import principal, von_mises
 from workers.analysis.recovery import Recovery, Temperature, raw_stress
+
+SAFETY = 1.5
 
 Array = NDArray[np.float64]
 Measure = NDArray[np.floating[Any]]
@@ -60,13 +62,11 @@ def find_peaks(
         here = {name: np.flatnonzero(point[name] == place) for name in stressed}
         states = np.unique(np.concatenate(list(here.values())))
         heat = None if temperature is None else tuple(t[:, states] for t in temperature)
-        jump = [
-            stress[place][:, states] - own
-            for own in _own_stress(recovery, place, displacement[:, :, states], heat)
-        ]
-        bound = _bounds(np.stack(jump))
+        own = np.stack(list(_own_stress(recovery, place, displacement[:, :, states], heat)))
+        bound = _bounds(stress[place][:, states] - own)
         for name, rows in here.items():
-            error[name][rows] = bound[name == "von_mises"][np.searchsorted(states, rows)]
+            jump = bound[name == "von_mises"][np.searchsorted(states, rows)]
+            error[name][rows] = SAFETY * jump
     return {
         name: Peak(
             np.take_along_axis(values[name], point[name][None], axis=0)[0],

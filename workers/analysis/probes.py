@@ -9,17 +9,16 @@ from scipy.sparse import coo_array, csr_array
 from scipy.spatial import cKDTree
 
 from elements.contract import ElementType
+from workers.analysis.border import Border, border_of, nearest
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.mesh import Mesh
+from workers.analysis.request_places import BESIDE
 from workers.errors import Fault, MeshError
 
 Array = NDArray[np.float64]
 
 CANDIDATES = 12  # nearest elements that are tried before a wider search
 INSIDE = 1e-9  # in natural coordinates
-# A point on a true arc lies outside the chords of T3 and Q4 (by 5 % of their length at 16 chords
-# to the circle). So near the border the nearest point of the plate is taken.
-BESIDE = 0.05  # of the element's longest side
 
 
 @dataclass(frozen=True, eq=False)
@@ -28,7 +27,8 @@ class Located:
 
     block, element : (p,)    the lowest, where elements share the point
     natural : (p, 2)         natural coordinates
-    position : (p, 2)        [L]; the points asked for, or the nearest on the border (`BESIDE`)
+    position : (p, 2)        [L]; the points asked for, or those nearest on the border: a point on
+        a true arc lies a little outside the chords of T3 and Q4
     """
 
     block: NDArray[np.int64]
@@ -42,7 +42,7 @@ def locate(mesh: Mesh, points: Array, pointers: Sequence[str]) -> Located:
 
     Raises
     ------
-    MeshError   points outside the plate, each with its pointer (one for each point).
+    MeshError   points outside the plate; the first for each pointer (points may share one).
     """
     tree, owner = _centres(mesh)
     found = Located(
@@ -54,17 +54,18 @@ def locate(mesh: Mesh, points: Array, pointers: Sequence[str]) -> Located:
     _, near = tree.query(points, k=min(CANDIDATES, len(owner)))
     near = near.reshape(len(points), -1)
     _try(mesh, found, np.repeat(np.arange(len(points)), near.shape[1]), owner[near.ravel()])
+    border = None
     for lost in np.flatnonzero(found.block < 0).tolist():
         boxed = _boxed(mesh, points[lost])
         _try(mesh, found, np.full(len(boxed), lost), boxed)
         if found.block[lost] < 0:
-            _snap(mesh, found, lost, np.concatenate((owner[near[lost]], boxed)))
-    faults = [
-        _outside(tree, points[lost], pointers[lost])
-        for lost in np.flatnonzero(found.block < 0).tolist()
-    ]
+            border = border or border_of(mesh)
+            _snap(mesh, border, found, lost)
+    faults: dict[str, Fault] = {}
+    for lost in np.flatnonzero(found.block < 0).tolist():
+        faults.setdefault(pointers[lost], _outside(tree, points[lost], pointers[lost]))
     if faults:
-        raise MeshError(faults)
+        raise MeshError(faults.values())
     return found
 
 
@@ -114,24 +115,21 @@ def _try(mesh: Mesh, found: Located, point: NDArray, owner: NDArray[np.int64]) -
         found.natural[rows] = natural[hit]
 
 
-def _snap(mesh: Mesh, found: Located, lost: int, owner: NDArray[np.int64]) -> None:
-    """Enter the nearest point of the candidates (c,), if it is no further than BESIDE."""
-    at = np.tile(found.position[lost], (len(owner), 1))
-    best = np.inf
-    for number, element, mine, beyond in _mapped(mesh, at, owner):
-        natural = _clamp(beyond, triangle=element.is_triangle)
-        coords = mesh.nodes[mesh.blocks[number].connectivity[owner[mine, 1]]]
-        nearest = np.einsum("cn,cni->ci", element.shape_functions(natural), coords)
-        corners = coords[:, : element.corners]
-        size = np.linalg.norm(corners - np.roll(corners, -1, axis=1), axis=2).max(axis=1)
-        off = np.linalg.norm(nearest - found.position[lost], axis=1) / size
-        row = int(off.argmin()) if len(off) else 0
-        if len(off) and off[row] < min(best, BESIDE):
-            best = off[row]
-            found.block[lost], found.element[lost] = number, owner[mine[row], 1]
-            found.natural[lost], moved = natural[row], nearest[row]
-    if best <= BESIDE:
-        found.position[lost] = moved
+def _snap(mesh: Mesh, border: Border, found: Located, lost: int) -> None:
+    """Enter the nearest point of the border, if it is near enough (`BESIDE`)."""
+    point = found.position[lost]
+    chord, foot = nearest(border, point)
+    length = np.linalg.norm(border.end[chord] - border.start[chord])
+    if np.linalg.norm(foot - point) > BESIDE * length:
+        return
+    number, chosen, _ = mesh.boundary[border.row[chord]]
+    block = mesh.blocks[number]
+    coords = mesh.nodes[block.connectivity[[chosen]]]
+    natural, converged = block.element.natural_coordinates(coords, foot[None])
+    if converged[0]:
+        natural = _clamp(natural, triangle=block.element.is_triangle)
+        found.block[lost], found.element[lost], found.natural[lost] = number, chosen, natural[0]
+        found.position[lost] = block.element.shape_functions(natural)[0] @ coords[0]
 
 
 def _mapped(
