@@ -46,8 +46,8 @@ def _load(document: Any, known: list[Fault]) -> Job:
         found = [fault for fault in flatten(error.messages) if fault.pointer not in places]
     if known or found:
         faults = in_document_order([*known, *found], document)
-        if len(faults) > MOST_FAULTS:
-            left_out = Fault("", f"only the first {MOST_FAULTS} of {len(faults)} faults are listed")
-            faults = [left_out, *faults[:MOST_FAULTS]]
+        if len(faults) >= MOST_FAULTS:
+            more = Fault("", f"here are the first {MOST_FAULTS} faults; there may be more")
+            faults = [more, *faults[:MOST_FAULTS]]
         raise DocumentError(faults)
     return job
