@@ -46,19 +46,30 @@ class NodeOrder:
 
 def order_nodes(mesh: Mesh) -> NodeOrder:
     """Nested-dissection order of the nodes of a mesh."""
+    return NodeOrder.from_order(NAME, with_mid_sides(mesh, dissected_corners(mesh)))
+
+
+def dissected_corners(mesh: Mesh) -> Indices:
+    """Numbers of the corner nodes, in nested-dissection order."""
     corner = np.zeros(mesh.node_count, dtype=bool)
     for block in mesh.blocks:
         corner[block.connectivity[:, : block.element.corners]] = True
     corners = np.flatnonzero(corner)
     corners = corners[along_curve(mesh.nodes[corners])]
+    return corners[dissect(corner_graph(mesh, corners))]
+
+
+def corner_graph(mesh: Mesh, corners: Indices) -> NodePairs:
+    """Which corner nodes share an element; vertices in the order of `corners`."""
     rank = np.full(mesh.node_count, -1, np.int64)
     rank[corners] = np.arange(len(corners))
-    graph = NodePairs.build(
-        [rank[block.connectivity[:, : block.element.corners]] for block in mesh.blocks],
-        len(corners),
-    )
-    corners = corners[dissect(graph)]
-    return NodeOrder.from_order(NAME, np.argsort(_keys(mesh, corners), kind="stable"))
+    cells = [rank[block.connectivity[:, : block.element.corners]] for block in mesh.blocks]
+    return NodePairs.build(cells, len(corners))
+
+
+def with_mid_sides(mesh: Mesh, corners: Indices) -> Indices:
+    """All nodes: the corners as they come, each mid-side node before the earlier of its two."""
+    return np.argsort(_keys(mesh, corners), kind="stable")
 
 
 def along_curve(points: NDArray[np.float64]) -> Indices:

@@ -14,6 +14,7 @@ from workers.analysis.loads.cases import Loads, resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model, build_model
 from workers.analysis.motions import free_motions
+from workers.analysis.solver import MULTIFRONTAL
 from workers.analysis.stopwatch import Stopwatch
 from workers.analysis.supports import Supports, resolve_supports
 from workers.analysis.system import System, build_system
@@ -84,12 +85,15 @@ class Solution:
     solver: SolverReport
 
 
-def solve(job: Job, mesh: Mesh, progress: Progress | None = None) -> Solution:
+def solve(
+    job: Job, mesh: Mesh, progress: Progress | None = None, method: str = MULTIFRONTAL
+) -> Solution:
     """Solve all load cases of a job on its mesh.
 
     Parameters
     ----------
     progress : called with the stage and the fraction of it that is done
+    method : "multifrontal", or "superlu" or "pardiso" for comparison
 
     Raises
     ------
@@ -106,7 +110,7 @@ def solve(job: Job, mesh: Mesh, progress: Progress | None = None) -> Solution:
         if motions := free_motions(mesh, *supports.holding()):
             raise MechanismError(motions)
         loads = resolve_loads(model)
-    system = build_system(model, supports, watch, report)
+    system = build_system(model, supports, watch, report, method)
     report("solving", 0.0)
     cases = len(job.load_cases)
     displacement = np.empty((mesh.node_count, 2, cases))

@@ -1,11 +1,13 @@
 """Direct solution of the symmetric system: factorise once, solve for many right-hand sides.
 
-One interface for every solver, so that the rest of the analysis does not know which one runs. The
-matrix comes in elimination order (`ordering.py`), held dofs decoupled (`constraints.py`).
+One interface for every solver, so that the rest of the analysis does not know which one runs: a
+plan from the mesh alone, then a factor of the matrix, which comes in the plan's order with its held
+dofs decoupled (`constraints.py`).
 """
 
 import importlib
 from collections.abc import Callable, Mapping
+from dataclasses import dataclass
 from typing import Protocol
 
 import numpy as np
@@ -13,6 +15,11 @@ from numpy.typing import NDArray
 from scipy.sparse import bsr_array, csc_array, csr_array
 from scipy.sparse.linalg import splu
 
+from workers.analysis.mesh import Mesh
+from workers.analysis.multifrontal.factor import MultifrontalFactor
+from workers.analysis.multifrontal.numeric import NotPositiveDefiniteError
+from workers.analysis.multifrontal.symbolic import Fronts, analyse
+from workers.analysis.ordering import NodeOrder, order_nodes
 from workers.errors import AnalysisError, Fault
 
 Array = NDArray[np.float64]
@@ -96,87 +103,55 @@ class PardisoFactor:
         return np.ascontiguousarray(self._solver.solve(self._matrix, np.asfortranarray(block)))
 
 
-METHODS: Mapping[str, Callable[[bsr_array], Factor]] = {
+@dataclass(frozen=True, eq=False)
+class Plan:
+    """How a mesh will be solved: known before its matrix is.
+
+    order : the elimination order; the matrix must be assembled in it.
+    fronts : of the multifrontal factorisation; None for the libraries.
+    """
+
+    method: str
+    order: NodeOrder
+    fronts: Fronts | None = None
+
+    def factorise(self, matrix: bsr_array) -> Factor:
+        """Factorise a symmetric positive definite matrix of 2x2 node blocks.
+
+        Raises
+        ------
+        SingularMatrixError   there is no factor: a mechanism.
+        """
+        diagonal = matrix.diagonal()
+        if not (diagonal > 0).all():
+            row = int(np.argmin(diagonal > 0))
+            raise SingularMatrixError(f"row {row} of the stiffness matrix has no stiffness")
+        if self.fronts is None:
+            return LIBRARIES[self.method](matrix)
+        try:
+            return MultifrontalFactor(self.fronts, matrix.indptr, matrix.indices, matrix.data)
+        except NotPositiveDefiniteError as error:
+            raise SingularMatrixError(f"the stiffness matrix is singular ({error})") from error
+
+
+LIBRARIES: Mapping[str, Callable[[bsr_array], Factor]] = {
     "superlu": SuperLUFactor,
     "pardiso": PardisoFactor,
 }
+MULTIFRONTAL = "multifrontal"
 
 
-def factorise(matrix: bsr_array, method: str = "superlu") -> Factor:
-    """Factorise a symmetric positive definite matrix of 2x2 node blocks.
+def plan_solution(mesh: Mesh, method: str = MULTIFRONTAL) -> Plan:
+    """Order the nodes of a mesh for a method: "multifrontal", "superlu" or "pardiso".
 
     Raises
     ------
-    SingularMatrixError   there is no factor: a mechanism.
-    LookupError           there is no such method.
+    LookupError   there is no such method.
     """
-    diagonal = matrix.diagonal()
-    if not (diagonal > 0).all():
-        row = int(np.argmin(diagonal > 0))
-        raise SingularMatrixError(f"row {row} of the stiffness matrix has no stiffness")
-    if method not in METHODS:
-        raise LookupError(f"no solver {method!r}; there are {', '.join(sorted(METHODS))}")
-    return METHODS[method](matrix)
-
-
-# --- how good a solution is --------------------------------------------------------------------
-
-
-def relative_residual(residual: Array, load: Array) -> Array:
-    """Norm of what is out of balance over the norm of the load, by column; 0 without a load."""
-    out, norm = np.linalg.norm(residual, axis=0), np.linalg.norm(load, axis=0)
-    return np.divide(out, norm, out=np.zeros_like(out), where=norm > 0)
-
-
-def backward_error(matrix: bsr_array, solution: Array, load: Array, residual: Array) -> Array:
-    """Largest relative change of matrix and load entries that explains the residual, by column.
-
-    About 1e-16 whatever the condition of the matrix, if the factor is a good one: it tells a
-    failed solution from a slender plate whose displacements lose digits by their nature.
-
-    References
-    ----------
-    Arioli, Demmel & Duff, "Solving sparse linear systems with sparse backward error", SIAM J.
-    Matrix Anal. Appl. 10 (1989), with their rule for rows whose terms are all tiny.
-    """
-    size = bsr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape)
-    terms = size @ np.abs(solution) + np.abs(load)
-    row_norms = (size @ np.ones(matrix.shape[0]))[:, None]
-    largest = np.abs(solution).max(axis=0)
-    tiny = 1000 * matrix.shape[0] * np.finfo(float).eps * (row_norms * largest + np.abs(load))
-    scale = np.where(terms > tiny, terms, terms + row_norms * largest)
-    ratio = np.divide(np.abs(residual), scale, out=np.zeros_like(terms), where=scale > 0)
-    return ratio.max(axis=0)
-
-
-def weakest_motion(matrix: bsr_array, factor: Factor, steps: int = 3) -> tuple[float, Array]:
-    """Reciprocal condition of the matrix scaled to a unit diagonal, and the motion behind it.
-
-    A few steps of inverse iteration; the Rayleigh quotient comes down to the smallest eigenvalue
-    from above, a bound by row sums stands for the largest.
-
-    Returns
-    -------
-    reciprocal condition : order of magnitude; below about 1e-15, negative or nan the matrix is
-        singular in all but name
-    motion : (n,) array   displacements of least energy, largest entry one
-
-    References
-    ----------
-    Wilkinson, *The Algebraic Eigenvalue Problem*, ch. 9 (inverse iteration).
-    """
-    scale = 1.0 / np.sqrt(matrix.diagonal())
-    row_sums = (
-        bsr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape) @ scale
-    )
-    largest = float((scale * row_sums).max())
-    v = np.random.default_rng(0).standard_normal(matrix.shape[0])  # no motion is orthogonal to it
-    smallest = largest
-    with np.errstate(over="ignore", invalid="ignore", divide="ignore"):  # a pivot of zero
-        for _ in range(steps):
-            v /= np.linalg.norm(v)
-            w = factor.solve((v / scale)[:, None])[:, 0] / scale
-            smallest = float((v @ v) / (v @ w))
-            v = w
-        motion = v * scale
-        return smallest / largest, motion / np.abs(motion).max()
+    if method == MULTIFRONTAL:
+        analysis = analyse(mesh)
+        return Plan(method, analysis.order, analysis.fronts)
+    if method in LIBRARIES:
+        return Plan(method, order_nodes(mesh))
+    known = ", ".join([MULTIFRONTAL, *LIBRARIES])
+    raise LookupError(f"no solver {method!r}; there are {known}")

@@ -11,19 +11,19 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import bsr_array, csr_array
 
+from workers.analysis.accuracy import backward_error, relative_residual, weakest_motion
 from workers.analysis.assembly import assemble_stiffness, pair_positions
 from workers.analysis.constraints import decouple, turn_matrix, turn_vectors
 from workers.analysis.mechanism import describe_motion
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model
-from workers.analysis.ordering import NodeOrder, order_nodes
+from workers.analysis.ordering import NodeOrder
 from workers.analysis.solver import (
+    MULTIFRONTAL,
     Factor,
     SingularMatrixError,
-    backward_error,
-    factorise,
-    relative_residual,
-    weakest_motion,
+    SuperLUFactor,
+    plan_solution,
 )
 from workers.analysis.stopwatch import Stopwatch
 from workers.analysis.supports import Supports
@@ -108,25 +108,37 @@ class System:
         return (self.at_held.T @ prescribed[rows]).toarray()
 
     def _solve_refined(self, right: Array) -> tuple[Array, Array]:
-        """Solve, and once more for what is left where too much is left."""
+        """Solve; where too much is left over, solve for that, with SuperLU at last."""
         solution = self.factor.solve(right)
         left = right - self.matrix @ solution
         residual = relative_residual(left, right)
-        poor = self._poor(solution, right, left, residual)
-        if len(poor):
-            self.refinements = 1
-            solution[:, poor] += self.factor.solve(left[:, poor])
+        for attempt in (self._refine, self._fall_back):
+            poor = self._poor(solution, right, left, residual)
+            if not len(poor):
+                return solution, residual
+            solution[:, poor] = attempt(solution[:, poor], left[:, poor])
             left[:, poor] = right[:, poor] - self.matrix @ solution[:, poor]
             residual[poor] = relative_residual(left[:, poor], right[:, poor])
-            if len(still := self._poor(solution, right, left, residual)):
-                message = (
-                    "the equations could not be solved: the forces out of balance are "
-                    f"{residual[still].max():.1e} of the load (reciprocal condition "
-                    f"{self.reciprocal_condition:.1e}); look for parts that are nearly free to "
-                    "move, and for extreme ratios of stiffness or length"
-                )
-                raise AnalysisError([Fault("", message)])
+        if len(poor := self._poor(solution, right, left, residual)):
+            message = (
+                "the equations could not be solved: the forces out of balance are "
+                f"{residual[poor].max():.1e} of the load (reciprocal condition "
+                f"{self.reciprocal_condition:.1e}); look for parts that are nearly free to "
+                "move, and for extreme ratios of stiffness or length"
+            )
+            raise AnalysisError([Fault("", message)])
         return solution, residual
+
+    def _refine(self, solution: Array, left: Array) -> Array:
+        """One step of iterative refinement."""
+        self.refinements = 1
+        return solution + self.factor.solve(left)
+
+    def _fall_back(self, solution: Array, left: Array) -> Array:
+        """The library's factor in place of ours, for these and all later right-hand sides."""
+        if not isinstance(self.factor, SuperLUFactor):
+            self.factor = SuperLUFactor(self.matrix)
+        return solution + self.factor.solve(left)
 
     def _poor(
         self, solution: Array, right: Array, left: Array, residual: Array
@@ -144,7 +156,11 @@ class System:
 
 
 def build_system(
-    model: Model, supports: Supports, watch: Stopwatch, report: Callable[[str, float], None]
+    model: Model,
+    supports: Supports,
+    watch: Stopwatch,
+    report: Callable[[str, float], None],
+    method: str = MULTIFRONTAL,
 ) -> System:
     """Order, assemble, apply the supports, factorise.
 
@@ -153,7 +169,8 @@ def build_system(
     MechanismError   something is free to move; names the motion.
     """
     with watch("order"):
-        order = order_nodes(model.mesh)
+        plan = plan_solution(model.mesh, method)
+        order = plan.order
     with watch("assemble"):
         matrix = assemble_stiffness(model, order.position)
         _add_springs(matrix, supports, order)
@@ -163,7 +180,7 @@ def build_system(
     report("factorising", 0.0)
     with watch("factorise"):
         try:
-            factor = factorise(matrix)
+            factor = plan.factorise(matrix)
         except SingularMatrixError as error:
             raise _mechanism(model.mesh, matrix, supports, order) from error
     with watch("condition"):
@@ -201,7 +218,7 @@ def _mechanism(
     for axis in (0, 1):
         entries = shifted.data[diagonal, axis, axis]
         shifted.data[diagonal, axis, axis] += SHIFT * np.where(entries > 0, entries, 1.0)
-    _, motion = weakest_motion(shifted, factorise(shifted))
+    _, motion = weakest_motion(shifted, SuperLUFactor(shifted))
     vectors = motion.reshape(-1, 2, 1)
     turn_vectors(vectors, order.position[supports.turned], supports.axes, back=True)
     return MechanismError([describe_motion(mesh, vectors[order.position, :, 0])])
