@@ -27,9 +27,9 @@ NAME = st.text(
     min_size=1,
     max_size=80,
 ).filter(lambda name: name[0] not in ". ")
-TITLE = st.text(st.characters(exclude_categories=("C",)), min_size=1, max_size=200).filter(
-    str.strip
-)
+TITLE = st.text(
+    st.characters(exclude_categories=("C", "Zl", "Zp")), min_size=1, max_size=200
+).filter(str.strip)
 
 
 def maybe(strategy: st.SearchStrategy[Any]) -> st.SearchStrategy[Any]:

@@ -382,6 +382,22 @@ def test_one_change_gives_one_fault_in_its_place(bad: Bad) -> None:
         assert words in caught.value.faults[0].message
 
 
+@pytest.mark.parametrize(("ux", "moves"), [(0, False), ("0 mm", False), ("2 mm", True), (-1, True)])
+@pytest.mark.parametrize("case", [None, "tide"])
+def test_a_case_without_loads_needs_a_support_that_moves(
+    ux: Any, moves: bool, case: str | None
+) -> None:
+    document = good("mesh")
+    document["load_cases"]["tide"] = []
+    document["supports"][0] |= {"ux": ux} | ({"case": case} if case and moves else {})
+    if moves:
+        load(document)
+        return
+    with pytest.raises(DocumentError) as caught:
+        load(document)
+    assert [fault.pointer for fault in caught.value.faults] == ["/load_cases/tide"]
+
+
 def test_the_table_is_long_and_its_names_are_distinct() -> None:
     """At least 75 distinct bad documents."""
     assert len({bad.name for bad in TABLE}) == len(TABLE) >= 75

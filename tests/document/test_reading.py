@@ -80,6 +80,19 @@ def test_supports_are_labelled_by_name_target_or_number_without_doubles() -> Non
     ]  # fmt: skip
 
 
+def test_many_supports_of_one_side_have_labels_that_are_names() -> None:
+    """The rule for names allows 80 characters; the number takes its place among them."""
+    document = good("mesh")
+    name = "x" * 80
+    document["geometry"]["mesh"]["sides"][name] = [[0, 1]]
+    document["supports"] = [{"on": name, "ux": 0}] * 3000
+    labels = [support.label for support in load(document).supports]
+    assert labels[0] == name
+    assert labels[1] == "x" * 76 + " (2)"
+    assert labels[-1] == "x" * 73 + " (3000)"
+    assert len(set(labels)) == 3000
+
+
 def test_a_given_label_goes_before_one_made_up() -> None:
     document = good("mesh")
     document["supports"] = [{"on": "wall", "ux": 0}, {"name": "wall", "on": "low", "uy": 0}]

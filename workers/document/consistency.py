@@ -7,9 +7,9 @@ from collections.abc import Iterator, Mapping
 from typing import Any
 
 from workers.document.faults import pointer, seen
-from workers.document.inventory import KINDS_OF_GEOMETRY
 from workers.document.raw import loads_of, rows, table
 from workers.document.supports import PRESCRIBED
+from workers.document.units import value_of
 from workers.errors import Fault
 
 # What a load takes from the material.
@@ -31,33 +31,31 @@ def faults(document: Mapping[str, Any]) -> Iterator[Fault]:
 def _materials_used(document: Mapping[str, Any], region: str | None = None) -> dict[str, Any]:
     """Materials by name: of one region, or of the whole plate."""
     geometry, plate = table(document.get("geometry")), table(document.get("plate"))
-    kind = next((k for k in KINDS_OF_GEOMETRY if k in geometry), "outline")
-    parts = (
-        geometry.get("patches") if kind == "patches" else table(geometry.get("mesh")).get("blocks")
-    )
+    parts = geometry.get("patches", table(geometry.get("mesh")).get("blocks"))
+    everywhere = "outline" in geometry or any("region" not in part for _, part in rows(parts))
     regions = [r for _, r in rows(geometry.get("regions")) if region in (None, r.get("name"))]
     names = [r.get("material", plate.get("material")) for r in regions]
-    if region is None and (kind == "outline" or any("region" not in p for _, p in rows(parts))):
+    if region is None and everywhere:
         names.append(plate.get("material"))
     materials = table(document.get("materials"))
-    return {n: materials[n] for n in names if isinstance(n, str)
-            and isinstance(materials.get(n), Mapping)}  # fmt: skip
+    return {name: materials[name] for name in names
+            if isinstance(name, str) and isinstance(materials.get(name), Mapping)}  # fmt: skip
 
 
 def _material_data(document: Mapping[str, Any]) -> Iterator[Fault]:
     """Density for body forces by acceleration, expansion for temperature."""
-    reported = set()
+    asked = set()  # what a load takes of which region, asked once
+    missing = set()
     for place, key, load in loads_of(document):
-        on = load.get("on")
-        if key not in TAKES or not (on is None or isinstance(on, str)):
+        taken, on = TAKES.get(key), load.get("on")
+        if taken is None or not (on is None or isinstance(on, str)) or (taken, on) in asked:
             continue
+        asked.add((taken, on))
         for name, material in _materials_used(document, on).items():
-            if TAKES[key] not in material and (name, TAKES[key]) not in reported:
-                reported.add((name, TAKES[key]))
-                yield Fault(
-                    pointer("materials", name, TAKES[key]),
-                    f"is required because of {key} in {place}",
-                )
+            if taken not in material and (name, taken) not in missing:
+                missing.add((name, taken))
+                reason = f"is required because of {key} in {place}"
+                yield Fault(pointer("materials", name, taken), reason)
 
 
 def _yield_strength(document: Mapping[str, Any]) -> Iterator[Fault]:
@@ -86,14 +84,22 @@ def _meshing(document: Mapping[str, Any]) -> Iterator[Fault]:
 
 def _empty_cases(document: Mapping[str, Any]) -> Iterator[Fault]:
     """A case without loads needs a support that moves in it."""
-    supports = [s for _, s in rows(document.get("supports"))]
-    for case, loads in table(document.get("load_cases")).items():
-        if loads == [] and not any(
-            s.get("case", case) == case and any(s.get(key) for key in PRESCRIBED) for s in supports
+    moved = set()  # cases in which a support moves; None is every case
+    for _, support in rows(document.get("supports")):
+        case = support.get("case")
+        if (case is None or isinstance(case, str)) and any(
+            map(_moves, map(support.get, PRESCRIBED))
         ):
-            yield Fault(
-                pointer("load_cases", case), "has no loads and no support is moved in this case"
-            )
+            moved.add(case)
+    for case, loads in table(document.get("load_cases")).items():
+        if loads == [] and not {None, case} & moved:
+            text = "has no loads and no support is moved in this case"
+            yield Fault(pointer("load_cases", case), text)
+
+
+def _moves(value: Any) -> bool:
+    """Whether a prescribed displacement is anything but zero, be it number or text with a unit."""
+    return bool(value_of(value) if isinstance(value, str) else value)
 
 
 def _node_numbers(document: Mapping[str, Any]) -> Iterator[Fault]:

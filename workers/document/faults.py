@@ -1,7 +1,7 @@
 """Faults of a document: from marshmallow's nested messages to pointers, and the words in them."""
 
 import json
-from collections.abc import Iterable, Iterator, Mapping, Sequence
+from collections.abc import Iterable, Iterator, Mapping
 from difflib import get_close_matches
 from typing import Any
 
@@ -51,11 +51,7 @@ def unknown(what: str, name: str, known: Iterable[str]) -> str:
 def flatten(messages: Any, place: Tokens = ()) -> Iterator[Fault]:
     """Faults of marshmallow's nested messages; "_schema" stands for the object itself."""
     if not isinstance(messages, Mapping):
-        for message in (
-            messages
-            if isinstance(messages, Sequence) and not isinstance(messages, str)
-            else [messages]
-        ):
+        for message in messages if isinstance(messages, list) else [messages]:
             yield Fault(printable(pointer(*place)), printable(str(message)))
         return
     for key, inner in messages.items():

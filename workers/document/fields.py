@@ -53,7 +53,7 @@ class Text(Plain, fields.Field[str]):
             raise ValidationError("must not be empty")
         if len(value) > self.most:
             raise ValidationError(f"must have at most {self.most} characters, not {len(value)}")
-        if any(unicodedata.category(c) in ("Cc", "Cs") for c in value):
+        if any(unicodedata.category(c) in ("Cc", "Cs", "Zl", "Zp") for c in value):
             raise ValidationError("must be one line of text without control characters")
         return value
 

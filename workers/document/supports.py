@@ -1,5 +1,6 @@
 """Supports: what holds the plate."""
 
+from collections import Counter
 from collections.abc import Mapping
 from dataclasses import replace
 from typing import Any
@@ -108,15 +109,17 @@ class SupportList(ListOf):
 def _label(supports: tuple[Support, ...]) -> tuple[Support, ...]:
     """Labels for supports that have none: the name they act on, or their number; all different."""
     taken = {s.label for s in supports if s.label}
+    copies: Counter[str] = Counter()
     labelled = []
     for number, support in enumerate(supports, 1):
         label = support.label
         if not label:
             first = support.on.name if isinstance(support.on, Named) else f"support {number}"
-            label, copy = first, 2
+            label = first
             while label in taken:
-                ending = f" ({copy})"
-                label, copy = first[: LONGEST_NAME - len(ending)] + ending, copy + 1
+                copies[first] += 1
+                ending = f" ({copies[first] + 1})"
+                label = first[: LONGEST_NAME - len(ending)] + ending
             taken.add(label)
         labelled.append(replace(support, label=label))
     return tuple(labelled)

@@ -44,7 +44,7 @@ class SelectorSchema(Record):
     )
     circle = Part(CircleSchema, "The boundary on a circle")
     nodes = ListOf(
-        Whole("Node number, from 0", least=0, most=MOST_NODES),
+        Whole("Node number, from 0", least=0, most=MOST_NODES - 1),
         "Nodes by number; only with geometry.mesh",
         least=1,
         most=MOST_NODES,

@@ -154,6 +154,12 @@ def exponents_of(text: str) -> Exponents | None:
         return None
 
 
+def value_of(text: str) -> float | None:
+    """The number before the unit, None when the text cannot be read."""
+    found = _NUMBER.fullmatch(text) if len(text) <= _LONGEST else None
+    return float(found[1]) if found else None
+
+
 @lru_cache(maxsize=1024)
 def _unit(text: str) -> tuple[Fraction, Exponents]:
     """Factor to m, N, s, K and exponents of a product of units; a slash divides by one unit."""
