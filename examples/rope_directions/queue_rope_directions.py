@@ -1,7 +1,7 @@
 """Queue 300 rope directions on the boat-lift lug: as one job with 300 cases, or as 300 jobs.
 
-    python queue_rope_directions.py --url http://127.0.0.1:8600
-    python queue_rope_directions.py --url http://127.0.0.1:8600 --as-jobs
+    python queue_rope_directions.py --url http://127.0.0.1:8470
+    python queue_rope_directions.py --url http://127.0.0.1:8470 --as-jobs
 
 The hoist's rope can pull the lug at any angle within 75 degrees of the vertical. Needs nothing but
 Python's standard library: this is how any program calls Fishplate over plain HTTP.
@@ -102,7 +102,7 @@ def as_many_jobs(url, lug, count, key):
 
 def main():
     parser = argparse.ArgumentParser(description=__doc__.splitlines()[0])
-    parser.add_argument("--url", default="http://127.0.0.1:8600")
+    parser.add_argument("--url", default="http://127.0.0.1:8470")
     parser.add_argument("--count", type=int, default=300)
     parser.add_argument("--as-jobs", action="store_true", help="300 jobs instead of one")
     arguments = parser.parse_args()
