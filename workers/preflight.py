@@ -6,8 +6,8 @@ once. An outline is checked as a drawing; what finds no place on its mesh shows 
 """
 
 import numpy as np
-from numpy.typing import NDArray
 
+from workers.analysis.held import held_directions
 from workers.analysis.load_places import load_faults
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
@@ -18,9 +18,7 @@ from workers.analysis.selection import Finder
 from workers.analysis.springs import spring_blocks
 from workers.analysis.support_rows import support_rows
 from workers.errors import DocumentError, Fault, FaultyError, MechanismError, MeshError
-from workers.job import Job, Load, MeshGeometry, Nodes, OutlineGeometry, Support
-
-Array = NDArray[np.float64]
+from workers.job import Job, OutlineGeometry
 
 
 def preflight(job: Job) -> Mesh | None:
@@ -42,10 +40,7 @@ def preflight(job: Job) -> Mesh | None:
         mesh = mesh_directly(job)
     except MeshError as error:
         raise DocumentError(error.faults) from error
-    faults = _numbering_faults(job)
-    if mesh is not None:
-        faults += placing_faults(job, mesh)
-    if faults:
+    if mesh is not None and (faults := placing_faults(job, mesh)):
         raise DocumentError(faults)
     return mesh
 
@@ -53,46 +48,29 @@ def preflight(job: Job) -> Mesh | None:
 def placing_faults(job: Job, mesh: Mesh) -> list[Fault]:
     """Whatever finds no place on the mesh, and what the supports leave free to move."""
     finder = Finder(mesh)
+    return [
+        *_support_faults(job, finder),
+        *load_faults(job, finder),
+        *request_faults(job.requests, mesh),
+    ]
+
+
+def _support_faults(job: Job, finder: Finder) -> list[Fault]:
+    """Supports that find no place, or if all do, the motions that they leave free."""
     faults: list[Fault] = []
-    held = []
+    nodes, directions = [np.empty(0, np.intp)], [np.empty((0, 2))]
     for support in job.supports:
         try:
-            held.append(_held(support, finder))
+            selection = finder.find(support.on, f"{support.pointer}/on")
+            list(support_rows(support, 0, 0, finder.mesh))
+            spring_blocks(support, finder.mesh)
         except FaultyError as error:
             faults.extend(error.faults)
-    if not faults:
-        nodes = np.concatenate([nodes for nodes, _ in held] or [np.empty(0, np.intp)])
-        directions = np.concatenate([d for _, d in held] or [np.empty((0, 2))])
-        if motions := free_motions(mesh, nodes, directions):
-            faults.extend(MechanismError(motions).faults)
-    return [*faults, *load_faults(job, finder), *request_faults(job.requests, mesh)]
-
-
-def _held(support: Support, finder: Finder) -> tuple[NDArray[np.intp], Array]:
-    """Nodes (r,) that a support holds, and in which directions (r, 2); springs count."""
-    finder.find(support.on, f"{support.pointer}/on")
-    rows = list(support_rows(support, 0, 0, finder.mesh))
-    nodes, directions = spring_blocks(support, finder.mesh).holding()
-    return (
-        np.concatenate([*(row.node for row in rows), nodes]).astype(np.intp),
-        np.concatenate([*(row.direction for row in rows), directions]),
-    )
-
-
-def _numbering_faults(job: Job) -> list[Fault]:
-    """Node numbers mean something only on a mesh that the client has numbered."""
-    if isinstance(job.geometry, MeshGeometry):
-        return []
-    placed: list[Support | Load] = [
-        *job.supports,
-        *(load for case in job.load_cases for load in case.loads),
-    ]
-    return [
-        Fault(
-            f"{part.pointer}/on/nodes",
-            "nodes are numbered by the mesher here, and differently when it changes; use a name, "
-            "a segment, a box or a circle",
-        )
-        for part in placed
-        if isinstance(part.on, Nodes)
-    ]
+            continue
+        held = held_directions(support, selection, finder.mesh)
+        nodes.append(held[0])
+        directions.append(held[1])
+    if faults:
+        return faults
+    motions = free_motions(finder.mesh, np.concatenate(nodes), np.concatenate(directions))
+    return list(MechanismError(motions).faults)

@@ -1,0 +1,101 @@
+"""True normals of curved sides, and the rotations that rollers on them leave free."""
+
+import numpy as np
+import pytest
+
+from tests.plates import ELEMENTS, annulus, grid, ring
+from workers.analysis.held import held_directions
+from workers.analysis.mesh import Mesh
+from workers.analysis.motions import free_motions
+from workers.analysis.selection import select
+from workers.analysis.true_normals import true_normals
+from workers.job import Named, Spring, Support
+
+
+def arch(kind: str, *, graded: bool = False) -> Mesh:
+    """A third of a ring about (5, 1), radii 2 and 3; "bottom" is its outer rim."""
+
+    def shape(x: np.ndarray, y: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        if graded:
+            x = (np.exp(2 * x) - 1) / (np.exp(2) - 1)
+        return tuple(c + d for c, d in zip(annulus(2.0, 3.0)(x / 3, y), (5.0, 1.0), strict=True))
+
+    return grid(kind, 6, 2, shape=shape)
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+@pytest.mark.parametrize("graded", [False, True])
+@pytest.mark.parametrize(("side", "sign"), [("bottom", 1), ("top", -1)])
+def test_normals_of_an_arc_are_its_radii(kind: str, graded: bool, side: str, sign: int) -> None:
+    """Outwards on the rim, towards the centre in the bore; at the ends of the arc as well."""
+    mesh = arch(kind, graded=graded)
+    nodes, normals = true_normals(mesh, mesh.sides[side])
+    radial = mesh.nodes[nodes] - [5.0, 1.0]
+    radial /= np.linalg.norm(radial, axis=1, keepdims=True)
+    np.testing.assert_allclose(normals, sign * radial, atol=1e-12)
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_normals_of_a_straight_side_are_square_to_it(kind: str) -> None:
+    mesh = grid(kind, 3, 2, shape=lambda x, y: (x - y, x + y))
+    _, normals = true_normals(mesh, mesh.sides["right"])
+    np.testing.assert_allclose(normals, np.sqrt([[0.5, 0.5]] * len(normals)), atol=1e-12)
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_at_a_right_angle_the_normal_is_halfway_and_its_neighbours_keep_theirs(kind: str) -> None:
+    mesh = grid(kind, 3, 3)
+    facets = np.concatenate((mesh.sides["bottom"], mesh.sides["right"]))
+    nodes, normals = true_normals(mesh, facets)
+    x, y = mesh.nodes[nodes].T
+    expected = np.column_stack(((x == 1).astype(float), -(y == 0).astype(float)))
+    expected /= np.linalg.norm(expected, axis=1, keepdims=True)
+    np.testing.assert_allclose(normals, expected, atol=1e-12)
+
+
+def test_one_chord_alone_has_its_own_normal() -> None:
+    mesh = grid("Q4", 1, 1)
+    _, normals = true_normals(mesh, mesh.sides["bottom"])
+    np.testing.assert_allclose(normals, [[0, -1], [0, -1]])
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+@pytest.mark.parametrize("graded", [False, True])
+@pytest.mark.parametrize(
+    "support",
+    [
+        Support("s", Named("bottom"), normal=0.0),
+        Support("s", Named("bottom"), spring=Spring(normal=7.0)),
+        Support("s", Named("top"), normal=0.0),
+    ],
+)
+def test_a_roller_on_an_arc_lets_it_turn_about_its_centre(
+    kind: str, graded: bool, support: Support
+) -> None:
+    mesh = arch(kind, graded=graded)
+    held = held_directions(support, select(mesh, support.on, "/s"), mesh)
+    assert free_motions(mesh, *held) == ["the plate can rotate about (5, 1)"]
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_a_tangential_spring_on_the_bore_stops_the_rotation(kind: str) -> None:
+    mesh = ring(kind, 12, 2, 1.0, 2.0)
+    support = Support("s", Named("bore"), normal=0.0, spring=Spring(tangential=1.0))
+    held = held_directions(support, select(mesh, support.on, "/s"), mesh)
+    assert free_motions(mesh, *held) == []
+
+
+@pytest.mark.parametrize(
+    ("support", "count"),
+    [
+        (Support("s", Named("SW"), ux=0.0), 1),
+        (Support("s", Named("SW"), ux=0.0, uy=1.0), 2),
+        (Support("s", Named("SW"), along=(3.0, 4.0)), 1),
+        (Support("s", Named("SW"), spring=Spring(x=1.0, y=2.0)), 2),
+        (Support("s", Named("left"), ux=0.0, spring=Spring(tangential=1.0)), 2 * 3),
+    ],
+)
+def test_every_node_is_held_once_for_each_direction(support: Support, count: int) -> None:
+    mesh = grid("Q4", 2, 2)
+    nodes, directions = held_directions(support, select(mesh, support.on, "/s"), mesh)
+    assert len(nodes) == len(directions) == count
