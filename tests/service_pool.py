@@ -7,7 +7,7 @@ import subprocess
 import sys
 import time
 from collections.abc import Callable, Iterator
-from contextlib import contextmanager
+from contextlib import contextmanager, suppress
 from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
@@ -57,15 +57,23 @@ class Service:
         eventually(lambda: attempts_in(self.store, job_id))
 
     def workers(self) -> list[psutil.Process]:
-        children = psutil.Process(self.process.pid).children()
-        return [child for child in children if "redis-server" not in child.name()]
+        return [c for c in children(self.process.pid) if "redis-server" not in c.name()]
 
     def horses(self) -> list[psutil.Process]:
-        return [horse for worker in self.workers() for horse in worker.children()]
+        return [horse for worker in self.workers() for horse in children(worker.pid)]
 
     def stop(self, number: signal.Signals = signal.SIGTERM) -> int:
         self.process.send_signal(number)
         return self.process.wait(timeout=PATIENCE)
+
+
+def children(pid: int) -> list[psutil.Process]:
+    """Living children of a process; none where it has just ended itself."""
+    try:
+        found = psutil.Process(pid).children()
+        return [c for c in found if c.is_running() and c.status() != psutil.STATUS_ZOMBIE]
+    except psutil.NoSuchProcess:
+        return []
 
 
 def accept(store: Store, do: str, **order: Any) -> str:
@@ -84,16 +92,23 @@ def attempts_in(store: Store, job_id: str) -> int:
 
 @contextmanager
 def running_pool(settings: Settings, module: str = "tests.standin_pipeline") -> Iterator[Service]:
-    process = subprocess.Popen(
-        [sys.executable, "-m", module],
-        cwd=ROOT,
-        env={**os.environ, **settings.as_environment()},
-        stderr=subprocess.DEVNULL,
-    )
+    settings.store.mkdir(parents=True, exist_ok=True)
+    with (settings.store / "pool.log").open("ab") as output:  # kept with the test's files
+        process = subprocess.Popen(
+            [sys.executable, "-m", module],
+            cwd=ROOT,
+            env={**os.environ, **settings.as_environment()},
+            stdout=output,
+            stderr=output,
+        )
     queue = Queue(settings)
     try:
         yield Service(settings, queue.store, queue, process)
     finally:
-        process.kill()  # its workers end with it
+        workers = children(process.pid)
+        process.kill()
         process.wait()
+        for worker in workers:  # would finish their jobs first; work-horses end with them
+            with suppress(psutil.NoSuchProcess):
+                worker.kill()
         queue.connection.close()

@@ -17,7 +17,7 @@ from types import FrameType
 
 import redis
 
-from workers.errors import FishplateError, StoreError
+from workers.errors import FishplateError
 from workers.lineage import die_with_parent
 from workers.private_redis import PrivateRedis
 from workers.queue import Queue
@@ -88,8 +88,10 @@ class Pool:
         self._next_look = time.monotonic() + self.settings.reconcile_every
         try:
             reconcile(self.store, self.queue)
-        except (StoreError, redis.RedisError) as error:
+        except redis.RedisError as error:
             log.warning("the reconciler will try again: %s", error)
+        except Exception:  # whatever is wrong with one look, the workers must go on
+            log.exception("the reconciler will try again")
 
     def _stop(self) -> None:
         """First ask, then (rq takes a second signal so) insist, then kill."""

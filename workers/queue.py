@@ -110,7 +110,7 @@ class Queue:
             if job.get_status(refresh=False) == JobStatus.STARTED:
                 send_stop_job_command(self.connection, job_id, serializer=JSONSerializer)
             else:
-                job.delete()
+                self._forget(job_id)
         except (NoSuchJobError, InvalidJobOperation):
             pass  # neither waiting nor begun: whoever takes it sees that it is cancelled
         except redis.RedisError as error:
@@ -122,8 +122,12 @@ class Queue:
         return frozenset(self._bulk.get_job_ids())
 
     def _forget(self, job_id: str) -> None:
-        with suppress(NoSuchJobError):
-            Job.fetch(job_id, connection=self.connection, serializer=JSONSerializer).delete()
+        """Take a job out of the line, and all that rq noted about an earlier attempt."""
+        # Not Job.delete(): that fails on the fragments which a flush during an attempt leaves.
+        with self.connection.pipeline() as pipeline:
+            self._bulk.remove(job_id, pipeline=pipeline)
+            pipeline.delete(Job.key_for(job_id))
+            pipeline.execute()
 
     # --- progress --------------------------------------------------------------------------------
 

@@ -145,3 +145,13 @@ def test_a_damaged_record_does_not_hold_up_the_others(queue: Queue) -> None:
     assert [record.id for record in store.list().records] == [job_id]
     with pytest.raises(StoreError, match=f"{damaged} is damaged"):
         store.record(damaged)
+
+
+def test_fragments_that_a_flush_leaves_in_redis_do_not_matter(queue: Queue) -> None:
+    """A worker's next sign of life writes a single field of a job that the flush removed."""
+    job_id = accept(queue.store, "nothing")
+    queue.connection.hset(f"rq:job:{job_id}", "last_heartbeat", "2031-04-05T06:07:08.000000Z")
+    look_round(queue)
+    assert queue.waiting() == {job_id}
+    queue.cancel(job_id)
+    assert queue.waiting() == set()
