@@ -33,6 +33,7 @@ def held_directions(support: Support, selection: Selection, mesh: Mesh) -> tuple
     normal = support.normal is not None or spring.normal > 0
     if (normal or spring.tangential > 0) and len(selection.facets):
         on_side, outward = true_normals(mesh, selection.facets)
+        outward /= np.linalg.norm(outward, axis=1, keepdims=True)
         tangent = np.column_stack((-outward[:, 1], outward[:, 0]))
         nodes += [on_side] * (normal + (spring.tangential > 0))
         directions += [outward] * normal + [tangent] * (spring.tangential > 0)

@@ -1,8 +1,7 @@
 """What each support asks of each node: displacement along a direction = value.
 
-A `normal` support takes the outward normal of the side, averaged at each node over the facets that
-meet there with the weights of the shape functions, so that straight sides are exact and curved
-sides hold no tangential force.
+A `normal` support takes the outward normal of the side at each node: that of its true curve where
+the side is straight or an arc, so that it holds no tangential force and locks no rotation.
 """
 
 from collections.abc import Iterator, Sequence
@@ -14,6 +13,7 @@ from numpy.typing import NDArray
 
 from workers.analysis.mesh import Facets, Mesh
 from workers.analysis.selection import Selection, select
+from workers.analysis.true_normals import true_normals
 from workers.errors import Fault, MeshError
 from workers.job import Support
 
@@ -112,33 +112,15 @@ def side_normals(
     -------
     nodes (k,), normals (k, 2), blur (k,) : at the ends of a side that curves, the angle between
         the normals at the two ends of the last facet; 0 elsewhere [rad]
-
-    References
-    ----------
-    Engelman, Sani & Gresho, "The implementation of normal and/or tangential boundary conditions
-    in finite element codes", Int. J. Numer. Methods Fluids 2 (1982): the integral of N n.
     """
-    total = np.zeros((mesh.node_count, 2))
-    size = np.zeros(mesh.node_count)
-    for group in mesh.facet_groups(facets):
-        block = mesh.blocks[group.block]
-        connectivity = block.connectivity[group.elements]
-        coords = mesh.nodes[connectivity]
-        _, tangent = block.element.side_points(coords, group.side)
-        length = np.linalg.norm(tangent, axis=2, keepdims=True)
-        normal = np.stack([tangent[..., 1], -tangent[..., 0]], axis=-1) / length
-        load = block.element.side_load(coords, group.side, normal)
-        local = list(block.element.sides[group.side])
-        np.add.at(total, connectivity[:, local], load[:, local])
-        np.add.at(size, connectivity[:, local], np.linalg.norm(load[:, local], axis=2))
-    nodes = mesh.facet_nodes(facets).astype(np.int64)
-    length = np.linalg.norm(total[nodes], axis=1)
-    if (length < NO_DIRECTION * size[nodes]).any():
-        x, y = mesh.nodes[nodes[np.argmin(length / size[nodes])]]
+    found, mean = true_normals(mesh, facets)
+    nodes, length = found.astype(np.int64), np.linalg.norm(mean, axis=1)
+    if (length < NO_DIRECTION).any():
+        x, y = mesh.nodes[nodes[np.argmin(length)]]
         raise MeshError(
             [Fault(pointer, f"the side has no normal at ({x:g}, {y:g}): it folds back")]
         )
-    normals = total[nodes] / length[:, None]
+    normals = mean / length[:, None]
     return nodes, normals, _end_blur(mesh, facets, nodes, normals)
 
 

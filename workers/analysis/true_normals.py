@@ -2,8 +2,8 @@
 
 A roller on a circular side lets the plate turn about the circle's centre. Normals averaged over
 facets miss the centre a little at the ends of the side and where facets differ in length, and so
-seem to hold that rotation. Through three neighbouring nodes of an arc there is one circle, and
-its radii are the true normals.
+lock that rotation. Through three neighbouring nodes of an arc there is one circle, and its radii
+are the true normals.
 """
 
 import numpy as np
@@ -19,30 +19,35 @@ KINK = np.cos(np.radians(45))  # cosine of a turn beyond which two chords are no
 
 
 def true_normals(mesh: Mesh, facets: Facets) -> tuple[Numbers, Array]:
-    """Nodes (k,) of a side and the outward unit normals (k, 2) there.
+    """Nodes (k,) of a side and the mean outward normals (k, 2) there.
 
-    At a kink the normals of both facets are averaged.
+    The mean is over the facets that meet at a node, by their lengths: of length 1 where they agree,
+    shorter at kinks, none where the side folds back.
     """
     table = mesh.facet_table(facets).astype(np.intp)
+    weight = mesh.facet_lengths(facets)
     quadratic = table[:, 2] >= 0
-    triples = table[quadratic][:, [0, 2, 1]]
-    found = [(triples, _circle_normals(mesh.nodes[triples]))]
-    if not quadratic.all():
-        found.append(_linear(mesh, table[~quadratic, :2]))
-    total = np.zeros((mesh.node_count, 2))
-    for nodes, normals in found:
-        np.add.at(total, nodes, normals)
-    nodes = np.unique(np.concatenate([nodes.ravel() for nodes, _ in found]))
-    length = np.linalg.norm(total[nodes], axis=1)
-    kept = length > 0  # a knife edge has no normal
-    return nodes[kept], total[nodes[kept]] / length[kept, None]
+    total, size = np.zeros((mesh.node_count, 2)), np.zeros(mesh.node_count)
+    for chosen, find in ((quadratic, _quadratic), (~quadratic, _linear)):
+        nodes, normals = find(mesh, table[chosen])
+        np.add.at(total, nodes, weight[chosen, None, None] * normals)
+        np.add.at(size, nodes, weight[chosen, None])
+    nodes = mesh.facet_nodes(facets).astype(np.intp)
+    return nodes, total[nodes] / size[nodes, None]
 
 
-def _linear(mesh: Mesh, ends: Numbers) -> tuple[Numbers, Array]:
+def _quadratic(mesh: Mesh, table: Numbers) -> tuple[Numbers, Array]:
+    """Start, middle and end (f, 3) of facets with mid-side nodes, and normals there, (f, 3, 2)."""
+    triples = table[:, [0, 2, 1]]
+    return triples, _circle_normals(mesh.nodes[triples])
+
+
+def _linear(mesh: Mesh, table: Numbers) -> tuple[Numbers, Array]:
     """Ends (f, 2) of facets without mid-side nodes, and the normals there, (f, 2, 2).
 
     The third node of the circle is the one before the facet or the one behind it.
     """
+    ends = table[:, :2]
     before, behind = np.full((2, mesh.node_count), -1)
     behind[ends[:, 0]], before[ends[:, 1]] = ends[:, 1], ends[:, 0]
     a, b = ends.T
