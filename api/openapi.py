@@ -61,7 +61,7 @@ def problems_of(*statuses: int) -> dict[int, str]:
     return {status: http.HTTPStatus(status).name for status in statuses}
 
 
-def describe_file(media_type: str) -> dict[str, Any]:
+def describe_file(media_type: str, schema: Any = None) -> dict[str, Any]:
     """Description of a 200 response that is a file."""
     return {
         "description": "The file",
@@ -72,5 +72,5 @@ def describe_file(media_type: str) -> dict[str, Any]:
             },
             "ETag": {"schema": {"type": "string"}},
         },
-        "content": {media_type: {"schema": {}}},
+        "content": {media_type: {"schema": schema or {}}},
     }

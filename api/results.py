@@ -17,6 +17,7 @@ from api.openapi import Blueprint, describe_file, problems_of
 from api.problem_types import JOB_CANCELLED, JOB_FAILED, NOT_FINAL, NOTHING_OF_THAT_NAME
 from api.problems import RefusalError
 from api.responses import file_answer, text_answer
+from api.result_schemas import ResultsSchema
 from api.services import services
 from workers.outputs.names import file_name
 from workers.outputs.tables import TABLES, write_table
@@ -32,7 +33,7 @@ RESULTS = "results.json"
 
 
 @blueprint.get("/jobs/<job_id>/results")
-@blueprint.doc(responses={200: describe_file(JSON), **problems_of(404, 409)})
+@blueprint.doc(responses={200: describe_file(JSON, ResultsSchema), **problems_of(404, 409)})
 def show_results(job_id: str) -> Response:
     """Results of a finished job
 

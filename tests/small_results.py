@@ -11,28 +11,75 @@ CAUTION = {
     "evidence": {"value": 1.0},
     "action": "Look at it.",
 }
-PEAK = {"value": 100.0, "at": [50.0, 20.0], "error": 0.5, "region": "plate"}
+AT = [50.0, 20.0]
+PEAK = {"value": 100.0, "at": AT, "error": 0.5, "region": "plate", "least": {"value": 0.0}}
+GOVERNING = {"value": 100.0, "at": AT, "error": 0.5, "region": "plate", "governs": "pull"}
 QUANTITIES = ("von_mises", "principal_max", "principal_min", "shear_max", "displacement")
 STATE = {
     **dict.fromkeys(QUANTITIES, PEAK),
     "reactions": {"left": {"force": [-32000.0, 0.0], "moment": 0.0, "about": [0.0, 20.0]}},
-    "equilibrium": {"applied": [32000.0, 0.0, 0.0], "reaction": [-32000.0, 0.0, 0.0],
-                    "residual": 1e-15, "about": [50.0, 20.0]},
+    "equilibrium": {
+        "applied": [32000.0, 0.0, 0.0],
+        "reaction": [-32000.0, 0.0, 0.0],
+        "residual": 1e-15,
+        "about": AT,
+    },
     "error_estimate": {"relative": 0.01, "energy_norm": 0.1},
     "utilisation": None,
-}  # fmt: skip
+}
+PROBE = {
+    "at": AT,
+    "stress": [100.0, 0.0, 0.0],
+    "displacement": [0.02, 0.0],
+    "von_mises": 100.0,
+    "principal": [100.0, 0.0],
+}
+LINE = {
+    "points": [[0.0, 20.0], [100.0, 20.0]],
+    "distance": [0.0, 100.0],
+    "cases": {
+        "pull": {
+            "stress": [[100.0, 0.0, 0.0], [99.5, 0.0, 0.25]],
+            "displacement": [[0.0, 0.0], [0.04, 0.0]],
+            "von_mises": [100.0, 99.5],
+        }
+    },
+}
 RESULTS: dict[str, Any] = {
-    "job": {"title": "Slipway tie strip", "checksum": "sha256:0", "fishplate": "0"},
+    "job": {
+        "title": "Slipway tie strip",
+        "label": None,
+        "checksum": "sha256:0",
+        "fishplate": "0",
+    },
     "units": {"length": "mm", "force": "N", "stress": "MPa"},
+    "solver": {
+        "name": "SuperLU",
+        "ordering": "none",
+        "dofs": 16,
+        "free_dofs": 12,
+        "factor_entries": 100,
+        "residual": 1e-15,
+        "refinements": 0,
+        "reciprocal_condition": 1e-4,
+        "seconds": {"solve": 0.1},
+    },
+    "mesh": {
+        "nodes": 8,
+        "elements": {"Q8": 1},
+        "dofs": 16,
+        "regions": {"plate": {"thickness": 8.0, "material": "steel", "area": 4000.0}},
+        "quality": {"max_aspect": {"value": 2.5, "at": AT, "limit": 10.0, "bad": 0}},
+        "parts": 1,
+    },
     "cases": {"pull": STATE},
     "combinations": {"pull, factored": STATE},
-    "envelope": {},
-    "probes": {"middle": {"pull": {"stress": [100.0, 0.0, 0.0], "displacement": [0.02, 0.0],
-                                   "von_mises": 100.0, "principal": [100.0, 0.0]}}},
-    "lines": {},
-    "cuts": {},
+    "envelope": {**dict.fromkeys(QUANTITIES, GOVERNING), "utilisation": None},
+    "probes": {"middle": {"pull": PROBE}},
+    "lines": {"axis": LINE},
+    "cuts": {"root": {"pull": {"normal": 32000.0, "shear": 0.0, "moment": 0.0, "about": AT}}},
     "convergence": None,
     "cautions": [CAUTION, *(caution.as_json() for caution in STANDING)],
-    "files": {"fields": {"pull": "fields/pull.vtu"}, "previews": {"pull": {}}},
+    "files": {"fields": {"pull": "fields/pull.vtu"}, "previews": {"pull": {"model": "x"}}},
     "pictures": {"available": True},
-}  # fmt: skip
+}

@@ -12,13 +12,18 @@ from workers.cautions import SEVERITIES
 STYLES = {"stop": "bold red", "check": "yellow", "note": "dim"}
 
 
-def number(value: float) -> str:
+def number(value: float, digits: int = 5) -> str:
     """Five digits: more than any of these numbers can be trusted for."""
-    return f"{float(f'{value:.5g}'):.12g}"
+    return f"{float(f'{value:.{digits}g}'):.12g}"
+
+
+def settled(value: float, scale: float) -> float:
+    """Zero where the value is nothing but rounding beside what it was computed from."""
+    return value if abs(value) > 1e-9 * scale else 0.0
 
 
 def place(at: Iterable[float]) -> str:
-    return "(" + ", ".join(number(c) for c in at) + ")"
+    return "(" + ", ".join(number(c, 4) for c in at) + ")"
 
 
 def print_cautions(console: Console, cautions: Iterable[Mapping[str, Any]]) -> None:

@@ -1,11 +1,12 @@
 """Results for people at a terminal: cautions first, then peaks, then what the supports carry."""
 
+import math
 from collections.abc import Iterator, Mapping
 from typing import Any
 
 from rich.console import Console
 
-from api.commands.layout import number, place, print_cautions, print_table
+from api.commands.layout import number, place, print_cautions, print_table, settled
 
 MOST_STATES = 20  # a job of hundreds of cases is read in the results, not on a terminal
 
@@ -23,8 +24,8 @@ def print_results(console: Console, results: Mapping[str, Any]) -> None:
     print_table(
         console,
         "Peaks, the highest stress first",
-        ("case", f"von Mises [{stress}]", f"at [{length}]", "of yield", f"moves [{length}]",
-         "error estimate"),
+        ("case", f"von Mises [{stress}]", "doubt", f"at [{length}]", "of yield",
+         f"moves [{length}]", "error estimate"),
         _peaks(shown),
         words=1,
     )  # fmt: skip
@@ -33,7 +34,7 @@ def print_results(console: Console, results: Mapping[str, Any]) -> None:
         "What the supports do to the plate",
         ("case", "support", f"x [{force}]", f"y [{force}]", f"moment [{force} {length}]",
          f"about [{length}]"),
-        _reactions(shown),
+        _reactions(shown, _size(results["mesh"])),
         words=2,
     )  # fmt: skip
     if len(states) > len(shown):
@@ -44,10 +45,10 @@ def print_results(console: Console, results: Mapping[str, Any]) -> None:
 def _peaks(states: States) -> Iterator[tuple[str, ...]]:
     for name, state in states:
         peak, use = state["von_mises"], state["utilisation"]
-        doubt = peak.get("error")
         yield (
             name,
-            number(peak["value"]) + ("" if doubt is None else f" ± {number(doubt)}"),
+            number(peak["value"]),
+            _share(peak["error"], peak["value"]),
             place(peak["at"]),
             "-" if use is None else f"{use['value']:.0%}",
             number(state["displacement"]["value"]),
@@ -55,11 +56,23 @@ def _peaks(states: States) -> Iterator[tuple[str, ...]]:
         )
 
 
-def _reactions(states: States) -> Iterator[tuple[str, ...]]:
+def _share(error: float | None, value: float) -> str:
+    return "-" if error is None or value == 0.0 else f"± {error / value:.1%}"
+
+
+def _reactions(states: States, size: float) -> Iterator[tuple[str, ...]]:
+    """size : of the plate, to tell a moment from rounding [L]"""
     for name, state in states:
-        for label, reaction in state["reactions"].items():
-            numbers = (*reaction["force"], reaction["moment"])
-            yield name, label, *map(number, numbers), place(reaction["about"])
+        found = state["reactions"]
+        largest = max((abs(c) for r in found.values() for c in r["force"]), default=0.0)
+        for label, reaction in found.items():
+            fx, fy = (settled(component, largest) for component in reaction["force"])
+            moment = settled(reaction["moment"], largest * size)
+            yield name, label, number(fx), number(fy), number(moment), place(reaction["about"])
+
+
+def _size(mesh: Mapping[str, Any]) -> float:
+    return math.sqrt(sum(region["area"] for region in mesh["regions"].values()))
 
 
 def _print_size(console: Console, results: Mapping[str, Any]) -> None:

@@ -112,7 +112,8 @@ def _workers_alive(queue: Queue) -> int:
 
 def _announce(address: str, settings: Settings, address_file: Path | None) -> None:
     console = err()
-    console.print(f"Fishplate listens at [bold]{address}[/bold]  ({address}/docs tells how)")
+    console.print(f"Fishplate listens at [bold]{address}[/bold]", soft_wrap=True)
+    console.print(f"{address}/docs tells how to use it", soft_wrap=True, style="dim")
     console.print(f"jobs are kept in {settings.store}", soft_wrap=True, style="dim")
     if address_file:
         # Written beside and renamed: a reader never sees half an address.

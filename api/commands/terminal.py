@@ -12,13 +12,19 @@ from rich.progress import BarColumn, Progress, TextColumn, TimeElapsedColumn
 
 FAILED = 1
 BAD_INPUT = 2
+WIDTH = 110  # columns, where there is no terminal
+
+# In the order in which a job goes through them, see `workers/pipeline.py`.
+STAGES = ("reading", "meshing", "assembling", "factorising", "solving", "recovering", "reviewing",
+          "writing", "drawing")  # fmt: skip
 
 Report = Callable[[str, float], None]
 
 
 def out() -> Console:
-    """Results, on standard output."""
-    return Console(highlight=False)
+    """Results, on standard output; as wide as the terminal, or wide enough for the tables."""
+    console = Console(highlight=False)
+    return console if console.is_terminal else Console(highlight=False, width=WIDTH)
 
 
 def err() -> Console:
@@ -46,21 +52,23 @@ def _bar(console: Console) -> Iterator[Report]:
         TimeElapsedColumn(),
     )
     with Progress(*columns, console=console, transient=True) as bar:
-        task = bar.add_task("waiting", total=1.0)
+        task = bar.add_task("waiting", total=len(STAGES))
 
         def report(stage: str, fraction: float) -> None:
-            bar.update(task, description=stage, completed=fraction)
+            begun = STAGES.index(stage) + fraction if stage in STAGES else 0.0
+            bar.update(task, description=stage, completed=begun)
 
         yield report
 
 
 def _lines() -> Report:
-    last: list[str] = []
+    last = ""
 
-    def report(stage: str, fraction: float) -> None:
-        if last != [stage]:  # one line for each stage is enough for a log
-            last[:] = [stage]
-            print(f"{fraction:4.0%}  {stage}", file=sys.stderr, flush=True)
+    def report(stage: str, _fraction: float) -> None:
+        nonlocal last
+        if stage != last:  # one line for each stage is enough for a log
+            last = stage
+            print(stage, file=sys.stderr, flush=True)
 
     return report
 

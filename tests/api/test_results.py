@@ -196,4 +196,8 @@ def test_tables_read_back_as_the_numbers_of_the_results(get: Get) -> None:
     assert float(balance["relative residual"]) == state["equilibrium"]["residual"]
     probe = read(get("tables/probes.csv"))[0]
     assert float(probe["von Mises [MPa]"]) == 100.0
-    assert read(get("tables/cuts.csv")) == []
+    cut = read(get("tables/cuts.csv"))[0]
+    assert float(cut["normal [N]"]) == RESULTS["cuts"]["root"]["pull"]["normal"]
+    line = read(get("tables/lines.csv"))
+    assert [float(row["xy [MPa]"]) for row in line] == [0.0, 0.25]
+    assert [float(row["distance [mm]"]) for row in line] == RESULTS["lines"]["axis"]["distance"]

@@ -1,0 +1,188 @@
+"""The `fishplate` command: exit statuses, and what it prints."""
+
+import json
+import threading
+from collections.abc import Callable, Iterator
+from pathlib import Path
+from typing import Any
+
+import pytest
+from click.testing import CliRunner, Result
+from flask import Flask
+from werkzeug.serving import make_server
+
+from api.commands import COMMANDS, main
+from api.commands.layout import number
+from api.services import KEY
+from tests.job_documents import strip
+from workers.errors import Fault
+from workers.record import FAILED, RUNNING
+
+
+def run(*arguments: str | Path) -> Result:
+    return CliRunner().invoke(main, [str(argument) for argument in arguments])
+
+
+@pytest.fixture
+def job(tmp_path: Path) -> Path:
+    path = tmp_path / "strip.json"
+    path.write_text(json.dumps(strip()))
+    return path
+
+
+@pytest.fixture
+def url(app: Flask) -> Iterator[str]:
+    """The application behind a real socket."""
+    server = make_server("127.0.0.1", 0, app, threaded=True)
+    thread = threading.Thread(target=server.serve_forever)
+    thread.start()
+    yield f"http://127.0.0.1:{server.port}"
+    server.shutdown()
+    thread.join()
+    server.server_close()
+
+
+@pytest.fixture
+def work(app: Flask) -> Iterator[Callable[[Callable[[str], None]], None]]:
+    """Do something with the first job that is accepted, as a worker would."""
+    threads = []
+
+    def start(do: Callable[[str], None]) -> None:
+        def look() -> None:
+            store = app.extensions[KEY].store
+            while not (accepted := store.list().records):
+                if stop.wait(0.01):
+                    return
+            do(accepted[0].id)
+
+        threads.append(threading.Thread(target=look))
+        threads[-1].start()
+
+    stop = threading.Event()
+    yield start
+    stop.set()
+    for thread in threads:
+        thread.join()
+
+
+def test_help_names_every_command_without_loading_the_solver() -> None:
+    result = run("--help")
+    assert result.exit_code == 0
+    assert all(name in result.output for name in COMMANDS)
+
+
+@pytest.mark.parametrize("name", COMMANDS)
+def test_every_command_has_help(name: str) -> None:
+    assert run(name, "--help").exit_code == 0
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [(210000.0, "210000"), (0.1 + 0.2, "0.3"), (-25.97841, "-25.978"), (0.0, "0"),
+     (1.23456e-7, "1.2346e-07"), (6.02214e23, "6.0221e+23")],
+)  # fmt: skip
+def test_numbers_are_shown_with_five_digits(value: float, text: str) -> None:
+    assert number(value) == text
+
+
+# --- check ---------------------------------------------------------------------------------------
+
+
+def test_check_says_what_was_understood(job: Path) -> None:
+    """Hand sums: 100 x 40 mm; 5 x 2 Q8 have 11 x 3 + 6 x 2 = 45 nodes; 32 kN on the right."""
+    result = run("check", job)
+    assert result.exit_code == 0
+    for text in ("100 x 40 mm", "45 nodes, 10 Q8", "8 mm of steel", "ux = 0", "32000"):
+        assert text in result.output
+    assert "qualified engineer" in " ".join(result.output.split())
+
+
+def test_check_lists_all_faults_and_ends_with_two(job: Path) -> None:
+    document = strip()
+    document["plate"]["thickness"] = 0
+    document["load_cases"]["pull"][0]["on"] = "nowhere"
+    job.write_text(json.dumps(document))
+    result = run("check", job)
+    assert result.exit_code == 2
+    assert "/plate/thickness" in result.stderr
+    assert "/load_cases/pull/0/on" in result.stderr
+
+
+# --- submit --------------------------------------------------------------------------------------
+
+
+def test_submit_without_wait_prints_the_id(job: Path, url: str, app: Flask) -> None:
+    result = run("submit", job, "--url", url)
+    assert result.exit_code == 0
+    assert (result.stdout.strip(),) == app.extensions[KEY].store.unfinished()
+
+
+def test_submit_waits_prints_the_summary_and_fetches_every_file(
+    job: Path,
+    url: str,
+    work: Callable[..., None],
+    finish: Callable[[str], None],
+    tmp_path: Path,
+) -> None:
+    work(finish)
+    folder = tmp_path / "results"
+    result = run("submit", job, "--url", url, "--out", folder)
+    assert result.exit_code == 0
+    assert "Something was noticed." in result.stdout
+    assert "± 0.5" in result.stdout
+    assert json.loads((folder / "results.json").read_bytes())["cases"]["pull"]
+    assert (folder / "fields" / "pull.vtu").read_bytes() == b"fields/pull.vtu"
+    assert (folder / "previews" / "pull" / "model.png").is_file()
+
+
+def test_submit_ends_with_one_and_the_reason_when_the_job_fails(
+    job: Path, url: str, work: Callable[..., None], app: Flask
+) -> None:
+    def fail(job_id: str) -> None:
+        store = app.extensions[KEY].store
+        store.transition(job_id, RUNNING)
+        fault = Fault("/supports", "part 1 can rotate")
+        store.transition(job_id, FAILED, reason="free to move", faults=(fault,))
+
+    work(fail)
+    result = run("submit", job, "--url", url, "--wait")
+    assert result.exit_code == 1
+    assert "free to move" in result.stderr
+    assert "part 1 can rotate" in result.stderr
+
+
+def test_submit_ends_with_two_and_the_faults_when_the_document_is_wrong(
+    job: Path, url: str
+) -> None:
+    job.write_text("{}")
+    result = run("submit", job, "--url", url)
+    assert result.exit_code == 2
+    assert "/geometry" in result.stderr
+
+
+@pytest.mark.parametrize(
+    ("url", "status"), [("http://127.0.0.1:1", 1), ("file:///etc", 2), ("nonsense", 2)]
+)
+def test_submit_says_when_there_is_no_server(job: Path, url: str, status: int) -> None:
+    result = run("submit", job, "--url", url)
+    assert result.exit_code == status
+    assert url in result.stderr
+
+
+def test_a_large_document_is_sent_packed(job: Path, url: str, app: Flask) -> None:
+    document: dict[str, Any] = {**strip(), "title": "x" * 200}
+    job.write_text(json.dumps(document) + " " * 90_000)
+    result = run("submit", job, "--url", url)
+    assert app.extensions[KEY].store.document(result.stdout.strip()) == job.read_bytes()
+
+
+# --- solve ---------------------------------------------------------------------------------------
+
+
+def test_solve_never_replaces_a_folder_of_something_else(job: Path, tmp_path: Path) -> None:
+    folder = tmp_path / "mine"
+    folder.mkdir()
+    (folder / "letter.txt").write_text("dear")
+    result = run("solve", job, "--out", folder)
+    assert result.exit_code == 2
+    assert (folder / "letter.txt").read_text() == "dear"
