@@ -22,6 +22,10 @@ Progress = Callable[[str, float], None]
 RESULTS = ("results.json", "fields/lift.vtu", "previews/lift/von_mises.png")
 
 
+def warm_up() -> None:
+    """Nothing to load."""
+
+
 def run(
     document: bytes, folder: Path, *, job_id: str | None, progress: Progress, pictures: int = 6
 ) -> dict[str, Any]:

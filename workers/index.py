@@ -1,15 +1,17 @@
-"""Sorted folder of job ids: newest first without opening a single record.
+"""Sorted folders of job ids: newest first without opening a single record.
 
 An index is a folder of days, each with one empty file (or, for the jobs themselves, one folder) for
 every id. It may name too much after a crash, never too little: entries are added before the fact
 they stand for and taken out after it has gone. Readers therefore look at the record as well.
 """
 
+import os
 from collections.abc import Iterator
 from pathlib import Path
+from urllib.parse import quote
 
 from workers import durable
-from workers.record import day_of, is_id
+from workers.record import QUEUED, RUNNING, STATES, Record, day_of, is_id
 
 
 class Index:
@@ -42,8 +44,47 @@ class Index:
                     yield job_id
 
 
+class Indexes:
+    """Where to look for the jobs of a state, and for those of a label."""
+
+    def __init__(self, root: Path) -> None:
+        self._states = {state: Index(root / "states" / state) for state in STATES}
+        self._labels = root / "labels"
+
+    def of_state(self, state: str) -> Index:
+        return self._states[state]
+
+    def of_label(self, label: str) -> Index:
+        # The dot keeps "", "." and ".." from naming the folder itself or its parent.
+        return Index(self._labels / ("." + quote(label, safe=" ")))
+
+    def unfinished(self) -> set[str]:
+        """Ids of the jobs that are queued or running, and perhaps of others that were."""
+        return {i for state in (QUEUED, RUNNING) for i in self._states[state].newest_first()}
+
+    def enter(self, record: Record, *, sync: bool = False) -> None:
+        """Before the record is written: name the job under its state and its label."""
+        self._states[record.state].add(record.id, sync=sync)
+        if record.label is not None:
+            self.of_label(record.label).add(record.id, sync=sync)
+
+    def tidy(self, record: Record) -> None:
+        """After it was written: take the job out of all states but its own."""
+        for state, index in self._states.items():
+            if state != record.state:
+                index.discard(record.id)
+
+    def drop(self, job_id: str, label: str | None = None) -> None:
+        """Take out a job that is no more."""
+        for index in self._states.values():
+            index.discard(job_id)
+        if label is not None:
+            self.of_label(label).discard(job_id)
+
+
 def _names(folder: Path) -> list[str]:
     try:
-        return [entry.name for entry in folder.iterdir()]
+        with os.scandir(folder) as entries:
+            return [entry.name for entry in entries]
     except FileNotFoundError:
         return []

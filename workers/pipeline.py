@@ -54,6 +54,11 @@ def silent(stage: str, fraction: float) -> None:
     """The progress function of a caller who does not care."""
 
 
+def warm_up() -> None:
+    """Find out once, before processes are forked for the jobs, what each would ask anew."""
+    preview.probe()
+
+
 def run(
     document: bytes,
     folder: Path,

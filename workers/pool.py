@@ -13,6 +13,7 @@ import os
 import signal
 import sys
 import time
+from contextlib import nullcontext
 from types import FrameType
 
 import redis
@@ -54,7 +55,8 @@ class Pool:
         """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
         for number in STOP_SIGNALS:
             signal.signal(number, self._request_stop)
-        self.store.reindex()
+        self._replace_dead()
+        self.store.reindex()  # reads every record: the workers need not wait for it
         while not self._stopping:
             if self.server is not None:
                 self.server.keep_alive()
@@ -126,13 +128,12 @@ def run_pool(settings: Settings) -> None:
     for name in [name for name in os.environ if name.startswith(PREFIX)]:
         del os.environ[name]
     os.environ.update({**ONE_THREAD, **settings.as_environment()})
-    # Only now: numerical libraries read the number of threads when they are loaded.
-    importlib.import_module("workers.tasks")
-    if settings.redis_url is not None:
-        Pool(settings).run()
-        return
-    with PrivateRedis(settings.store) as server:
-        Pool(settings, server).run()
+    server = PrivateRedis(settings.store) if settings.redis_url is None else nullcontext()
+    with server as private:
+        # Only now: numerical libraries read the number of threads when they are loaded.
+        importlib.import_module("workers.worker")
+        importlib.import_module("workers.pipeline").warm_up()
+        Pool(settings, private).run()
 
 
 def main() -> int:

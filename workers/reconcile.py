@@ -69,7 +69,7 @@ def _settle(
 ) -> None:
     record = store.record(job_id)
     if record.is_final:
-        store.tidy_index(record)
+        store.indexes.tidy(record)
         return
     if record.state == RUNNING:
         if store.recover_published(job_id):

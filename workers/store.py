@@ -23,12 +23,11 @@ from contextlib import ExitStack, contextmanager
 from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
-from urllib.parse import quote
 
 from workers import durable
 from workers.errors import KeyConflictError, NotFinalError, StoreError, UnknownJobError
-from workers.index import Index
-from workers.record import FINISHED, QUEUED, RUNNING, STATES, Event, Record, is_id, new_id, now
+from workers.index import Index, Indexes
+from workers.record import FINISHED, QUEUED, RUNNING, Event, Record, is_id, new_id, now
 
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
@@ -58,6 +57,7 @@ class Store:
     def __init__(self, root: Path) -> None:
         self.root = Path(root)
         self.jobs = Index(self.root / "jobs")
+        self.indexes = Indexes(self.root)
         self._incoming = self.root / "incoming"
         self._removed = self.root / "removed"
         self._keys = self.root / "keys"
@@ -119,14 +119,12 @@ class Store:
             durable.write(incoming / "job.json", document)
             durable.write(incoming / "record.json", record.as_bytes())
             durable.sync_folder(incoming)
-            self._state_index(QUEUED).add(record.id, sync=True)
-            if record.label is not None:
-                self._label_index(record.label).add(record.id, sync=True)
+            self.indexes.enter(record, sync=True)
             durable.move(incoming, target)
         except OSError:
             for half_done in (target, incoming):
                 shutil.rmtree(half_done, ignore_errors=True)
-            self._unindex(record, STATES)
+            self.indexes.drop(record.id, record.label)
             raise
 
     def probe(self) -> None:
@@ -187,8 +185,11 @@ class Store:
         if after is not None and not is_id(after):
             raise UnknownJobError(f"{after!r} is not a cursor of this listing")
         records: tuple[Record, ...] = ()
+        index = self.jobs if state is None else self.indexes.of_state(state)
+        if label is not None:
+            index = self.indexes.of_label(label)
         with _telling("the jobs could not be listed"):
-            for job_id in self._index(state, label).newest_first(after):
+            for job_id in index.newest_first(after):
                 record = self._readable(job_id)
                 if record and state in (None, record.state) and label in (None, record.label):
                     if len(records) == limit:
@@ -199,8 +200,7 @@ class Store:
     def unfinished(self) -> tuple[str, ...]:
         """Ids of all jobs that are queued or running, oldest first."""
         with _telling("the unfinished jobs could not be listed"):
-            found = {i for s in (QUEUED, RUNNING) for i in self._state_index(s).newest_first()}
-        return tuple(sorted(found))
+            return tuple(sorted(self.indexes.unfinished()))
 
     def _folder(self, job_id: str) -> Path:
         self.record(job_id)
@@ -320,7 +320,7 @@ class Store:
             removed = self._removed / job_id
             durable.make_folder(self._removed)
             durable.move(folder, removed)
-            self._unindex(record, STATES)
+            self.indexes.drop(job_id, record.label)
             if record.key:
                 (self._keys / record.key).unlink(missing_ok=True)
             shutil.rmtree(removed, ignore_errors=True)
@@ -330,26 +330,17 @@ class Store:
         with _telling("the job store could not be tidied"):
             for job_id in self.jobs.newest_first():
                 if record := self._readable(job_id):
-                    self._state_index(record.state).add(job_id)
-                    if record.label is not None:
-                        self._label_index(record.label).add(job_id)
+                    self.indexes.enter(record)
             shutil.rmtree(self._removed, ignore_errors=True)
             for path in self._incoming.iterdir() if self._incoming.is_dir() else ():
                 if time.time() - path.stat().st_mtime > ABANDONED:
                     shutil.rmtree(path) if path.is_dir() else path.unlink()
 
-    def tidy_index(self, record: Record) -> None:
-        """Take a job out of the indexes of all states but its own."""
-        for state in STATES:
-            if state != record.state:
-                self._state_index(state).discard(record.id)
-
     def forget_unknown(self, job_id: str) -> None:
         """Take out the index entries that a crash left for a job that never was."""
         # A job being accepted is in incoming/ until the moment it is in jobs/: look there first.
         if not (self._incoming / job_id).exists() and not self.jobs.path(job_id).exists():
-            for state in STATES:
-                self._state_index(state).discard(job_id)
+            self.indexes.drop(job_id)
 
     @contextmanager
     def _changing(self, job_id: str) -> Iterator[Path]:
@@ -362,33 +353,13 @@ class Store:
             yield folder
 
     def _replace(self, folder: Path, record: Record) -> Record:
-        self._state_index(record.state).add(record.id)
+        self.indexes.enter(record)
         durable.replace(folder / "record.json", record.as_bytes())
         # A job cancelled at work stays among the running ones until its worker, or the reconciler
         # in its place, has cleared away what it leaves.
         if not (record.is_final and (folder / STAGING).exists()):
-            self.tidy_index(record)
+            self.indexes.tidy(record)
         return record
-
-    # --- indexes ---------------------------------------------------------------------------------
-
-    def _state_index(self, state: str) -> Index:
-        return Index(self.root / "states" / state)
-
-    def _label_index(self, label: str) -> Index:
-        # The dot keeps "", "." and ".." from naming the folder itself or its parent.
-        return Index(self.root / "labels" / ("." + quote(label, safe=" ")))
-
-    def _index(self, state: str | None, label: str | None) -> Index:
-        if label is not None:
-            return self._label_index(label)
-        return self._state_index(state) if state is not None else self.jobs
-
-    def _unindex(self, record: Record, states: tuple[str, ...]) -> None:
-        for state in states:
-            self._state_index(state).discard(record.id)
-        if record.label is not None:
-            self._label_index(record.label).discard(record.id)
 
 
 @contextmanager

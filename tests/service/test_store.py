@@ -475,10 +475,10 @@ def test_an_index_entry_too_many_is_not_listed_and_can_be_tidied(store: Store) -
     """As after a crash between the record and the index."""
     done = accept(store)
     finish(store, done)
-    store._state_index("queued").add(done)
+    store.indexes.of_state("queued").add(done)
     assert store.list(state="queued").records == ()
     assert store.unfinished() == (done,)
-    store.tidy_index(store.record(done))
+    store.indexes.tidy(store.record(done))
     assert store.unfinished() == ()
     assert [r.id for r in store.list(state="finished").records] == [done]
 
