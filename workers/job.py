@@ -108,7 +108,7 @@ class Patch:
     name: str
     corners: tuple[Vector, Vector, Vector, Vector]
     divisions: tuple[int, int]  # along sides 1-2 and 2-3
-    grading: tuple[float, float] = (1.0, 1.0)  # last over first spacing along each direction
+    grading: tuple[float, float] = (1.0, 1.0)  # size at the end over size at the start
     sides: tuple[str | None, str | None, str | None, str | None] = (None, None, None, None)
     through: tuple[Vector | None, Vector | None, Vector | None, Vector | None] = (
         None, None, None, None,

@@ -119,6 +119,15 @@ def test_two_parts_each_held_leave_nothing_free() -> None:
     assert motions(TWO, *FIRST, (4, 1, 0), (4, 0, 1), (5, 0, 1)) == []
 
 
+def test_a_hundred_loose_parts_give_a_short_list() -> None:
+    corners = np.array([(0, 0), (1, 0), (1, 1), (0, 1)], float)
+    nodes = (corners + 3.0 * np.arange(100)[:, None, None]).reshape(-1, 2)
+    mesh = quads(nodes.tolist(), *np.arange(400).reshape(-1, 4).tolist())
+    found = motions(mesh, *FIRST)
+    assert len(found) == 21
+    assert found[-1] == "the plate has 79 more free motions"
+
+
 # --- hinges ----------------------------------------------------------------------------------
 
 HINGED = quads([(0, 0), (2, 0), (2, 1), (0, 1), (3, 1), (3, 2), (2, 2)], (0, 1, 2, 3), (2, 4, 5, 6))

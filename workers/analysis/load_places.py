@@ -4,7 +4,7 @@ What a load comes to is in `loads/`, which also says what only its figures can t
 not round, a material without density.
 """
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Hashable, Iterator, Mapping
 
 import numpy as np
 from numpy.typing import NDArray
@@ -35,21 +35,32 @@ Check = Callable[[Load, Selection, Mesh], str | None]
 
 def load_faults(job: Job, finder: Finder) -> Iterator[Fault]:
     """Loads that find no place on the mesh, or the wrong kind of place."""
-    for case in job.load_cases:
-        for load in case.loads:
-            if load.on is None:
-                if type(load) not in ON_AN_AREA:
-                    yield Fault(load.pointer, "this load needs `on`: where does it act?")
-                continue
-            try:
-                selection = finder.find(load.on, f"{load.pointer}/on")
-            except FaultyError as error:
-                yield from error.faults
-                continue
-            messages = (check(load, selection, finder.mesh) for check in CHECKS[type(load)])
-            first = next((message for message in messages if message), None)
-            if first:
-                yield Fault(f"{load.pointer}/on", first)
+    known: dict[Hashable, str | None] = {}  # hundreds of cases load the same places
+    for load in (load for case in job.load_cases for load in case.loads):
+        if load.on is None:
+            if type(load) not in ON_AN_AREA:
+                yield Fault(load.pointer, "this load needs `on`: where does it act?")
+            continue
+        try:
+            selection = finder.find(load.on, f"{load.pointer}/on")
+        except FaultyError as error:
+            yield from error.faults
+            continue
+        key = (type(load), load.on, _varies(load))
+        if key not in known:
+            known[key] = _misplaced(load, selection, finder.mesh)
+        if message := known[key]:
+            yield Fault(f"{load.pointer}/on", message)
+
+
+def _misplaced(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    """Why the load cannot act there, or None."""
+    messages = (check(load, selection, mesh) for check in CHECKS[type(load)])
+    return next((message for message in messages if message), None)
+
+
+def _varies(load: Load) -> bool:
+    return isinstance(load, VARYING) and not np.array_equal(load.start, load.end)
 
 
 def _is_a_point(load: Load, selection: Selection, mesh: Mesh) -> str | None:
@@ -82,7 +93,7 @@ def _is_border(load: Load, selection: Selection, mesh: Mesh) -> str | None:
 
 
 def _is_one_side_if_varying(load: Load, selection: Selection, mesh: Mesh) -> str | None:
-    if not isinstance(load, VARYING) or np.array_equal(load.start, load.end):
+    if not _varies(load):
         return None
     try:
         mesh.chain(selection.facets)

@@ -16,6 +16,8 @@ from workers.analysis.rigid import Part, at, name_motions, null_space, rigid_row
 
 Array = NDArray[np.float64]
 
+MOST_SENTENCES = 20
+
 
 def free_motions(mesh: Mesh, nodes: NDArray, directions: Array) -> list[str]:
     """Say which parts of a supported plate are free to move, and how.
@@ -42,6 +44,8 @@ def free_motions(mesh: Mesh, nodes: NDArray, directions: Array) -> list[str]:
         if number in joined:
             motions += loose_joints(mesh, joined[number], part, own, held)
         sentences += [f"{_name(number, part, mesh)} {motion}" for motion in motions]
+    if (more := len(sentences) - MOST_SENTENCES) > 0:
+        sentences[MOST_SENTENCES:] = [f"the plate has {more} more free motions"]
     return sentences
 
 

@@ -117,7 +117,7 @@ class PatchSchema(Record):
     )
     grading = ListOf(
         Number("Ratio", least=1e-3, most=1e3),
-        "Last over first spacing along the sides 1-2 and 2-3; [1, 1] is even",
+        "Size at the end over size at the start, of sides 1-2 and 2-3; [1, 1] is even",
         least=2,
         most=2,
     )

@@ -12,8 +12,8 @@ import numpy as np
 from numpy.typing import NDArray
 
 from workers.analysis.connected import label_components
-from workers.analysis.meshing.curves import Curve, NoArcError, curve
-from workers.analysis.nearby import close_pairs
+from workers.analysis.meshing.curves import Arc, Curve, NoArcError, curve
+from workers.analysis.nearby import SKEW, close_pairs
 from workers.analysis.selection import TOLERANCE
 from workers.errors import Fault
 from workers.job import Patch
@@ -196,15 +196,27 @@ def _hanging_corner_faults(
     """No corner of a patch may lie inside a side of another."""
     _, first = np.unique(vertices, return_index=True)
     corners = np.array([patches[k // 4].corners[k % 4] for k in first])
-    for side, own in zip(sides, ends, strict=True):
-        near = np.flatnonzero(side.curve.distance(corners) <= tolerance)
-        for vertex in np.setdiff1d(near, own):
+    order = np.argsort(corners @ SKEW)
+    along = (corners @ SKEW)[order]
+    for side, own in zip(sides, ends.tolist(), strict=True):
+        low, high = _extent(side.curve)
+        start, stop = np.searchsorted(along, (low - tolerance, high + tolerance))
+        beside = order[start:stop]
+        near = beside[side.curve.distance(corners[beside]) <= tolerance]
+        for vertex in near[~np.isin(near, own)]:
             patch, corner = divmod(int(first[vertex]), 4)
             yield Fault(
                 f"{patches[patch].pointer}/corners/{corner}",
                 f"corner {corner + 1} of patch {patches[patch].name!r}, {_at(corners[vertex])}, "
                 f"lies inside {side}; patches must share whole sides: split that patch there",
             )
+
+
+def _extent(side: Curve) -> tuple[float, float]:
+    """Bounds of a side in the direction SKEW; generous for an arc."""
+    ends = sorted((float(side.start @ SKEW), float(side.end @ SKEW)))
+    bulge = 2 * side.radius if isinstance(side, Arc) else 0.0
+    return ends[0] - bulge, ends[1] + bulge
 
 
 def _at(point: Array | tuple[float, float] | None) -> str:
