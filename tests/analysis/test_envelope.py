@@ -6,9 +6,11 @@ import pytest
 from tests.exact_solutions import kirsch, solve_with_exact_border
 from tests.plates import ELEMENTS, grid, plate_job, warp
 from workers.analysis.envelope import WORST, Envelope, measures
+from workers.analysis.error_estimate import error_stress, estimate_error
+from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.model import build_model
-from workers.analysis.peaks import find_peaks, find_utilisation
-from workers.analysis.recovery import Recovery
+from workers.analysis.peaks import SAFETY, Peak, find_peaks, find_utilisation
+from workers.analysis.recovery import Recovery, Temperature
 
 E, NU = 1000.0, 0.3
 
@@ -60,62 +62,70 @@ def _hole(kind: str, cells: int) -> Recovery:
     return Recovery.build(build_model(job, grid(kind, cells, cells, shape=shape)))
 
 
+def _peaks(recovery: Recovery, u: np.ndarray, heat: Temperature = None) -> dict[str, Peak]:
+    stress = recovery.nodal_stress(u, heat)
+    error = error_stress(recovery.model, estimate_error(recovery, u, stress, heat))
+    values = measures(u[recovery.field_mesh.origin], stress)
+    return find_peaks(recovery.field_mesh, values, error)
+
+
 @pytest.mark.parametrize("kind", ELEMENTS)
 @pytest.mark.parametrize("cells", [4, 8, 16])
 def test_error_of_the_peak_covers_the_true_error(kind: str, cells: int) -> None:
     """Kirsch: the peak at the hole is 3; the estimate must not be smaller than what is missing."""
     recovery = _hole(kind, cells)
-    u = solve_with_exact_border(recovery.model, kirsch(E, NU))
-    stress = recovery.nodal_stress(u)
-    values = measures(u[recovery.field_mesh.origin], stress)
+    peaks = _peaks(recovery, solve_with_exact_border(recovery.model, kirsch(E, NU)))
     for name in ("von_mises", "principal_max"):
-        peak = find_peaks(recovery, values, u, stress)[name]
-        assert peak.error is not None
-        print(f"{kind} {cells}: {name} {peak.value[0]:.3f} +- {peak.error[0]:.3f}, exact 3")
-        assert abs(peak.value[0] - 3) <= peak.error[0]
+        value, error = peaks[name].value[0], peaks[name].error[0]  # type: ignore[index]
+        print(f"{kind} {cells}: {name} {value:.3f} +- {error:.3f}, exact 3")
+        assert abs(value - 3) <= error
 
 
 @pytest.mark.parametrize("kind", ELEMENTS)
 def test_error_of_the_peak_shrinks_with_the_elements(kind: str) -> None:
-    """To a quarter of the size; the raw stress of T3 converges with its first power, so to less
-    than half of the error."""
+    """To a quarter of the size; the raw stress of T3 and Q4 converges with its first power, so
+    to less than half of the error."""
     errors = []
     for cells in (6, 24):
         recovery = _hole(kind, cells)
-        u = solve_with_exact_border(recovery.model, kirsch(E, NU))
-        stress = recovery.nodal_stress(u)
-        values = measures(u[recovery.field_mesh.origin], stress)
-        errors.append(find_peaks(recovery, values, u, stress)["von_mises"].error[0])  # type: ignore[index]
+        peaks = _peaks(recovery, solve_with_exact_border(recovery.model, kirsch(E, NU)))
+        errors.append(peaks["von_mises"].error[0])  # type: ignore[index]
     assert errors[1] < errors[0] / 2
+
+
+def test_error_of_a_peak_is_that_of_the_worst_element_around_it() -> None:
+    """Point 4 is the middle of 2 x 2 squares; the two states peak there and in a corner."""
+    field_mesh = FieldMesh.build(grid("Q4", 2, 2))
+    values = {name: np.zeros((9, 2)) for name in WORST}
+    middle = int(np.linalg.norm(field_mesh.points - 0.5, axis=1).argmin())
+    values["von_mises"][middle, 0] = values["von_mises"][0, 1] = 10.0
+    error = np.array([[1.0, 5.0], [2.0, 6.0], [3.0, 7.0], [4.0, 8.0]])
+    only = int(np.flatnonzero((field_mesh.connectivity[0] == 0).any(axis=1))[0])
+    found = find_peaks(field_mesh, values, (error,))["von_mises"]
+    assert found.error is not None
+    assert found.error.tolist() == [SAFETY * 4.0, SAFETY * error[only, 1]]
 
 
 def test_peaks_of_several_states_are_those_of_each_alone() -> None:
     recovery = Recovery.build(build_model(plate_job(), grid("T6+Q8", 6, 4, shape=warp)))
     u = np.random.default_rng(2).random((recovery.model.mesh.node_count, 2, 4))
     heat = tuple(np.full((b.element_count, 4), 10.0) for b in recovery.model.mesh.blocks)
-    stress = recovery.nodal_stress(u, heat)
-    together = find_peaks(
-        recovery, measures(u[recovery.field_mesh.origin], stress), u, stress, heat
-    )
+    together = _peaks(recovery, u, heat)
     for k in range(4):
         one = slice(k, k + 1)
-        cool = tuple(block[:, one] for block in heat)
-        values = measures(u[recovery.field_mesh.origin][:, :, one], stress[:, :, one])
-        alone = find_peaks(recovery, values, u[:, :, one], stress[:, :, one], cool)
-        for name, peak in alone.items():
-            assert peak.value[0] == together[name].value[k]
+        for name, peak in _peaks(recovery, u[:, :, one], tuple(t[:, one] for t in heat)).items():
+            assert peak.value[0] == pytest.approx(together[name].value[k], rel=1e-12)
             assert peak.point[0] == together[name].point[k]
             if peak.error is not None:
-                assert together[name].error[k] == pytest.approx(peak.error[0])  # type: ignore[index]
+                assert peak.error[0] == pytest.approx(together[name].error[k])  # type: ignore[index]
 
 
 def test_uniform_stress_has_a_peak_without_error() -> None:
     recovery = Recovery.build(build_model(plate_job(), grid("Q8", 3, 3, shape=warp)))
     u = np.zeros((recovery.model.mesh.node_count, 2, 1))
     u[:, 0, 0] = 1e-3 * recovery.model.mesh.nodes[:, 0]
-    stress = recovery.nodal_stress(u)
-    peak = find_peaks(recovery, measures(u[recovery.field_mesh.origin], stress), u, stress)
-    assert peak["von_mises"].error[0] < 1e-8 * peak["von_mises"].value[0]  # type: ignore[index]
+    peak = _peaks(recovery, u)["von_mises"]
+    assert peak.error[0] < 1e-8 * peak.value[0]  # type: ignore[index]
 
 
 def test_utilisation_takes_the_strength_of_each_point() -> None:

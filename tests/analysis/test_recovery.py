@@ -10,7 +10,7 @@ from tests.plates import ELEMENTS, MIXED, annulus, grid, plate_job, warp
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.mesh import Block, Mesh
 from workers.analysis.model import build_model
-from workers.analysis.patch_recovery import recovery_operator, sample_positions
+from workers.analysis.patch_recovery import border_corners, recovery_operator, sample_positions
 from workers.analysis.recovery import Recovery, raw_stress
 from workers.job import Region
 
@@ -29,10 +29,18 @@ def _order(kind: str) -> int:
 
 
 def _recover(field_mesh: FieldMesh, field: Field) -> np.ndarray:
-    """Sample a field at the superconvergent points and recover it at the field points."""
-    blocks = range(len(field_mesh.mesh.blocks))
-    xy = np.concatenate([sample_positions(field_mesh, b).reshape(-1, 2) for b in blocks])
-    return recovery_operator(field_mesh) @ field(*xy.T)
+    """Sample a field where the operator wants it and recover it at the field points.
+
+    Border anchors are sampled inside their own region, so a field may jump between regions.
+    """
+    samples, anchors = [], []
+    for number, points in enumerate(field_mesh.connectivity):
+        samples.append(sample_positions(field_mesh, number).reshape(-1, 2))
+        centre = field_mesh.points[points].mean(axis=1)
+        for corner, elements in enumerate(border_corners(field_mesh, number)):
+            at = field_mesh.points[points[elements, corner]]
+            anchors.append(at + 1e-12 * (centre[elements] - at))
+    return recovery_operator(field_mesh) @ field(*np.concatenate(samples + anchors).T)
 
 
 def _misfit(field_mesh: FieldMesh, field: Field) -> float:

@@ -13,7 +13,7 @@ from scipy.sparse import csr_array
 
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.model import Model
-from workers.analysis.patch_recovery import recovery_operator
+from workers.analysis.patch_recovery import border_corners, recovery_operator
 from workers.analysis.plane_stress import thermal_strain
 
 Array = NDArray[np.float64]
@@ -28,7 +28,7 @@ class Recovery:
 
     model : Model
     field_mesh : FieldMesh        its P points carry the recovered stress
-    operator : (P, Q) matrix      from the Q superconvergent samples
+    operator : (P, Q) matrix      from the Q samples, see `patch_recovery.recovery_operator`
     """
 
     model: Model
@@ -41,17 +41,23 @@ class Recovery:
         return cls(model, field_mesh, recovery_operator(field_mesh))
 
     def sample_stress(self, displacement: Array, temperature: Temperature = None) -> Array:
-        """The elements' stress at their superconvergent points, (Q, 3, k) [F/L^2].
+        """The elements' stress at the samples of the operator, (Q, 3, k) [F/L^2].
 
         displacement : (N, 2, k) [L]; temperature : for each block (m, k) [K].
         """
-        sampled = [
-            raw_stress(
-                self.model, number, block.element.recovery_points(), displacement, temperature
-            ).reshape(-1, 3, displacement.shape[2])
-            for number, block in enumerate(self.model.mesh.blocks)
-        ]
-        return sampled[0] if len(sampled) == 1 else np.concatenate(sampled)
+        states = displacement.shape[2]
+        samples, anchors = [], []
+        for number, block in enumerate(self.model.mesh.blocks):
+            own = block.element.recovery_points()
+            stress = raw_stress(self.model, number, own, displacement, temperature)
+            samples.append(stress.reshape(-1, 3, states))
+            for corner, elements in enumerate(border_corners(self.field_mesh, number)):
+                at = block.element.natural_nodes[[corner]]
+                stress = raw_stress(
+                    self.model, number, at, displacement, temperature, elements=elements
+                )
+                anchors.append(stress[:, 0])
+        return np.concatenate(samples + anchors)
 
     def nodal_stress(self, displacement: Array, temperature: Temperature = None) -> Array:
         """Recovered stress at the field points, (P, 3, k) [F/L^2]."""

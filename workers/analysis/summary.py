@@ -13,7 +13,7 @@ from numpy.typing import NDArray
 from workers.analysis.combine import States, superpose, superpose_blocks
 from workers.analysis.cuts import cut_forces
 from workers.analysis.envelope import WORST, Envelope, measures
-from workers.analysis.error_estimate import element_volumes, estimate_error
+from workers.analysis.error_estimate import element_volumes, error_stress, estimate_error
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.loads.kinds import Places
 from workers.analysis.model import Model
@@ -114,7 +114,7 @@ def _strain_and_stress(
     values = measures(at_points, stress)
     if envelope is not None:
         envelope.include(columns, values)
-    peaks = find_peaks(recovery, values, displacement, stress, temperature)
+    peaks = find_peaks(field_mesh, values, error_stress(solution.model, estimate))
     results: list[Json] = [
         {name: _peak(peak, row, field_mesh) for name, peak in peaks.items()}
         for row in range(len(columns))
