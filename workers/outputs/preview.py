@@ -95,7 +95,8 @@ def render_deformed(
     subtitle = f"{fields.name} · Deformed shape, displacements drawn {TIMES} {show(factor, 1)}"
     page = Page(job.title, subtitle, cautions)
     draw_deformed(page, job, mesh, fields, factor)
-    page.save(path, _facts(fields.name, "deformed", job.units.length))
+    facts = _facts(fields.name, "deformed", job.units.length)
+    page.save(path, {**facts, "Scale": show(factor, 1)})
 
 
 def _with_factors(job: Job, state: str) -> str:

@@ -28,6 +28,7 @@ Limits = tuple[float, float]
 # A stress below this part of Young's modulus, or of the state's largest stress, is rounding.
 ROUNDING_OF_MODULUS, ROUNDING_OF_STATE = 1e-12, 1e-9
 DEFORMED_PART = 0.07  # the largest displacement is drawn as about this part of the plate's diagonal
+EVEN = 1e-7  # of the range: a smaller difference across a piece of an element is rounding
 AIR = 34  # between the plate and the edge of its room, for the peak's mark [pixels]
 TICK_SPACING = 44.0  # of the ticks along principal directions [pixels]
 CALLOUT = 62  # above and below the plate, for the peak's label [pixels]
@@ -146,8 +147,12 @@ def _fill(page: Page, view: View, surface: Surface, values: Array, scale: Scale)
         limits=scale.reach,
     )
     sheet = Canvas(WIDTH, HEIGHT)
-    for level in scale.ticks:
-        for line in isolines(points, surface.triangles, values, level):
+    corners = values[surface.triangles]
+    # Where the field is even up to rounding, a line would wander.
+    sloping = np.ptp(corners, axis=1) > EVEN * (scale.high - scale.low)
+    for level in filter(None, scale.ticks):
+        crossed = sloping & (corners.min(axis=1) <= level) & (corners.max(axis=1) >= level)
+        for line in isolines(points, surface.triangles[crossed], values, level):
             draw_isoline(sheet, line, level)
     page.paper = over(painted, sheet.pixels())
 
@@ -176,7 +181,9 @@ def _draw_directions(
     xx, yy, xy = stress[chosen].T
     angle = 0.5 * np.arctan2(2 * xy, xx - yy) + (np.pi / 2 if quantity.peak is np.argmin else 0.0)
     half = 0.3 * TICK_SPACING * np.column_stack((np.cos(angle), np.sin(angle)))
-    canvas.line(np.stack((centres[chosen] - half, centres[chosen] + half), axis=1), INK, 2.0)
+    ticks = np.stack((centres[chosen] - half, centres[chosen] + half), axis=1)
+    canvas.line(ticks, PAPER, 4.6, alpha=0.75)  # so that they show on the dark end of the map
+    canvas.line(ticks, INK, 2.0)
 
 
 # --- deformed shape ------------------------------------------------------------------------------

@@ -31,6 +31,7 @@ LEADER_FROM = 10  # a gap between label and anchor that needs a line to bridge i
 # Costs; distance costs 1 per pixel.
 ON_INK, ON_PLATE = 40.0, 1.0  # per cell under the label
 CROSSING_INK, CROSSING_PLATE = 10.0, 0.6  # per pixel of leader
+OUTSIDE = 100.0  # per pixel
 WRONG_WAY = 45.0  # for going away from the wanted direction, twice that for the opposite
 LEFT: Align = "left"
 RIGHT: Align = "right"
@@ -58,7 +59,7 @@ def layouts(name: str, lines: Sequence[str]) -> list[list[str]]:
     """A name and what there is to say of it: behind the name, below it, and narrower still."""
     head = [f"{name}:"] if name else []
     below = [*head, *lines]
-    narrow = [*head, *(part for line in lines for part in _halves(line))]
+    narrow = [part for line in below for part in _halves(line)]
     beside = [f"{name}: {lines[0]}", *lines[1:]] if name and lines else below
     return [beside, below, narrow]
 
@@ -136,7 +137,8 @@ class Labels:
     def place(self, label: Label) -> Box:
         """Draw a label where it costs least and say where it went."""
         chosen, cheapest = None, np.inf
-        for rank, lines in enumerate(label.layouts):
+        for rank, layout in enumerate(label.layouts):
+            lines = [self._canvas.fit(line, LABEL_SIZE, self._room.width) for line in layout]
             extent = self._extent(lines, label.bold)
             places = self._candidates(label, extent)
             cost = self._costs(places, label) + 4.0 * rank
@@ -159,7 +161,7 @@ class Labels:
         direction = np.column_stack((np.cos(ANGLES), np.sin(ANGLES)))
         distance = np.array(DISTANCES, float)[:, None, None]
         # The side of the box that faces the anchor lies at about this distance from it.
-        middle = (label.anchor + direction * (distance + extent / 2)).reshape(-1, 2)
+        middle: Array = (label.anchor + direction * (distance + extent / 2)).reshape(-1, 2)
         if label.covering:
             middle = np.vstack((label.anchor, middle))
         half = extent / 2
@@ -167,8 +169,9 @@ class Labels:
         room_high = np.array([self._room.right, self._room.top])
         inside = ((middle - half >= room_low) & (middle + half <= room_high)).all(axis=1)
         if not inside.any():
-            middle = np.clip(label.anchor, room_low + half, np.maximum(room_low, room_high) - half)
-            return _Places(middle[None] - half, middle[None] + half)
+            lowest = room_low + half
+            middle = np.clip(label.anchor, lowest, np.maximum(lowest, room_high - half))[None]
+            inside = np.ones(1, bool)
         return _Places(middle[inside] - half, middle[inside] + half)
 
     def _costs(self, places: _Places, label: Label) -> Array:
@@ -178,7 +181,8 @@ class Labels:
         along = label.anchor + steps * (ends - label.anchor)
         crossed = CROSSING_INK * self._ink.part_of(along)
         crossed += CROSSING_PLATE * self._plate.part_of(along)
-        cost = gap + gap * crossed + ON_INK * self._ink.under(places)
+        outside = np.maximum(0.0, places.high - [self._room.right, self._room.top]).sum(axis=1)
+        cost = gap + gap * crossed + ON_INK * self._ink.under(places) + OUTSIDE * outside
         if not label.covering:
             cost += ON_PLATE * self._plate.under(places)
         if label.toward is not None:

@@ -124,6 +124,11 @@ def _tick(canvas: Canvas, ends: list[tuple[float, float]], value: float) -> None
 
 
 def draw_isoline(canvas: Canvas, points: NDArray[np.floating[Any]], value: float) -> None:
-    """Solid where the value is positive, dashed where negative, heavy at zero."""
-    dash = NEGATIVE_DASH if value < 0 else None
-    canvas.line(points, INK, 2 * ISOLINE if value == 0 else ISOLINE, dash=dash, alpha=0.55)
+    """Solid where the value is positive, dashed where negative, so that a grey print tells them.
+
+    None at zero: along a free edge a principal stress is zero up to its error, and the line would
+    wander.
+    """
+    if value != 0:
+        dash = NEGATIVE_DASH if value < 0 else None
+        canvas.line(points, INK, ISOLINE, dash=dash, alpha=0.55)

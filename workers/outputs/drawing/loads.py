@@ -212,9 +212,11 @@ def _draw_arrows(canvas: Canvas, base: Array, outward: Array, step: Array) -> Ar
     The far ends of neighbours that push (or pull) alike are joined by a line.
     """
     size = np.linalg.norm(step, axis=1)
+    tail: Array
+    far: Array
     if _lies_along(step, outward):
         tail = base + 2 * GAP * outward - step / 2
-        tip = far = tail + step
+        far = tip = tail + step
     else:
         pulls = np.einsum("ij,ij->i", step, outward) > 0
         tail = base - np.where(pulls[:, None], 0.0, step)
@@ -224,7 +226,7 @@ def _draw_arrows(canvas: Canvas, base: Array, outward: Array, step: Array) -> Ar
             _join(canvas, far, kind & (size > 1e-6 * size.max()))
     for number in np.flatnonzero(size > SHORTEST):
         arrow(canvas, tail[number], tip[number], LOAD, width=2.2)
-    return np.asarray(far)
+    return far
 
 
 def _join(canvas: Canvas, far: Array, chosen: NDArray[np.bool_]) -> None:

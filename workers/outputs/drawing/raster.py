@@ -75,6 +75,8 @@ def isolines(
     points: Array, triangles: NDArray[np.int64], values: Array, level: float
 ) -> list[Array]:
     """Polylines (n, 2) where the value is `level`."""
+    if not len(triangles):
+        return []
     surface = _polydata(points, triangles)
     surface["value"] = values
     lines = surface.contour([level], scalars="value")
