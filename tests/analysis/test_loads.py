@@ -183,7 +183,7 @@ def test_free_expansion_has_no_resultant(kind: str) -> None:
     model = build_model(plate_job((), [TemperatureChange(change=50.0)]), mesh)
     loads = resolve_loads(model)
     forces = np.zeros((mesh.node_count, 2, 1))
-    loads.heating.add_forces(forces, slice(0, 1))
+    loads.heating.add_forces(forces, slice(0, 1), np.arange(mesh.node_count))
     assert np.abs(forces).max() > 1.0
     np.testing.assert_allclose(_resultant(mesh, forces[:, :, 0]), 0, atol=1e-9)
     assert not loads.applied.any()

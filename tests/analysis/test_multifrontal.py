@@ -178,7 +178,7 @@ def test_fronts_hold_the_whole_factor(name: str) -> None:
 
 
 def test_fronts_store_few_zeros() -> None:
-    """Fronts hold more than the factor itself, whose entries SuperLU counts; by half at this size."""
+    """Fronts hold more than the factor itself, whose entries SuperLU counts; by half here."""
     mesh = grid("Q8", 40, 40, shape=warp)
     analysis, K = _system(mesh)
     entries = SuperLUFactor(K).entries / 2  # L and U

@@ -4,10 +4,12 @@ import dataclasses
 
 import numpy as np
 import pytest
+from scipy.sparse import csr_array
 
 from tests.plates import ELEMENTS, MIXED, grid, plate_job, ring, warp
 from workers.analysis.mesh import Block, Mesh
 from workers.analysis.solution import Solution, solve
+from workers.analysis.solver import Plan, SuperLUFactor
 from workers.errors import AnalysisError, MechanismError
 from workers.job import (
     Acceleration,
@@ -263,6 +265,48 @@ def test_many_cases_are_solved_in_blocks(monkeypatch: pytest.MonkeyPatch) -> Non
     np.testing.assert_allclose(
         solution.displacement, first * np.arange(1, 20), rtol=1e-10, atol=1e-16
     )
+
+
+@pytest.mark.parametrize("kind", ELEMENTS + MIXED)
+def test_multifrontal_and_superlu_agree(kind: str) -> None:
+    """The library's factor on the same order is the cross-check of our own."""
+    mesh = grid(kind, 12, 8, shape=warp, shuffle=4)
+    job = plate_job(SUPPORTS["settlement"], {"a": [LOADS["spin"]], "b": [LOADS["traction"]]})
+    ours, library = (solve(job, mesh, method=name) for name in ("multifrontal", "superlu"))
+    assert (ours.solver.name, library.solver.name) == ("multifrontal Cholesky", "SuperLU")
+    np.testing.assert_allclose(
+        ours.displacement, library.displacement, atol=1e-9 * np.abs(ours.displacement).max()
+    )
+
+
+class _Sloppy:
+    """A factor that is wrong by a percent, or by half."""
+
+    name, entries = "sloppy", 1
+
+    def __init__(self, matrix: csr_array, error: float) -> None:
+        self._sound, self._error = SuperLUFactor(matrix), error
+
+    def solve(self, block: np.ndarray) -> np.ndarray:
+        return self._sound.solve(block) * (1 + self._error)
+
+
+@pytest.mark.parametrize(
+    ("error", "name"), [(1e-8, "sloppy"), (0.5, "SuperLU")], ids=["refined", "replaced"]
+)
+def test_poor_factor_is_refined_once_and_then_replaced(
+    error: float, name: str, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr(Plan, "factorise", lambda _, matrix: _Sloppy(matrix, error))
+    mesh = grid("Q8", 4, 4)
+    job = plate_job([CLAMP], [TotalForce(on=RIGHT, force=(1.0, 2.0))])
+    solution = solve(job, mesh)
+    monkeypatch.undo()
+    assert solution.solver.name == name
+    assert solution.solver.refinements == 1
+    assert solution.solver.residual[0] < 1e-10
+    expected = solve(job, mesh).displacement
+    np.testing.assert_allclose(solution.displacement, expected, atol=1e-10 * np.abs(expected).max())
 
 
 # --- the report --------------------------------------------------------------------------------

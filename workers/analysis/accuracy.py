@@ -2,7 +2,7 @@
 
 import numpy as np
 from numpy.typing import NDArray
-from scipy.sparse import bsr_array
+from scipy.sparse import sparray
 
 from workers.analysis.solver import Factor
 
@@ -11,11 +11,11 @@ Array = NDArray[np.float64]
 
 def relative_residual(residual: Array, load: Array) -> Array:
     """Norm of what is out of balance over the norm of the load, by column; 0 without a load."""
-    out, norm = np.linalg.norm(residual, axis=0), np.linalg.norm(load, axis=0)
+    out, norm = (np.sqrt(np.einsum("ij,ij->j", a, a)) for a in (residual, load))
     return np.divide(out, norm, out=np.zeros_like(out), where=norm > 0)
 
 
-def backward_error(matrix: bsr_array, solution: Array, load: Array, residual: Array) -> Array:
+def backward_error(matrix: sparray, solution: Array, load: Array, residual: Array) -> Array:
     """Largest relative change of matrix and load entries that explains the residual, by column.
 
     About 1e-16 whatever the condition of the matrix, if the factor is a good one: it tells a
@@ -26,7 +26,7 @@ def backward_error(matrix: bsr_array, solution: Array, load: Array, residual: Ar
     Arioli, Demmel & Duff, "Solving sparse linear systems with sparse backward error", SIAM J.
     Matrix Anal. Appl. 10 (1989), with their rule for rows whose terms are all tiny.
     """
-    size = bsr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape)
+    size = abs(matrix)
     terms = size @ np.abs(solution) + np.abs(load)
     row_norms = (size @ np.ones(matrix.shape[0]))[:, None]
     largest = np.abs(solution).max(axis=0)
@@ -36,7 +36,7 @@ def backward_error(matrix: bsr_array, solution: Array, load: Array, residual: Ar
     return ratio.max(axis=0)
 
 
-def weakest_motion(matrix: bsr_array, factor: Factor, steps: int = 3) -> tuple[float, Array]:
+def weakest_motion(matrix: sparray, factor: Factor, steps: int = 3) -> tuple[float, Array]:
     """Reciprocal condition of the matrix scaled to a unit diagonal, and the motion behind it.
 
     A few steps of inverse iteration; the Rayleigh quotient comes down to the smallest eigenvalue
@@ -53,9 +53,7 @@ def weakest_motion(matrix: bsr_array, factor: Factor, steps: int = 3) -> tuple[f
     Wilkinson, *The Algebraic Eigenvalue Problem*, ch. 9 (inverse iteration).
     """
     scale = 1.0 / np.sqrt(matrix.diagonal())
-    row_sums = (
-        bsr_array((np.abs(matrix.data), matrix.indices, matrix.indptr), shape=matrix.shape) @ scale
-    )
+    row_sums = np.asarray(abs(matrix) @ scale)
     largest = float((scale * row_sums).max())
     v = np.random.default_rng(0).standard_normal(matrix.shape[0])  # no motion is orthogonal to it
     smallest = largest

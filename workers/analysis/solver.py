@@ -56,7 +56,7 @@ class SuperLUFactor:
 
     name = "SuperLU"
 
-    def __init__(self, matrix: bsr_array) -> None:
+    def __init__(self, matrix: bsr_array | csr_array) -> None:
         rows = matrix.tocsr()
         columns = csc_array((rows.data, rows.indices, rows.indptr), shape=rows.shape)  # symmetric
         # panel_size and relax stay at their defaults: other values have crashed at solve time.

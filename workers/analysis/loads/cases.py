@@ -8,9 +8,10 @@ from numpy.typing import NDArray
 
 from workers.analysis.loads.area import Area
 from workers.analysis.loads.kinds import Places, nodal_load
+from workers.analysis.loads.volume import VOLUME_LOADS, VolumeTotals, volume_load
 from workers.analysis.model import Model
 from workers.errors import Fault, FaultyError, MeshError
-from workers.job import Load, TemperatureChange
+from workers.job import TemperatureChange
 
 Array = NDArray[np.float64]
 
@@ -26,11 +27,14 @@ class Heating:
     areas: tuple[Area, ...]
     change: Array
 
-    def add_forces(self, forces: Array, cases: slice) -> None:
-        """Add the nodal forces of free expansion to (N, 2, k) forces of some cases [F]."""
+    def add_forces(self, forces: Array, cases: slice, position: NDArray) -> None:
+        """Add the nodal forces of free expansion to (N, 2, k) forces of some cases [F].
+
+        position (N,) : row of each node in the forces.
+        """
         for area, change in zip(self.areas, self.change[:, cases], strict=True):
             if change.any():
-                forces[area.nodes] += area.heating[..., None] * change
+                forces[position[area.nodes]] += area.heating[..., None] * change
 
     def by_element(self, model: Model) -> tuple[Array, ...] | None:
         """Temperature change of every element, (m, c) for each block; None if there is none."""
@@ -62,28 +66,29 @@ def resolve_loads(model: Model) -> Loads:
     cases = model.job.load_cases
     applied = np.zeros((model.mesh.node_count, 2, len(cases)))
     places = Places(model)
-    areas: dict[Hashable, tuple[Area, Array]] = {}
+    volumes: dict[Hashable, tuple[Area, VolumeTotals]] = {}
+    heated: dict[Hashable, tuple[Area, Array]] = {}
     faults: list[Fault] = []
     for number, load in ((n, load) for n, case in enumerate(cases) for load in case.loads):
         try:
-            if isinstance(load, TemperatureChange):
-                _, change = areas.setdefault(
-                    load.on, (_heated_area(load, places), np.zeros(len(cases)))
-                )
-                change[number] += load.change
+            if isinstance(load, VOLUME_LOADS):
+                found = volume_load(load, places)
+                place = (places.area(load), VolumeTotals(len(cases)))
+                volumes.setdefault(load.on, place)[1].add(found, number)
+            elif isinstance(load, TemperatureChange):
+                field = (_heated_area(load, places), np.zeros(len(cases)))
+                heated.setdefault(load.on, field)[1][number] += load.change
             else:
-                _add(load, places, applied[:, :, number])
+                at = nodal_load(load, places)
+                applied[at.nodes, :, number] += at.force
         except FaultyError as error:
             faults.extend(error.faults)
     if faults:
         raise MeshError(faults)
-    change = np.array([change for _, change in areas.values()]).reshape(-1, len(cases))
-    return Loads(applied, Heating(tuple(area for area, _ in areas.values()), change))
-
-
-def _add(load: Load, places: Places, applied: Array) -> None:
-    found = nodal_load(load, places)
-    applied[found.nodes] += found.force
+    for area, totals in volumes.values():
+        totals.add_forces(area, applied)
+    change = np.array([change for _, change in heated.values()]).reshape(-1, len(cases))
+    return Loads(applied, Heating(tuple(area for area, _ in heated.values()), change))
 
 
 def _heated_area(load: TemperatureChange, places: Places) -> Area:

@@ -1,4 +1,4 @@
-"""One function for each kind of load: the nodal forces that it stands for."""
+"""One function for each kind of load at a point or on a side: the nodal forces it stands for."""
 
 from collections.abc import Hashable
 from dataclasses import dataclass, field
@@ -14,16 +14,13 @@ from workers.analysis.model import Model
 from workers.analysis.selection import select
 from workers.errors import Fault, MeshError
 from workers.job import (
-    Acceleration,
     Bearing,
-    BodyForce,
     LineLoad,
     Load,
     Named,
     PointForce,
     Pressure,
     Shear,
-    Spin,
     Target,
     TotalForce,
     TotalMoment,
@@ -110,13 +107,13 @@ def _facet_codes(facets: NDArray) -> NDArray[np.int64]:
 
 @singledispatch
 def nodal_load(load: Load, places: Places) -> NodalLoad:
-    """Nodal forces of a mechanical load.
+    """Nodal forces of a load at a point or on a side.
 
     Raises
     ------
     MeshError   the load cannot act where the document puts it, or a property is missing.
     """
-    raise TypeError(f"{type(load).__name__} is not a mechanical load")
+    raise TypeError(f"{type(load).__name__} does not act at a point or on a side")
 
 
 @nodal_load.register
@@ -204,27 +201,6 @@ def _(load: Bearing, places: Places) -> tuple[Side, Array]:
     side = places.free_side(load)
     positions = places.model.mesh.nodes[side.nodes]
     return side, bearing_load(side, positions, load.force, load.pointer)
-
-
-@nodal_load.register
-def _(load: BodyForce, places: Places) -> NodalLoad:
-    area = places.area(load)
-    return NodalLoad(area.nodes, np.outer(area.volume, load.force))
-
-
-@nodal_load.register
-def _(load: Acceleration, places: Places) -> NodalLoad:
-    area = places.area(load)
-    area.require("density", "density", load.pointer)
-    return NodalLoad(area.nodes, np.outer(area.mass[:, 0], load.acceleration))
-
-
-@nodal_load.register
-def _(load: Spin, places: Places) -> NodalLoad:
-    area = places.area(load)
-    area.require("density", "density", load.pointer)
-    arm = area.mass[:, 1:] - np.outer(area.mass[:, 0], load.about)
-    return NodalLoad(area.nodes, load.speed**2 * arm)
 
 
 def _varying(load: Load, start: Array, end: Array, side: Side, places: Places) -> Array:
