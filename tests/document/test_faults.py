@@ -79,6 +79,15 @@ def test_thousands_of_faults_are_cut_short() -> None:
     assert len(others) == 1000
 
 
+def test_thousands_of_unknown_keys_are_one_fault() -> None:
+    document = good("mesh")
+    document["plate"].update({f"key {number}": 0 for number in range(3000)})
+    (fault,) = faults_of(document)
+    assert fault.pointer == "/plate"
+    assert "3002 keys" in fault.message
+    assert "thickness" in fault.message
+
+
 def test_thousands_of_bad_nodes_are_a_few_faults() -> None:
     document = good("mesh")
     document["geometry"]["mesh"]["nodes"] += [[0, None]] * 30_000

@@ -1,8 +1,9 @@
 """Faults of a document: from marshmallow's nested messages to pointers, and the words in them."""
 
 import json
-from collections.abc import Iterable, Iterator, Mapping
+from collections.abc import Collection, Iterable, Iterator, Mapping
 from difflib import get_close_matches
+from itertools import islice
 from typing import Any
 
 from marshmallow.exceptions import SCHEMA
@@ -10,7 +11,7 @@ from marshmallow.exceptions import SCHEMA
 from workers.errors import Fault
 
 MOST_FAULTS = 1000  # of one document
-MOST_COMPARED = 200
+MOST_COMPARED = 100
 
 Tokens = tuple[str | int, ...]
 
@@ -38,13 +39,14 @@ def seen(value: Any) -> str:
     return str(value) if isinstance(value, int | float) else f"a {type(value).__name__}"
 
 
-def unknown(what: str, name: str, known: Iterable[str]) -> str:
-    """Message for a name that refers to nothing."""
-    names = sorted(known)
+def unknown(what: str, name: str, known: Collection[str]) -> str:
+    """Message for a name that refers to nothing; the known names are in document order."""
     # Likeness to thousands of names would take seconds, and no reader would miss it.
-    close = get_close_matches(name, names, n=1) if len(names) <= MOST_COMPARED else []
+    close = get_close_matches(name, known, n=1) if len(known) <= MOST_COMPARED else []
     hint = f"; did you mean {seen(close[0])}?" if close else ""
-    listed = ", ".join(names[:12]) + (f" and {len(names) - 12} more" if len(names) > 12 else "")
+    listed = ", ".join(islice(known, 12)) + (
+        f" and {len(known) - 12} more" if len(known) > 12 else ""
+    )
     return f"there is no {what} named {seen(name)}{hint}; there is: {listed or 'none'}"
 
 

@@ -18,33 +18,27 @@ Place = tuple[str | int, ...]
 
 @dataclass
 class Inventory:
-    """Names of the geometry by what they name."""
+    """Names of the geometry, in document order.
+
+    all : "side", "hole", "region" or "point" by name.
+    """
 
     kind: str | None
-    sides: set[str] = field(default_factory=set)
-    holes: set[str] = field(default_factory=set)
-    regions: set[str] = field(default_factory=set)
-    points: set[str] = field(default_factory=set)
+    all: dict[str, str] = field(default_factory=dict)
     faults: list[Fault] = field(default_factory=list)
 
     @cached_property
-    def all(self) -> set[str]:
-        return self.sides | self.holes | self.regions | self.points
-
-    def what(self, name: str) -> str:
-        """side, hole, region or point."""
-        named = {"side": self.sides, "hole": self.holes, "region": self.regions}
-        return next((what for what, names in named.items() if name in names), "point")
+    def regions(self) -> list[str]:
+        return [name for name, what in self.all.items() if what == "region"]
 
 
 def take_inventory(geometry: Mapping[str, Any]) -> Inventory:
     """Names of all sides, holes, regions and points; faults where one is given twice."""
     kinds = [kind for kind in KINDS_OF_GEOMETRY if kind in geometry]
     found = Inventory(kinds[0] if len(kinds) == 1 else None)
-    given: dict[str, str] = {}  # what each name was first given to
     for what, name, place in _given(geometry):
-        first = given.get(name)
-        given.setdefault(name, what)
+        first = found.all.get(name)
+        found.all.setdefault(name, what)
         if name == WHOLE_PLATE:
             text = f'"{WHOLE_PLATE}" is what no region covers; choose another name for this {what}'
         elif first is not None and not first == what == "side":
@@ -53,7 +47,6 @@ def take_inventory(geometry: Mapping[str, Any]) -> Inventory:
             text = ""
         if text:
             found.faults.append(Fault(place, text))
-        getattr(found, f"{what}s").add(name)
     found.faults += _doubles("patch", geometry.get("patches"), pointer("geometry", "patches"))
     return found
 

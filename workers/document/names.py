@@ -67,7 +67,7 @@ def _regions_used(document: Mapping[str, Any], inventory: Inventory) -> Iterator
     if inventory.kind == "mesh":
         word, place, parts = "block", "/geometry/mesh/blocks", table(geometry["mesh"]).get("blocks")
     used = {i: p["region"] for i, p in rows(parts) if isinstance(p.get("region"), str)}
-    lost = {i: name for i, name in used.items() if name not in inventory.regions}
+    lost = {i: name for i, name in used.items() if inventory.all.get(name) != "region"}
     named = set(used.values())
     for i, name in lost.items():
         yield Fault(f"{place}/{i}/region", unknown("region", name, inventory.regions))
@@ -92,7 +92,7 @@ def _supports(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fau
             what = "side" if {"segment", "circle"} & on.keys() else "selection"
             yield from _spring_units(table(support.get("spring")), place, what)
         elif isinstance(on, str) and on in inventory.all:
-            yield from _named_support(support, place, on, inventory.what(on))
+            yield from _named_support(support, place, on, inventory.all[on])
         elif isinstance(on, str):
             yield Fault(f"{place}/on", unknown("side, hole, region or point", on, inventory.all))
 
@@ -148,9 +148,9 @@ def _loads(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fault]
             known = inventory.regions if kind.place == "area" else inventory.all
             what = " or ".join(wanted[kind.place])
             yield Fault(f"{place}/on", unknown(what, on, known))
-        elif inventory.what(on) not in wanted[kind.place]:
+        elif inventory.all[on] not in wanted[kind.place]:
             what = " or a ".join(wanted[kind.place])
-            text = f"{key} acts on a {what}, and {seen(on)} is a {inventory.what(on)}"
+            text = f"{key} acts on a {what}, and {seen(on)} is a {inventory.all[on]}"
             text += INSTEAD.get(kind.place, "")
             yield Fault(f"{place}/on", text)
 
