@@ -55,15 +55,17 @@ class Pool:
         """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
         for number in STOP_SIGNALS:
             signal.signal(number, self._request_stop)
-        self._replace_dead()
-        self.store.reindex()  # reads every record: the workers need not wait for it
-        while not self._stopping:
-            if self.server is not None:
-                self.server.keep_alive()
+        try:
             self._replace_dead()
-            self._reconcile()
-            multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
-        self._stop()
+            self.store.reindex()  # reads every record: the workers need not wait for it
+            while not self._stopping:
+                if self.server is not None:
+                    self.server.keep_alive()
+                self._replace_dead()
+                self._reconcile()
+                multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
+        finally:
+            self._stop()
 
     def _request_stop(self, _number: int, _frame: FrameType | None) -> None:
         self._stopping = True

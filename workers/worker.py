@@ -57,6 +57,10 @@ class Worker(rq.Worker):
         super().fork_work_horse(job, queue)
         self._group = self.horse_pid
 
+    def kill_horse(self, sig: signal.Signals = signal.SIGKILL) -> None:
+        if self.horse_pid:  # else rq would kill our own process group, and so us
+            super().kill_horse(sig)
+
     def _kill_rest(self) -> bool:
         """Kill what the work-horse started and left behind; True if there was anything.
 
