@@ -37,3 +37,17 @@ def strip(
         "supports": [{"on": "left", "ux": 0}, {"on": "corner", "uy": 0}],
         "load_cases": {"pull": [{"on": "right", "total_force": [force, 0]}]},
     }
+
+
+def hanging_bar(*, height: float = 200.0, width: float = 20.0) -> dict[str, Any]:
+    """A bar that hangs from its upper end under its own weight, without lateral contraction.
+
+    With w = density x gravity the stress is w y, the lower end moves down by w height^2 / (2 E).
+    Poisson's ratio is zero, so that the held end stays plane and the answer is exact.
+    """
+    document = strip(length=width, height=height)
+    document["title"] = "Fender bar under its own weight"
+    document["materials"]["steel"]["poissons_ratio"] = 0
+    document["supports"] = [{"on": "high", "uy": 0}, {"on": "corner", "ux": 0}]
+    document["load_cases"] = {"self weight": [{"acceleration": [0, "-9.81 m/s2"]}]}
+    return document

@@ -1,0 +1,176 @@
+"""A real `fishplate serve`: Redis, workers and HTTP server, with plates whose answer is known."""
+
+import json
+import os
+import signal
+import subprocess
+import sys
+import time
+from collections.abc import Callable, Iterator
+from pathlib import Path
+from typing import Any
+from urllib.error import HTTPError
+from urllib.parse import quote
+from urllib.request import Request, urlopen
+
+import numpy as np
+import pytest
+import pyvista
+from jsonschema import Draft202012Validator
+
+from tests.job_documents import hanging_bar, strip
+
+pytestmark = pytest.mark.server
+
+FISHPLATE = Path(sys.executable).with_name("fishplate")
+PATIENCE = 120.0  # s, for starting and for jobs; on a busy machine
+E, NU = 210_000.0, 0.3  # N/mm2
+
+
+@pytest.fixture(scope="module")
+def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[subprocess.Popen[bytes]]:
+    folder = tmp_path_factory.mktemp("server")
+    address = folder / "address"
+    settings = {"FISHPLATE_STORE": str(folder / "store"), "FISHPLATE_WORKERS": "1"}
+    with (folder / "log").open("wb") as log:
+        process = subprocess.Popen(
+            [FISHPLATE, "serve", "--port", "0", "--address-file", address],
+            env={**os.environ, **settings},
+            stderr=log,
+        )
+    until = time.monotonic() + PATIENCE
+    while not address.exists():
+        assert process.poll() is None, (folder / "log").read_text()
+        assert time.monotonic() < until, (folder / "log").read_text()
+        time.sleep(0.05)
+    process.url = address.read_text().strip()  # type: ignore[attr-defined]
+    yield process
+    process.terminate()
+    process.wait(PATIENCE)
+
+
+@pytest.fixture(scope="module")
+def ask(server: Any) -> Callable[..., tuple[bytes, Any]]:
+    """Body and headers of an answer."""
+
+    def request(path: str, body: Any = None, **headers: str) -> tuple[bytes, Any]:
+        data = None if body is None else json.dumps(body).encode()
+        sent = {"Content-Type": "application/json", **headers}
+        with urlopen(Request(server.url + quote(path), data, sent), timeout=PATIENCE) as answer:
+            return answer.read(), answer.headers
+
+    return request
+
+
+def solve(ask: Callable[..., tuple[bytes, Any]], document: dict[str, Any]) -> tuple[str, Any]:
+    """Address and results of a document."""
+    body, headers = ask("/v1/jobs", document)
+    here = headers["Location"]
+    assert json.loads(body)["links"]["self"] == here
+    until = time.monotonic() + PATIENCE
+    job = json.loads(body)
+    while job["state"] in ("queued", "running"):
+        assert time.monotonic() < until
+        job = json.loads(ask(here, Prefer="wait=30")[0])
+    assert (job["state"], job["reason"], job["errors"]) == ("finished", None, [])
+    return here, json.loads(ask(f"{here}/results")[0])
+
+
+@pytest.fixture(scope="module")
+def pulled(ask: Callable[..., tuple[bytes, Any]]) -> tuple[str, Any]:
+    """The strip, pulled with 32 kN and with twice that."""
+    return solve(ask, {**strip(), "combinations": {"pull twice": {"pull": 2}}})
+
+
+# The strip: force / (height x thickness) = 32000 / (40 x 8) = 100 MPa everywhere. Q8 represents it
+# exactly, so that only rounding is left; 1e-9 is far above it and far below any mistake.
+EXACT = 1e-9
+
+
+def test_a_pulled_strip_has_its_stress_movement_and_reaction(pulled: tuple[str, Any]) -> None:
+    state = pulled[1]["cases"]["pull"]
+    assert state["von_mises"]["value"] == pytest.approx(100.0, rel=EXACT)
+    assert state["shear_max"]["value"] == pytest.approx(50.0, rel=EXACT)
+    # the corner farthest from the held one moves by stress / E times (length, -nu height)
+    moved = 100.0 / E * np.hypot(100.0, NU * 40.0)
+    assert state["displacement"]["value"] == pytest.approx(moved, rel=EXACT)
+    assert state["reactions"]["left"]["force"][0] == pytest.approx(-32_000.0, rel=EXACT)
+    assert state["utilisation"]["value"] == pytest.approx(100.0 / 355.0, rel=EXACT)
+    assert state["equilibrium"]["residual"] < EXACT
+    twice = pulled[1]["combinations"]["pull twice"]
+    assert twice["von_mises"]["value"] == pytest.approx(200.0, rel=EXACT)
+
+
+def test_a_hanging_bar_has_the_stress_of_its_weight(ask: Callable[..., tuple[bytes, Any]]) -> None:
+    """Stress w y with w = 7.85e-9 t/mm3 x 9810 mm/s2; the lower end moves w height^2 / (2 E)."""
+    _, results = solve(ask, hanging_bar(height=200.0, width=20.0))
+    state, w = results["cases"]["self weight"], 7.85e-9 * 9810.0
+    assert state["von_mises"]["value"] == pytest.approx(w * 200.0, rel=EXACT)
+    assert state["displacement"]["value"] == pytest.approx(w * 200.0**2 / (2 * E), rel=EXACT)
+    weight = w * 200.0 * 20.0 * 8.0
+    assert state["reactions"]["high"]["force"][1] == pytest.approx(weight, rel=EXACT)
+
+
+def test_results_are_as_the_openapi_document_describes_them(
+    ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any]
+) -> None:
+    document = json.loads(ask("/openapi.json")[0])
+    schema = {"$ref": "#/components/schemas/Results", "components": document["components"]}
+    assert [e.message for e in Draft202012Validator(schema).iter_errors(pulled[1])] == []
+    assert pulled[1]["cautions"]
+
+
+def test_fields_are_a_vtk_file_with_the_stress_and_the_cautions(
+    ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any], tmp_path: Path
+) -> None:
+    """Read by VTK's own reader; fields are stored in single precision: 24 bits, 6e-8."""
+    here, results = pulled
+    body, headers = ask(f"{here}/fields/pull twice.vtu")
+    assert 'rel="describedby"' in headers["Link"]
+    path = tmp_path / "fields.vtu"
+    path.write_bytes(body)
+    grid = pyvista.read(path)
+    assert grid.n_points == results["mesh"]["nodes"]
+    stress = grid.point_data["stress"]
+    assert stress == pytest.approx(np.tile([200.0, 0.0, 0.0], (len(stress), 1)), abs=200 * 1e-6)
+    assert grid.point_data["displacement"][:, 0].max() == pytest.approx(2 * 100 / E * 100, rel=1e-6)
+    assert "engineer" in " ".join(map(str, np.ravel(grid.field_data["cautions"])))
+
+
+@pytest.mark.parametrize("case", ["pull twice", "pull"])
+def test_pictures_are_served_whether_made_with_the_job_or_on_request(
+    ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any], case: str, tmp_path: Path
+) -> None:
+    here, results = pulled
+    if not results["pictures"]["available"]:
+        pytest.skip(results["pictures"]["reason"])
+    made = results["files"]["previews"].get(case, {})
+    assert ("principal_min" in made) == (case == "pull twice")
+    body, headers = ask(f"{here}/previews/{case}/principal_min.png")
+    assert 'rel="describedby"' in headers["Link"]
+    path = tmp_path / "picture.png"
+    path.write_bytes(body)
+    image = pyvista.read(path)
+    assert min(image.dimensions[:2]) >= 600
+    assert np.ptp(image.active_scalars, axis=0).min() > 100  # something is drawn
+
+
+def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes, Any]]) -> None:
+    with pytest.raises(HTTPError) as error:
+        ask("/v1/jobs", {**strip(), "supports": [{"on": "left", "uy": 0}]})
+    with error.value as answer:
+        assert answer.code == 422
+        assert json.load(answer)["errors"][0]["pointer"].startswith("/supports")
+
+
+def test_the_server_is_ready(ask: Callable[..., tuple[bytes, Any]]) -> None:
+    checks = json.loads(ask("/health/ready")[0])["checks"]
+    assert {check["name"] for check in checks if check["ok"]} == {"queue", "store", "workers"}
+
+
+def test_the_server_stops_cleanly_when_told(server: Any) -> None:
+    """The last test of this module: status 0, and nothing left that listens."""
+    server.send_signal(signal.SIGTERM)
+    assert server.wait(PATIENCE) == 0
+    with pytest.raises(OSError, match="refused"):
+        urlopen(server.url + "/health/live", timeout=5)
