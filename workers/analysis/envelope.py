@@ -6,8 +6,6 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
-from workers.analysis.plane_stress import principal, shear_max, von_mises
-
 Array = NDArray[np.float64]
 
 # +1: the largest value is the worst; -1: the smallest.
@@ -20,7 +18,10 @@ WORST: Mapping[str, int] = {
 }
 
 
-def measures(displacement: Array, stress: Array) -> dict[str, NDArray]:
+POINTS_AT_ONCE = 1024  # what is formed on the way stays in the cache
+
+
+def measures(displacement: Array, stress: Array) -> dict[str, Array]:
     """What is compared between states, at the field points, (P, k) each.
 
     Parameters
@@ -31,14 +32,28 @@ def measures(displacement: Array, stress: Array) -> dict[str, NDArray]:
     -------
     The keys of `WORST`; `displacement` is the size of the vector.
     """
-    components = stress.transpose(0, 2, 1)
-    largest, smallest = principal(components)
+    found = {name: np.empty((len(stress), stress.shape[2])) for name in WORST}
+    for start in range(0, len(stress), POINTS_AT_ONCE):
+        part = slice(start, start + POINTS_AT_ONCE)
+        for name, values in _measures(displacement[part], stress[part]).items():
+            found[name][part] = values
+    return found
+
+
+def _measures(displacement: Array, stress: Array) -> dict[str, Array]:
+    """Mohr's circle once for all measures; `plane_stress` has them one by one."""
+    sx, sy, txy = (stress[:, i] for i in range(3))
+    centre, half = (sx + sy) / 2, (sx - sy) / 2
+    radius_squared = half**2 + txy**2
+    radius = np.sqrt(radius_squared)
+    largest, smallest = centre + radius, centre - radius
+    u, v = displacement[:, 0], displacement[:, 1]
     return {
-        "von_mises": von_mises(components),
+        "von_mises": np.sqrt(centre**2 + 3 * radius_squared),
         "principal_max": largest,
         "principal_min": smallest,
-        "shear_max": shear_max(components),
-        "displacement": np.hypot(displacement[:, 0], displacement[:, 1]),
+        "shear_max": (np.maximum(largest, 0) - np.minimum(smallest, 0)) / 2,
+        "displacement": np.sqrt(u**2 + v**2),
     }
 
 

@@ -10,6 +10,7 @@ analysis", Int. J. Numer. Meth. Engng 24 (1987), eqs. for ||e|| and eta, with th
 """
 
 from dataclasses import dataclass
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -80,7 +81,9 @@ def estimate_error(
         error = np.empty((block.element_count, states))
         for start in range(0, block.element_count, ELEMENTS_AT_ONCE):
             chunk = np.arange(start, min(start + ELEMENTS_AT_ONCE, block.element_count))
-            own, interpolation = _operators(model, number, chunk)
+            own, interpolation = recovery.operators.get(
+                (number, start), partial(_operators, model, number, chunk)
+            )
             u = displacement[block.connectivity[chunk]].reshape(len(chunk), -1, states)
             raw = np.matmul(own, u)
             if temperature is not None:

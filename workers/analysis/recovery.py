@@ -5,7 +5,8 @@ by whoever wants them, after superposition. How samples become nodal values is i
 `patch_recovery.py`.
 """
 
-from dataclasses import dataclass
+from collections.abc import Callable, Hashable
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
@@ -22,6 +23,28 @@ Temperature = tuple[Array, ...] | None  # for each block (m, k) [K]
 ELEMENTS_AT_ONCE = 512  # operators and gathered displacements of a chunk stay in the cache
 
 
+class OperatorStore:
+    """Keeps what is made once for a chunk of elements and used for many states.
+
+    room : bytes; as much of it as fits; the rest is made again each time.
+    """
+
+    def __init__(self, room: float) -> None:
+        self._room = room
+        self._kept: dict[Hashable, tuple[Array, ...]] = {}
+
+    def get(self, key: Hashable, make: Callable[[], tuple[Array, ...]]) -> tuple[Array, ...]:
+        """What `make` makes, or made before under that key."""
+        if key in self._kept:
+            return self._kept[key]
+        made = make()
+        size = sum(array.nbytes for array in made)
+        if size <= self._room:
+            self._room -= size
+            self._kept[key] = made
+        return made
+
+
 @dataclass(frozen=True, eq=False)
 class Recovery:
     """Stress recovery on one mesh; the operator serves every state.
@@ -29,11 +52,13 @@ class Recovery:
     model : Model
     field_mesh : FieldMesh        its P points carry the recovered stress
     operator : (P, Q) matrix      from the Q samples, see `patch_recovery.recovery_operator`
+    operators : OperatorStore     nothing is kept unless a caller with many states gives room
     """
 
     model: Model
     field_mesh: FieldMesh
     operator: csr_array
+    operators: OperatorStore = field(default_factory=lambda: OperatorStore(0))
 
     @classmethod
     def build(cls, model: Model) -> "Recovery":

@@ -5,6 +5,7 @@ particulars, cautions, files and pictures are added by later rooms.
 """
 
 from collections.abc import Callable
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -19,7 +20,7 @@ from workers.analysis.loads.kinds import Places
 from workers.analysis.model import Model
 from workers.analysis.peaks import Peak, find_peaks, find_utilisation
 from workers.analysis.quality import mesh_quality
-from workers.analysis.recovery import Recovery
+from workers.analysis.recovery import OperatorStore, Recovery
 from workers.analysis.resultants import equilibrium, imbalance, reactions
 from workers.analysis.samples import Samples
 from workers.analysis.solution import Solution, SolverReport
@@ -30,6 +31,7 @@ Json = dict[str, Any]
 Progress = Callable[[str, float], None]
 
 CHUNK_BYTES = 200e6  # for the states that are worked on together
+KEPT_BYTES = 150e6  # for operators that serve one chunk of states after another
 STAGE = "recovering"
 
 
@@ -60,7 +62,10 @@ def summarise(
     samples = Samples(recovery.field_mesh, job.requests, states)
     cuts = _cuts(solution, states)
     by_state = _balances(solution, states)
-    for columns in states.chunks(_states_at_once(recovery)):
+    at_once = _states_at_once(recovery)
+    if len(states) > at_once:
+        recovery = replace(recovery, operators=OperatorStore(KEPT_BYTES))
+    for columns in states.chunks(at_once):
         results = _strain_and_stress(solution, recovery, states, columns, samples, envelope)
         for column, result in zip(columns, results, strict=True):
             by_state[column] = result | by_state[column]
@@ -86,9 +91,14 @@ def summarise(
 
 
 def _states_at_once(recovery: Recovery) -> int:
-    """How many states fit CHUNK_BYTES: displacements, samples, recovered stress and measures."""
+    """How many states fit CHUNK_BYTES.
+
+    When the measures are formed there are displacements at nodes and points, the recovered stress
+    and the five measures; the samples of the stress are gone by then.
+    """
     points, samples = recovery.operator.shape
-    numbers = 2 * recovery.model.mesh.node_count + 3 * samples + (2 + 3 + 3 + 8) * points
+    nodes = recovery.model.mesh.node_count
+    numbers = 2 * nodes + max((2 + 3 + 5) * points, 3 * points + 3 * samples)
     return max(1, int(CHUNK_BYTES / (8 * numbers)))
 
 
