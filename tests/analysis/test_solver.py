@@ -1,5 +1,7 @@
 """The direct solver against dense solutions, and its measures of quality."""
 
+from importlib.util import find_spec
+
 import numpy as np
 import pytest
 from scipy.sparse import bsr_array
@@ -18,7 +20,14 @@ from workers.analysis.solver import (
     plan_solution,
 )
 
-METHODS = ("multifrontal", "superlu")
+METHODS = (
+    "multifrontal",
+    "superlu",
+    pytest.param(
+        "pardiso",
+        marks=pytest.mark.skipif(find_spec("pypardiso") is None, reason="needs fishplate[mkl]"),
+    ),
+)
 
 
 def _clamped(mesh: Mesh, plan: Plan) -> bsr_array:
@@ -108,7 +117,7 @@ def test_unknown_method_lists_the_known_ones() -> None:
 def test_factors_say_who_they_are() -> None:
     mesh = grid("T6", 2, 2)
     names = []
-    for method in METHODS:
+    for method in ("multifrontal", "superlu"):
         plan, K = _plate(method, mesh)
         factor: Factor = plan.factorise(K)
         names.append(factor.name)
