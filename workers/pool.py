@@ -28,6 +28,7 @@ from workers.store import Store
 
 TICK = 0.5  # longest time until a signal is noticed [s]
 RESTART_PAUSE = 1.0  # between two starts of workers, so that a broken one does not spin [s]
+SHORTEST_GRACE = 1.5  # rq takes a second signal within 1 s for the first one heard twice [s]
 LAST_WAIT = 10.0  # for workers that were told to stop at once [s]
 
 STOP_SIGNALS = (signal.SIGTERM, signal.SIGINT)
@@ -99,7 +100,7 @@ class Pool:
 
     def _stop(self) -> None:
         """First ask, then (rq takes a second signal so) insist, then kill."""
-        self._signal(signal.SIGTERM, self.settings.shutdown_grace)
+        self._signal(signal.SIGTERM, max(self.settings.shutdown_grace, SHORTEST_GRACE))
         self._signal(signal.SIGTERM, LAST_WAIT)
         self._signal(signal.SIGKILL, LAST_WAIT)
 

@@ -74,40 +74,36 @@ class Store:
         KeyConflictError   the key was used before, for another document.
         StoreError         nothing was filed.
         """
-        checksum = "sha256:" + hashlib.sha256(document).hexdigest()
-        digest = hashlib.sha256(key.encode()).hexdigest() if key is not None else None
         record = Record(
             id=new_id(),
             title=title,
             label=label,
-            checksum=checksum,
+            checksum="sha256:" + hashlib.sha256(document).hexdigest(),
             size=len(document),
             history=(Event(QUEUED, now()),),
-            key=digest,
+            key=None if key is None else hashlib.sha256(key.encode()).hexdigest(),
         )
         with _telling("the job could not be filed"):
-            if digest is None:
+            if record.key is not None:
+                return self._file_under_key(record, document, self._keys / record.key)
+            self._file(record, document)
+        return Acceptance(record, created=True)
+
+    def _file_under_key(self, record: Record, document: bytes, key: Path) -> Acceptance:
+        durable.make_folder(self._keys)
+        with durable.lock(key):
+            try:
+                earlier = self.record(key.read_text())
+            except UnknownJobError:
+                # The key is written first: a crash in between leaves it pointing at no job, which
+                # counts as unused. So a key can never stand for two jobs.
+                durable.write(key, record.id.encode())
+                durable.sync_folder(self._keys)
                 self._file(record, document)
                 return Acceptance(record, created=True)
-            durable.make_folder(self._keys)
-            with durable.lock(self._keys / digest):
-                earlier = self._of_key(digest)
-                if earlier is None:
-                    # The key is written first: a crash in between leaves it pointing at no job,
-                    # which counts as unused, so a key can never stand for two jobs.
-                    durable.write(self._keys / digest, record.id.encode())
-                    durable.sync_folder(self._keys)
-                    self._file(record, document)
-                    return Acceptance(record, created=True)
-        if earlier.checksum != checksum:
+        if earlier.checksum != record.checksum:
             raise KeyConflictError(earlier.id)
         return Acceptance(earlier, created=False)
-
-    def _of_key(self, digest: str) -> Record | None:
-        try:
-            return self.record((self._keys / digest).read_text())
-        except UnknownJobError:
-            return None
 
     def _file(self, record: Record, document: bytes) -> None:
         incoming = self._incoming / record.id
