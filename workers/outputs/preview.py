@@ -67,7 +67,8 @@ def render_field(
 ) -> None:
     """Draw "von_mises", "principal_max" or "principal_min" of a state as a filled field.
 
-    limits : the range of the legend [F/L^2], so that pictures of several states compare
+    limits : a range for the legend [F/L^2], so that pictures of several states compare; a state
+        that goes beyond it widens it
     directions : add ticks along the principal direction
 
     Raises

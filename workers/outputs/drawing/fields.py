@@ -68,7 +68,7 @@ def draw_stress(
     """Fill the plate with a stress; mark its peak."""
     quantity = STRESS_QUANTITIES[name]
     nodal = quantity.of_stress(fields.stress)
-    scale = stress_scale(nodal, limits, _rounding(job, fields), quantity.signed)
+    scale = stress_scale(nodal, limits, _rounding(job, fields), signed=quantity.signed)
     heading = (quantity.heading, f"[{job.units.stress}]")
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
     view = _lay_out(page, scale, heading, low, high)
@@ -83,11 +83,13 @@ def draw_stress(
     mark_peak(page, view, mesh.points[peak], value, _where(mesh, peak, job))
 
 
-def stress_scale(nodal: Array, limits: Limits | None, rounding: float, signed: bool) -> Scale:
-    """The range of a legend: as given, else from the field; never a range of mere rounding."""
-    low, high = limits if limits is not None else (float(nodal.min()), float(nodal.max()))
-    if not signed:
-        low = 0.0 if limits is None else low
+def stress_scale(nodal: Array, limits: Limits | None, rounding: float, *, signed: bool) -> Scale:
+    """The range of a legend: the field's own and the given one; never a range of mere rounding."""
+    low, high = float(nodal.min()), float(nodal.max())
+    if limits is not None:
+        low, high = min(low, limits[0]), max(high, limits[1])
+    elif not signed:
+        low = 0.0
     low, high = (0.0 if abs(v) <= rounding else v for v in (low, high))
     if high - low <= rounding:
         low, high = _widened(low, high)

@@ -15,7 +15,7 @@ from workers.errors import PicturesUnavailableError
 
 WINDOW = "VTK_DEFAULT_OPENGL_WINDOW"  # read by VTK when it makes its first window
 WINDOWS = ("vtkEGLRenderWindow", "vtkOSOpenGLRenderWindow")
-TEST_PICTURE = "workers.outputs.drawing.trial"
+TRIAL = (sys.executable, "-m", "workers.outputs.drawing.trial")
 SECONDS = 60.0  # a first render takes 1-3 s; a machine with no free core longer
 
 
@@ -50,7 +50,7 @@ def _try(window: str) -> str | None:
     """Render in a child process with this kind of window; the reason when that fails."""
     try:
         child = subprocess.run(
-            [sys.executable, "-m", TEST_PICTURE],
+            TRIAL,
             env={**os.environ, WINDOW: window},
             capture_output=True,
             text=True,
