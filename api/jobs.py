@@ -13,6 +13,7 @@ from marshmallow import RAISE
 from redis.exceptions import RedisError
 
 from api.bodies import read_document_bytes
+from api.example import EXAMPLE
 from api.openapi import Blueprint, problems_of
 from api.preferences import applied, wanted_wait
 from api.problem_types import BAD_REQUEST
@@ -57,7 +58,10 @@ LOCATION = {"Location": {"description": "Address of the job", "schema": {"type":
     200, schema=JobStatusSchema, headers=LOCATION, description="Accepted earlier with this key"
 )
 @blueprint.doc(
-    requestBody={"required": True, "content": {"application/json": {"schema": JobSchema}}},
+    requestBody={
+        "required": True,
+        "content": {"application/json": {"schema": JobSchema, "example": EXAMPLE}},
+    },
     parameters=[IDEMPOTENCY_KEY],
     responses=problems_of(400, 413, 415, 422, 503),
 )

@@ -42,6 +42,9 @@ class Api(flask_smorest.Api):
             name = status.name if status else self.DEFAULT_ERROR_RESPONSE_NAME
             self.spec.components.response(name, response, lazy=True)
 
+    def _register_pagination_header(self) -> None:
+        """Lists have cursors in their bodies; the header of page numbers is not used."""
+
     def handle_http_exception(self, error: HTTPException) -> Response:
         return problems.http_problem(error)
 

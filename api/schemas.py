@@ -80,7 +80,7 @@ class ProgressSchema(Answer):
     fraction = fields.Float(
         required=True,
         validate=validate.Range(0, 1),
-        metadata={"description": "How much of the whole job is done"},
+        metadata={"description": "How much of that stage is done"},
     )
 
 

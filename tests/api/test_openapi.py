@@ -1,5 +1,7 @@
 """The OpenAPI document says exactly what the routes answer."""
 
+import html
+import json
 import re
 from collections import defaultdict
 from collections.abc import Callable
@@ -95,12 +97,25 @@ def test_the_document_schema_admits_a_job_and_names_what_is_wrong(document: dict
     assert list(check.iter_errors({**strip(), "titel": "x"}))
 
 
+def test_the_example_of_the_page_is_accepted_and_fits_its_schema(
+    client: FlaskClient, document: dict[str, Any]
+) -> None:
+    """As printed on the page: copied from there it must work."""
+    text = html.unescape(client.get("/docs").text)
+    example = json.loads(text.split("<pre>")[1].split("</pre>")[0])
+    assert client.post("/v1/jobs", json=example).status_code == 202
+    check = validator({"$ref": "#/components/schemas/Job"}, document)
+    assert not list(check.iter_errors(example))
+
+
 def test_the_page_for_people_needs_nothing_from_elsewhere(client: FlaskClient) -> None:
     """It must work on a machine without the internet: no script, font or image by address."""
     answer = client.get("/docs")
     assert answer.mimetype == "text/html"
     assert "default-src 'none'" in answer.headers["Content-Security-Policy"]
-    assert not re.search(r"<(script|link|img|iframe)\b|@import|url\(|https?://", answer.text)
+    assert not re.search(
+        r"<(script|link|img|iframe)\b|@import|url\(|(src|href)=.?https?:", answer.text
+    )
 
 
 def test_the_page_for_people_shows_every_operation_problem_and_caution(
