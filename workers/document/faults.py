@@ -74,19 +74,25 @@ def nest(faults: Iterable[Fault]) -> dict[str, Any]:
 
 def in_document_order(faults: Iterable[Fault], document: Any) -> list[Fault]:
     """Sorted by place as written, missing keys last; each fault once."""
-    orders: dict[int, dict[str, int]] = {}
+    orders: dict[int, dict[str, int]] = {}  # of each object, by its id
+
+    def rank(at: Any, token: str) -> int:
+        if isinstance(at, dict):
+            if id(at) not in orders:
+                orders[id(at)] = {str(key): i for i, key in enumerate(at)}
+            return orders[id(at)].get(token, len(at))
+        return int(token) if token.isdecimal() else 0
+
+    def inside(at: Any, token: str) -> Any:
+        if isinstance(at, list):
+            return at[int(token)] if token.isdecimal() and int(token) < len(at) else None
+        return at.get(token) if isinstance(at, dict) else None
 
     def key(fault: Fault) -> list[tuple[int, str]]:
         at, position = document, []
         for token in tokens(fault.pointer):
-            rank, following = len(at) if isinstance(at, dict | list) else 0, None
-            if isinstance(at, dict):
-                order = orders.setdefault(id(at), {str(k): i for i, k in enumerate(at)})
-                rank, following = order.get(token, rank), at.get(token)
-            elif isinstance(at, list) and token.isdecimal() and int(token) < len(at):
-                rank, following = int(token), at[int(token)]
-            position.append((rank, token))
-            at = following
+            position.append((rank(at, token), token))
+            at = inside(at, token)
         return position
 
     return sorted(dict.fromkeys(faults), key=key)

@@ -10,11 +10,12 @@ import math
 import re
 from collections import Counter
 from collections.abc import Iterator
+from itertools import islice
 from typing import Any
 
 import orjson
 
-from workers.document.faults import Tokens, pointer, printable
+from workers.document.faults import MOST_FAULTS, Tokens, pointer, printable
 from workers.errors import DocumentError, Fault
 
 # A key is a string before a colon. Inside a string the same signs can stand too, so that this
@@ -70,7 +71,7 @@ def _parse_slowly(data: bytes) -> tuple[Any, list[Fault]] | None:
         document = json.loads(data, object_pairs_hook=_object)
     except (ValueError, RecursionError):
         return None
-    return document, list(_faults(document))
+    return document, list(islice(_faults(document), MOST_FAULTS))
 
 
 def _faults(document: Any) -> Iterator[Fault]:

@@ -15,14 +15,11 @@ from marshmallow import (
     post_dump,
     post_load,
     pre_dump,
-    pre_load,
     validates_schema,
 )
 
 from workers.document.context import here
 from workers.document.faults import seen
-
-MOST_UNKNOWN = 100  # keys of one object, each reported
 
 
 class Record(Schema):
@@ -62,13 +59,6 @@ class Record(Schema):
     def unbuild(self, thing: Any) -> Any:
         """What is written; a mapping or an object with an attribute for each field."""
         return thing
-
-    @pre_load
-    def _not_too_many_keys(self, data: Any, **_: Any) -> Any:
-        """marshmallow copies all earlier faults for each unknown key; for thousands it hangs."""
-        if isinstance(data, Mapping) and len(data) > len(self.fields) + MOST_UNKNOWN:
-            raise ValidationError(f"has {len(data)} keys; {self.error_messages['unknown']}")
-        return data
 
     @post_load
     def _build(self, data: dict[str, Any], **_: Any) -> Any:
