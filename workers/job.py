@@ -13,9 +13,22 @@ import numpy as np
 from numpy.typing import NDArray
 
 Vector = tuple[float, float]
+Corners = tuple[Vector, Vector, Vector, Vector]
+Names = tuple[str | None, str | None, str | None, str | None]
+Places = tuple[Vector | None, Vector | None, Vector | None, Vector | None]
 
+NO_NAMES: Names = (None, None, None, None)
+NO_PLACES: Places = (None, None, None, None)
 
-# --- materials and sections ------------------------------------------------------------------
+STRESS_LABELS: Mapping[tuple[str, str], str] = {
+    ("mm", "N"): "MPa",
+    ("mm", "kN"): "GPa",
+    ("m", "N"): "Pa",
+    ("m", "kN"): "kPa",
+    ("m", "MN"): "MPa",
+    ("in", "lbf"): "psi",
+    ("in", "kip"): "ksi",
+}
 
 
 @dataclass(frozen=True)
@@ -28,9 +41,7 @@ class Units:
     @property
     def stress(self) -> str:
         """Label of a stress in these units: MPa for N and mm, else force/length^2."""
-        known = {("mm", "N"): "MPa", ("m", "N"): "Pa", ("m", "kN"): "kPa", ("m", "MN"): "MPa",
-                 ("mm", "kN"): "GPa", ("in", "lbf"): "psi", ("in", "kip"): "ksi"}
-        return known.get((self.length, self.force), f"{self.force}/{self.length}2")
+        return STRESS_LABELS.get((self.length, self.force), f"{self.force}/{self.length}2")
 
 
 @dataclass(frozen=True)
@@ -49,9 +60,6 @@ class Plate:
 
     material: str
     thickness: float  # [L]
-
-
-# --- geometry --------------------------------------------------------------------------------
 
 
 @dataclass(frozen=True)
@@ -106,13 +114,11 @@ class Patch:
     """A four-sided block for mapped meshing; sides run corner 1-2, 2-3, 3-4, 4-1."""
 
     name: str
-    corners: tuple[Vector, Vector, Vector, Vector]
+    corners: Corners
     divisions: tuple[int, int]  # along sides 1-2 and 2-3
     grading: tuple[float, float] = (1.0, 1.0)  # size at the end over size at the start
-    sides: tuple[str | None, str | None, str | None, str | None] = (None, None, None, None)
-    through: tuple[Vector | None, Vector | None, Vector | None, Vector | None] = (
-        None, None, None, None,
-    )
+    sides: Names = NO_NAMES
+    through: Places = NO_PLACES
     region: str | None = None
     pointer: str = ""
 
@@ -155,9 +161,6 @@ class Meshing:
     sizes: Mapping[str, float] = field(default_factory=dict)
     target_error: float | None = None  # relative energy norm
     max_dofs: int | None = None
-
-
-# --- targets: where a support or a load acts ---------------------------------------------------
 
 
 @dataclass(frozen=True)
@@ -204,9 +207,6 @@ class Nodes:
 Target = Named | Segment | Box | OnCircle | Nodes
 
 
-# --- supports ----------------------------------------------------------------------------------
-
-
 @dataclass(frozen=True)
 class Spring:
     """Elastic support: [F/L^2] on sides (force per length per length), [F/L] at points."""
@@ -235,9 +235,6 @@ class Support:
     spring: Spring | None = None
     case: str | None = None
     pointer: str = ""
-
-
-# --- loads -------------------------------------------------------------------------------------
 
 
 @dataclass(frozen=True, kw_only=True)
@@ -349,9 +346,6 @@ class Combination:
     name: str
     factors: Mapping[str, float]
     pointer: str = ""
-
-
-# --- requests and limits -----------------------------------------------------------------------
 
 
 @dataclass(frozen=True)
