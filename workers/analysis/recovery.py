@@ -20,7 +20,7 @@ from workers.analysis.plane_stress import thermal_strain
 Array = NDArray[np.float64]
 Temperature = tuple[Array, ...] | None  # for each block (m, k) [K]
 
-ELEMENTS_AT_ONCE = 512  # operators and gathered displacements of a chunk stay in the cache
+ELEMENTS_AT_ONCE = 256  # operators and gathered displacements of a chunk stay in the cache
 
 
 class OperatorStore:
