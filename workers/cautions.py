@@ -61,6 +61,6 @@ STANDING: tuple[Caution, ...] = (
             "A qualified engineer must review the model and the results; local codes and "
             "regulations govern."
         ),
-        action="Have the job reviewed and signed by a licensed engineer before anything relies on it.",
+        action="Have a licensed engineer review and sign the job before anything relies on it.",
     ),
 )
