@@ -3,7 +3,7 @@
 Equal steps of t are equal lengths.
 """
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -44,6 +44,18 @@ class Line:
         t = np.clip((points - self.start) @ direction / (direction @ direction), 0, 1)
         return np.linalg.norm(points - self.at(t), axis=1)
 
+    def tangent(self, t: float) -> Array:
+        """Unit direction of travel at a parameter, (2,)."""
+        return (self.end - self.start) / self.length
+
+    def part(self, low: float, high: float, start: Array, end: Array) -> "Line":
+        """The piece between two parameters, whose ends are given exactly."""
+        return Line(start, end)
+
+    @property
+    def reverse(self) -> "Line":
+        return Line(self.end, self.start)
+
 
 @dataclass(frozen=True, eq=False)
 class Arc:
@@ -83,6 +95,21 @@ class Arc:
             np.linalg.norm(points - self.start, axis=1), np.linalg.norm(points - self.end, axis=1)
         )
         return np.where(t <= 1, on_circle, ends)
+
+    def tangent(self, t: float) -> Array:
+        """Unit direction of travel at a parameter, (2,)."""
+        angle = self.first + t * self.sweep
+        return np.sign(self.sweep) * np.array([-np.sin(angle), np.cos(angle)])
+
+    def part(self, low: float, high: float, start: Array, end: Array) -> "Arc":
+        """The piece between two parameters, whose ends are given exactly."""
+        first, sweep = self.first + low * self.sweep, (high - low) * self.sweep
+        return replace(self, start=start, end=end, first=first, sweep=sweep)
+
+    @property
+    def reverse(self) -> "Arc":
+        first, sweep = self.first + self.sweep, -self.sweep
+        return replace(self, start=self.end, end=self.start, first=first, sweep=sweep)
 
 
 Curve = Line | Arc

@@ -45,12 +45,14 @@ class Drawing:
 
     edges : meet at their ends only; vertices that are one are bitwise equal.
     regions : names of the domains 1, 2, ...; "plate" is the one that no region overrides.
-    points : named points; those on an edge are vertices, those inside are to become nodes.
+    points : named points; those on an edge are vertices.
+    inner : domain of each named point that lies on no edge and is to become a node.
     """
 
     edges: tuple[Edge, ...]
     regions: tuple[str, ...]
     points: Mapping[str, Vector] = field(default_factory=dict)
+    inner: Mapping[str, int] = field(default_factory=dict)
 
     @property
     def area(self) -> float:

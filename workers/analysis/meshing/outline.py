@@ -9,14 +9,58 @@ from dataclasses import dataclass
 import numpy as np
 import shapely
 
-from workers.analysis.meshing.arrangement import RISE, arrange, polygon
-from workers.analysis.meshing.drawing import Drawing
-from workers.analysis.meshing.drawing_checks import check_loops
+from workers.analysis.mesh import PLATE
+from workers.analysis.meshing.arrangement import Arrangement, arrange
+from workers.analysis.meshing.contacts import contact_faults
+from workers.analysis.meshing.corners import corner_faults
+from workers.analysis.meshing.curve_table import CurveTable, cross, norm
+from workers.analysis.meshing.curves import NoArcError, curve
+from workers.analysis.meshing.domains import Domains
+from workers.analysis.meshing.drawing import OUTSIDE, Drawing, Edge
 from workers.analysis.meshing.loops import SHORTEST, Loop, Side, circle_sides, vertex_sides
+from workers.analysis.meshing.places import at
+from workers.analysis.meshing.proximity import close_places
 from workers.errors import DocumentError, Fault
 from workers.job import CircleShape, OutlineGeometry, Vector, Vertex
 
 FARTHEST = 1e5  # diagonals from the origin, beyond which coordinates lose their digits
+
+
+def draw(geometry: OutlineGeometry) -> Drawing:
+    """The drawing of an outline geometry, checked.
+
+    Raises
+    ------
+    DocumentError   carries every fault, each with its pointer and the coordinates of its place.
+    """
+    diagonal = _diagonal(geometry.outline)
+    faults = _origin_faults(geometry.outline, diagonal)
+    if faults:
+        raise DocumentError(faults)
+    loops = []
+    for item in _given(geometry):
+        sides, found = _sides(item, SHORTEST * diagonal)
+        loop = Loop(item.kind, item.label, item.name, item.pointer, sides)
+        found = found or _flat_faults(loop, SHORTEST * diagonal)
+        faults += found
+        if not found:
+            loops.append(loop)
+    if not loops:
+        raise DocumentError(faults)
+    arrangement = arrange(loops, geometry.points, diagonal)
+    faults += contact_faults(arrangement, diagonal)
+    if faults:
+        raise DocumentError(faults)
+    domains = Domains(arrangement)
+    if faults := domains.faults():
+        raise DocumentError(faults)
+    edges = tuple(_edges(arrangement, domains))
+    inner = _inner_points(arrangement, domains, edges)
+    faults = corner_faults(edges)
+    faults += _point_faults(geometry.points, arrangement, inner, diagonal)
+    if faults:
+        raise DocumentError(faults)
+    return _numbered(arrangement, edges, inner)
 
 
 @dataclass(frozen=True, eq=False)
@@ -30,31 +74,6 @@ class _Given:
     shape: CircleShape | tuple[Vertex, ...]
 
 
-def draw(geometry: OutlineGeometry) -> Drawing:
-    """The drawing of an outline geometry, checked.
-
-    Raises
-    ------
-    DocumentError   carries every fault, each with its pointer and the coordinates of its place.
-    """
-    given = list(_given(geometry))
-    diagonal = _diagonal(geometry.outline)
-    faults = _origin_faults(geometry.outline, diagonal)
-    loops = []
-    for item in given:
-        sides, found = _sides(item, diagonal)
-        faults += found
-        if not found:
-            loops.append(Loop(item.kind, item.label, item.name, item.pointer, sides))
-    if not faults:
-        faults = check_loops(loops, diagonal)
-    if not faults:
-        faults = list(_point_faults(geometry.points, loops, diagonal))
-    if faults:
-        raise DocumentError(faults)
-    return arrange(loops, dict(geometry.points), diagonal)
-
-
 def _given(geometry: OutlineGeometry) -> Iterator[_Given]:
     yield _Given("outline", "the outline", "", "/geometry/outline", geometry.outline)
     for hole in geometry.holes:
@@ -65,60 +84,139 @@ def _given(geometry: OutlineGeometry) -> Iterator[_Given]:
             yield _Given("region", label, region.name, region.pointer, region.shape)
 
 
-def _sides(item: _Given, diagonal: float) -> tuple[tuple[Side, ...], list[Fault]]:
-    name = item.name if item.kind == "hole" else None
-    if isinstance(item.shape, CircleShape):
-        if item.shape.radius < SHORTEST * diagonal:
-            needed = f"{SHORTEST * diagonal:.3g}"
-            return (), [
-                Fault(
-                    f"{item.pointer}/circle/radius",
-                    f"{item.label} of radius {item.shape.radius:.3g} is too small for a plate of "
-                    f"this size; at least {needed} is needed",
-                )
-            ]
-        return circle_sides(item.shape, name, f"{item.pointer}/circle"), []
-    return vertex_sides(item.shape, name, diagonal)
+# --- loops --------------------------------------------------------------------------------------
 
 
 def _diagonal(outline: tuple[Vertex, ...]) -> float:
-    places = np.array([v.at for v in outline] + [v.through for v in outline if v.through])
-    return float(np.linalg.norm(np.ptp(places, axis=0)))
+    """Of the upright box around the outline, arcs included [L]; fillets take nothing from it."""
+    curves = []
+    for vertex, following in zip(outline, (*outline[1:], outline[0]), strict=True):
+        start, end = np.asarray(vertex.at, float), np.asarray(following.at, float)
+        try:
+            curves.append(curve(start, end, np.asarray(vertex.through, float)
+                                if vertex.through else None))  # fmt: skip
+        except NoArcError:  # found again, as a fault, when the loop is made
+            curves.append(curve(start, end, None))
+    low, high = CurveTable.of(curves).bounds()
+    return float(np.linalg.norm(high - low))
 
 
 def _origin_faults(outline: tuple[Vertex, ...], diagonal: float) -> list[Fault]:
     far = max(abs(c) for vertex in outline for c in vertex.at)
+    if diagonal == 0:
+        return [Fault("/geometry/outline", f"all vertices are at {at(outline[0].at)}")]
     if far <= FARTHEST * diagonal:
         return []
     return [
         Fault(
             "/geometry/outline",
-            f"the plate lies {far:.3g} from the origin but is only {diagonal:.3g} across, which "
-            "costs the digits of its coordinates; move the origin nearer",
+            f"the plate lies {far:.3g} from the origin, near {at(outline[0].at)}, but is only "
+            f"{diagonal:.3g} across, which costs the digits of its coordinates; move the origin "
+            "nearer",
         )
     ]
 
 
+def _sides(item: _Given, shortest: float) -> tuple[tuple[Side, ...], list[Fault]]:
+    name = item.name if item.kind == "hole" else None
+    if not isinstance(item.shape, CircleShape):
+        return vertex_sides(item.shape, name, shortest)
+    if item.shape.radius >= shortest:
+        return circle_sides(item.shape, name, f"{item.pointer}/circle"), []
+    return (), [
+        Fault(
+            f"{item.pointer}/circle/radius",
+            f"{item.label} of radius {item.shape.radius:.3g} at {at(item.shape.centre)} is too "
+            f"small for a plate of this size; at least {shortest:.3g} is needed",
+        )
+    ]
+
+
+def _flat_faults(loop: Loop, shortest: float) -> list[Fault]:
+    """A loop all of whose sides lie in one line; that they touch each other need not be said."""
+    curves = [side.curve for side in loop.sides]
+    places = np.concatenate([c.at(np.array([0.0, 0.5])) for c in curves])
+    away = places - places[0]
+    farthest = away[np.argmax(norm(away))]
+    if np.abs(cross(away, farthest)).max() >= shortest * norm(farthest):
+        return []
+    return [
+        Fault(
+            loop.pointer,
+            f"{loop.label} encloses no area: its sides from {at(places[0])} lie in line",
+        )
+    ]
+
+
+# --- the drawing --------------------------------------------------------------------------------
+
+
+def _edges(arrangement: Arrangement, domains: Domains) -> Iterator[Edge]:
+    """The pieces that lie between two domains; those that divide nothing are left out."""
+    for number, piece in enumerate(arrangement.pieces):
+        left, right = domains.of(number)
+        if left != right:
+            yield Edge(piece.curve, piece.name, left, right, piece.pointer)
+
+
+def _inner_points(
+    arrangement: Arrangement, domains: Domains, edges: tuple[Edge, ...]
+) -> dict[str, int]:
+    """Domain of each named point that is no vertex of an edge."""
+    on_edges = {place for edge in edges for place in (edge.start, edge.end)}
+    names = [n for n in arrangement.points if arrangement.place(n) not in on_edges]
+    places = np.array([arrangement.place(name) for name in names]).reshape(-1, 2)
+    return dict(zip(names, domains.at(places), strict=True))
+
+
 def _point_faults(
-    points: Mapping[str, Vector], loops: list[Loop], diagonal: float
+    given: Mapping[str, Vector], arrangement: Arrangement, inner: Mapping[str, int], diagonal: float
 ) -> Iterator[Fault]:
-    shapes = [polygon(loop, RISE * diagonal) for loop in loops if loop.kind != "region"]
-    for name, place in points.items():
-        here = shapely.Point(place)
-        outside = shapes[0].distance(here) > SHORTEST * diagonal / 2
-        hole = next((h for h in shapes[1:] if _well_inside(h, here, diagonal)), None)
-        if outside or hole is not None:
-            seen = "in a hole" if not outside else "outside the plate"
+    shortest = SHORTEST * diagonal
+    names = list(inner)
+    places = np.array([given[name] for name in names]).reshape(-1, 2)
+    for name, domain in inner.items():
+        if domain == OUTSIDE:
             yield Fault(
-                f"/geometry/points/{_escaped(name)}",
-                f"point {name!r} at ({place[0]:.6g}, {place[1]:.6g}) lies {seen}; a point must "
-                "lie on the plate or on its edge",
+                _pointer(name),
+                f"point {name!r} at {at(given[name])} lies outside the plate or in a hole; a point "
+                "must lie on the plate or on its edge",
             )
+    near, _ = close_places(arrangement.table, places, shortest)
+    for number in np.unique(near):
+        if inner[names[number]] != OUTSIDE:
+            yield _too_close(names[number], given, "a side", shortest)
+    points = shapely.points(places)
+    for one, other in zip(
+        *shapely.STRtree(points).query(points, predicate="dwithin", distance=shortest), strict=True
+    ):
+        same = arrangement.points[names[one]] == arrangement.points[names[other]]
+        if one < other and not same:
+            yield _too_close(names[other], given, f"point {names[one]!r}", shortest)
 
 
-def _well_inside(shape: shapely.Polygon, here: shapely.Point, diagonal: float) -> bool:
-    return shape.contains(here) and shape.exterior.distance(here) > SHORTEST * diagonal / 2
+def _too_close(name: str, given: Mapping[str, Vector], what: str, shortest: float) -> Fault:
+    return Fault(
+        _pointer(name),
+        f"point {name!r} at {at(given[name])} is nearly, but not quite, on {what}; put it there, "
+        f"or at least {shortest:.3g} away",
+    )
 
 
-def _escaped(name: str) -> str:
-    return name.replace("~", "~0").replace("/", "~1")
+def _pointer(name: str) -> str:
+    return "/geometry/points/" + name.replace("~", "~0").replace("/", "~1")
+
+
+def _numbered(
+    arrangement: Arrangement, edges: tuple[Edge, ...], inner: Mapping[str, int]
+) -> Drawing:
+    """Domains get numbers without gaps; the plate's own is left out if regions cover it all."""
+    used = sorted({d for edge in edges for d in (edge.left, edge.right)} - {OUTSIDE})
+    number = {OUTSIDE: OUTSIDE} | {old: new for new, old in enumerate(used, start=1)}
+    loops = arrangement.loops
+    return Drawing(
+        tuple(Edge(e.curve, e.side, number[e.left], number[e.right], e.pointer) for e in edges),
+        tuple(PLATE if old == 1 else loops[old - 2].name for old in used),
+        {name: arrangement.place(name) for name in arrangement.points},
+        {name: number[domain] for name, domain in inner.items()},
+    )
