@@ -1,6 +1,6 @@
 """Pictures of a solved state: filled stress fields and the deformed shape."""
 
-from collections.abc import Callable
+from collections.abc import Callable, Iterator
 from dataclasses import dataclass
 from typing import Any
 
@@ -149,14 +149,23 @@ def _fill(page: Page, view: View, surface: Surface, values: Array, scale: Scale)
         limits=scale.reach,
     )
     sheet = Canvas(WIDTH, HEIGHT)
-    corners = values[surface.triangles]
-    # Where the field is even up to rounding, a line would wander.
-    sloping = np.ptp(corners, axis=1) > EVEN * (scale.high - scale.low)
-    for level in filter(None, scale.ticks):
-        crossed = sloping & (corners.min(axis=1) <= level) & (corners.max(axis=1) >= level)
-        for line in isolines(points, surface.triangles[crossed], values, level):
+    for level, triangles in _crossed(surface.triangles, values, scale):
+        for line in isolines(points, triangles, values, level):
             draw_isoline(sheet, line, level)
     page.paper = over(painted, sheet.pixels())
+
+
+def _crossed(
+    triangles: NDArray[np.int64], values: Array, scale: Scale
+) -> Iterator[tuple[float, NDArray[np.int64]]]:
+    """Each tick of the legend but zero, with the triangles that its isoline may cross."""
+    first, second, third = values[triangles.T]
+    low = np.minimum(np.minimum(first, second), third)
+    high = np.maximum(np.maximum(first, second), third)
+    # Where the field is even up to rounding, a line would wander.
+    sloping = high - low > EVEN * (scale.high - scale.low)
+    for level in filter(None, scale.ticks):
+        yield level, triangles[sloping & (low <= level) & (level <= high)]
 
 
 def mark_peak(page: Page, view: View, at: Array, value: str, where: str) -> None:

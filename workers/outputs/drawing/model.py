@@ -33,7 +33,7 @@ from workers.outputs.drawing.view import View
 
 Array = NDArray[np.floating[Any]]
 
-SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 225.0, 105.0, 175.0  # for signs, labels and dimensions
+SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 225.0, 140.0, 175.0  # for signs, labels and dimensions
 STRIP = 18  # half the strip that a dimension line takes [pixels]
 LABEL_BAND = 46  # left free for a label between the signs at the plate and a dimension line
 SMALL = 22.0

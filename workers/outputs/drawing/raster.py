@@ -77,8 +77,9 @@ def isolines(
     """Polylines (n, 2) where the value is `level`."""
     if not len(triangles):
         return []
-    surface = _polydata(points, triangles)
-    surface["value"] = values
+    corners = triangles.ravel()
+    surface = _polydata(points[corners], np.arange(len(corners)).reshape(-1, 3))
+    surface["value"] = values[corners]
     lines = surface.contour([level], scalars="value")
     if lines.n_cells == 0:
         return []
