@@ -5,9 +5,7 @@ requests on it, and looks for free motions. NumPy and shapely only, so that the 
 once. An outline is checked as a drawing; what finds no place on its mesh shows in a worker.
 """
 
-import numpy as np
-
-from workers.analysis.held import held_directions
+from workers.analysis.held import held_by
 from workers.analysis.load_places import load_faults
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
@@ -15,9 +13,7 @@ from workers.analysis.meshing.outline import draw
 from workers.analysis.motions import free_motions
 from workers.analysis.request_places import request_faults
 from workers.analysis.selection import Finder
-from workers.analysis.springs import spring_blocks
-from workers.analysis.support_rows import support_rows
-from workers.errors import DocumentError, Fault, FaultyError, MechanismError, MeshError
+from workers.errors import DocumentError, Fault, MechanismError, MeshError
 from workers.job import Job, OutlineGeometry
 
 
@@ -55,22 +51,10 @@ def placing_faults(job: Job, mesh: Mesh) -> list[Fault]:
     ]
 
 
-def _support_faults(job: Job, finder: Finder) -> list[Fault]:
+def _support_faults(job: Job, finder: Finder) -> tuple[Fault, ...]:
     """Supports that find no place, or if all do, the motions that they leave free."""
-    faults: list[Fault] = []
-    nodes, directions = [np.empty(0, np.intp)], [np.empty((0, 2))]
-    for support in job.supports:
-        try:
-            selection = finder.find(support.on, f"{support.pointer}/on")
-            list(support_rows(support, 0, 0, finder.mesh))
-            spring_blocks(support, finder.mesh)
-        except FaultyError as error:
-            faults.extend(error.faults)
-            continue
-        held = held_directions(support, selection, finder.mesh)
-        nodes.append(held[0])
-        directions.append(held[1])
-    if faults:
-        return faults
-    motions = free_motions(finder.mesh, np.concatenate(nodes), np.concatenate(directions))
-    return list(MechanismError(motions).faults)
+    try:
+        held = held_by(job, finder)
+    except MeshError as error:
+        return error.faults
+    return MechanismError(free_motions(finder.mesh, *held.directions())).faults

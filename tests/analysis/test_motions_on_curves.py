@@ -4,12 +4,12 @@ import numpy as np
 import pytest
 
 from tests.plates import ELEMENTS, annulus, grid, plate_job, ring
-from workers.analysis.held import held_directions
+from workers.analysis.held import held_by
 from workers.analysis.mesh import Mesh
 from workers.analysis.motions import free_motions
-from workers.analysis.selection import select
+from workers.analysis.selection import Finder
 from workers.analysis.solution import solve
-from workers.analysis.true_normals import true_normals
+from workers.analysis.true_normals import node_normals
 from workers.job import Named, Pressure, Spring, Support
 
 
@@ -24,13 +24,17 @@ def arch(kind: str, *, graded: bool = False) -> Mesh:
     return grid(kind, 6, 2, shape=shape)
 
 
+def _held(support: Support, mesh: Mesh) -> tuple[np.ndarray, np.ndarray]:
+    return held_by(plate_job([support]), Finder(mesh)).directions()
+
+
 @pytest.mark.parametrize("kind", ELEMENTS)
 @pytest.mark.parametrize("graded", [False, True])
 @pytest.mark.parametrize(("side", "sign"), [("bottom", 1), ("top", -1)])
 def test_normals_of_an_arc_are_its_radii(kind: str, graded: bool, side: str, sign: int) -> None:
     """Outwards on the rim, towards the centre in the bore; at the ends of the arc as well."""
     mesh = arch(kind, graded=graded)
-    nodes, normals = true_normals(mesh, mesh.sides[side])
+    nodes, normals = node_normals(mesh, mesh.sides[side])
     radial = mesh.nodes[nodes] - [5.0, 1.0]
     radial /= np.linalg.norm(radial, axis=1, keepdims=True)
     np.testing.assert_allclose(normals, sign * radial, atol=1e-12)
@@ -39,25 +43,37 @@ def test_normals_of_an_arc_are_its_radii(kind: str, graded: bool, side: str, sig
 @pytest.mark.parametrize("kind", ELEMENTS)
 def test_normals_of_a_straight_side_are_square_to_it(kind: str) -> None:
     mesh = grid(kind, 3, 2, shape=lambda x, y: (x - y, x + y))
-    _, normals = true_normals(mesh, mesh.sides["right"])
+    _, normals = node_normals(mesh, mesh.sides["right"])
     np.testing.assert_allclose(normals, np.sqrt([[0.5, 0.5]] * len(normals)), atol=1e-12)
 
 
 @pytest.mark.parametrize("kind", ELEMENTS)
-def test_at_a_right_angle_normals_are_averaged_and_the_neighbours_keep_theirs(kind: str) -> None:
-    """The mean of (0, -1) and (1, 0) over facets of one length is (1, -1)/2."""
+def test_a_corner_has_the_normals_of_both_legs_and_its_neighbours_keep_theirs(kind: str) -> None:
     mesh = grid(kind, 3, 3)
     facets = np.concatenate((mesh.sides["bottom"], mesh.sides["right"]))
-    nodes, normals = true_normals(mesh, facets)
+    nodes, normals = node_normals(mesh, facets)
     x, y = mesh.nodes[nodes].T
+    corner = nodes == mesh.points["SE"]
+    np.testing.assert_allclose(np.sort(normals[corner], axis=0), [[0, -1], [1, 0]], atol=1e-12)
     expected = np.column_stack(((x == 1).astype(float), -(y == 0).astype(float)))
-    expected[(x == 1) & (y == 0)] /= 2
-    np.testing.assert_allclose(normals, expected, atol=1e-12)
+    np.testing.assert_allclose(normals[~corner], expected[~corner], atol=1e-12)
+    assert len(nodes) == len(mesh.facet_nodes(facets)) + 1
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_a_wide_bend_has_one_normal(kind: str) -> None:
+    """A polygon of more than 135 degrees stands for a curve: here 150, halved but for the lengths of
+    the legs, which differ by a seventh."""
+    mesh = grid(kind, 4, 2, shape=lambda x, y: (x, y + np.maximum(x - 0.5, 0) / np.sqrt(3)))
+    nodes, normals = node_normals(mesh, mesh.sides["bottom"])
+    assert len(set(nodes.tolist())) == len(nodes)
+    (bend,) = normals[mesh.nodes[nodes, 0] == 0.5]
+    assert np.degrees(np.arctan2(bend[0], -bend[1])) == pytest.approx(15, abs=2)
 
 
 def test_one_chord_alone_has_its_own_normal() -> None:
     mesh = grid("Q4", 1, 1)
-    _, normals = true_normals(mesh, mesh.sides["bottom"])
+    _, normals = node_normals(mesh, mesh.sides["bottom"])
     np.testing.assert_allclose(normals, [[0, -1], [0, -1]])
 
 
@@ -75,8 +91,7 @@ def test_a_roller_on_an_arc_lets_it_turn_about_its_centre(
     kind: str, graded: bool, support: Support
 ) -> None:
     mesh = arch(kind, graded=graded)
-    held = held_directions(support, select(mesh, support.on, "/s"), mesh)
-    assert free_motions(mesh, *held) == ["the plate can rotate about (5, 1)"]
+    assert free_motions(mesh, *_held(support, mesh)) == ["the plate can rotate about (5, 1)"]
 
 
 @pytest.mark.parametrize(
@@ -110,8 +125,7 @@ def test_a_roller_on_an_arc_does_not_lock_the_rotation(
 def test_a_tangential_spring_on_the_bore_stops_the_rotation(kind: str) -> None:
     mesh = ring(kind, 12, 2, 1.0, 2.0)
     support = Support("s", Named("bore"), normal=0.0, spring=Spring(tangential=1.0))
-    held = held_directions(support, select(mesh, support.on, "/s"), mesh)
-    assert free_motions(mesh, *held) == []
+    assert free_motions(mesh, *_held(support, mesh)) == []
 
 
 @pytest.mark.parametrize(
@@ -126,5 +140,5 @@ def test_a_tangential_spring_on_the_bore_stops_the_rotation(kind: str) -> None:
 )
 def test_every_node_is_held_once_for_each_direction(support: Support, count: int) -> None:
     mesh = grid("Q4", 2, 2)
-    nodes, directions = held_directions(support, select(mesh, support.on, "/s"), mesh)
+    nodes, directions = _held(support, mesh)
     assert len(nodes) == len(directions) == count

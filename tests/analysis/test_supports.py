@@ -3,7 +3,7 @@
 import numpy as np
 import pytest
 
-from tests.plates import ELEMENTS, MIXED, grid, plate_job, ring
+from tests.plates import ELEMENTS, MIXED, annulus, grid, plate_job, ring
 from workers.analysis.mesh import Mesh
 from workers.analysis.support_rows import side_normals
 from workers.analysis.supports import Supports, resolve_supports
@@ -45,20 +45,10 @@ def test_normal_of_an_upright_side_needs_no_turned_axes(side: str, axis: int) ->
 def test_normals_of_a_full_circle_are_radial(kind: str) -> None:
     """Nodes and chords are symmetric about every radius through a corner or mid-side node."""
     mesh = ring(kind, 12, 2, 1.0, 2.0)
-    nodes, normals, blur = side_normals(mesh, mesh.sides["bore"], "")
+    nodes, normals, blur = side_normals(mesh, mesh.sides["bore"])
     if "+" not in kind:
         np.testing.assert_allclose(normals, -mesh.nodes[nodes], atol=1e-12)
     assert not blur.any()
-
-
-def test_normals_hold_no_constant_pressure_force_along_the_side() -> None:
-    """The consistent forces of a constant pressure are along the nodal normals, by definition:
-    here summed by hand on two straight facets of lengths 1 and 3 that meet at a right angle."""
-    mesh = grid("Q4", 1, 1, size=(3.0, 1.0))
-    facets = np.concatenate((mesh.sides["bottom"], mesh.sides["right"]))
-    nodes, normals, _ = side_normals(mesh, facets, "")
-    corner = normals[nodes == mesh.points["SE"]][0]
-    np.testing.assert_allclose(corner, np.array([1, -3]) / np.sqrt(10))
 
 
 def test_skew_roller_turns_the_axes_of_its_nodes() -> None:
@@ -263,3 +253,83 @@ def test_all_faulty_supports_are_reported_together() -> None:
 def test_no_supports_hold_nothing() -> None:
     job = plate_job((), [PointForce(on=CORNER, force=(1, 0))])
     assert not resolve_supports(job, grid("Q4", 1, 1)).held.any()
+
+
+# --- rollers and springs on curved sides, and where they end ---------------------------------------
+
+
+def _ellipse(kind: str) -> Mesh:
+    """Half a ring between ellipses about twice as wide as high; "bottom" is the outer one."""
+
+    def shape(x: np.ndarray, y: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        r, angle = 2 - y, np.pi * x
+        return 2 * r * np.cos(angle), r * np.sin(angle)
+
+    return grid(kind, 24, 2, shape=shape)
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_pieces_of_a_curve_that_is_no_arc_do_not_pin_the_node_between_them(kind: str) -> None:
+    """Normals of an ellipse are known up to its change of curvature over an element."""
+    mesh = _ellipse(kind)
+    x = mesh.nodes[mesh.facet_ends(mesh.sides["bottom"])].mean(axis=1)[:, 0]
+    rim = mesh.sides["bottom"]
+    pieces = {"a": rim[x < -2], "b": rim[x >= -2]}
+    mesh = Mesh(mesh.nodes, mesh.blocks, mesh.regions, pieces)
+    found = _resolve(
+        mesh, Support("a", Named("a"), normal=0.0), Support("b", Named("b"), normal=0.0)
+    )
+    assert found.held.sum() == len(mesh.facet_nodes(rim))
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+@pytest.mark.parametrize("degrees", [2.0, 10.0])
+def test_a_roller_that_meets_an_arc_at_an_angle_pins_the_node_there(
+    kind: str, degrees: float
+) -> None:
+    """The end of an arc has its radius for a normal, exactly, so that two degrees are two degrees:
+    six elements of 20 degrees follow the arc."""
+    mesh = grid(kind, 6, 2, shape=lambda x, y: annulus(2.0, 3.0)(x / 3, y))
+    end = mesh.points["SW"]  # at (3, 0), normal x
+    a = np.radians(degrees)
+    found = _resolve(
+        mesh,
+        Support("arc", BOTTOM, normal=0.0),
+        Support("slide", Named("SW"), along=(np.cos(a), np.sin(a))),
+    )
+    assert _held(found, end) == [True, True]
+
+
+@pytest.mark.parametrize("kind", ELEMENTS)
+def test_normal_springs_on_a_circle_do_not_resist_its_rotation(kind: str) -> None:
+    """A turn about the centre moves no point along the normal: no force, to rounding."""
+    mesh = ring(kind, 12, 2, 1.0, 2.0)
+    bore = Named("bore")
+    turn = np.stack((-mesh.nodes[:, 1], mesh.nodes[:, 0]), axis=1)[..., None]
+    normal = _resolve(mesh, Support("s", bore, spring=Spring(normal=1.0))).springs[0]
+    assert np.abs(normal.force(turn)).max() < 1e-13
+    tangential = _resolve(mesh, Support("s", bore, spring=Spring(tangential=1.0))).springs[0]
+    force = tangential.force(turn)[..., 0]
+    at = mesh.nodes[tangential.nodes]
+    length = mesh.facet_lengths(mesh.sides["bore"]).sum()
+    moment = (at[:, 0] * force[:, 1] - at[:, 1] * force[:, 0]).sum()
+    assert moment == pytest.approx(-length, rel=1e-12)
+
+
+def test_a_corner_in_one_side_is_held_both_ways() -> None:
+    mesh = grid("Q8", 2, 2)
+    facets = np.concatenate((mesh.sides["bottom"], mesh.sides["right"]))
+    mesh = Mesh(mesh.nodes, mesh.blocks, mesh.regions, {"both": facets}, mesh.points)
+    found = _resolve(mesh, Support("rails", Named("both"), normal=0.0))
+    assert _held(found, mesh.points["SE"]) == [True, True]
+    assert _held(found, mesh.points["SW"]) == [False, True]
+    assert _held(found, mesh.points["NE"]) == [True, False]
+
+
+def test_a_corner_of_a_spring_bed_pushes_along_both_legs() -> None:
+    """Legs of 1 and 1 along x and y: together k L on each axis, no coupling of the two."""
+    mesh = grid("Q8", 2, 2)
+    facets = np.concatenate((mesh.sides["bottom"], mesh.sides["right"]))
+    mesh = Mesh(mesh.nodes, mesh.blocks, mesh.regions, {"both": facets}, mesh.points)
+    found = _resolve(mesh, Support("bed", Named("both"), spring=Spring(normal=3.0))).springs[0]
+    np.testing.assert_allclose(found.blocks.sum(axis=0), [[3, 0], [0, 3]], atol=1e-14)

@@ -1,40 +1,54 @@
-"""In which directions a support resists, node by node, as far as rigid motions are concerned.
+"""What the supports of a job ask of a mesh: rows and springs, with the faults of all at once.
 
-Like the rows and springs of the analysis, but with the true normals of curved sides, so that a
-roller on a circle is seen to let the plate turn.
+How the rows are put into the equations is in `supports.py`.
 """
+
+from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
 
-from workers.analysis.mesh import Mesh
-from workers.analysis.selection import Selection
-from workers.analysis.true_normals import true_normals
-from workers.job import Spring, Support
-
-Array = NDArray[np.float64]
-Numbers = NDArray[np.intp]
-
-NOTHING = Spring()
+from workers.analysis.selection import Finder
+from workers.analysis.springs import SpringBlocks, spring_blocks
+from workers.analysis.support_rows import ALL, Rows, support_rows
+from workers.errors import Fault, FaultyError, MeshError
+from workers.job import Job
 
 
-def held_directions(support: Support, selection: Selection, mesh: Mesh) -> tuple[Numbers, Array]:
-    """Nodes (r,) and the direction (r, 2) in which each is held or sprung."""
-    spring = support.spring or NOTHING
-    fixed: list[tuple[float, float]] = []
-    if support.ux is not None or spring.x > 0:
-        fixed.append((1.0, 0.0))
-    if support.uy is not None or spring.y > 0:
-        fixed.append((0.0, 1.0))
-    if support.along is not None:
-        fixed.append(support.along)
-    nodes = [np.repeat(selection.nodes.astype(np.intp), len(fixed))]
-    directions = [np.tile(np.array(fixed, float).reshape(-1, 2), (len(selection.nodes), 1))]
-    normal = support.normal is not None or spring.normal > 0
-    if (normal or spring.tangential > 0) and len(selection.facets):
-        on_side, outward = true_normals(mesh, selection.facets)
-        outward /= np.linalg.norm(outward, axis=1, keepdims=True)
-        tangent = np.column_stack((-outward[:, 1], outward[:, 0]))
-        nodes += [on_side] * (normal + (spring.tangential > 0))
-        directions += [outward] * normal + [tangent] * (spring.tangential > 0)
-    return np.concatenate(nodes), np.concatenate(directions)
+@dataclass(frozen=True, eq=False)
+class Held:
+    """Rows of all supports, and for each support its springs."""
+
+    rows: Rows
+    springs: tuple[SpringBlocks, ...]
+
+    def directions(self) -> tuple[NDArray[np.int64], NDArray[np.float64]]:
+        """Every node (r,) and direction (r, 2) in which a row or a spring resists."""
+        parts = [(self.rows.node, self.rows.direction)]
+        parts += [spring.directions() for spring in self.springs]
+        nodes, directions = zip(*parts, strict=True)
+        return np.concatenate(nodes), np.concatenate(directions)
+
+
+def held_by(job: Job, finder: Finder) -> Held:
+    """Put the supports of a job on a mesh.
+
+    Raises
+    ------
+    MeshError   supports catch nothing, or have no direction there; carries all faults.
+    """
+    case_numbers = {case.name: number for number, case in enumerate(job.load_cases)}
+    faults: list[Fault] = []
+    rows: list[Rows] = []
+    springs: list[SpringBlocks] = []
+    for number, support in enumerate(job.supports):
+        try:
+            selection = finder.find(support.on, f"{support.pointer}/on")
+            case = ALL if support.case is None else case_numbers[support.case]
+            rows.extend(support_rows(support, selection, finder.mesh, number, case))
+            springs.append(spring_blocks(support, selection, finder.mesh))
+        except FaultyError as error:
+            faults.extend(error.faults)
+    if faults:
+        raise MeshError(faults)
+    return Held(Rows.join(rows), tuple(springs))

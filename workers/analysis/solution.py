@@ -113,7 +113,7 @@ def _solve(job: Job, mesh: Mesh, report: Progress, method: str) -> Solution:
     model = build_model(job, mesh)
     with watch("loads and supports"):
         supports = resolve_supports(job, mesh)
-        if motions := free_motions(mesh, *supports.holding()):
+        if motions := free_motions(mesh, *supports.directions):
             raise MechanismError(motions)
         loads = resolve_loads(model)
     system = build_system(model, supports, watch, report, method)

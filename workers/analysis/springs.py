@@ -5,8 +5,9 @@ from dataclasses import dataclass
 import numpy as np
 from numpy.typing import NDArray
 
-from workers.analysis.mesh import FacetGroup, Mesh
-from workers.analysis.selection import Selection, select
+from workers.analysis.mesh import FacetGroup, Facets, Mesh
+from workers.analysis.selection import Selection
+from workers.analysis.true_normals import facet_normals
 from workers.errors import Fault, MeshError
 from workers.job import Named, Spring, Support
 
@@ -33,7 +34,7 @@ class SpringBlocks:
         np.subtract.at(force, row, self.blocks @ displacement[self.columns])
         return force
 
-    def holding(self) -> tuple[NDArray[np.int64], Array]:
+    def directions(self) -> tuple[NDArray[np.int64], Array]:
         """Nodes (r,) and directions (r, 2) in which the springs resist."""
         own = self.rows == self.columns
         nodes, row = np.unique(self.rows[own], return_inverse=True)
@@ -49,8 +50,8 @@ class SpringBlocks:
         return np.unique(self.rows)
 
 
-def spring_blocks(support: Support, mesh: Mesh) -> SpringBlocks:
-    """Stiffness of the springs of one support; empty if it has none.
+def spring_blocks(support: Support, selection: Selection, mesh: Mesh) -> SpringBlocks:
+    """Stiffness of the springs of one support on what it caught; empty if it has none.
 
     Along a side the springs are spread and consistent: k N N^T ds. At a point they act on the
     node.
@@ -61,7 +62,6 @@ def spring_blocks(support: Support, mesh: Mesh) -> SpringBlocks:
     """
     if support.spring is None:
         return SpringBlocks(np.empty(0, np.int64), np.empty(0, np.int64), np.empty((0, 2, 2)))
-    selection = select(mesh, support.on, support.pointer)
     if isinstance(support.on, Named) and support.on.name in mesh.regions:
         raise MeshError(
             [
@@ -72,7 +72,7 @@ def spring_blocks(support: Support, mesh: Mesh) -> SpringBlocks:
             ]
         )
     if len(selection.facets):
-        return _side_springs(support.spring, mesh, selection)
+        return _side_springs(support.spring, mesh, selection.facets)
     return _point_springs(support, selection)
 
 
@@ -88,31 +88,40 @@ def _point_springs(support: Support, selection: Selection) -> SpringBlocks:
     return SpringBlocks(nodes, nodes, blocks)
 
 
-def _side_springs(spring: Spring, mesh: Mesh, selection: Selection) -> SpringBlocks:
-    parts = [_facet_springs(spring, mesh, group) for group in mesh.facet_groups(selection.facets)]
+def _side_springs(spring: Spring, mesh: Mesh, facets: Facets) -> SpringBlocks:
+    normals = facet_normals(mesh, facets)
+    parts = [
+        _facet_springs(spring, mesh, group, normals[group.rows])
+        for group in mesh.facet_groups(facets)
+    ]
     return SpringBlocks(*(np.concatenate(arrays) for arrays in zip(*parts, strict=True)))
 
 
 def _facet_springs(
-    spring: Spring, mesh: Mesh, group: FacetGroup
+    spring: Spring, mesh: Mesh, group: FacetGroup, normals: Array
 ) -> tuple[NDArray[np.int64], NDArray[np.int64], Array]:
-    """Integral of N_i N_j (kx x x^T + ky y y^T + kn n n^T + kt t t^T) ds on each facet."""
+    """Integral of N_i N_j ds times (kx x x^T + ky y y^T + kn n_i n_j^T + kt t_i t_j^T).
+
+    The displacement along the side's normal is interpolated from that at the nodes, along their
+    true normals (f, 3, 2). With the normals of chords a plate that turns about the centre of a
+    circular side would stretch its normal springs.
+    """
     block = mesh.blocks[group.block]
     local = list(block.element.sides[group.side])
     nodes = block.connectivity[group.elements]
     _, tangent = block.element.side_points(mesh.nodes[nodes], group.side)
-    length = np.linalg.norm(tangent, axis=2)
-    t = tangent / length[..., None]
-    n = np.stack([t[..., 1], -t[..., 0]], axis=-1)
+    weights = np.linalg.norm(tangent, axis=2) * block.element.side_rule().weights
+    N = block.element.shape_functions(block.element.side_natural_points(group.side))[:, local]
+    shared = np.einsum("qi,qj,mq->mij", N, N, weights)
+    k = len(local)
+    n = normals[:, :k]
+    t = np.stack((-n[..., 1], n[..., 0]), axis=-1)
     stiffness = (
         np.diag([spring.x, spring.y])
-        + spring.normal * n[..., :, None] * n[..., None, :]
-        + spring.tangential * t[..., :, None] * t[..., None, :]
+        + spring.normal * n[:, :, None, :, None] * n[:, None, :, None, :]
+        + spring.tangential * t[:, :, None, :, None] * t[:, None, :, None, :]
     )
-    weights = length * block.element.side_rule().weights
-    N = block.element.shape_functions(block.element.side_natural_points(group.side))[:, local]
-    blocks = np.einsum("qi,qj,mq,mqab->mijab", N, N, weights, stiffness)
-    k = len(local)
+    blocks = shared[..., None, None] * stiffness
     side_nodes = nodes[:, local].astype(np.int64)
     rows, columns = np.repeat(side_nodes, k, axis=1), np.tile(side_nodes, (1, k))
     return rows.ravel(), columns.ravel(), blocks.reshape(-1, 2, 2)

@@ -1,7 +1,8 @@
 """What each support asks of each node: displacement along a direction = value.
 
 A `normal` support takes the outward normal of the side at each node: that of its true curve where
-the side is straight or an arc, so that it holds no tangential force and locks no rotation.
+the side is straight or an arc, so that it holds no tangential force and locks no rotation. Where
+the side has a corner, it holds along the normals of both legs.
 """
 
 from collections.abc import Iterator, Sequence
@@ -12,14 +13,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from workers.analysis.mesh import Facets, Mesh
-from workers.analysis.selection import Selection, select
-from workers.analysis.true_normals import true_normals
+from workers.analysis.selection import Selection
+from workers.analysis.true_normals import facet_normals, node_normals
 from workers.errors import Fault, MeshError
 from workers.job import Support
 
 Array = NDArray[np.float64]
-
-NO_DIRECTION = 1e-3  # a mean normal shorter than this belongs to a knife edge, not to a side
+ALL = -1  # case number of a value that belongs to every case
 
 
 @dataclass(frozen=True, eq=False)
@@ -27,7 +27,7 @@ class Rows:
     """Constraint rows: direction . displacement of node = value.
 
     node (r,), direction (r, 2) unit, value (r,) [L], case (r,) number of the only case in which
-    the value acts or -1, support (r,) number in the job, blur (r,) angle by which the mesh leaves
+    the value acts or ALL, support (r,) number in the job, blur (r,) angle by which the mesh leaves
     the direction open [rad].
     """
 
@@ -55,7 +55,7 @@ class Rows:
     @classmethod
     def join(cls, rows: Sequence["Rows"]) -> "Rows":
         none = cls.uniform(
-            np.empty(0, np.int64), np.zeros(2), np.zeros(1), value=0.0, case=-1, support=0
+            np.empty(0, np.int64), np.zeros(2), np.zeros(1), value=0.0, case=ALL, support=0
         )
         return cls(
             *(
@@ -68,21 +68,22 @@ class Rows:
         return Rows(*(getattr(self, f.name)[index] for f in fields(self)))
 
 
-def support_rows(support: Support, number: int, case: int, mesh: Mesh) -> Iterator[Rows]:
-    """Rows of one support; none if it is a spring only.
+def support_rows(
+    support: Support, selection: Selection, mesh: Mesh, number: int, case: int
+) -> Iterator[Rows]:
+    """Rows of one support on what it caught; none if it is a spring only.
 
     Raises
     ------
-    MeshError   the support catches nothing, or asks for a normal where there is no side.
+    MeshError   the support asks for a normal where there is no side.
     """
-    selection = select(mesh, support.on, support.pointer)
     rows = partial(Rows.uniform, case=case, support=number)
     exact = np.zeros(1)
     for value, axis in ((support.ux, (1.0, 0.0)), (support.uy, (0.0, 1.0))):
         if value is not None:
             yield rows(selection.nodes, np.array(axis), exact, value=value)
     if support.normal is not None:
-        nodes, normals, blur = side_normals(mesh, _facets(support, selection), support.pointer)
+        nodes, normals, blur = side_normals(mesh, _facets(support, selection))
         yield rows(nodes, normals, blur, value=support.normal)
     if support.along is not None:
         along = np.asarray(support.along) / np.hypot(*support.along)
@@ -103,33 +104,30 @@ def _facets(support: Support, selection: Selection) -> Facets:
     return selection.facets
 
 
-def side_normals(
-    mesh: Mesh, facets: Facets, pointer: str
-) -> tuple[NDArray[np.int64], Array, Array]:
-    """Outward unit normal at every node of a side.
+def side_normals(mesh: Mesh, facets: Facets) -> tuple[NDArray[np.int64], Array, Array]:
+    """Outward unit normals at the nodes of a side.
 
     Returns
     -------
-    nodes (k,), normals (k, 2), blur (k,) : at the ends of a side that curves, the angle between
-        the normals at the two ends of the last facet; 0 elsewhere [rad]
+    nodes (r,), normals (r, 2), blur (r,) : a node at a corner stands several times; blur is how
+        far the normal may be off at the ends of a side that is no arc, 0 elsewhere [rad]
     """
-    found, mean = true_normals(mesh, facets)
-    nodes, length = found.astype(np.int64), np.linalg.norm(mean, axis=1)
-    if (length < NO_DIRECTION).any():
-        x, y = mesh.nodes[nodes[np.argmin(length)]]
-        raise MeshError(
-            [Fault(pointer, f"the side has no normal at ({x:g}, {y:g}): it folds back")]
-        )
-    normals = mean / length[:, None]
-    return nodes, normals, _end_blur(mesh, facets, nodes, normals)
+    found, normals = node_normals(mesh, facets)
+    nodes = found.astype(np.int64)
+    return nodes, normals, _end_blur(mesh, facets)[nodes]
 
 
-def _end_blur(mesh: Mesh, facets: Facets, nodes: NDArray, normals: Array) -> Array:
-    """Turn of the normal along the last facet, at nodes where the side ends."""
-    ends = np.searchsorted(nodes, mesh.facet_ends(facets))
-    n, m = normals[ends[:, 0]], normals[ends[:, 1]]
-    turn = np.abs(np.arctan2(n[:, 0] * m[:, 1] - n[:, 1] * m[:, 0], np.einsum("fi,fi->f", n, m)))
-    is_end = np.bincount(ends.ravel(), minlength=len(nodes)) == 1
-    blur = np.zeros(len(nodes))
-    np.maximum.at(blur, ends.ravel(), np.repeat(turn, 2))
-    return np.where(is_end, blur, 0.0)
+def _end_blur(mesh: Mesh, facets: Facets) -> Array:
+    """By node of the mesh: change of curvature over the last facet, times its length."""
+    n, m = np.moveaxis(facet_normals(mesh, facets)[:, :2], 1, 0)
+    turn = np.arctan2(n[:, 0] * m[:, 1] - n[:, 1] * m[:, 0], np.einsum("fi,fi->f", n, m))
+    length = mesh.facet_lengths(facets)
+    ends, curvature = mesh.facet_ends(facets), np.repeat(turn / length, 2)
+    count = np.bincount(ends.ravel(), minlength=mesh.node_count)
+    total = np.bincount(ends.ravel(), curvature, minlength=mesh.node_count)
+    last, inner = ends.ravel(), ends[:, ::-1].ravel()
+    next_one = np.where(count[inner] == 2, total[inner] - curvature, curvature)
+    change = np.abs(curvature - next_one) * np.repeat(length, 2)
+    blur = np.zeros(mesh.node_count)
+    np.maximum.at(blur, last, np.where(count[last] == 1, change, 0.0))
+    return blur

@@ -12,10 +12,12 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import coo_array, csr_array
 
+from workers.analysis.held import held_by
 from workers.analysis.mesh import Mesh
-from workers.analysis.springs import SpringBlocks, spring_blocks
-from workers.analysis.support_rows import Rows, support_rows
-from workers.errors import Fault, FaultyError, MeshError
+from workers.analysis.selection import Finder
+from workers.analysis.springs import SpringBlocks
+from workers.analysis.support_rows import ALL, Rows
+from workers.errors import Fault, MeshError
 from workers.job import Job
 
 Array = NDArray[np.float64]
@@ -23,7 +25,6 @@ Mask = NDArray[np.bool_]
 
 PARALLEL = 1e-6  # rad; directions closer than this are one direction
 CONSISTENT = 1e-9  # relative difference of prescribed values that is rounding
-ALL = -1  # case number of a value that belongs to every case
 
 
 @dataclass(frozen=True, eq=False)
@@ -49,6 +50,7 @@ class Supports:
     prescribed : (2N, c) csr  displacement of the held part, global axes, by case [L]
     springs : one for each support
     shares : one for each support
+    directions : (r,) nodes and (r, 2) directions in which a support or a spring resists
     """
 
     held: Mask
@@ -57,19 +59,12 @@ class Supports:
     prescribed: csr_array
     springs: tuple[SpringBlocks, ...]
     shares: tuple[Share, ...]
+    directions: tuple[NDArray[np.int64], Array]
 
     @property
     def nodes(self) -> NDArray[np.int64]:
         """Numbers of the nodes at which something is held."""
         return np.flatnonzero(self.held.any(axis=1))
-
-    def holding(self) -> tuple[NDArray[np.int64], Array]:
-        """Every node (r,) and direction (r, 2) in which a support or a spring resists."""
-        parts = [(share.nodes, share.direction) for share in self.shares]
-        parts += [spring.holding() for spring in self.springs]
-        nodes = [np.empty(0, np.int64), *(part[0] for part in parts)]
-        directions = [np.empty((0, 2)), *(part[1] for part in parts)]
-        return np.concatenate(nodes), np.concatenate(directions)
 
 
 def resolve_supports(job: Job, mesh: Mesh) -> Supports:
@@ -80,31 +75,14 @@ def resolve_supports(job: Job, mesh: Mesh) -> Supports:
     MeshError   a support catches nothing, has no direction there, or contradicts another one;
         carries the faults of all supports.
     """
-    rows, springs = _gather(job, mesh)
+    asked = held_by(job, Finder(mesh))
+    rows = asked.rows
     slots = _choose(rows)
     prescribed = _prescribe(rows, slots, job, mesh.node_count)
     _check_values(rows, slots, prescribed, job, mesh)
     held, turned, axes = _local_axes(slots, mesh.node_count)
     shares = _shares(rows, slots, len(job.supports))
-    return Supports(held, turned, axes, prescribed, springs, shares)
-
-
-def _gather(job: Job, mesh: Mesh) -> tuple[Rows, tuple[SpringBlocks, ...]]:
-    """Rows and springs of all supports, all faults at once."""
-    case_numbers = {case.name: number for number, case in enumerate(job.load_cases)}
-    faults: list[Fault] = []
-    rows: list[Rows] = []
-    springs: list[SpringBlocks] = []
-    for number, support in enumerate(job.supports):
-        try:
-            case = ALL if support.case is None else case_numbers[support.case]
-            rows.extend(support_rows(support, number, case, mesh))
-            springs.append(spring_blocks(support, mesh))
-        except FaultyError as error:
-            faults.extend(error.faults)
-    if faults:
-        raise MeshError(faults)
-    return Rows.join(rows), tuple(springs)
+    return Supports(held, turned, axes, prescribed, asked.springs, shares, asked.directions())
 
 
 # --- which rows hold a node --------------------------------------------------------------------

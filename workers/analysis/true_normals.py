@@ -18,36 +18,54 @@ IN_LINE = 1e-9  # rise over chord below which three points count as in line
 KINK = np.cos(np.radians(45))  # cosine of a turn beyond which two chords are no one curve
 
 
-def true_normals(mesh: Mesh, facets: Facets) -> tuple[Numbers, Array]:
-    """Nodes (k,) of a side and the mean outward normals (k, 2) there.
+def facet_normals(mesh: Mesh, facets: Facets) -> Array:
+    """Outward normals of each facet at its start, end and mid-side node, (f, 3, 2).
 
-    The mean is over the facets that meet at a node, by their lengths: of length 1 where they agree,
-    shorter at kinks, none where the side folds back.
+    In the order of `Mesh.facet_table`; zero where there is no mid-side node. Facets that meet at a
+    node of one straight line or circle agree there, others need not.
     """
     table = mesh.facet_table(facets).astype(np.intp)
-    weight = mesh.facet_lengths(facets)
+    normals = np.zeros((*table.shape, 2))
     quadratic = table[:, 2] >= 0
-    total, size = np.zeros((mesh.node_count, 2)), np.zeros(mesh.node_count)
-    for chosen, find in ((quadratic, _quadratic), (~quadratic, _linear)):
-        nodes, normals = find(mesh, table[chosen])
-        np.add.at(total, nodes, weight[chosen, None, None] * normals)
-        np.add.at(size, nodes, weight[chosen, None])
-    nodes = mesh.facet_nodes(facets).astype(np.intp)
-    return nodes, total[nodes] / size[nodes, None]
+    normals[quadratic] = _quadratic(mesh, table[quadratic])
+    normals[~quadratic, :2] = _linear(mesh, table[~quadratic, :2])
+    return normals
 
 
-def _quadratic(mesh: Mesh, table: Numbers) -> tuple[Numbers, Array]:
-    """Start, middle and end (f, 3) of facets with mid-side nodes, and normals there, (f, 3, 2)."""
-    triples = table[:, [0, 2, 1]]
-    return triples, _circle_normals(mesh.nodes[triples])
+def node_normals(mesh: Mesh, facets: Facets) -> tuple[Numbers, Array]:
+    """Nodes (r,) of a side and the outward unit normals (r, 2) there.
+
+    A node of one curve stands once, with the mean over its facets by their lengths; a node at a
+    corner stands as often as there are facets, with the normal of each.
+    """
+    table, normals = mesh.facet_table(facets).astype(np.intp), facet_normals(mesh, facets)
+    there = table >= 0
+    nodes, normals = table[there], normals[there]
+    weight = np.repeat(mesh.facet_lengths(facets), there.sum(axis=1))
+    one = np.zeros((mesh.node_count, 2))
+    one[nodes] = normals
+    at_corner = np.zeros(mesh.node_count, bool)
+    at_corner[nodes[(normals * one[nodes]).sum(axis=1) < KINK]] = True
+    mean = np.zeros((mesh.node_count, 2))
+    np.add.at(mean, nodes, weight[:, None] * normals)
+    corner = at_corner[nodes]
+    smooth = np.unique(nodes[~corner])
+    return (
+        np.concatenate((smooth, nodes[corner])),
+        np.concatenate((_unit(mean[smooth]), normals[corner])),
+    )
 
 
-def _linear(mesh: Mesh, table: Numbers) -> tuple[Numbers, Array]:
-    """Ends (f, 2) of facets without mid-side nodes, and the normals there, (f, 2, 2).
+def _quadratic(mesh: Mesh, table: Numbers) -> Array:
+    """Normals (f, 3, 2) of facets with mid-side nodes; table (f, 3) start, end, middle."""
+    return _circle_normals(mesh.nodes[table[:, [0, 2, 1]]])[:, [0, 2, 1]]
+
+
+def _linear(mesh: Mesh, ends: Numbers) -> Array:
+    """Normals (f, 2, 2) at the ends (f, 2) of facets without mid-side nodes.
 
     The third node of the circle is the one before the facet or the one behind it.
     """
-    ends = table[:, :2]
     before, behind = np.full((2, mesh.node_count), -1)
     behind[ends[:, 0]], before[ends[:, 1]] = ends[:, 1], ends[:, 0]
     a, b = ends.T
@@ -56,7 +74,7 @@ def _linear(mesh: Mesh, table: Numbers) -> tuple[Numbers, Array]:
     late, is_late = _arc_normals(mesh, np.column_stack((a, b, behind[b])))
     at_a = np.where(is_early, early[:, 1], np.where(is_late, late[:, 0], chord))
     at_b = np.where(is_late, late[:, 1], np.where(is_early, early[:, 2], chord))
-    return ends, np.stack((at_a, at_b), axis=1)
+    return np.stack((at_a, at_b), axis=1)
 
 
 def _arc_normals(mesh: Mesh, triples: Numbers) -> tuple[Array, NDArray[np.bool_]]:
