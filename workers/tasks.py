@@ -76,7 +76,7 @@ def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
     except (TransitionError, UnknownJobError):
         raise
     except (Exception, TimeLimitError) as error:
-        log.warning("job %s failed", job_id, exc_info=error)
+        log.warning("job %s failed: %s", job_id, error, exc_info=_is_ours(error))
         shutil.rmtree(staging, ignore_errors=True)  # makes room for the record, too
         store.transition(job_id, FAILED, **_explain(error, settings))
 
@@ -94,6 +94,11 @@ def _explain(error: BaseException, settings: Settings) -> dict[str, Any]:
     if isinstance(error, FishplateError):
         return {"reason": str(error)}
     return {"reason": OUR_FAULT.format(error=f"{type(error).__name__}: {error}")}
+
+
+def _is_ours(error: BaseException) -> bool:
+    """Whether the operator should see where in the program it happened."""
+    return not isinstance(error, FishplateError | MemoryError | TimeLimitError)
 
 
 def _summary(faults: tuple[Fault, ...]) -> str:
@@ -137,7 +142,7 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
     except KeyError as error:
         return _refusal(error, f"the job has nothing of the name {error}")
     except (Exception, TimeLimitError) as error:
-        log.warning("no %s of job %s", kind, job_id, exc_info=error)
+        log.warning("no %s of job %s: %s", kind, job_id, error, exc_info=_is_ours(error))
         return _refusal(error, _explain(error, settings)["reason"])
     return {"ok": True}
 
