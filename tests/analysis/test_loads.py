@@ -244,7 +244,7 @@ def test_segment_selector_loads_the_boundary_on_it() -> None:
 
 FAULTS = {
     "force on a side": (PointForce(on=RIGHT, force=(1, 0)), "total_force"),
-    "side load at a point": (TotalForce(on=Named("NE"), force=(1, 0)), "only a point"),
+    "side load at a point": (TotalForce(on=Named("NE"), force=(1, 0)), "only points"),
     "side load on a region": (Pressure(on=Named("plate"), start=1, end=1), "is a region"),
     "side load nowhere": (TotalForce(force=(1, 0)), "needs `on`"),
     "area load on a side": (BodyForce(on=RIGHT, force=(1, 0)), "acts on an area"),

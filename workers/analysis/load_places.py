@@ -1,17 +1,18 @@
-"""Can every load act where the document puts it? Said without computing any load.
+"""Where does every load act, and can it? Said without computing any load.
 
 What a load comes to is in `loads/`, which also says what only its figures can tell: a hole that is
 not round, a material without density.
 """
 
 from collections.abc import Callable, Hashable, Iterator, Mapping
+from dataclasses import dataclass, field
 
 import numpy as np
 from numpy.typing import NDArray
 
 from workers.analysis.mesh import BrokenChainError, Facets, Mesh
-from workers.analysis.selection import Finder, Selection
-from workers.errors import Fault, FaultyError
+from workers.analysis.selection import Finder, Selection, everything
+from workers.errors import Fault, FaultyError, MeshError
 from workers.job import (
     Acceleration,
     Bearing,
@@ -35,22 +36,40 @@ Check = Callable[[Load, Selection, Mesh], str | None]
 
 def load_faults(job: Job, finder: Finder) -> Iterator[Fault]:
     """Loads that find no place on the mesh, or the wrong kind of place."""
-    known: dict[Hashable, str | None] = {}  # hundreds of cases load the same places
+    places = LoadPlaces(finder)
     for load in (load for case in job.load_cases for load in case.loads):
-        if load.on is None:
-            if type(load) not in ON_AN_AREA:
-                yield Fault(load.pointer, "this load needs `on`: where does it act?")
-            continue
         try:
-            selection = finder.find(load.on, f"{load.pointer}/on")
+            places.find(load)
         except FaultyError as error:
             yield from error.faults
-            continue
+
+
+@dataclass(frozen=True, eq=False)
+class LoadPlaces:
+    """Finds and checks places, each once: hundreds of cases load the same ones."""
+
+    finder: Finder
+    known: dict[Hashable, str | None] = field(default_factory=dict)
+
+    def find(self, load: Load) -> Selection:
+        """What a load acts on.
+
+        Raises
+        ------
+        MeshError   there is no such place, or such a load cannot act there.
+        """
+        if load.on is None:
+            if type(load) in ON_AN_AREA:
+                return everything(self.finder.mesh)
+            message = "this load needs `on`: where does it act?"
+            raise MeshError([Fault(load.pointer, message)])
+        selection = self.finder.find(load.on, f"{load.pointer}/on")
         key = (type(load), load.on, _varies(load))
-        if key not in known:
-            known[key] = _misplaced(load, selection, finder.mesh)
-        if message := known[key]:
-            yield Fault(f"{load.pointer}/on", message)
+        if key not in self.known:
+            self.known[key] = _misplaced(load, selection, self.finder.mesh)
+        if reason := self.known[key]:
+            raise MeshError([Fault(f"{load.pointer}/on", reason)])
+        return selection
 
 
 def _misplaced(load: Load, selection: Selection, mesh: Mesh) -> str | None:

@@ -204,6 +204,12 @@ def _nodes(target: Nodes, mesh: Mesh, pointer: str) -> Selection:
     return _of_nodes(mesh, numbers, facets_among(mesh, mesh.boundary, among))
 
 
+def everything(mesh: Mesh) -> Selection:
+    """The whole plate: all nodes and elements, no side."""
+    elements = tuple(np.arange(block.element_count) for block in mesh.blocks)
+    return Selection(np.arange(mesh.node_count, dtype=np.int32), no_facets(), elements)
+
+
 # --- parts of the above --------------------------------------------------------------------------
 
 

@@ -1,27 +1,26 @@
 """One function for each kind of load at a point or on a side: the nodal forces it stands for."""
 
 from collections.abc import Hashable
-from dataclasses import dataclass, field
+from dataclasses import dataclass
 from functools import singledispatch
 
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.analysis.load_places import LoadPlaces
 from workers.analysis.loads.area import Area
 from workers.analysis.loads.bearing import bearing_load
 from workers.analysis.loads.side import Side, fractions, side_of
 from workers.analysis.model import Model
-from workers.analysis.selection import select
+from workers.analysis.selection import Finder
 from workers.errors import Fault, MeshError
 from workers.job import (
     Bearing,
     LineLoad,
     Load,
-    Named,
     PointForce,
     Pressure,
     Shear,
-    Target,
     TotalForce,
     TotalMoment,
     Traction,
@@ -40,69 +39,35 @@ class NodalLoad:
     force: Array
 
 
-@dataclass(frozen=True, eq=False)
 class Places:
-    """Where loads act, found once for each target and shared by all load cases."""
+    """Where the loads of a model act, found once for each target and shared by all cases.
 
-    model: Model
-    sides: dict[Hashable, Side] = field(default_factory=dict)
-    areas: dict[Hashable, Area] = field(default_factory=dict)
+    Methods raise MeshError where a load cannot act; see `load_places.py`.
+    """
+
+    def __init__(self, model: Model) -> None:
+        self.model = model
+        self._places = LoadPlaces(Finder(model.mesh))
+        self._sides: dict[Hashable, Side] = {}
+        self._areas: dict[Hashable, Area] = {}
+
+    def point(self, load: Load) -> NDArray[np.int64]:
+        """The node that a load acts on, (1,)."""
+        return self._places.find(load).nodes.astype(np.int64)
 
     def side(self, load: Load) -> Side:
         """Integration points of the side that a load acts on."""
-        target = load.on
-        if target not in self.sides:
-            self.sides[target] = self._find_side(_required(load), load.pointer)
-        return self.sides[target]
-
-    def free_side(self, load: Load) -> Side:
-        """A side behind which there is no material."""
-        side = self.side(load)
-        free = np.isin(_facet_codes(side.facets), _facet_codes(self.model.mesh.boundary))
-        if not free.all():
-            message = "there is material on both sides here; use `line_load` or `traction`"
-            raise MeshError([Fault(load.pointer, message)])
-        return side
+        selection = self._places.find(load)
+        if load.on not in self._sides:
+            self._sides[load.on] = side_of(self.model, selection.facets)
+        return self._sides[load.on]
 
     def area(self, load: Load) -> Area:
         """Elements that a load acts on; all of them where it does not say."""
-        target = load.on
-        if target not in self.areas:
-            self.areas[target] = self._find_area(target, load.pointer)
-        return self.areas[target]
-
-    def _find_side(self, target: Target, pointer: str) -> Side:
-        mesh = self.model.mesh
-        if isinstance(target, Named) and target.name in mesh.regions:
-            message = f"this load acts on a side, and {target.name!r} is a region"
-            raise MeshError([Fault(pointer, message)])
-        selection = select(mesh, target, pointer)
-        if not len(selection.facets):
-            message = "this load acts on a side, and there is only a point here; use `force`"
-            raise MeshError([Fault(pointer, message)])
-        return side_of(self.model, selection.facets)
-
-    def _find_area(self, target: Target | None, pointer: str) -> Area:
-        mesh = self.model.mesh
-        if target is None:
-            return Area(self.model, tuple(np.arange(b.element_count) for b in mesh.blocks))
-        selection = select(mesh, target, pointer)
-        if not selection.element_count:
-            message = "this load acts on an area: name a region, or leave `on` out for the plate"
-            raise MeshError([Fault(pointer, message)])
-        return Area(self.model, selection.elements)
-
-
-def _required(load: Load) -> Target:
-    if load.on is None:
-        raise MeshError([Fault(load.pointer, "this load needs `on`: where does it act?")])
-    return load.on
-
-
-def _facet_codes(facets: NDArray) -> NDArray[np.int64]:
-    """One number for each facet (an element has at most four sides)."""
-    block, element, side = facets.astype(np.int64).T
-    return (block << 48) | (element << 8) | side
+        elements = self._places.find(load).elements
+        if load.on not in self._areas:
+            self._areas[load.on] = Area(self.model, elements)
+        return self._areas[load.on]
 
 
 @singledispatch
@@ -118,14 +83,7 @@ def nodal_load(load: Load, places: Places) -> NodalLoad:
 
 @nodal_load.register
 def _(load: PointForce, places: Places) -> NodalLoad:
-    selection = select(places.model.mesh, _required(load), load.pointer)
-    if len(selection.nodes) != 1:
-        message = (
-            f"`force` acts at one point, and there are {len(selection.nodes)} nodes here; "
-            "use `total_force` to spread it"
-        )
-        raise MeshError([Fault(load.pointer, message)])
-    return NodalLoad(selection.nodes.astype(np.int64), np.array([load.force], float))
+    return NodalLoad(places.point(load), np.array([load.force], float))
 
 
 @nodal_load.register(TotalForce | TotalMoment | Traction | LineLoad | Pressure | Shear | Bearing)
@@ -184,21 +142,21 @@ def _(load: LineLoad, places: Places) -> tuple[Side, Array]:
 
 @side_force.register
 def _(load: Pressure, places: Places) -> tuple[Side, Array]:
-    side = places.free_side(load)
+    side = places.side(load)
     size = _varying(load, np.array([load.start]), np.array([load.end]), side, places)
     return side, -size * side.thickness[:, None] * side.normal
 
 
 @side_force.register
 def _(load: Shear, places: Places) -> tuple[Side, Array]:
-    side = places.free_side(load)
+    side = places.side(load)
     size = _varying(load, np.array([load.start]), np.array([load.end]), side, places)
     return side, size * side.thickness[:, None] * side.tangent
 
 
 @side_force.register
 def _(load: Bearing, places: Places) -> tuple[Side, Array]:
-    side = places.free_side(load)
+    side = places.side(load)
     positions = places.model.mesh.nodes[side.nodes]
     return side, bearing_load(side, positions, load.force, load.pointer)
 
@@ -207,5 +165,5 @@ def _varying(load: Load, start: Array, end: Array, side: Side, places: Places) -
     """Value at each point of the side, (p, components), linear from start to end."""
     if np.array_equal(start, end):
         return np.tile(start.astype(float), (len(side.length), 1))
-    fraction = fractions(side, places.model, load.pointer)[:, None]
+    fraction = fractions(side, places.model)[:, None]
     return (1.0 - fraction) * start + fraction * end

@@ -6,9 +6,8 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import coo_array, csr_array
 
-from workers.analysis.mesh import BrokenChainError, Facets
+from workers.analysis.mesh import Facets
 from workers.analysis.model import Model
-from workers.errors import Fault, MeshError
 
 Array = NDArray[np.float64]
 
@@ -95,16 +94,12 @@ def _within(position: Array, start: Array, end: Array) -> Array:
     return from_start / (from_start + to_end)
 
 
-def fractions(side: Side, model: Model, pointer: str) -> Array:
+def fractions(side: Side, model: Model) -> Array:
     """How far along the whole side each point lies, (p,) from 0 to 1.
 
     Raises
     ------
-    MeshError   the facets do not form one side from a start to an end.
+    BrokenChainError   the facets do not form one side from a start to an end.
     """
-    try:
-        start, end = model.mesh.chain(side.facets)
-    except BrokenChainError as error:
-        message = f"a load that varies needs one connected side, but {error}; load it in pieces"
-        raise MeshError([Fault(pointer, message)]) from error
+    start, end = model.mesh.chain(side.facets)
     return start[side.facet] + side.within * (end - start)[side.facet]
