@@ -66,5 +66,5 @@ def _solve(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:
         if isinstance(error, DocumentError):
             leave(BAD_INPUT, "The job document is wrong; nothing was solved.", faults)
         leave(FAILED, "The job failed.", faults)
-    except FishplateError as error:
-        leave(FAILED, f"The job failed: {error}")
+    except (FishplateError, OSError, MemoryError) as error:
+        leave(FAILED, f"The job failed: {error or 'out of memory'}")

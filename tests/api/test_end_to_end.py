@@ -7,6 +7,7 @@ import subprocess
 import sys
 import time
 from collections.abc import Callable, Iterator
+from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 from urllib.error import HTTPError
@@ -27,8 +28,15 @@ PATIENCE = 120.0  # s, for starting and for jobs; on a busy machine
 E, NU = 210_000.0, 0.3  # N/mm2
 
 
+@dataclass(frozen=True)
+class Server:
+    process: "subprocess.Popen[bytes]"
+    url: str
+    store: Path
+
+
 @pytest.fixture(scope="module")
-def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[subprocess.Popen[bytes]]:
+def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Server]:
     folder = tmp_path_factory.mktemp("server")
     address = folder / "address"
     settings = {"FISHPLATE_STORE": str(folder / "store"), "FISHPLATE_WORKERS": "1"}
@@ -43,14 +51,13 @@ def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[subprocess.Pope
         assert process.poll() is None, (folder / "log").read_text()
         assert time.monotonic() < until, (folder / "log").read_text()
         time.sleep(0.05)
-    process.url = address.read_text().strip()  # type: ignore[attr-defined]
-    yield process
+    yield Server(process, address.read_text().strip(), folder / "store")
     process.terminate()
     process.wait(PATIENCE)
 
 
 @pytest.fixture(scope="module")
-def ask(server: Any) -> Callable[..., tuple[bytes, Any]]:
+def ask(server: Server) -> Callable[..., tuple[bytes, Any]]:
     """Body and headers of an answer."""
 
     def request(path: str, body: Any = None, **headers: str) -> tuple[bytes, Any]:
@@ -137,6 +144,18 @@ def test_fields_are_a_vtk_file_with_the_stress_and_the_cautions(
     assert "engineer" in " ".join(map(str, np.ravel(grid.field_data["cautions"])))
 
 
+def test_a_field_that_is_not_there_is_made_again_the_same(
+    server: Server, ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any]
+) -> None:
+    """Of jobs with many cases only the first fields are written at once."""
+    here, _ = pulled
+    with_the_job, _ = ask(f"{here}/fields/pull.vtu")
+    job_id = here.rsplit("/", 1)[1]
+    (path,) = (server.store / "jobs").glob(f"*/{job_id}/results/fields/pull.vtu")
+    path.unlink()
+    assert ask(f"{here}/fields/pull.vtu")[0] == with_the_job
+
+
 @pytest.mark.parametrize("case", ["pull twice", "pull"])
 def test_pictures_are_served_whether_made_with_the_job_or_on_request(
     ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any], case: str, tmp_path: Path
@@ -168,9 +187,9 @@ def test_the_server_is_ready(ask: Callable[..., tuple[bytes, Any]]) -> None:
     assert {check["name"] for check in checks if check["ok"]} == {"queue", "store", "workers"}
 
 
-def test_the_server_stops_cleanly_when_told(server: Any) -> None:
+def test_the_server_stops_cleanly_when_told(server: Server) -> None:
     """The last test of this module: status 0, and nothing left that listens."""
-    server.send_signal(signal.SIGTERM)
-    assert server.wait(PATIENCE) == 0
+    server.process.send_signal(signal.SIGTERM)
+    assert server.process.wait(PATIENCE) == 0
     with pytest.raises(OSError, match="refused"):
         urlopen(server.url + "/health/live", timeout=5)
