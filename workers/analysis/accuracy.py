@@ -36,7 +36,7 @@ def backward_error(matrix: sparray, solution: Array, load: Array, residual: Arra
     return ratio.max(axis=0)
 
 
-def weakest_motion(matrix: sparray, factor: Factor, steps: int = 3) -> tuple[float, Array]:
+def weakest_motion(matrix: sparray, factor: Factor, steps: int = 2) -> tuple[float, Array]:
     """Reciprocal condition of the matrix scaled to a unit diagonal, and the motion behind it.
 
     A few steps of inverse iteration; the Rayleigh quotient comes down to the smallest eigenvalue

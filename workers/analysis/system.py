@@ -216,7 +216,7 @@ def _mechanism(
     for axis in (0, 1):
         entries = shifted.data[diagonal, axis, axis]
         shifted.data[diagonal, axis, axis] += SHIFT * np.where(entries > 0, entries, 1.0)
-    _, motion = weakest_motion(shifted, SuperLUFactor(shifted))
+    _, motion = weakest_motion(shifted, SuperLUFactor(shifted), steps=6)
     vectors = motion.reshape(-1, 2, 1)
     turn_vectors(vectors, order.position[supports.turned], supports.axes, back=True)
     return MechanismError([describe_motion(mesh, vectors[order.position, :, 0])])

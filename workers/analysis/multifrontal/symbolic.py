@@ -144,13 +144,22 @@ def _borders(first: Indices, pattern: NodePairs) -> list[Indices]:
     for front in range(count):
         border = node[starts[front] : starts[front + 1]]
         if inherited[front]:
-            border = np.unique(np.concatenate((border, *inherited[front])))
+            border = _union((border, *inherited[front]))
             border = border[np.searchsorted(border, ends[front]) :]
         borders.append(border)
         if len(border):
             inherited[front_of[border[0]]].append(border)
         inherited[front] = []
     return borders
+
+
+def _union(sets: tuple[Indices, ...]) -> Indices:
+    """Ascending union of ascending sets; np.unique takes several times as long on small ones."""
+    together = np.concatenate(sets)
+    together.sort(kind="stable")  # merges ascending runs
+    new = np.ones(len(together), dtype=bool)
+    np.not_equal(together[1:], together[:-1], out=new[1:])
+    return together[new]
 
 
 def _join(first: Indices, borders: list[Indices]) -> Fronts:
