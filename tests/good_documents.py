@@ -54,7 +54,7 @@ OUTLINE: dict[str, Any] = {
         "element": "Q8",
         "method": "free",
         "size": 6,
-        "sizes": {"pin": "2 mm", "boss": 4, "tip": 1, "base": 5},
+        "sizes": {"pin": "2 mm", "boss": 4, "tip": 1, "round": 3},
         "target_error": 0.03,
         "max_dofs": 200_000,
     },

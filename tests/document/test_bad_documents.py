@@ -148,6 +148,8 @@ OUTLINES = [
         "/geometry/points/pin", "already|hole"),
     Bad("point name starts with a full stop", "outline", "/geometry/points/.tip", [0, 0],
         "/geometry/points/.tip", "not a name|full stop"),
+    Bad("point name starts with a space", "outline", "/geometry/points/ tip", [0, 0],
+        "/geometry/points/ tip", "not a name|space"),
     Bad("point name too long", "outline", f"/geometry/points/{'x' * 81}", [0, 0],
         f"/geometry/points/{'x' * 81}", "not a name|80"),
 ]  # fmt: skip
@@ -396,6 +398,43 @@ def test_a_case_without_loads_needs_a_support_that_moves(
     with pytest.raises(DocumentError) as caught:
         load(document)
     assert [fault.pointer for fault in caught.value.faults] == ["/load_cases/tide"]
+
+
+@pytest.mark.parametrize(
+    ("load_of_case", "asked"),
+    [
+        ({"acceleration": [0, -9.81]}, ["/materials/steel/density", "/materials/tin/density"]),
+        ({"spin": {"about": [0, 0], "speed": 1}, "on": "web"}, ["/materials/tin/density"]),
+        ({"temperature_change": 20, "on": "web"}, ["/materials/tin/thermal_expansion"]),
+        ({"body_force": [0, -77]}, []),
+    ],
+)
+def test_a_load_asks_only_the_materials_that_it_acts_on(
+    load_of_case: dict[str, Any], asked: list[str]
+) -> None:
+    document = good("mesh")
+    document["materials"]["tin"] = {"youngs_modulus": "50 GPa", "poissons_ratio": 0.36}
+    document["geometry"]["regions"][0]["material"] = "tin"
+    document["load_cases"]["pull"].append(load_of_case)
+    assert pointers_of(document) == asked
+
+
+def test_a_material_that_is_nowhere_in_the_plate_is_asked_nothing() -> None:
+    document = good("mesh")
+    document["materials"]["tin"] = {"youngs_modulus": 5e7, "poissons_ratio": 0.36, "density": 7.3}
+    document["geometry"]["regions"][0]["material"] = "tin"
+    document["geometry"]["mesh"]["blocks"][1]["region"] = "web"
+    document["load_cases"]["pull"].append({"acceleration": [0, -9.81]})
+    assert pointers_of(document) == []
+
+
+def pointers_of(document: Any) -> list[str]:
+    """Places of the faults of a document, none if it is good."""
+    try:
+        load(document)
+    except DocumentError as error:
+        return [fault.pointer for fault in error.faults]
+    return []
 
 
 def test_the_table_is_long_and_its_names_are_distinct() -> None:

@@ -20,7 +20,7 @@ def test_units_are_converted_to_the_declared_ones() -> None:
     assert (steel.yield_strength, steel.thermal_expansion) == (355, 1.2e-5)
     assert isinstance(job.geometry, OutlineGeometry)
     assert job.geometry.holes[0].shape == parts.CircleShape((80, 90), 25)
-    assert job.meshing.sizes == {"pin": 2, "boss": 4, "tip": 1, "base": 5}
+    assert job.meshing.sizes == {"pin": 2, "boss": 4, "tip": 1, "round": 3}
 
 
 def test_every_kind_of_load_is_read() -> None:
