@@ -22,7 +22,6 @@ Array = NDArray[np.float64]
 
 SIDES = ("1-2", "2-3", "3-4", "4-1")
 WIDEST = 180.01  # degrees; a smooth joint of two arcs is left to the check of the elements
-NEXT_TO = 1e-6  # parameter of a point so near to a corner that it shows the direction
 SAME_GRADING = 1e-9  # relative: gradings are typed, and one of the two may be a reciprocal
 
 
@@ -125,9 +124,7 @@ def _lone_faults(patch: Patch, vertices: NDArray) -> Iterator[Fault]:
 
 def _angle(before: Curve, behind: Curve) -> float:
     """Angle inside the patch between two sides at their common corner [degrees]."""
-    corner = behind.at(np.array([0.0]))[0]
-    back = before.at(np.array([1 - NEXT_TO]))[0] - corner
-    ahead = behind.at(np.array([NEXT_TO]))[0] - corner
+    back, ahead = -before.tangent(1.0), behind.tangent(0.0)
     turn = np.arctan2(back[1], back[0]) - np.arctan2(ahead[1], ahead[0])
     return float(np.degrees(turn) % 360)
 
