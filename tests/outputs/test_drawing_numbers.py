@@ -10,6 +10,7 @@ from hypothesis import strategies as st
 
 from workers.outputs.drawing.numbers import (
     MINUS,
+    TIMES,
     round_factor,
     round_step,
     round_ticks,
@@ -24,11 +25,10 @@ finite = st.floats(-1e12, 1e12).filter(lambda v: v == 0 or abs(v) > 1e-12)
 def parsed(text: str) -> float:
     """Reads a shown number back, by nothing but the rules of writing numbers."""
     plain = text.replace(MINUS, "-").replace("\N{NO-BREAK SPACE}", "")
-    if "10" in plain and "×" in plain:  # noqa: RUF001
-        mantissa, power = plain.split(" × 10")  # noqa: RUF001
-        return float(mantissa) * 10.0 ** int(
-            power.translate(str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789"))
-        )
+    mantissa, times, power = plain.partition(f"{TIMES}10")
+    if times:
+        exponent = power.translate(str.maketrans("⁻⁰¹²³⁴⁵⁶⁷⁸⁹", "-0123456789"))
+        return float(mantissa) * 10.0 ** int(exponent)
     return float(plain)
 
 

@@ -22,6 +22,7 @@ from workers.job import (
     LineLoad,
     LoadCase,
     Named,
+    Nodes,
     PointForce,
     Pressure,
     Region,
@@ -35,8 +36,9 @@ from workers.job import (
     Traction,
     Units,
 )
+from workers.outputs.drawing.acting import Acting, acting_cases, acting_loads
+from workers.outputs.drawing.body_loads import list_height
 from workers.outputs.drawing.load_values import along_side, describe
-from workers.outputs.drawing.loads import acting_loads
 from workers.outputs.drawing.palette import INK, LOAD, SUPPORT
 from workers.outputs.drawing.stations import runs
 from workers.outputs.drawing.view import Box, View
@@ -184,6 +186,20 @@ def test_what_acts_on_the_whole_plate_is_listed_above_the_drawing(model, load):
     assert listed.sum() > 900
 
 
+def test_a_force_on_one_of_two_neighbouring_nodes_given_by_number_is_drawn(model):
+    """Two nodes that share an element side are points here, not a side."""
+    mesh = plate()
+    nodes = mesh.facet_nodes(mesh.sides["high"][:1])
+    shown = model(PointForce(on=Nodes(tuple(map(int, nodes))), force=(0.0, -500.0)), mesh=mesh)
+    assert shown.near(LOAD, "above", 110) > 400
+
+
+def test_a_long_list_of_body_loads_is_cut_and_counted(model):
+    heats = [TemperatureChange(change=float(n)) for n in range(1, 13)]
+    assert list_height([Acting(load, 1.0) for load in heats]) < 260
+    assert model(*heats).ink(LOAD)[:500, :700].sum() > 3000
+
+
 def test_without_a_case_no_load_is_drawn(model):
     shown = model(Pressure(on=TOP, start=4.0, end=4.0), case=None)
     assert shown.ink(LOAD)[:1050].sum() == 0
@@ -293,3 +309,5 @@ def test_a_combination_acts_with_its_factors():
         "acceleration 19\N{NO-BREAK SPACE}620 mm/s²",
     ]
     assert [one.factor for one in acting_loads(job, "a")] == [1.0]
+    assert acting_cases(job, "ULS") == {"a", "b"}
+    assert acting_cases(job, None) == set()

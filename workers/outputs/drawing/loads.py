@@ -1,8 +1,7 @@
-"""The loads of one case: arrows on the sides and points where they act, and a list of what acts
-on the whole plate or a region."""
+"""Loads on sides and points of the plate, as arrows where they act."""
 
 from collections import Counter
-from collections.abc import Iterable, Sequence
+from collections.abc import Iterable
 from dataclasses import dataclass
 from typing import Any, NamedTuple
 
@@ -12,16 +11,14 @@ from numpy.typing import NDArray
 from workers.analysis.mesh import Mesh
 from workers.analysis.selection import select
 from workers.job import (
-    Acceleration,
-    BodyForce,
     Job,
     Load,
     PointForce,
-    Spin,
     Target,
-    TemperatureChange,
     TotalMoment,
 )
+from workers.outputs.drawing.acting import Acting
+from workers.outputs.drawing.body_loads import BODY
 from workers.outputs.drawing.canvas import Canvas
 from workers.outputs.drawing.labels import Label, layouts
 from workers.outputs.drawing.load_values import (
@@ -32,10 +29,9 @@ from workers.outputs.drawing.load_values import (
     target_name,
     varies,
 )
-from workers.outputs.drawing.page import LABEL_SIZE
 from workers.outputs.drawing.palette import LOAD
-from workers.outputs.drawing.stations import Run, lone_nodes, outward_at, runs
-from workers.outputs.drawing.symbols import arrow, block_arrow, turning_arrow, unit
+from workers.outputs.drawing.stations import MOST_POINTS, Run, outward_at, runs
+from workers.outputs.drawing.symbols import arrow, turning_arrow, unit
 from workers.outputs.drawing.view import View
 
 Array = NDArray[np.floating[Any]]
@@ -47,37 +43,6 @@ SPACING = 44.0  # of arrows along a side
 ALONG_THE_SIDE = 0.2  # cosine of the angle to the normal below which a load lies in the side
 SHORTEST = 9.0  # a shorter arrow is only a blot
 GAP = 5.0  # between an arrow and the outline
-BODY = (Acceleration, BodyForce, Spin, TemperatureChange)
-ROW = 1.5 * LABEL_SIZE  # height of a line in the list of body loads
-
-
-@dataclass(frozen=True)
-class Acting:
-    """A load and the factor with which it acts in a case (1) or combination."""
-
-    load: Load
-    factor: float
-
-
-def acting_loads(job: Job, state: str | None) -> list[Acting]:
-    """The loads of a case, or those of a combination with their factors.
-
-    Raises
-    ------
-    KeyError   no case and no combination has that name.
-    """
-    if state is None:
-        return []
-    cases = {case.name: case.loads for case in job.load_cases}
-    if state in cases:
-        return [Acting(load, 1.0) for load in cases[state]]
-    factors = {combination.name: combination.factors for combination in job.combinations}[state]
-    return [
-        Acting(load, factor)
-        for name, factor in factors.items()
-        if factor != 0
-        for load in cases[name]
-    ]
 
 
 def draw_loads(
@@ -132,7 +97,7 @@ def _draw_load(
         force = np.sign(acting.factor) * np.array(load.force)
         ends = [
             _draw_force(canvas, mesh, view, int(node), force)
-            for node in lone_nodes(mesh, selection)
+            for node in selection.nodes[:MOST_POINTS]
         ]
         return [Label(at, text, LOAD, toward=toward) for at, toward in ends[:1]]
     sides = [
@@ -236,48 +201,3 @@ def _join(canvas: Canvas, far: Array, chosen: NDArray[np.bool_]) -> None:
     joined = (chosen | np.roll(chosen, -1)) & (gap < 2.5 * np.median(gap))
     for number in np.flatnonzero(joined):
         canvas.line([far[number], following[number]], LOAD, 1.6)
-
-
-# --- body loads ----------------------------------------------------------------------------------
-
-
-def draw_body_loads(
-    canvas: Canvas, job: Job, view: View, acting: Sequence[Acting], corner: tuple[float, float]
-) -> None:
-    """List what acts on the whole plate or a region, one row each, from the upper left corner."""
-    x, y = corner
-    for row, one in enumerate(body_loads(acting)):
-        middle = np.array([x + 22.0, y - (row + 0.5) * ROW])
-        _draw_sign(canvas, one, middle)
-        where = target_name(one.load)
-        text = f"{describe(one.load, one.factor, job.units)}" + (f", {where}" if where else "")
-        canvas.text((x + 58, middle[1]), text, LABEL_SIZE, colour=LOAD)
-        if isinstance(one.load, Spin):
-            centre = view.pixels(one.load.about)
-            turning_arrow(canvas, centre, 26, LOAD, clockwise=one.load.speed < 0)
-            canvas.disc(centre, 4, fill=LOAD, edge=LOAD, width=1)
-
-
-def body_loads(acting: Iterable[Acting]) -> list[Acting]:
-    return [one for one in acting if isinstance(one.load, BODY)]
-
-
-def _draw_sign(canvas: Canvas, acting: Acting, middle: Array) -> None:
-    load = acting.load
-    if isinstance(load, Acceleration | BodyForce):
-        vector = load.acceleration if isinstance(load, Acceleration) else load.force
-        half = 19 * np.sign(acting.factor) * unit(vector)
-        if half.any():
-            block_arrow(canvas, middle - half, middle + half, LOAD)
-    elif isinstance(load, Spin):
-        turning_arrow(canvas, middle, 14, LOAD, clockwise=load.speed < 0)
-    elif isinstance(load, TemperatureChange):
-        _draw_thermometer(canvas, middle)
-
-
-def _draw_thermometer(canvas: Canvas, middle: Array) -> None:
-    bulb = middle - np.array([0.0, 11.0])
-    canvas.line([bulb, middle + np.array([0.0, 16.0])], LOAD, 9)
-    canvas.line([bulb, middle + np.array([0.0, 16.0])], "#ffffff", 5)
-    canvas.line([bulb, middle + np.array([0.0, 4.0])], LOAD, 3.4)
-    canvas.disc(bulb, 7, fill=LOAD, edge=LOAD, width=1)

@@ -12,15 +12,11 @@ from numpy.typing import NDArray
 from workers.analysis.mesh import PLATE as PLATE_REGION
 from workers.analysis.mesh import Mesh
 from workers.job import Job
+from workers.outputs.drawing.acting import acting_cases, acting_loads
+from workers.outputs.drawing.body_loads import draw_body_loads, list_height
 from workers.outputs.drawing.canvas import Canvas
 from workers.outputs.drawing.labels import Label, Labels, layouts
-from workers.outputs.drawing.loads import (
-    ROW,
-    acting_loads,
-    body_loads,
-    draw_body_loads,
-    draw_loads,
-)
+from workers.outputs.drawing.loads import draw_loads
 from workers.outputs.drawing.numbers import show
 from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page, over
 from workers.outputs.drawing.palette import FAINT, PLATE, PLATE_THICK, PLATE_THIN
@@ -43,15 +39,15 @@ TINTS = (PLATE_THIN, PLATE, PLATE_THICK)
 def draw_model(page: Page, job: Job, mesh: Mesh, state: str | None) -> None:
     """Draw the model with the loads of a case or combination; with none of them for None."""
     acting = acting_loads(job, state)
-    listed = len(body_loads(acting)) * ROW
-    room = page.drawing.inset(SIDE_ROOM, BOTTOM_ROOM, SIDE_ROOM, TOP_ROOM + listed)
+    top = TOP_ROOM + list_height(acting)
+    room = page.drawing.inset(SIDE_ROOM, BOTTOM_ROOM, SIDE_ROOM, top)
     low, high = mesh.nodes.min(axis=0), mesh.nodes.max(axis=0)
     view = View.fit(low, high, room)
     _paint_plate(page, job, mesh, view)
     canvas = page.canvas
     draw_outline(canvas, mesh, view, mesh.nodes)
     wanted = draw_supports(canvas, job, mesh, view)
-    draw_moves(canvas, job, mesh, view, state)
+    draw_moves(canvas, job, mesh, view, acting_cases(job, state))
     wanted += draw_loads(canvas, job, mesh, view, acting)
     draw_body_loads(canvas, job, view, acting, (page.drawing.left, page.drawing.top))
     _draw_axes(page)

@@ -5,6 +5,7 @@ from itertools import pairwise
 
 SUPERSCRIPTS = str.maketrans("-0123456789", "⁻⁰¹²³⁴⁵⁶⁷⁸⁹")
 MINUS, TIMES = "\N{MINUS SIGN}", "\N{MULTIPLICATION SIGN}"
+NO_BREAK = "\N{NO-BREAK SPACE}"
 
 
 def show(value: float, digits: int = 3) -> str:
@@ -16,14 +17,15 @@ def show(value: float, digits: int = 3) -> str:
     sign, size = (MINUS if value < 0 else ""), abs(value)
     if not -4 <= exponent < 6:
         mantissa = _plain(size / 10.0**exponent, digits - 1)
-        return f"{sign}{mantissa} {TIMES} 10{str(exponent).translate(SUPERSCRIPTS)}"
+        power = f"10{str(exponent).translate(SUPERSCRIPTS)}"
+        return f"{sign}{mantissa}{NO_BREAK}{TIMES}{NO_BREAK}{power}"
     return sign + _plain(size, max(0, digits - 1 - exponent))
 
 
 def _plain(size: float, decimals: int) -> str:
     text = f"{size:,.{decimals}f}"
     whole, _, part = text.partition(".")
-    whole = whole if len(whole) <= 5 else whole.replace(",", "\N{NO-BREAK SPACE}")
+    whole = whole if len(whole) <= 5 else whole.replace(",", NO_BREAK)
     part = part.rstrip("0")
     return whole.replace(",", "") + (f".{part}" if part else "")
 

@@ -4,7 +4,7 @@ Both directions held along a side: hatched ground on the side. One direction: ro
 that direction. Both at a point: a pin. Springs: zigzags. A prescribed displacement: an arrow.
 """
 
-from collections.abc import Callable, Iterable, Sequence
+from collections.abc import Callable, Collection, Iterable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -149,10 +149,10 @@ def _spring_directions(support: Support, outward: Array) -> Iterable[Array]:
 # --- prescribed displacements and labels ---------------------------------------------------------
 
 
-def draw_moves(canvas: Canvas, job: Job, mesh: Mesh, view: View, case: str | None) -> None:
-    """An arrow for each displacement that a support prescribes, in every case or in this one."""
+def draw_moves(canvas: Canvas, job: Job, mesh: Mesh, view: View, cases: Collection[str]) -> None:
+    """An arrow for each displacement that a support prescribes, always or in one of the cases."""
     for support in job.supports:
-        if support.case not in (None, case):
+        if support.case is not None and support.case not in cases:
             continue
         selection = select(mesh, support.on, f"{support.pointer}/on")
         for run in runs(mesh, selection.facets, view):
