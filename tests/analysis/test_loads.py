@@ -309,3 +309,23 @@ def test_moment_on_a_curved_side_is_refused() -> None:
 def test_bearing_on_the_outside_of_a_ring_is_refused() -> None:
     with pytest.raises(MeshError, match="bulges outwards"):
         _resolve(ring("Q8", 12, 1, 1.0, 2.0), [Bearing(on=Named("rim"), force=(1, 0))])
+
+
+def test_forces_can_be_written_out_for_some_nodes_or_cases_only() -> None:
+    """Whatever is asked for is a part of the whole."""
+    mesh = grid("Q8", 4, 1, region_of_column=[0, 0, 1, 1], regions=("plate", "web"))
+    loads = {
+        "side": [TotalForce(on=RIGHT, force=(1.0, 2.0))],
+        "all": [BodyForce(force=(3.0, 4.0)), Spin(about=(0.2, 0.1), speed=1e5)],
+        "web": [Acceleration(on=Named("web"), acceleration=(0.0, -1e9))],
+    }
+    model = build_model(plate_job((), loads, regions=(Region("web"),)), mesh)
+    found = resolve_loads(model)
+    whole = found.applied
+    nodes = np.array([7, 0, 11])
+    order = np.random.default_rng(2).permutation(mesh.node_count)
+    np.testing.assert_allclose(found.forces.at(nodes), whole[nodes], atol=1e-12)
+    np.testing.assert_allclose(
+        found.forces.of_cases(slice(1, 3), order), whole[order][:, :, 1:3], atol=1e-12
+    )
+    assert found.forces.at(nodes[:0]).shape == (0, 2, 3)

@@ -129,7 +129,7 @@ def _nodal_loads_between(solution: Solution, section: Section) -> Array:
     left_of_steps[section.nodes] = 0.0
     sign = np.where(near, section.node_on_left - left_of_steps, 0.0)
     nodes = np.flatnonzero(sign)
-    acting = solution.applied[nodes].copy()
+    acting = solution.loads.forces.at(nodes)
     for support in solution.support_forces:
         _, at, of_support = np.intersect1d(nodes, support.nodes, return_indices=True)
         acting[at] += support.force[of_support]

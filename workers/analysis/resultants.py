@@ -66,12 +66,16 @@ def equilibrium(solution: Solution) -> Equilibrium:
     about = centroid(mesh)
     parts = [(mesh.nodes[s.nodes], s.force) for s in solution.support_forces]
     reaction = np.zeros((3, len(solution.cases)))
-    size = _size(mesh.nodes - about, solution.applied)
+    applied, size = np.zeros((3, len(solution.cases))), np.zeros((2, len(solution.cases)))
+    for part in solution.parts():
+        force = solution.loads.forces.of_cases(part)
+        applied[:, part] = resultant(mesh.nodes, force, about)
+        size[:, part] = _size(mesh.nodes - about, force)
     size += _imposed(solution) * np.array([[1.0], [mesh.diagonal]])
     for at, force in parts:
         reaction += resultant(at, force, about)
         size += _size(at - about, force)
-    return Equilibrium(about, resultant(mesh.nodes, solution.applied, about), reaction, size)
+    return Equilibrium(about, applied, reaction, size)
 
 
 def imbalance(applied: Array, reaction: Array, size: Array) -> Array:

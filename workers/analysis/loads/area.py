@@ -35,8 +35,8 @@ class Area:
 
     @cached_property
     def volume(self) -> Array:
-        """Integral of N t dA at `nodes`, (k,) [L^3]."""
-        return self._integrate(with_density=False)[:, 0]
+        """Integral of N t dA at `nodes`, (k, 1) [L^3]."""
+        return self._integrate(with_density=False)[:, :1]
 
     @cached_property
     def mass(self) -> Array:

@@ -5,9 +5,11 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.sparse import coo_array, csr_array
 
 from workers.analysis.loads.area import Area
-from workers.analysis.loads.kinds import Places, nodal_load
+from workers.analysis.loads.kinds import NodalLoad, Places, nodal_load
+from workers.analysis.loads.nodal_forces import NodalForces
 from workers.analysis.loads.volume import VOLUME_LOADS, VolumeTotals, volume_load
 from workers.analysis.model import Model
 from workers.errors import Fault, FaultyError, MeshError
@@ -50,10 +52,15 @@ class Heating:
 
 @dataclass(frozen=True, eq=False)
 class Loads:
-    """applied : (N, 2, c) nodal forces of the mechanical loads [F]; heating : the rest."""
+    """forces : of the mechanical loads; heating : what temperature does."""
 
-    applied: Array
+    forces: NodalForces
     heating: Heating
+
+    @property
+    def applied(self) -> Array:
+        """Nodal forces of the mechanical loads, written out, (N, 2, c) [F]."""
+        return self.forces.of_cases(slice(0, self.forces.case_count))
 
 
 def resolve_loads(model: Model) -> Loads:
@@ -64,31 +71,42 @@ def resolve_loads(model: Model) -> Loads:
     MeshError   carries the faults of all loads.
     """
     cases = model.job.load_cases
-    applied = np.zeros((model.mesh.node_count, 2, len(cases)))
     places = Places(model)
-    volumes: dict[Hashable, tuple[Area, VolumeTotals]] = {}
+    direct: list[tuple[NodalLoad, int]] = []
+    volumes: dict[Hashable, VolumeTotals] = {}
     heated: dict[Hashable, tuple[Area, Array]] = {}
     faults: list[Fault] = []
     for number, load in ((n, load) for n, case in enumerate(cases) for load in case.loads):
         try:
             if isinstance(load, VOLUME_LOADS):
                 found = volume_load(load, places)
-                place = (places.area(load), VolumeTotals(len(cases)))
-                volumes.setdefault(load.on, place)[1].add(found, number)
+                totals = VolumeTotals.none(places.area(load), len(cases))
+                volumes.setdefault(load.on, totals).add(found, number)
             elif isinstance(load, TemperatureChange):
                 field = (_heated_area(load, places), np.zeros(len(cases)))
                 heated.setdefault(load.on, field)[1][number] += load.change
             else:
-                at = nodal_load(load, places)
-                applied[at.nodes, :, number] += at.force
+                direct.append((nodal_load(load, places), number))
         except FaultyError as error:
             faults.extend(error.faults)
     if faults:
         raise MeshError(faults)
-    for area, totals in volumes.values():
-        totals.add_forces(area, applied)
     change = np.array([change for _, change in heated.values()]).reshape(-1, len(cases))
-    return Loads(applied, Heating(tuple(area for area, _ in heated.values()), change))
+    return Loads(
+        NodalForces(_gather(direct, model.mesh.node_count, len(cases)), tuple(volumes.values())),
+        Heating(tuple(area for area, _ in heated.values()), change),
+    )
+
+
+def _gather(direct: list[tuple[NodalLoad, int]], node_count: int, cases: int) -> csr_array:
+    """Loads at points and on sides as one sparse matrix, (2N, c)."""
+    none = NodalLoad(np.empty(0, np.int64), np.empty((0, 2)))
+    loads, numbers = zip((none, 0), *direct, strict=True)
+    dofs = [2 * load.nodes[:, None] + np.arange(2) for load in loads]
+    force = np.concatenate([load.force.ravel() for load in loads])
+    case = np.repeat(numbers, [2 * len(load.nodes) for load in loads])
+    row = np.concatenate([d.ravel() for d in dofs])
+    return coo_array((force, (row, case)), shape=(2 * node_count, cases)).tocsr()
 
 
 def _heated_area(load: TemperatureChange, places: Places) -> Area:

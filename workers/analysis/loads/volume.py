@@ -65,22 +65,32 @@ def _require_density(load: Load, places: Places) -> None:
     places.area(load).require("density", "density", load.pointer)
 
 
+@dataclass(frozen=True, eq=False)
 class VolumeTotals:
-    """Adds up the volume loads of all cases on one area."""
+    """Factors of the unit loads of an area in all cases: (1, 2, c) and (3, 2, c)."""
 
-    def __init__(self, cases: int) -> None:
-        self._volume = np.zeros((1, 2, cases))
-        self._mass = np.zeros((3, 2, cases))
+    area: Area
+    volume: Array
+    mass: Array
+
+    @classmethod
+    def none(cls, area: Area, cases: int) -> "VolumeTotals":
+        return cls(area, np.zeros((1, 2, cases)), np.zeros((3, 2, cases)))
 
     def add(self, load: VolumeLoad, case: int) -> None:
-        self._volume[:, :, case] += load.volume
-        self._mass[:, :, case] += load.mass
+        self.volume[:, :, case] += load.volume
+        self.mass[:, :, case] += load.mass
 
-    def add_forces(self, area: Area, applied: Array) -> None:
-        """Add the nodal forces (N, 2, c) of all cases."""
-        nodes = slice(None) if len(area.nodes) == len(applied) else area.nodes
-        for axis in (0, 1):
-            if self._volume.any():
-                applied[nodes, axis] += area.volume[:, None] * self._volume[0, axis]
-            if self._mass.any():
-                applied[nodes, axis] += area.mass @ self._mass[:, axis]
+    def add_forces(self, forces: Array, cases: slice, rows: NDArray) -> None:
+        """Add to nodal forces (r, 2, k) of some cases.
+
+        rows (N,) : row of each node in the forces, -1 if it has none.
+        """
+        row = rows[self.area.nodes]
+        there = row >= 0
+        row = row[there]
+        for factors, unit in ((self.volume, "volume"), (self.mass, "mass")):
+            if factors.any():  # a material without density has no mass to form
+                basis = getattr(self.area, unit)[there]
+                for axis in (0, 1):
+                    forces[row, axis] += basis @ factors[:, axis, cases]
