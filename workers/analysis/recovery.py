@@ -7,6 +7,7 @@ by whoever wants them, after superposition. How samples become nodal values is i
 
 from collections.abc import Callable, Hashable
 from dataclasses import dataclass, field
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
@@ -74,7 +75,9 @@ class Recovery:
         samples, anchors = [], []
         for number, block in enumerate(self.model.mesh.blocks):
             own = block.element.recovery_points()
-            stress = raw_stress(self.model, number, own, displacement, temperature)
+            stress = raw_stress(
+                self.model, number, own, displacement, temperature, store=self.operators
+            )
             samples.append(stress.reshape(-1, 3, states))
             for corner, elements in enumerate(border_corners(self.field_mesh, number)):
                 at = block.element.natural_nodes[[corner]]
@@ -99,6 +102,7 @@ def raw_stress(
     temperature: Temperature = None,
     *,
     elements: NDArray[np.intp] | None = None,
+    store: OperatorStore | None = None,
 ) -> Array:
     """The elements' own stress at natural points, discontinuous from element to element.
 
@@ -109,21 +113,24 @@ def raw_stress(
     displacement : (N, 2, k) [L]
     temperature : for each block (m, k) temperature change [K], or None
     elements : (e,) numbers in the block; all of it if None
+    store : keeps the operators of a whole block for further states
 
     Returns
     -------
     (e, q, 3, k) array   D (B u - alpha dT) [F/L^2]
     """
-    mesh_block, section = model.mesh.blocks[block], model.sections[block]
+    mesh_block = model.mesh.blocks[block]
     if elements is None:
         elements = np.arange(mesh_block.element_count)
+    else:
+        store = None
     states = displacement.shape[2]
     stress = np.empty((len(elements), len(points), 3, states))
     for start in range(0, len(elements), ELEMENTS_AT_ONCE):
         chunk = elements[start : start + ELEMENTS_AT_ONCE]
         nodes = mesh_block.connectivity[chunk]
-        D = section.constitutive[chunk]
-        operator = mesh_block.element.stress_operator(model.mesh.nodes[nodes], D, points)
+        form = partial(_stress_operator, model, block, chunk, points)
+        (operator,) = form() if store is None else store.get((block, start, points.tobytes()), form)
         here = displacement[nodes].reshape(len(chunk), -1, states)
         np.matmul(
             operator.reshape(len(chunk), -1, here.shape[1]),
@@ -134,6 +141,14 @@ def raw_stress(
         change = temperature[block][elements]
         stress -= thermal_stress(model, block, change, elements)[:, None]
     return stress
+
+
+def _stress_operator(
+    model: Model, block: int, elements: NDArray[np.intp], points: Array
+) -> tuple[Array]:
+    coords = model.mesh.nodes[model.mesh.blocks[block].connectivity[elements]]
+    D = model.sections[block].constitutive[elements]
+    return (model.mesh.blocks[block].element.stress_operator(coords, D, points),)
 
 
 def region_value(model: Model, name: str) -> Array:

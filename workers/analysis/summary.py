@@ -31,7 +31,7 @@ Json = dict[str, Any]
 Progress = Callable[[str, float], None]
 
 CHUNK_BYTES = 200e6  # for the states that are worked on together
-KEPT_BYTES = 150e6  # for operators that serve one chunk of states after another
+KEPT_BYTES = 200e6  # for operators that serve one chunk of states after another
 STAGE = "recovering"
 
 
