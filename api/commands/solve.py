@@ -1,19 +1,16 @@
 """`fishplate solve`: one job in the foreground, results beside the document."""
 
-import shutil
-import tempfile
 from pathlib import Path
 from typing import Any
 
 import click
 
+from api.commands.folders import refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
 from elements.errors import FishplateError
 from workers import pipeline
 from workers.errors import DocumentError, FaultyError
-
-RESULTS = "results.json"
 
 
 @click.command()
@@ -34,27 +31,10 @@ def command(job: Path, folder: Path | None, pictures: int) -> None:
     """
     folder = folder or job.with_name(f"{job.stem}-results")
     refuse_foreign(folder)
-    results = _run(job.read_bytes(), folder, pictures)
+    with replaced(folder) as fresh:
+        results = _solve(job.read_bytes(), fresh, pictures)
     print_results(out(), results)
     out().print(f"\nWritten to {folder}", soft_wrap=True)
-
-
-def refuse_foreign(folder: Path) -> None:
-    """Results replace earlier results only, never a folder with something else in it."""
-    if folder.exists() and any(folder.iterdir()) and not (folder / RESULTS).is_file():
-        leave(BAD_INPUT, f"{folder} is not empty and holds no earlier results; choose another.")
-
-
-def _run(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:
-    folder.parent.mkdir(parents=True, exist_ok=True)
-    with tempfile.TemporaryDirectory(dir=folder.parent, prefix=".fishplate-") as scratch:
-        fresh = Path(scratch, "results")
-        fresh.mkdir()
-        results = _solve(document, fresh, pictures)
-        if folder.exists():
-            shutil.rmtree(folder)
-        fresh.rename(folder)
-    return results
 
 
 def _solve(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:

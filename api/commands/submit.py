@@ -1,5 +1,6 @@
 """`fishplate submit`: a job to a server, and its results back."""
 
+import time
 import uuid
 from pathlib import Path
 from typing import Any
@@ -8,10 +9,13 @@ from urllib.parse import quote
 import click
 
 from api.commands.client import Client, ServerError
+from api.commands.folders import RESULTS, refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
 from workers.outputs.names import file_name
-from workers.record import UNFINISHED
+from workers.record import CANCELLED, FINISHED, UNFINISHED
+
+PAUSE = 0.25  # shortest time between two looks at a job [s]
 
 
 @click.command()
@@ -34,17 +38,23 @@ def command(job: Path, url: str, wait: bool, folder: Path | None) -> None:  # fm
 
     Prints the address of the job; with --wait also the summary of its results.
     """
+    if folder:
+        refuse_foreign(folder)
     try:
         client = Client(url)
         accepted = client.submit(job.read_bytes(), key=str(uuid.uuid4()))
-        err().print(f"accepted: {client.url.rstrip('/')}{accepted['links']['self']}",
-                    soft_wrap=True)  # fmt: skip
+        here = client.url.rstrip("/") + accepted["links"]["self"]
+        err().print(f"accepted: {here}", soft_wrap=True)
         if not (wait or folder):
             out().print(accepted["id"])
             return
         final = follow(client, accepted)
         _leave_unless_finished(final)
-        results = fetch_results(client, final, folder)
+        results = client.results(final["id"])
+        if folder:
+            with replaced(folder) as fresh:
+                fetch_files(client, final["links"]["self"], results, fresh)
+            err().print(f"Written to {folder}", soft_wrap=True)
     except ServerError as error:
         bad = error.status is not None and 400 <= error.status < 500
         leave(BAD_INPUT if bad else FAILED, str(error), error.errors)
@@ -58,22 +68,23 @@ def follow(client: Client, job: dict[str, Any]) -> dict[str, Any]:
             now = job["progress"] or {"stage": job["state"], "fraction": 0.0}
             report(now["stage"], now["fraction"])
             # On a terminal people watch the bar, so ask often; a log is served by long waits.
+            asked = time.monotonic()
             job = client.job(job["id"], wait=1 if err().is_terminal else 30)
+            # A busy server may answer at once instead of holding the request.
+            if job["state"] in UNFINISHED:
+                time.sleep(max(0.0, PAUSE - (time.monotonic() - asked)))
     return job
 
 
 def _leave_unless_finished(job: dict[str, Any]) -> None:
-    if job["state"] != "finished":
-        leave(FAILED, f"The job {job['state']}: {job['reason'] or 'see the faults'}", job["errors"])
+    if job["state"] != FINISHED:
+        what = "was cancelled" if job["state"] == CANCELLED else "failed"
+        leave(FAILED, f"The job {what}: {job['reason'] or 'see the faults'}", job["errors"])
 
 
-def fetch_results(client: Client, job: dict[str, Any], folder: Path | None) -> dict[str, Any]:
-    """The results; with a folder, every file that was made with the job is written there too."""
-    results = client.results(job["id"])
-    if folder is None:
-        return results
-    here = job["links"]["self"]
-    client.fetch(f"{here}/results", folder / "results.json")
+def fetch_files(client: Client, here: str, results: dict[str, Any], folder: Path) -> None:
+    """Fetch the results and every file that was made with the job."""
+    client.fetch(f"{here}/results", folder / RESULTS)
     # Names go into addresses and file names by our own rules; paths in an answer are not followed.
     for case in results["files"]["fields"]:
         target = folder / "fields" / f"{file_name(case)}.vtu"
@@ -82,5 +93,3 @@ def fetch_results(client: Client, job: dict[str, Any], folder: Path | None) -> d
         for quantity in pictures:
             target = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
             client.fetch(f"{here}/previews/{quote(case, safe='')}/{quote(quantity)}.png", target)
-    err().print(f"Written to {folder}", soft_wrap=True)
-    return results

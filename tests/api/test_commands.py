@@ -12,6 +12,7 @@ from flask import Flask
 from werkzeug.serving import make_server
 
 from api.commands import COMMANDS, main
+from api.commands.folders import replaced
 from api.commands.layout import number
 from api.services import KEY
 from tests.job_documents import strip
@@ -176,13 +177,35 @@ def test_a_large_document_is_sent_packed(job: Path, url: str, app: Flask) -> Non
     assert app.extensions[KEY].store.document(result.stdout.strip()) == job.read_bytes()
 
 
-# --- solve ---------------------------------------------------------------------------------------
+# --- folders -------------------------------------------------------------------------------------
 
 
-def test_solve_never_replaces_a_folder_of_something_else(job: Path, tmp_path: Path) -> None:
+@pytest.mark.parametrize("command", [["solve"], ["submit", "--url", "http://127.0.0.1:1"]])
+def test_results_never_replace_a_folder_of_something_else(
+    job: Path, tmp_path: Path, command: list[str]
+) -> None:
     folder = tmp_path / "mine"
     folder.mkdir()
     (folder / "letter.txt").write_text("dear")
-    result = run("solve", job, "--out", folder)
+    (folder / "results.json").write_text("{}")
+    result = run(*command, job, "--out", folder)
     assert result.exit_code == 2
     assert (folder / "letter.txt").read_text() == "dear"
+
+
+def test_new_results_replace_old_ones_as_a_whole(tmp_path: Path) -> None:
+    folder = tmp_path / "results"
+    for name in ("old", "new"):
+        with replaced(folder) as fresh:
+            (fresh / name).touch()
+    assert [path.name for path in folder.iterdir()] == ["new"]
+    assert [path.name for path in tmp_path.iterdir()] == ["results"]
+
+
+def test_old_results_stay_when_new_ones_fail(tmp_path: Path) -> None:
+    folder = tmp_path / "results"
+    with replaced(folder) as fresh:
+        (fresh / "old").touch()
+    with pytest.raises(RuntimeError), replaced(folder):
+        raise RuntimeError
+    assert [path.name for path in folder.iterdir()] == ["old"]

@@ -1,0 +1,36 @@
+"""The folder that results are written to: a whole new one, or the old one untouched."""
+
+import shutil
+import tempfile
+from collections.abc import Iterator
+from contextlib import contextmanager
+from pathlib import Path
+
+from api.commands.terminal import BAD_INPUT, leave
+
+RESULTS = "results.json"
+# All that results ever consist of, see `workers/pipeline.py`.
+OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews"}
+
+
+def refuse_foreign(folder: Path) -> None:
+    """Results replace earlier results only, never a folder with something else in it."""
+    foreign = sorted({path.name for path in folder.iterdir()} - OURS) if folder.exists() else []
+    if foreign:
+        leave(
+            BAD_INPUT,
+            f"{folder} holds something else than earlier results ({foreign[0]}); choose another.",
+        )
+
+
+@contextmanager
+def replaced(folder: Path) -> Iterator[Path]:
+    """An empty folder to write to, which takes the place of `folder` when all went well."""
+    folder.parent.mkdir(parents=True, exist_ok=True)
+    with tempfile.TemporaryDirectory(dir=folder.parent, prefix=".fishplate-") as scratch:
+        fresh = Path(scratch, "results")
+        fresh.mkdir()
+        yield fresh
+        if folder.exists():
+            shutil.rmtree(folder)
+        fresh.rename(folder)
