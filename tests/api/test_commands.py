@@ -177,6 +177,34 @@ def test_a_large_document_is_sent_packed(job: Path, url: str, app: Flask) -> Non
     assert app.extensions[KEY].store.document(result.stdout.strip()) == job.read_bytes()
 
 
+# --- solve ---------------------------------------------------------------------------------------
+
+
+@pytest.mark.slow
+def test_solve_writes_and_prints_the_known_answer(job: Path, tmp_path: Path) -> None:
+    """The strip: 32000 N / (40 mm x 8 mm) = 100 MPa, 100 / 355 = 28 % of yield."""
+    result = run("solve", job, "--pictures", "0")
+    assert result.exit_code == 0
+    folder = tmp_path / "strip-results"
+    peak = json.loads((folder / "results.json").read_bytes())["cases"]["pull"]["von_mises"]
+    assert peak["value"] == pytest.approx(100.0)
+    assert (folder / "fields" / "pull.vtu").is_file()
+    printed = result.stdout.splitlines()
+    row = next(line.split() for line in printed if line.startswith("pull "))
+    assert row[:2] == ["pull", "100"]
+    assert "28%" in row
+    assert any("-32000" in line for line in printed)
+
+
+@pytest.mark.slow
+def test_solve_ends_with_two_where_the_document_is_wrong(job: Path, tmp_path: Path) -> None:
+    job.write_text(json.dumps({**strip(), "supports": [{"on": "left", "uy": 0}]}))
+    result = run("solve", job)
+    assert result.exit_code == 2
+    assert "/supports" in result.stderr
+    assert not (tmp_path / "strip-results").exists()
+
+
 # --- folders -------------------------------------------------------------------------------------
 
 

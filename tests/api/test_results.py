@@ -1,6 +1,7 @@
 """Results, fields, pictures and tables over HTTP."""
 
 import csv
+import importlib
 import io
 from collections.abc import Callable
 from typing import Any
@@ -9,6 +10,7 @@ import pytest
 from flask.testing import FlaskClient
 from werkzeug.test import TestResponse
 
+from api.results import QUANTITIES
 from api.services import Services
 from tests.small_results import CAUTION, RESULTS
 from workers.errors import Fault
@@ -87,6 +89,12 @@ def workers_answer(services: Services, monkeypatch: pytest.MonkeyPatch) -> Calla
         monkeypatch.setattr(services.queue, "make_artefact", lambda *_, **__: answer)
 
     return set_answer
+
+
+@pytest.mark.slow
+def test_pictures_are_offered_of_exactly_what_can_be_drawn() -> None:
+    """The API names the quantities without importing the renderer."""
+    assert importlib.import_module("workers.outputs.preview").QUANTITIES == QUANTITIES
 
 
 # --- files that a worker makes on request --------------------------------------------------------
