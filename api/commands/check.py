@@ -7,7 +7,7 @@ import numpy as np
 from rich.console import Console
 from rich.markup import escape
 
-from api.commands.layout import number, place, print_cautions, print_table
+from api.commands.layout import number, place, print_cautions, print_table, settled
 from api.commands.terminal import BAD_INPUT, leave, out
 from workers.analysis.loads.cases import resolve_loads
 from workers.analysis.mesh import Mesh
@@ -101,12 +101,10 @@ def _resultants(job: Job, mesh: Mesh) -> list[Row]:
     """What the loads of each case add up to, about the centroid of the plate."""
     applied = resolve_loads(build_model(job, mesh)).applied
     sums = resultant(mesh.nodes, applied, centroid(mesh))
-    # Sums that are nothing but rounding are shown as what they are.
-    noise = 1e-12 * np.abs(applied).sum(axis=(0, 1)) * np.array([[1], [1], [mesh.diagonal]])
-    sums[np.abs(sums) <= noise] = 0.0
+    scale = np.abs(applied).sum(axis=(0, 1)) * np.array([[1], [1], [mesh.diagonal]])
     return [
-        (case.name, str(len(case.loads)), *map(number, values))
-        for case, values in zip(job.load_cases, sums.T, strict=True)
+        (case.name, str(len(case.loads)), *map(number, map(settled, values, scales)))
+        for case, values, scales in zip(job.load_cases, sums.T, scale.T, strict=True)
     ]
 
 
