@@ -8,7 +8,8 @@ FishplateError
 ├── DocumentError                        (workers/errors.py) the job document is wrong
 ├── MeshError                            the plate could not be meshed
 ├── AnalysisError                        the system could not be solved
-│   └── MechanismError                   the plate, or a part of it, is free to move
+│   ├── MechanismError                   the plate, or a part of it, is free to move
+│   └── SingularMatrixError              (workers/analysis/solver.py) the matrix has no factor
 ├── PicturesUnavailableError             this machine cannot render
 ├── SettingsError                        an environment variable is wrong
 └── StoreError                           the job store refused

@@ -11,6 +11,7 @@ from numpy.typing import NDArray
 from scipy.linalg.blas import dsyrk, dtrsm
 from scipy.linalg.lapack import dpotrf
 
+from elements.errors import FishplateError
 from workers.analysis.multifrontal.layout import Layout
 
 Array = NDArray[np.float64]
@@ -20,7 +21,7 @@ Array = NDArray[np.float64]
 PAIR_COST, NUMBER_COST, LIST_COST = 1e-6, 6e-9, 3e-6
 
 
-class NotPositiveDefiniteError(ArithmeticError):
+class NotPositiveDefiniteError(FishplateError, ArithmeticError):
     """A pivot is not positive.
 
     row : the dof, in elimination order.
