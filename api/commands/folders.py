@@ -6,9 +6,12 @@ from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
 
-from api.commands.terminal import BAD_INPUT, leave
+from rich.markup import escape
+
+from api.commands.terminal import BAD_INPUT, err, leave
 
 RESULTS = "results.json"
+MOST_FILES = 20  # that are named one by one
 # All that results ever consist of, see `workers/pipeline.py`.
 OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews"}
 
@@ -34,3 +37,13 @@ def replaced(folder: Path) -> Iterator[Path]:
         if folder.exists():
             shutil.rmtree(folder)
         fresh.rename(folder)
+
+
+def name_files(folder: Path) -> None:
+    """Say which files there are now."""
+    files = sorted(path for path in folder.rglob("*") if path.is_file())
+    err().print(f"Written to {folder}:", soft_wrap=True)
+    for path in files[:MOST_FILES]:
+        err().print(f"  {escape(str(path.relative_to(folder)))}", soft_wrap=True)
+    if len(files) > MOST_FILES:
+        err().print(f"  ... and {len(files) - MOST_FILES} more")

@@ -5,7 +5,7 @@ from typing import Any
 
 import click
 
-from api.commands.folders import refuse_foreign, replaced
+from api.commands.folders import name_files, refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
 from elements.errors import FishplateError
@@ -34,7 +34,7 @@ def command(job: Path, folder: Path | None, pictures: int) -> None:
     with replaced(folder) as fresh:
         results = _solve(job.read_bytes(), fresh, pictures)
     print_results(out(), results)
-    out().print(f"\nWritten to {folder}", soft_wrap=True)
+    name_files(folder)
 
 
 def _solve(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:

@@ -9,7 +9,7 @@ from urllib.parse import quote
 import click
 
 from api.commands.client import Client, ServerError
-from api.commands.folders import RESULTS, refuse_foreign, replaced
+from api.commands.folders import RESULTS, name_files, refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
 from workers.outputs.names import file_name
@@ -54,7 +54,7 @@ def command(job: Path, url: str, wait: bool, folder: Path | None) -> None:  # fm
         if folder:
             with replaced(folder) as fresh:
                 fetch_files(client, final["links"]["self"], results, fresh)
-            err().print(f"Written to {folder}", soft_wrap=True)
+            name_files(folder)
     except ServerError as error:
         bad = error.status is not None and 400 <= error.status < 500
         leave(BAD_INPUT if bad else FAILED, str(error), error.errors)
@@ -67,9 +67,8 @@ def follow(client: Client, job: dict[str, Any]) -> dict[str, Any]:
         while job["state"] in UNFINISHED:
             now = job["progress"] or {"stage": job["state"], "fraction": 0.0}
             report(now["stage"], now["fraction"])
-            # On a terminal people watch the bar, so ask often; a log is served by long waits.
             asked = time.monotonic()
-            job = client.job(job["id"], wait=1 if err().is_terminal else 30)
+            job = client.job(job["id"], wait=1)  # a person watches: no stage should go unseen long
             # A busy server may answer at once instead of holding the request.
             if job["state"] in UNFINISHED:
                 time.sleep(max(0.0, PAUSE - (time.monotonic() - asked)))
