@@ -1,22 +1,22 @@
-"""What the operator may set: every name, default and check, read once from the environment.
+"""What the operator may set: every name, default, meaning and check, in one place.
 
-The settings travel between processes as environment variables too (`as_environment`), so a child
-process sees exactly what its parent saw.
+Read once from the environment. The settings travel between processes as environment variables too
+(`as_environment`), so a child process sees exactly what its parent saw.
 """
 
 import os
-import re
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass, field, fields
 from pathlib import Path
 from typing import Any
 
+from workers import setting_readers as readers
 from workers.errors import SettingsError
 
 PREFIX = "FISHPLATE_"
+# Variables with our prefix that are no settings of a server: what a client sends as its token.
+CLIENT_VARIABLES = frozenset({"token"})
 GIBIBYTE = 1024**3
-_SIZE = re.compile(r"(\d+)\s*(?:(K|M|G|T)iB|B)?", re.ASCII)
-_SIZE_POWER = {None: 0, "K": 1, "M": 2, "G": 3, "T": 4}
 
 
 def default_store() -> Path:
@@ -36,37 +36,143 @@ def default_memory_limit() -> int:
     return physical * 3 // 4 // default_workers()
 
 
+def _setting(
+    default: Any, read: Callable[[str], Any], meaning: str, *, default_text: str | None = None
+) -> Any:
+    """A setting. default_text: how a default that depends on the machine is described."""
+    metadata = {"read": read, "meaning": meaning, "default_text": default_text}
+    if callable(default):
+        return field(default_factory=default, metadata=metadata)
+    return field(default=default, metadata=metadata)
+
+
 @dataclass(frozen=True)
 class Settings:
-    """All settings of one installation. The environment variable is FISHPLATE_ and the name.
+    """All settings of one installation. The environment variable is FISHPLATE_ and the name."""
 
-    store           folder of all jobs; shared by every machine that works on them
-    redis_url       e.g. "redis://host:6379/0" or "unix:///path/redis.sock"; None: a private server
-    workers         jobs worked on at a time on this machine
-    host, port      where the API listens; port 0 is any free one
-    api_threads     requests that the API answers at a time
-    body_bytes      largest job document [bytes]; "64MiB" is understood
-    time_limit      longest run of one job [s]
-    memory_limit    memory of one job beyond the resting worker [bytes]; "4GiB" is understood
-    longest_wait    longest wait that `Prefer: wait=` is granted [s]
-    pictures        pictures drawn with the job; further ones are drawn when asked for
-    reconcile_every time between two looks for jobs that Redis lost or whose worker died [s]
-    shutdown_grace  how long a stopping pool lets running jobs go on [s]; then they are re-queued
-    """
+    # --- where -----------------------------------------------------------------------------------
+    store: Path = _setting(
+        default_store,
+        readers.path,
+        "Folder of all jobs; shared by every machine that works on them.",
+        default_text="~/.local/share/fishplate",
+    )
+    redis_url: str | None = _setting(
+        None,
+        readers.redis_url,
+        "Redis server, e.g. `redis://host:6379/0` or `unix:///path/redis.sock`. Without it a "
+        "private server is started, whose files are in the store.",
+    )
+    host: str = _setting(
+        "127.0.0.1",
+        str,
+        "Address to listen on. Beyond this machine only when tokens have been made.",
+    )
+    port: int = _setting(8470, readers.whole(0, 65535), "Port to listen on; 0 is any free one.")
+    proxies: int = _setting(
+        0,
+        readers.whole(0, 10),
+        "Reverse proxies in front of the server whose `X-Forwarded-` headers are believed.",
+    )
 
-    store: Path = field(default_factory=default_store)
-    redis_url: str | None = None
-    workers: int = field(default_factory=default_workers)
-    host: str = "127.0.0.1"
-    port: int = 8470
-    api_threads: int = 16
-    body_bytes: int = GIBIBYTE // 4
-    time_limit: int = 900
-    memory_limit: int = field(default_factory=default_memory_limit)
-    longest_wait: int = 60
-    pictures: int = 6
-    reconcile_every: float = 15.0
-    shutdown_grace: float = 30.0
+    # --- how much at a time ----------------------------------------------------------------------
+    workers: int = _setting(
+        default_workers,
+        readers.whole(1, 1024),
+        "Jobs worked on at a time on this machine.",
+        default_text="one for each processor",
+    )
+    api_threads: int = _setting(
+        16, readers.whole(2, 1024), "Requests that each process of the API answers at a time."
+    )
+    longest_wait: int = _setting(
+        60, readers.whole(1, 3600), "Longest wait that `Prefer: wait=` is granted [s]."
+    )
+    pictures: int = _setting(
+        6,
+        readers.whole(0, 1000),
+        "Pictures drawn with the job; further ones are drawn when asked for.",
+    )
+
+    # --- limits of one job -----------------------------------------------------------------------
+    body_bytes: int = _setting(
+        GIBIBYTE // 4, readers.size, "Largest job document, after decompression [bytes]."
+    )
+    most_nodes: int = _setting(
+        2_000_000,
+        readers.whole(1, 10**9),
+        "Nodes that a document may bring as its own mesh, or ask for by patches.",
+    )
+    most_cases: int = _setting(
+        5_000, readers.whole(1, 10**6), "Load cases and combinations of one job, together."
+    )
+    most_dofs: int = _setting(
+        4_000_000,
+        readers.whole(1, 10**9),
+        "Degrees of freedom of one job, two for each node, whatever made the mesh.",
+    )
+    time_limit: int = _setting(900, readers.whole(1, 604_800), "Longest run of one job [s].")
+    memory_limit: int = _setting(
+        default_memory_limit,
+        readers.size,
+        "Memory of one job beyond the resting worker [bytes]; `4GiB` is understood.",
+        default_text="three quarters of the machine's, shared by its processors",
+    )
+
+    # --- limits of one client --------------------------------------------------------------------
+    queue_length: int = _setting(
+        5_000,
+        readers.whole(1, 10**6),
+        "Unfinished jobs of one workspace; further ones are answered with 429.",
+    )
+    interactive_jobs: int = _setting(
+        8,
+        readers.whole(0, 10**6),
+        "Unfinished jobs of one workspace that may stand in the interactive line; further ones are "
+        "put into the bulk line.",
+    )
+    request_rate: str = _setting(
+        "3000/minute", readers.rate, "Requests with one token, or from one address without; or off."
+    )
+    submit_rate: str = _setting(
+        "1200/minute", readers.rate, "Jobs submitted with one token; or off."
+    )
+
+    # --- keeping ---------------------------------------------------------------------------------
+    keep_days: float | None = _setting(
+        None,
+        readers.days,
+        "Final jobs are removed so many days after their end, unless pinned. Without it none is "
+        "removed for its age: they are evidence.",
+    )
+    keep_bytes: int | None = _setting(
+        None,
+        readers.size,
+        "While the store holds more, the final jobs that ended first are removed, unless pinned. "
+        "Without it none is removed for its size.",
+    )
+    housekeeping_every: float = _setting(
+        300.0,
+        readers.seconds,
+        "Time between two looks at the size of the store and at what is to be removed [s].",
+    )
+
+    # --- keeping going ---------------------------------------------------------------------------
+    reconcile_every: float = _setting(
+        15.0,
+        readers.seconds,
+        "Time between two looks for jobs that Redis lost or whose worker died [s].",
+    )
+    shutdown_grace: float = _setting(
+        30.0,
+        readers.seconds,
+        "How long a stopping pool lets running jobs go on [s]; then they are queued again.",
+    )
+    log_level: str = _setting(
+        "info",
+        readers.one_of("debug", "info", "warning", "error"),
+        "Least important log entries that are written; `info` has a line for each request.",
+    )
 
     @classmethod
     def from_environment(cls, environment: Mapping[str, str] | None = None) -> "Settings":
@@ -82,72 +188,30 @@ class Settings:
             for name, text in environment.items()
             if name.startswith(PREFIX)
         }
-        unknown = sorted(given.keys() - _READERS.keys())
+        known = {setting.name: setting.metadata["read"] for setting in fields(cls)}
+        unknown = sorted(given.keys() - known.keys() - CLIENT_VARIABLES)
         if unknown:
             raise SettingsError(
-                f"unknown setting {', '.join(PREFIX + name.upper() for name in unknown)}; known: "
-                + ", ".join(PREFIX + name.upper() for name in _READERS)
+                f"unknown setting {', '.join(map(variable, unknown))}; known: "
+                + ", ".join(map(variable, known))
             )
-        return cls(**{name: _read(name, text) for name, text in given.items() if text})
+        return cls(
+            **{n: _read(n, text, known[n]) for n, text in given.items() if text and n in known}
+        )
 
     def as_environment(self) -> dict[str, str]:
         """The variables from which `from_environment` makes these settings again."""
         values = {f.name: getattr(self, f.name) for f in fields(self)}
-        return {PREFIX + n.upper(): str(v) for n, v in values.items() if v is not None}
+        return {variable(n): str(v) for n, v in values.items() if v is not None}
 
 
-def _read(name: str, text: str) -> Any:
+def variable(name: str) -> str:
+    """The environment variable of a setting."""
+    return PREFIX + name.upper()
+
+
+def _read(name: str, text: str, reader: Callable[[str], Any]) -> Any:
     try:
-        return _READERS[name](text)
+        return reader(text)
     except ValueError as error:
-        raise SettingsError(f"{PREFIX}{name.upper()}={text!r}: {error}") from error
-
-
-def _path(text: str) -> Path:
-    return Path(text).expanduser().absolute()
-
-
-def _size(text: str) -> int:
-    match = _SIZE.fullmatch(text.strip())
-    if not match or int(match[1]) == 0:
-        raise ValueError('a number of bytes above zero is needed, e.g. "64MiB" or "4GiB"')
-    return int(match[1]) * 1024 ** _SIZE_POWER[match[2]]
-
-
-def _whole(low: int, high: int) -> Callable[[str], int]:
-    def read(text: str) -> int:
-        if not text.strip().isdecimal() or not low <= int(text) <= high:
-            raise ValueError(f"a whole number from {low} to {high} is needed")
-        return int(text)
-
-    return read
-
-
-def _seconds(text: str) -> float:
-    value = float(text)
-    if not 0.0 < value < 1e6:
-        raise ValueError("a number of seconds above zero is needed")
-    return value
-
-
-def _redis_url(text: str) -> str:
-    if not text.startswith(("redis://", "rediss://", "unix://")):
-        raise ValueError("a redis://, rediss:// or unix:// address is needed")
-    return text
-
-
-_READERS: dict[str, Callable[[str], Any]] = {
-    "store": _path,
-    "redis_url": _redis_url,
-    "workers": _whole(1, 1024),
-    "host": str,
-    "port": _whole(0, 65535),
-    "api_threads": _whole(2, 1024),
-    "body_bytes": _size,
-    "time_limit": _whole(1, 604_800),
-    "memory_limit": _size,
-    "longest_wait": _whole(1, 3600),
-    "pictures": _whole(0, 1000),
-    "reconcile_every": _seconds,
-    "shutdown_grace": _seconds,
-}
+        raise SettingsError(f"{variable(name)}={text!r}: {error}") from error
