@@ -15,6 +15,7 @@ FishplateError
 └── StoreError                           the job store refused
     ├── UnknownJobError
     ├── NotFinalError
+    ├── PinnedError                      the job is kept on purpose
     ├── TransitionError                  no such change of state
     └── KeyConflictError                 an Idempotency-Key was used for another document
 """

@@ -75,6 +75,10 @@ class NotFinalError(StoreError):
     """The job has no results yet."""
 
 
+class PinnedError(StoreError):
+    """The job is kept on purpose and cannot be removed."""
+
+
 class TransitionError(StoreError):
     """A job cannot go from the state that it is in to the one asked for."""
 

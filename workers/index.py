@@ -6,7 +6,7 @@ they stand for and taken out after it has gone. Readers therefore look at the re
 """
 
 import os
-from collections.abc import Iterator
+from collections.abc import Iterable, Iterator, Sequence
 from pathlib import Path
 from urllib.parse import quote
 
@@ -36,20 +36,34 @@ class Index:
 
     def newest_first(self, after: str | None = None) -> Iterator[str]:
         """Ids in falling order, beginning below `after`; lists one day at a time."""
-        for day in sorted(_names(self.root), reverse=True):
-            if after and day > day_of(after):
-                continue
-            for job_id in sorted(_names(self.root / day), reverse=True):
-                if is_id(job_id) and (not after or job_id < after):
-                    yield job_id
+        return newest_first([self], after)
+
+    def count(self) -> int:
+        """Number of ids."""
+        return sum(len(_names(self.root / day)) for day in _names(self.root))
+
+
+def newest_first(indexes: Sequence[Index], after: str | None = None) -> Iterator[str]:
+    """Ids that all the indexes name, in falling order, beginning below `after`.
+
+    Lists one day at a time, so that a page costs little however old the store is.
+    """
+    for day in sorted(_common(index.root for index in indexes), reverse=True):
+        if after and day > day_of(after):
+            continue
+        for job_id in sorted(_common(index.root / day for index in indexes), reverse=True):
+            if is_id(job_id) and (not after or job_id < after):
+                yield job_id
 
 
 class Indexes:
-    """Where to look for the jobs of a state, and for those of a label."""
+    """Where to look for the jobs of a state, of a label, of a workspace."""
 
     def __init__(self, root: Path) -> None:
         self._states = {state: Index(root / "states" / state) for state in STATES}
         self._labels = root / "labels"
+        self._workspaces = root / "workspaces"
+        self._lines = root / "lines"
 
     def of_state(self, state: str) -> Index:
         return self._states[state]
@@ -58,28 +72,56 @@ class Indexes:
         # The dot keeps "", "." and ".." from naming the folder itself or its parent.
         return Index(self._labels / ("." + quote(label, safe=" ")))
 
+    def of_workspace(self, workspace: str) -> Index:
+        return Index(self._workspaces / workspace)
+
+    def line_of(self, workspace: str) -> Index:
+        """The unfinished jobs of a workspace: small, so that counting them is quick."""
+        return Index(self._lines / workspace)
+
     def unfinished(self) -> set[str]:
         """Ids of the jobs that are queued or running, and perhaps of others that were."""
         return {i for state in (QUEUED, RUNNING) for i in self._states[state].newest_first()}
 
     def enter(self, record: Record, *, sync: bool = False) -> None:
-        """Before the record is written: name the job under its state and its label."""
+        """Before the record is written: name the job wherever it is to be found."""
         self._states[record.state].add(record.id, sync=sync)
+        if not record.is_final:
+            self.line_of(record.workspace).add(record.id)  # not worth a sync: only counted
+        self.of_workspace(record.workspace).add(record.id, sync=sync)
         if record.label is not None:
             self.of_label(record.label).add(record.id, sync=sync)
 
     def tidy(self, record: Record) -> None:
-        """After it was written: take the job out of all states but its own."""
+        """After it was written: take the job out of wherever it is no more."""
         for state, index in self._states.items():
             if state != record.state:
                 index.discard(record.id)
+        if record.is_final:
+            self.line_of(record.workspace).discard(record.id)
 
-    def drop(self, job_id: str, label: str | None = None) -> None:
+    def drop(self, record: Record) -> None:
         """Take out a job that is no more."""
+        self.drop_unknown(record.id)
+        self.of_workspace(record.workspace).discard(record.id)
+        if record.label is not None:
+            self.of_label(record.label).discard(record.id)
+
+    def drop_unknown(self, job_id: str) -> None:
+        """The same where there is no record to tell the workspace; the states lead others here."""
         for index in self._states.values():
             index.discard(job_id)
-        if label is not None:
-            self.of_label(label).discard(job_id)
+        for workspace in _names(self._lines):
+            self.line_of(workspace).discard(job_id)
+
+
+def _common(folders: Iterable[Path]) -> set[str]:
+    """Names that stand in every one of the folders."""
+    first, *rest = folders
+    common = set(_names(first))
+    for folder in rest:
+        common.intersection_update(_names(folder))
+    return common
 
 
 def _names(folder: Path) -> list[str]:

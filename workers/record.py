@@ -23,6 +23,8 @@ QUEUED, RUNNING, FINISHED, FAILED, CANCELLED = STATES = (
     "cancelled",
 )
 UNFINISHED = frozenset({QUEUED, RUNNING})
+INTERACTIVE, BULK = PRIORITIES = ("interactive", "bulk")
+DEFAULT_WORKSPACE = "default"  # of whoever works without tokens, or was given no other
 # running -> queued: its worker was killed or shut down. A final state is never left.
 LEGAL = {
     QUEUED: frozenset({RUNNING, CANCELLED}),
@@ -78,11 +80,15 @@ class Event:
 class Record:
     """What is known of a job besides its document and its results.
 
-    attempts : how often a worker has begun it; one that was shut down in order does not count.
-    reason   : why it failed or was cancelled, in plain words.
-    faults   : what is wrong in the document, when that is why it failed.
-    cautions : those of the results, once it is finished.
-    key      : digest of the Idempotency-Key.
+    attempts  : how often a worker has begun it; one that was shut down in order does not count.
+    reason    : why it failed or was cancelled, in plain words.
+    cause     : the same as one of few words, for counting; when it failed.
+    faults    : what is wrong in the document, when that is why it failed.
+    cautions  : those of the results, once it is finished.
+    key       : digest of the workspace and the Idempotency-Key.
+    workspace : whose it is; owner: name of the token that it came with.
+    priority  : the line that it stands in.
+    pinned    : never removed for its age or for the room that it takes.
     """
 
     id: str
@@ -95,6 +101,11 @@ class Record:
     faults: tuple[Fault, ...] = ()
     cautions: tuple[Mapping[str, Any], ...] = ()
     key: str | None = None
+    workspace: str = DEFAULT_WORKSPACE
+    owner: str | None = None
+    priority: str = BULK
+    pinned: bool = False
+    cause: str | None = None
 
     @property
     def state(self) -> str:
@@ -145,6 +156,11 @@ class Record:
             "faults": [fault.as_json() for fault in self.faults],
             "cautions": [dict(caution) for caution in self.cautions],
             "key": self.key,
+            "workspace": self.workspace,
+            "owner": self.owner,
+            "priority": self.priority,
+            "pinned": self.pinned,
+            "cause": self.cause,
         }
 
     def as_bytes(self) -> bytes:

@@ -7,7 +7,9 @@
                 results/       published by one rename
     states/STATE/DAY/ID        index: where to look for jobs of a state (index.py)
     labels/LABEL/DAY/ID        index: the jobs of a label
-    keys/DIGEST                the job that an Idempotency-Key stands for
+    workspaces/NAME/DAY/ID     index: the jobs of a workspace
+    lines/NAME/DAY/ID          index: those of them that are unfinished
+    keys/DIGEST                the job that an Idempotency-Key stands for, within a workspace
     incoming/ID, removed/ID    on the way in and out
 
 Redis may be lost at any time; this folder may not. Every method raises StoreError when the file
@@ -15,26 +17,34 @@ system refuses (full disk, no permission), and UnknownJobError for an id without
 """
 
 import hashlib
-import logging
 import shutil
 import time
 from collections.abc import Iterator, Mapping, Sequence
 from contextlib import ExitStack, contextmanager
+from dataclasses import replace
 from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 
 from workers import durable
-from workers.errors import KeyConflictError, NotFinalError, StoreError, UnknownJobError
-from workers.index import Index, Indexes
-from workers.record import FINISHED, QUEUED, RUNNING, Event, Record, is_id, new_id, now
+from workers.errors import KeyConflictError, NotFinalError, PinnedError, UnknownJobError
+from workers.record import (
+    BULK,
+    DEFAULT_WORKSPACE,
+    FINISHED,
+    QUEUED,
+    RUNNING,
+    Event,
+    Record,
+    new_id,
+    now,
+)
+from workers.store_reader import StoreReader, telling
 
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
 STAGING = "staging"
 ABANDONED = 86_400.0  # age at which something in incoming/ is nobody's any more [s]
-
-log = logging.getLogger(__name__)
 
 
 class Acceptance(NamedTuple):
@@ -44,20 +54,11 @@ class Acceptance(NamedTuple):
     created: bool
 
 
-class Page(NamedTuple):
-    """One page of a listing; `after` is the cursor of the next page, None on the last."""
-
-    records: tuple[Record, ...]
-    after: str | None
-
-
-class Store:
+class Store(StoreReader):
     """The jobs below one folder. Holds no state: any number of processes may share the folder."""
 
     def __init__(self, root: Path) -> None:
-        self.root = Path(root)
-        self.jobs = Index(self.root / "jobs")
-        self.indexes = Indexes(self.root)
+        super().__init__(root)
         self._incoming = self.root / "incoming"
         self._removed = self.root / "removed"
         self._keys = self.root / "keys"
@@ -65,7 +66,15 @@ class Store:
     # --- accepting -------------------------------------------------------------------------------
 
     def accept(
-        self, document: bytes, *, label: str | None = None, title: str, key: str | None = None
+        self,
+        document: bytes,
+        *,
+        label: str | None = None,
+        title: str,
+        key: str | None = None,
+        workspace: str = DEFAULT_WORKSPACE,
+        owner: str | None = None,
+        priority: str = BULK,
     ) -> Acceptance:
         """File a job. On return it is on the disk: it will be worked on whatever is killed.
 
@@ -81,9 +90,13 @@ class Store:
             checksum="sha256:" + hashlib.sha256(document).hexdigest(),
             size=len(document),
             history=(Event(QUEUED, now()),),
-            key=None if key is None else hashlib.sha256(key.encode()).hexdigest(),
+            # A workspace has no "/" in its name: nobody meets a key of another workspace.
+            key=None if key is None else hashlib.sha256(f"{workspace}/{key}".encode()).hexdigest(),
+            workspace=workspace,
+            owner=owner,
+            priority=priority,
         )
-        with _telling("the job could not be filed"):
+        with telling("the job could not be filed"):
             if record.key is not None:
                 return self._file_under_key(record, document, self._keys / record.key)
             self._file(record, document)
@@ -120,7 +133,7 @@ class Store:
         except OSError:
             for half_done in (target, incoming):
                 shutil.rmtree(half_done, ignore_errors=True)
-            self.indexes.drop(record.id, record.label)
+            self.indexes.drop(record)
             raise
 
     def probe(self) -> None:
@@ -130,87 +143,13 @@ class Store:
         ------
         StoreError   new jobs cannot be filed.
         """
-        with _telling("the job store cannot be written"):
+        with telling("the job store cannot be written"):
             durable.make_folder(self._incoming)
             path = self._incoming / new_id()
             try:
                 durable.write(path, bytes(4096))
             finally:
                 path.unlink(missing_ok=True)
-
-    # --- reading ---------------------------------------------------------------------------------
-
-    def record(self, job_id: str) -> Record:
-        """The record of a job."""
-        if is_id(job_id):
-            with _telling(f"the record of job {job_id} could not be read"):
-                try:
-                    return Record.from_bytes((self.jobs.path(job_id) / "record.json").read_bytes())
-                except FileNotFoundError:
-                    pass
-                except (ValueError, TypeError, LookupError) as error:
-                    raise StoreError(f"the record of job {job_id} is damaged: {error}") from error
-        raise UnknownJobError(f"there is no job {job_id!r}")
-
-    def document(self, job_id: str) -> bytes:
-        """The job document, byte for byte as it was accepted."""
-        with _telling(f"the document of job {job_id} could not be read"):
-            return (self._folder(job_id) / "job.json").read_bytes()
-
-    def results_path(self, job_id: str) -> Path:
-        """The folder of the published results.
-
-        Raises
-        ------
-        NotFinalError   the job has no results (yet).
-        """
-        record = self.record(job_id)
-        if record.state != FINISHED:
-            raise NotFinalError(f"job {job_id} is {record.state}; it has no results")
-        return self.jobs.path(job_id) / "results"
-
-    def list(
-        self,
-        *,
-        state: str | None = None,
-        label: str | None = None,
-        after: str | None = None,
-        limit: int = 50,
-    ) -> Page:
-        """Jobs, newest first, below the id `after`; opens little more than `limit` records."""
-        if after is not None and not is_id(after):
-            raise UnknownJobError(f"{after!r} is not a cursor of this listing")
-        records: tuple[Record, ...] = ()
-        index = self.jobs if state is None else self.indexes.of_state(state)
-        if label is not None:
-            index = self.indexes.of_label(label)
-        with _telling("the jobs could not be listed"):
-            for job_id in index.newest_first(after):
-                record = self._readable(job_id)
-                if record and state in (None, record.state) and label in (None, record.label):
-                    if len(records) == limit:
-                        return Page(records, records[-1].id)
-                    records += (record,)
-        return Page(records, None)
-
-    def unfinished(self) -> tuple[str, ...]:
-        """Ids of all jobs that are queued or running, oldest first."""
-        with _telling("the unfinished jobs could not be listed"):
-            return tuple(sorted(self.indexes.unfinished()))
-
-    def _folder(self, job_id: str) -> Path:
-        self.record(job_id)
-        return self.jobs.path(job_id)
-
-    def _readable(self, job_id: str) -> Record | None:
-        """The record for a list, which a single damaged one must not break."""
-        try:
-            return self.record(job_id)
-        except UnknownJobError:
-            return None
-        except StoreError:
-            log.exception("job %s is left out of a list", job_id)
-            return None
 
     # --- changing --------------------------------------------------------------------------------
 
@@ -243,7 +182,7 @@ class Store:
         TransitionError   the job is not running (any more): it was cancelled meanwhile. The staged
             results are then left where they are.
         """
-        with _telling(f"the results of job {job_id} could not be written"):
+        with telling(f"the results of job {job_id} could not be written"):
             durable.sync_tree(staging)
         with self._changing(job_id) as folder:
             record = self.record(job_id).moved(FINISHED, cautions=tuple(cautions))
@@ -270,7 +209,7 @@ class Store:
         """
         staging = self._folder(job_id) / STAGING
         with ExitStack() as held:
-            with _telling(f"job {job_id} could not be begun"):
+            with telling(f"job {job_id} could not be begun"):
                 mine = held.enter_context(durable.lock(staging.with_name("run.lock"), wait=False))
             if not mine:
                 yield False
@@ -289,18 +228,23 @@ class Store:
                 yield None
                 return
             staging = self.jobs.path(job_id) / STAGING
-            with _telling(f"job {job_id} could not be begun"):
+            with telling(f"job {job_id} could not be begun"):
                 staging.mkdir()
             yield staging
 
     @contextmanager
     def scratch(self) -> Iterator[Path]:
         """A folder on the file system of the store, gone afterwards."""
-        with _telling("the job store cannot be written"):
+        with telling("the job store cannot be written"):
             durable.make_folder(self._incoming)
             folder = TemporaryDirectory(dir=self._incoming)
         with folder as path:
             yield Path(path)
+
+    def pin(self, job_id: str, pinned: bool) -> Record:
+        """Have a job kept whatever its age and size, or no more."""
+        with self._changing(job_id) as folder:
+            return self._replace(folder, replace(self.record(job_id), pinned=pinned))
 
     def remove(self, job_id: str) -> None:
         """Forget a final job and everything of it.
@@ -308,22 +252,25 @@ class Store:
         Raises
         ------
         NotFinalError   it is queued or running; cancel it first.
+        PinnedError     it is pinned; unpin it first.
         """
         with self._changing(job_id) as folder:
             record = self.record(job_id)
             if not record.is_final:
                 raise NotFinalError(f"job {job_id} is {record.state}; cancel it first")
+            if record.pinned:
+                raise PinnedError(f"job {job_id} is pinned; unpin it first")
             removed = self._removed / job_id
             durable.make_folder(self._removed)
             durable.move(folder, removed)
-            self.indexes.drop(job_id, record.label)
+            self.indexes.drop(record)
             if record.key:
                 (self._keys / record.key).unlink(missing_ok=True)
             shutil.rmtree(removed, ignore_errors=True)
 
     def reindex(self) -> None:
         """Rebuild the indexes from the records, and clear what crashes left behind."""
-        with _telling("the job store could not be tidied"):
+        with telling("the job store could not be tidied"):
             for job_id in self.jobs.newest_first():
                 if record := self._readable(job_id):
                     self.indexes.enter(record)
@@ -336,14 +283,14 @@ class Store:
         """Take out the index entries that a crash left for a job that never was."""
         # A job being accepted is in incoming/ until the moment it is in jobs/: look there first.
         if not (self._incoming / job_id).exists() and not self.jobs.path(job_id).exists():
-            self.indexes.drop(job_id)
+            self.indexes.drop_unknown(job_id)
 
     @contextmanager
     def _changing(self, job_id: str) -> Iterator[Path]:
         """Hold the record lock: every change of a record happens inside."""
         folder = self._folder(job_id)
         with (
-            _telling(f"the record of job {job_id} could not be written"),
+            telling(f"the record of job {job_id} could not be written"),
             durable.lock(folder / "record.lock"),
         ):
             yield folder
@@ -356,14 +303,3 @@ class Store:
         if not (record.is_final and (folder / STAGING).exists()):
             self.indexes.tidy(record)
         return record
-
-
-@contextmanager
-def _telling(trouble: str) -> Iterator[None]:
-    """Turn what the operating system says into a StoreError that says what failed."""
-    try:
-        yield
-    except StoreError:
-        raise
-    except OSError as error:
-        raise StoreError(error.errno, f"{trouble}: {error.strerror or error}") from error

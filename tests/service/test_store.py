@@ -4,6 +4,7 @@ import errno
 import json
 import os
 import resource
+import shutil
 import subprocess
 import sys
 import threading
@@ -20,6 +21,7 @@ from workers.errors import (
     Fault,
     KeyConflictError,
     NotFinalError,
+    PinnedError,
     StoreError,
     TransitionError,
     UnknownJobError,
@@ -81,11 +83,11 @@ def test_file_and_folders_are_synced_before_accept_returns(
         assert str(path) in synced
 
 
-@pytest.mark.parametrize("refused", range(1, 10))
+@pytest.mark.parametrize("refused", range(1, 11))
 def test_a_full_disk_at_any_step_leaves_nothing_half_accepted(
     store: Store, monkeypatch: pytest.MonkeyPatch, refused: int
 ) -> None:
-    """A keyed and labelled job needs nine syncs; whichever of them fails, nothing is accepted."""
+    """A keyed and labelled job needs ten syncs; whichever of them fails, nothing is accepted."""
     kept = accept(store, key="other", label="yard")
     calls = 0
     real = os.fsync
@@ -501,3 +503,94 @@ def test_a_record_on_the_disk_is_json_that_a_person_can_read(store: Store) -> No
     job_id = accept(store)
     record = json.loads((store.jobs.path(job_id) / "record.json").read_text())
     assert record["history"][0]["state"] == "queued"
+
+
+# --- workspaces, pins ----------------------------------------------------------------------------
+
+
+def test_lists_are_narrowed_by_workspace_label_and_state_together(store: Store) -> None:
+    mine = accept(store, workspace="dock", label="week 3")
+    for other in ({"workspace": "slip", "label": "week 3"}, {"workspace": "dock"}):
+        accept(store, **other)
+    done = accept(store, workspace="dock", label="week 3")
+    finish(store, done)
+
+    def listed(**query: Any) -> list[str]:
+        return [record.id for record in store.list(**query).records]
+
+    assert listed(workspace="dock", label="week 3") == [done, mine]
+    assert listed(workspace="dock", label="week 3", state="queued") == [mine]
+    assert listed(workspace="dock", state="finished") == [done]
+    assert listed(workspace="yard") == []
+    assert len(listed()) == 4
+
+
+def test_a_page_of_one_workspace_opens_no_records_of_others(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Else one office with ten thousand jobs would make the lists of all others slow."""
+    mine = accept(store, workspace="dock")
+    for _ in range(20):
+        accept(store, workspace="slip")
+    opened: list[str] = []
+    read = store.record
+    monkeypatch.setattr(store, "record", lambda job_id: opened.append(job_id) or read(job_id))
+    assert [r.id for r in store.list(workspace="dock").records] == [mine]
+    assert opened == [mine]
+
+
+def test_the_same_key_in_another_workspace_is_another_job(store: Store) -> None:
+    first = store.accept(b"{}", title="a", key="one", workspace="dock")
+    second = store.accept(b"[]", title="b", key="one", workspace="slip")
+    assert first.created
+    assert second.created
+
+
+def test_the_line_of_a_workspace_is_as_long_as_it_has_unfinished_jobs(store: Store) -> None:
+    assert store.length_of_line("dock") == 0
+    ids = [accept(store, workspace="dock") for _ in range(3)]
+    accept(store, workspace="slip")
+    assert store.length_of_line("dock") == 3
+    finish(store, ids[0])
+    store.transition(ids[1], "cancelled")
+    assert store.length_of_line("dock") == 1
+    store.remove(ids[1])
+    begin(store, ids[2])
+    assert store.length_of_line("dock") == 1
+
+
+def test_what_a_crash_left_in_the_line_is_taken_out(store: Store) -> None:
+    """The index entries come before the job: a crash in between leaves them alone."""
+    job_id = accept(store, workspace="dock")
+    store.jobs.path(job_id).rename(store.root / "elsewhere")
+    store.forget_unknown(job_id)
+    assert store.length_of_line("dock") == 0
+
+
+def test_indexes_that_an_earlier_version_did_not_have_are_made(store: Store) -> None:
+    waiting, done = accept(store), accept(store)
+    finish(store, done)
+    for name in ("workspaces", "lines"):
+        shutil.rmtree(store.root / name)
+    store.reindex()
+    assert [r.id for r in store.list(workspace="default").records] == [done, waiting]
+    assert store.length_of_line("default") == 1
+
+
+def test_a_record_of_an_earlier_version_is_read(store: Store) -> None:
+    record = store.record(accept(store))
+    document = record.as_json()
+    for name in ("workspace", "owner", "priority", "pinned", "cause"):
+        del document[name]
+    assert Record.from_bytes(json.dumps(document).encode()) == record
+
+
+def test_a_pinned_job_stays_until_it_is_unpinned(store: Store) -> None:
+    job_id = accept(store)
+    assert store.pin(job_id, True).pinned
+    assert finish(store, job_id).pinned
+    with pytest.raises(PinnedError, match="unpin it first"):
+        store.remove(job_id)
+    store.pin(job_id, False)
+    store.remove(job_id)
+    assert everything_in(store) == []
