@@ -147,6 +147,22 @@ class CutResultSchema(Answer):
     about = place()
 
 
+class HotSpotStateResultSchema(Answer):
+    stress = number("Extrapolated to the toe, along the direction: 1.67 x nearer - 0.67 x farther")
+    along = numbers("Stress along the direction at the two points [F/L^2]", 2)
+    principal = fields.List(numbers("[largest, smallest] at each point", 2), required=True)
+
+
+class HotSpotResultSchema(Answer):
+    at = place()
+    direction = numbers("From the toe into the plate, of length one", 2)
+    thickness = number("t [L]")
+    points = fields.List(
+        place(), required=True, metadata={"description": "At 0.4 t and 1.0 t from the toe"}
+    )
+    cases = by_name(HotSpotStateResultSchema, "By case and combination")
+
+
 # --- the job as a whole --------------------------------------------------------------------------
 
 
@@ -232,6 +248,7 @@ class ResultsSchema(CautiousAnswer):
     cuts = by_name(
         fields.Dict(keys=fields.String(), values=fields.Nested(CutResultSchema)), "By name, by case"
     )
+    hot_spots = by_name(HotSpotResultSchema, "By name")
     convergence = fields.Raw(
         required=True, allow_none=True, metadata={"description": "Record of refined meshes"}
     )

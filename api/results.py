@@ -80,7 +80,7 @@ def show_preview(job_id: str, case: str, quantity: str) -> Response:
 def show_table(job_id: str, name: str) -> Response:
     """A part of the results as a table
 
-    The table is one of peaks, reactions, equilibrium, probes, lines, cuts.
+    The table is one of peaks, reactions, equilibrium, probes, lines, cuts, hot_spots.
     """
     folder = _folder(job_id)
     _require(name, "table", TABLES)

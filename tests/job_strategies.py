@@ -212,7 +212,14 @@ COMBINATION = st.builds(
 
 LINE = st.builds(lambda ends, n: parts.Line(*ends, n), TWO_POINTS, st.integers(2, 2001))
 CUT = TWO_POINTS.map(lambda ends: parts.Cut(*ends))
-REQUESTS = st.builds(parts.Requests, mapping(NAME, VECTOR), mapping(NAME, LINE), mapping(NAME, CUT))
+HOT_SPOT = st.builds(parts.HotSpot, VECTOR, VECTOR.filter(any), POSITIVE)
+REQUESTS = st.builds(
+    parts.Requests,
+    probes=mapping(NAME, VECTOR),
+    lines=mapping(NAME, LINE),
+    cuts=mapping(NAME, CUT),
+    hot_spots=mapping(NAME, HOT_SPOT),
+)
 UNITS = st.builds(
     parts.Units,
     st.sampled_from(["mm", "cm", "m", "in", "ft"]),

@@ -78,6 +78,21 @@ RESULTS: dict[str, Any] = {
     "probes": {"middle": {"pull": PROBE}},
     "lines": {"axis": LINE},
     "cuts": {"root": {"pull": {"normal": 32000.0, "shear": 0.0, "moment": 0.0, "about": AT}}},
+    "hot_spots": {
+        "toe": {
+            "at": [0.0, 20.0],
+            "direction": [1.0, 0.0],
+            "thickness": 8.0,
+            "points": [[3.2, 20.0], [8.0, 20.0]],
+            "cases": {
+                "pull": {
+                    "stress": 103.35,
+                    "along": [101.0, 99.0],
+                    "principal": [[101.0, 0.5], [99.0, 0.25]],
+                }
+            },
+        }
+    },
     "convergence": None,
     "cautions": [CAUTION, *(caution.as_json() for caution in STANDING)],
     "files": {"fields": {"pull": "fields/pull.vtu"}, "previews": {"pull": {"model": "x"}}},

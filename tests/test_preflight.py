@@ -284,6 +284,12 @@ REQUESTED: dict[str, tuple[dict[str, Any], str, list[str]]] = {
         "/requests/lines/l",
         ["is outside the plate"],
     ),
+    "hot spot that looks out of the plate": (
+        {"/requests": {"hot_spots": {"toe": {"at": [15, 0], "direction": [0, -1],
+                                             "thickness": 2}}}},
+        "/requests/hot_spots/toe",
+        ["(15, -0.8) is outside the plate", "is the direction right"],
+    ),
     "cut beside the plate": (
         {"/requests": {"cuts": {"c": {"from": [0, -5], "to": [40, -5]}}}},
         "/requests/cuts/c",

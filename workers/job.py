@@ -329,7 +329,7 @@ class Spin(Load):
 
 @dataclass(frozen=True, kw_only=True)
 class TemperatureChange(Load):
-    """Uniform temperature change [K] of the plate or of a region."""
+    """Uniform temperature change of the plate or of a region [K]."""
 
     change: float
 
@@ -343,6 +343,8 @@ class LoadCase:
 
 @dataclass(frozen=True)
 class Combination:
+    """A sum of other cases, each times a factor."""
+
     name: str
     factors: Mapping[str, float]
     pointer: str = ""
@@ -364,10 +366,26 @@ class Cut:
 
 
 @dataclass(frozen=True)
+class HotSpot:
+    """A weld toe, and the way from it into the plate along which stress is extrapolated back."""
+
+    at: Vector
+    direction: Vector  # of any length but zero
+    thickness: float | None = None  # [L]; the plate's if None
+    pointer: str = ""
+
+
+@dataclass(frozen=True)
 class Requests:
+    """field_files : whose field files are made with the job: "all", "envelope" for none but that of
+    the envelope, or names of cases and combinations; None leaves it to the size of the job.
+    """
+
     probes: Mapping[str, Vector] = field(default_factory=dict)
     lines: Mapping[str, Line] = field(default_factory=dict)
     cuts: Mapping[str, Cut] = field(default_factory=dict)
+    field_files: str | tuple[str, ...] | None = None
+    hot_spots: Mapping[str, HotSpot] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -378,6 +396,13 @@ class Limits:
 
 @dataclass(frozen=True, eq=False)
 class Job:
+    """One plate with all its load cases.
+
+    cases : cases given as factors on the load cases. Where there are any, the load cases are only
+        the patterns that these are made of, and do not appear in the results themselves.
+    combinations : of `cases`, or of the load cases where there are none.
+    """
+
     title: str
     units: Units
     materials: Mapping[str, Material]
@@ -385,6 +410,7 @@ class Job:
     plate: Plate
     supports: tuple[Support, ...]
     load_cases: tuple[LoadCase, ...]
+    cases: tuple[Combination, ...] = ()
     combinations: tuple[Combination, ...] = ()
     meshing: Meshing = Meshing()
     requests: Requests = Requests()

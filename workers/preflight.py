@@ -47,7 +47,7 @@ def placing_faults(job: Job, mesh: Mesh) -> list[Fault]:
     return [
         *_support_faults(job, finder),
         *load_faults(job, finder),
-        *request_faults(job.requests, mesh),
+        *request_faults(job.requests, mesh, job.plate.thickness),
     ]
 
 

@@ -1,4 +1,4 @@
-"""Are the places of probes, lines and cuts in the plate? Said before anything is solved."""
+"""Are the places of the requests in the plate? Said before anything is solved."""
 
 from collections.abc import Iterator
 
@@ -6,10 +6,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from workers.analysis.border import Border, border_of, nearest, windings
+from workers.analysis.hot_spots import reference_points, thickness_at
 from workers.analysis.mesh import Mesh
 from workers.analysis.section import find_section
 from workers.errors import Fault, MeshError
-from workers.job import Requests
+from workers.job import HotSpot, Requests
 
 Array = NDArray[np.float64]
 
@@ -21,8 +22,11 @@ BESIDE = 0.05
 MOST_VISITS = 30_000_000
 
 
-def request_faults(requests: Requests, mesh: Mesh) -> Iterator[Fault]:
-    """Probes and lines outside the plate, cuts that do not part it."""
+def request_faults(requests: Requests, mesh: Mesh, thickness: float) -> Iterator[Fault]:
+    """Probes, lines and hot spots outside the plate, cuts that do not part it.
+
+    thickness : the plate's [L]
+    """
     border = border_of(mesh)
     visits = MOST_VISITS
     for name, place in requests.probes.items():
@@ -37,6 +41,10 @@ def request_faults(requests: Requests, mesh: Mesh) -> Iterator[Fault]:
             outside = (_outside(border, p) for p in (1 - steps) * ends[0] + steps * ends[1])
             if message := next((m for m in outside if m), None):
                 yield Fault(line.pointer, message)
+    for spot in requests.hot_spots.values():
+        visits -= 3 * len(border.row)
+        if visits > 0 and (message := _hot_spot_outside(border, spot, thickness)):
+            yield Fault(spot.pointer, message)
     visits = MOST_VISITS
     for cut in requests.cuts.values():
         visits -= mesh.element_count
@@ -45,6 +53,17 @@ def request_faults(requests: Requests, mesh: Mesh) -> Iterator[Fault]:
                 find_section(mesh, cut)
             except MeshError as error:
                 yield from error.faults
+
+
+def _hot_spot_outside(border: Border, spot: HotSpot, thickness: float) -> str | None:
+    """What is wrong with the toe, or with a reference point before it."""
+    if message := _outside(border, np.array(spot.at, float)):
+        return f"the toe {message}"
+    for point in reference_points(spot, thickness):
+        if message := _outside(border, point):
+            t = thickness_at(spot, thickness)
+            return f"with t = {t:g} the reference point {message}; is the direction right?"
+    return None
 
 
 def _outside(border: Border, point: Array) -> str | None:

@@ -52,14 +52,14 @@ def summarise(
     Returns
     -------
     dict with `units`, `solver`, `mesh`, `cases`, `combinations`, `envelope`, `probes`, `lines`,
-    `cuts` and `convergence`; plain floats, strings and lists.
+    `cuts`, `hot_spots` and `convergence`; plain floats, strings and lists.
 
     Raises
     ------
     MeshError   a probe, line or cut cannot be where the job puts it; carries all such faults.
     """
     job = solution.model.job
-    samples = Samples(recovery.field_mesh, job.requests, states)
+    samples = Samples(recovery.field_mesh, job, states)
     cuts = _cuts(solution, states)
     by_state = _balances(solution, states)
     at_once = _states_at_once(recovery)
@@ -86,6 +86,7 @@ def summarise(
         "probes": samples.probes(),
         "lines": samples.lines(),
         "cuts": cuts,
+        "hot_spots": samples.hot_spots(),
         "convergence": None,
     }
 

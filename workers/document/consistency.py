@@ -25,7 +25,9 @@ def faults(document: Mapping[str, Any]) -> Iterator[Fault]:
     yield from _yield_strength(document)
     yield from _meshing(document)
     yield from _empty_cases(document)
+    yield from _moves_in_no_case(document)
     yield from _node_numbers(document)
+    yield from _hot_spots(document)
 
 
 def _materials_used(document: Mapping[str, Any], region: str | None = None) -> dict[str, Any]:
@@ -97,6 +99,20 @@ def _empty_cases(document: Mapping[str, Any]) -> Iterator[Fault]:
             yield Fault(pointer("load_cases", case), text)
 
 
+def _moves_in_no_case(document: Mapping[str, Any]) -> Iterator[Fault]:
+    """With cases made of factors, a prescribed displacement needs its factor as well."""
+    if "cases" not in document:
+        return
+    for i, support in rows(document.get("supports")):
+        for key in PRESCRIBED:
+            if "case" not in support and _moves(support.get(key)):
+                text = (
+                    "a prescribed displacement needs `case` beside it where `cases` are made of "
+                    "factors: the load case whose factor it takes"
+                )
+                yield Fault(pointer("supports", i, key), text)
+
+
 def _moves(value: Any) -> bool:
     """Whether a prescribed displacement is anything but zero, be it number or text with a unit."""
     return bool(value_of(value) if isinstance(value, str) else value)
@@ -118,3 +134,16 @@ def _node_numbers(document: Mapping[str, Any]) -> Iterator[Fault]:
                     f"there is no node {seen(number)}; the {len(nodes)} nodes are numbered from 0 "
                     f"to {len(nodes) - 1}",
                 )
+
+
+def _hot_spots(document: Mapping[str, Any]) -> Iterator[Fault]:
+    """Which thickness is meant must be said where the plate has more than one."""
+    regions = rows(table(document.get("geometry")).get("regions"))
+    if not any("thickness" in region for _, region in regions):
+        return
+    for name, spot in table(table(document.get("requests")).get("hot_spots")).items():
+        if isinstance(spot, Mapping) and "thickness" not in spot:
+            yield Fault(
+                pointer("requests", "hot_spots", name, "thickness"),
+                "is required: the plate has regions of other thickness",
+            )

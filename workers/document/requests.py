@@ -2,17 +2,28 @@
 
 from typing import Any
 
-from marshmallow import ValidationError, validates_schema
+from marshmallow import ValidationError, fields, validates_schema
 
 from workers.document.arrays import ElementName
-from workers.document.containers import MapOf, Part, Vector
-from workers.document.fields import Choice, Number, Quantity, Whole
+from workers.document.containers import ListOf, MapOf, Part, Vector
+from workers.document.context import inside
+from workers.document.faults import seen
+from workers.document.fields import (
+    Choice,
+    Name,
+    Number,
+    Plain,
+    Quantity,
+    Whole,
+    described,
+)
 from workers.document.record import Record, only_with
 from workers.document.units import LENGTH
-from workers.job import Cut, Limits, Line, Meshing, Requests
+from workers.job import Cut, HotSpot, Limits, Line, Meshing, Requests
 
 MOST_REQUESTS = 20_000  # of each kind
 MOST_SIZES = 20_000
+WHOLESALE = ("all", "envelope")  # words that say which field files are wanted
 MOST_DOFS = 20_000_000
 
 
@@ -67,8 +78,61 @@ class CutSchema(_FromTo):
     makes = Cut
 
 
+class HotSpotSchema(Record):
+    """A weld toe; the stress along `direction` is extrapolated back to it."""
+
+    makes = HotSpot
+
+    at = Vector(LENGTH, description="The weld toe [x, y]", required=True)
+    direction = Vector(
+        description="Direction [dx, dy] from the toe into the plate, of any length but zero",
+        required=True,
+    )
+    thickness = Quantity(
+        LENGTH,
+        description="Thickness t that places the reference points 0.4 t and 1.0 t from the toe; "
+        "that of the plate if left out",
+        above=0,
+    )
+
+    def build(self, data: dict[str, Any]) -> HotSpot:
+        if not any(data["direction"]):
+            raise ValidationError({"direction": ["must be a direction, not [0, 0]"]})
+        spot: HotSpot = super().build(data)
+        return spot
+
+
+class FieldsWanted(Plain, fields.Field[str | tuple[str, ...]]):
+    """"all", "envelope", or a list of names."""
+
+    def __init__(self, description: str, **options: Any) -> None:
+        self.names = ListOf(
+            Name("Name of a case or combination"), "Those of some states", least=1, most=MOST_REQUESTS
+        )
+        word = {"type": "string", "enum": list(WHOLESALE)}
+        ways = [word, dict(self.names.metadata)]
+        super().__init__(metadata=described(description, anyOf=ways), **options)
+
+    def _deserialize(
+        self, value: Any, attr: Any, data: Any, **kwargs: Any
+    ) -> str | tuple[str, ...]:
+        if isinstance(value, str):
+            if value in WHOLESALE:
+                return value
+            raise ValidationError(
+                f"must be {' or '.join(map(seen, WHOLESALE))}, or a list of names, "
+                f"not {seen(value)}"
+            )
+        with inside(attr):
+            names: tuple[str, ...] = self.names.deserialize(value)
+        return names
+
+    def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
+        return list(value) if isinstance(value, tuple) else value
+
+
 class RequestsSchema(Record):
-    """Places where results are wanted, each under a name."""
+    """What the results should hold beside the figures of every case."""
 
     makes = Requests
 
@@ -85,6 +149,19 @@ class RequestsSchema(Record):
     cuts = MapOf(
         Part(CutSchema, "A cut"),
         "Cuts whose normal force, shear force and moment are wanted",
+        most=MOST_REQUESTS,
+    )
+    # Not called `fields`: every schema has an attribute of that name already.
+    field_files = FieldsWanted(
+        "Which VTK field files are made with the job: all; that of the envelope only; or those of "
+        "some cases and combinations. Left out: all for up to 20 of them, else that of the "
+        "envelope. Any other is made when it is asked for",
+        data_key="fields",
+    )
+    hot_spots = MapOf(
+        Part(HotSpotSchema, "A hot spot"),
+        "Weld toes whose structural hot-spot stress is wanted: the stress at 0.4 t and 1.0 t from "
+        "the toe, extrapolated to it",
         most=MOST_REQUESTS,
     )
 

@@ -92,6 +92,15 @@ def _cuts(results: Results) -> Iterator[Row]:
             yield [cut, case, found["normal"], found["shear"], found["moment"], *found["about"]]
 
 
+def _hot_spots(results: Results) -> Iterator[Row]:
+    stress, length = results["units"]["stress"], results["units"]["length"]
+    yield ["hot spot", "case", f"hot-spot stress [{stress}]", f"at 0.4 t [{stress}]",
+           f"at 1.0 t [{stress}]", f"t [{length}]", f"x [{length}]", f"y [{length}]"]  # fmt: skip
+    for name, spot in results["hot_spots"].items():
+        for case, found in spot["cases"].items():
+            yield [name, case, found["stress"], *found["along"], spot["thickness"], *spot["at"]]
+
+
 TABLES: Mapping[str, Callable[[Results], Iterator[Row]]] = MappingProxyType(
     {
         "peaks": _peaks,
@@ -100,5 +109,6 @@ TABLES: Mapping[str, Callable[[Results], Iterator[Row]]] = MappingProxyType(
         "probes": _probes,
         "lines": _lines,
         "cuts": _cuts,
+        "hot_spots": _hot_spots,
     }
 )
