@@ -128,12 +128,12 @@ def resultant(points: np.ndarray, force: np.ndarray, about: Sequence[float]) -> 
 
 def solved(given: Json) -> Solved:
     """Read a document, mesh and solve it, through the same doors as a worker."""
-    job = read_document(orjson.dumps(given))
+    job = read_document(orjson.dumps(given, option=orjson.OPT_SERIALIZE_NUMPY))
     mesh = pipeline.prepare(job)
     return Solved(job, mesh, solve(job, mesh))
 
 
 def laid(given: Json) -> tuple[Job, Mesh]:
     """Read and mesh only."""
-    job = read_document(orjson.dumps(given))
+    job = read_document(orjson.dumps(given, option=orjson.OPT_SERIALIZE_NUMPY))
     return job, pipeline.prepare(job)
