@@ -76,6 +76,7 @@ MARKS = {
     **dict.fromkeys(("Vertex",), "at"),
     **dict.fromkeys(("Hole", "Region", "Patch"), "name"),
     **dict.fromkeys(("Line", "Cut"), "from"),
+    "HotSpot": "direction",
     "MeshBlock": "connectivity",
     "Support": "on",
     "LoadCase": "a list",
