@@ -76,9 +76,9 @@ def children(pid: int) -> list[psutil.Process]:
         return []
 
 
-def accept(store: Store, do: str, **order: Any) -> str:
+def accept(store: Store, do: str, priority: str = "bulk", **order: Any) -> str:
     document = json.dumps({"do": do, **order}).encode()
-    return store.accept(document, title=do).record.id
+    return store.accept(document, title=do, priority=priority).record.id
 
 
 def final_events(record: Record) -> list[Event]:

@@ -25,12 +25,13 @@ from rq.utils import as_text, decode_redis_hash, now, utcparse
 from rq.worker_registration import get_keys
 
 from workers.private_redis import address
-from workers.record import CANCELLED, Record
+from workers.record import CANCELLED, PRIORITIES, Record
 from workers.settings import Settings
 from workers.store import Store
 
-# Workers serve the first before the second.
-INTERACTIVE, BULK = "fishplate-interactive", "fishplate-bulk"
+# Workers serve questions first, then the lines of jobs in this order.
+QUESTIONS = "fishplate-questions"
+LINES = {priority: f"fishplate-{priority}" for priority in PRIORITIES}
 
 RUN_JOB = "workers.tasks.run_job"
 MAKE_ARTEFACT = "workers.tasks.make_artefact"
@@ -75,17 +76,22 @@ class Queue:
         self.settings = settings
         self.store = Store(settings.store)
         self.connection = connect(settings)
-        self._bulk, self._interactive = (
-            rq.Queue(name, connection=self.connection, serializer=JSONSerializer)
-            for name in (BULK, INTERACTIVE)
-        )
+        self._questions = self._line(QUESTIONS)
+        self._lines = {priority: self._line(name) for priority, name in LINES.items()}
+
+    def _line(self, name: str) -> rq.Queue:
+        return rq.Queue(name, connection=self.connection, serializer=JSONSerializer)
 
     # --- jobs ------------------------------------------------------------------------------------
 
     def submit(self, job_id: str) -> None:
-        """Queue a job of the store. If Redis refuses, the reconciler will do it later."""
+        """Queue a job of the store in the line of its priority.
+
+        If Redis refuses, the reconciler will do it later.
+        """
+        line = self._lines[self.store.record(job_id).priority]
         self._forget(job_id)
-        self._bulk.enqueue_call(
+        line.enqueue_call(
             RUN_JOB,
             args=(job_id,),
             job_id=job_id,
@@ -119,13 +125,14 @@ class Queue:
 
     def waiting(self) -> frozenset[str]:
         """Ids of the jobs that Redis has in line."""
-        return frozenset(self._bulk.get_job_ids())
+        return frozenset(i for line in self._lines.values() for i in line.get_job_ids())
 
     def _forget(self, job_id: str) -> None:
         """Take a job out of the line, and all that rq noted about an earlier attempt."""
         # Not Job.delete(): that fails on the fragments which a flush during an attempt leaves.
         with self.connection.pipeline() as pipeline:
-            self._bulk.remove(job_id, pipeline=pipeline)
+            for line in self._lines.values():
+                line.remove(job_id, pipeline=pipeline)
             pipeline.delete(Job.key_for(job_id))
             pipeline.execute()
 
@@ -170,7 +177,7 @@ class Queue:
         question = orjson.dumps([function, arguments])
         question_id = "ask-" + hashlib.sha256(question).hexdigest()[:40]
         with suppress(DuplicateJobError):
-            self._interactive.enqueue_call(
+            self._questions.enqueue_call(
                 function,
                 args=arguments,
                 job_id=question_id,
@@ -216,5 +223,6 @@ class Queue:
         return alive
 
     def depths(self) -> dict[str, int]:
-        """Number of entries in line, by queue."""
-        return {queue.name: queue.count for queue in (self._interactive, self._bulk)}
+        """Number of entries in line: questions, and jobs by priority."""
+        lines = {"questions": self._questions, **self._lines}
+        return {name: line.count for name, line in lines.items()}

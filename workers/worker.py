@@ -13,7 +13,7 @@ from rq.serializers import JSONSerializer
 
 from workers.errors import StoreError
 from workers.lineage import die_with_parent
-from workers.queue import BULK, INTERACTIVE, Queue, connect
+from workers.queue import LINES, QUESTIONS, Queue, connect
 from workers.reconcile import settle
 from workers.settings import Settings
 from workers.tasks import OUT_OF_TIME
@@ -36,7 +36,7 @@ class Worker(rq.Worker):
         self._handing_back = False
         self._group = 0  # process group of the work-horse
         super().__init__(
-            [INTERACTIVE, BULK],
+            [QUESTIONS, *LINES.values()],
             connection=connect(settings),
             serializer=JSONSerializer,
             worker_ttl=2 * HEARTBEAT,
@@ -50,7 +50,7 @@ class Worker(rq.Worker):
         finally:
             elapsed = time.monotonic() - began
             left_something = self._kill_rest()
-            if queue.name == BULK:
+            if queue.name != QUESTIONS:
                 self._settle(job.args[0], elapsed, LAST_BREATH if left_something else 0.0)
 
     def fork_work_horse(self, job: Job, queue: rq.Queue) -> None:

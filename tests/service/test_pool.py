@@ -82,6 +82,18 @@ def test_a_job_in_line_twice_runs_once(service: Service) -> None:
     check_one_end(service, job_id)
 
 
+def test_one_interactive_job_does_not_wait_behind_many_in_bulk(service: Service) -> None:
+    """With one worker: it begins when what runs has ended, before all that came earlier."""
+    running = service.submit("wait")
+    service.begun(running)
+    bulk = [service.submit("nothing") for _ in range(20)]
+    single = service.submit("nothing", priority="interactive")
+    (service.store.jobs.path(running) / "go").touch()
+    ended = [service.ended(job_id) for job_id in (single, *bulk)]
+    began = [record.started for record in ended]
+    assert began[0] <= min(began[1:])
+
+
 def test_workers_are_counted(service: Service) -> None:
     eventually(lambda: service.queue.workers_alive() == 1)
 

@@ -9,7 +9,7 @@ import redis
 
 from tests.service_pool import accept
 from workers.errors import TransitionError
-from workers.queue import BULK, INTERACTIVE, Queue
+from workers.queue import Queue
 from workers.record import new_id
 from workers.settings import Settings
 
@@ -24,7 +24,7 @@ def test_jobs_wait_in_line_and_a_second_submission_is_the_same_place(queue: Queu
     for job_id in (*ids, ids[0]):
         queue.submit(job_id)
     assert queue.waiting() == set(ids)
-    assert queue.depths() == {INTERACTIVE: 0, BULK: 3}
+    assert queue.depths() == {"questions": 0, "interactive": 0, "bulk": 3}
 
 
 def test_what_is_queued_is_plain_json(queue: Queue) -> None:
@@ -44,6 +44,17 @@ def test_a_queued_job_that_is_cancelled_leaves_the_line(queue: Queue) -> None:
     assert queue.waiting() == set()
     with pytest.raises(TransitionError):
         queue.cancel(job_id)
+
+
+def test_jobs_stand_in_the_line_of_their_priority(queue: Queue) -> None:
+    """Also when they are queued again: the priority is in the record, not in Redis."""
+    ids = {p: accept(queue.store, "nothing", priority=p) for p in ("bulk", "interactive")}
+    for _ in range(2):
+        for job_id in ids.values():
+            queue.submit(job_id)
+        assert queue.depths() == {"questions": 0, "interactive": 1, "bulk": 1}
+        assert queue.waiting() == set(ids.values())
+        queue.connection.flushall()
 
 
 def test_cancelling_works_while_redis_is_away(queue_without_redis: Queue) -> None:
@@ -70,7 +81,7 @@ def test_the_same_question_twice_is_one_piece_of_work(queue: Queue) -> None:
     for quantity in ("model", "model", "deformed"):
         answer = queue.make_artefact(job_id, "preview", "lift", quantity)
         assert answer.state == "pending"
-    assert queue.depths() == {INTERACTIVE: 2, BULK: 0}
+    assert queue.depths() == {"questions": 2, "interactive": 0, "bulk": 0}
 
 
 def test_without_workers_none_is_alive(queue: Queue) -> None:

@@ -28,7 +28,7 @@ def test_jobs_that_a_flushed_redis_forgot_are_queued_again_oldest_first(queue: Q
         queue.submit(job_id)
     queue.connection.flushall()
     look_round(queue)
-    assert queue._bulk.get_job_ids() == ids
+    assert queue._lines["bulk"].get_job_ids() == ids
 
 
 def test_final_jobs_are_left_alone(queue: Queue) -> None:
