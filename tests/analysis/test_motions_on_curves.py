@@ -62,8 +62,8 @@ def test_a_corner_has_the_normals_of_both_legs_and_its_neighbours_keep_theirs(ki
 
 @pytest.mark.parametrize("kind", ELEMENTS)
 def test_a_wide_bend_has_one_normal(kind: str) -> None:
-    """A polygon of more than 135 degrees stands for a curve: here 150, halved but for the lengths of
-    the legs, which differ by a seventh."""
+    """A polygon of more than 135 degrees stands for a curve: here 150, halved but for the lengths
+    of the legs, which differ by a seventh."""
     mesh = grid(kind, 4, 2, shape=lambda x, y: (x, y + np.maximum(x - 0.5, 0) / np.sqrt(3)))
     nodes, normals = node_normals(mesh, mesh.sides["bottom"])
     assert len(set(nodes.tolist())) == len(nodes)

@@ -255,7 +255,7 @@ def test_no_supports_hold_nothing() -> None:
     assert not resolve_supports(job, grid("Q4", 1, 1)).held.any()
 
 
-# --- rollers and springs on curved sides, and where they end ---------------------------------------
+# --- rollers and springs on curved sides, and where they end ------------------------------------
 
 
 def _ellipse(kind: str) -> Mesh:
