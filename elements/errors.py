@@ -12,6 +12,7 @@ FishplateError
 │   └── SingularMatrixError              (workers/analysis/solver.py) the matrix has no factor
 ├── PicturesUnavailableError             this machine cannot render
 ├── SettingsError                        an environment variable is wrong
+├── TokenError                           a token cannot be made or revoked as asked
 └── StoreError                           the job store refused
     ├── UnknownJobError
     ├── NotFinalError

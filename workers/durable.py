@@ -5,6 +5,7 @@ Everything here raises OSError as it comes; `store.py` turns it into words. Lock
 dies, however it dies, so no lease has to run out.
 """
 
+import errno
 import fcntl
 import os
 from collections.abc import Iterator
@@ -42,24 +43,40 @@ def make_folder(folder: Path) -> None:
     sync_folder(folder.parent)
 
 
-def write(path: Path, data: bytes) -> None:
+def write(path: Path, data: bytes, mode: int = 0o666) -> None:
     """Write a file and its content durably; its name becomes durable with `sync_folder`."""
-    with path.open("wb") as file:
+    descriptor = os.open(path, os.O_WRONLY | os.O_CREAT | os.O_TRUNC, mode)
+    with os.fdopen(descriptor, "wb") as file:
         file.write(data)
         file.flush()
         os.fsync(file.fileno())
 
 
-def replace(path: Path, data: bytes) -> None:
+def replace(path: Path, data: bytes, mode: int = 0o666) -> None:
     """Replace a file at once: a reader sees the old or the new content, never a part."""
     scratch = path.with_name(path.name + ".new")
     try:
-        write(scratch, data)
+        write(scratch, data, mode)
         scratch.replace(path)
     except OSError:
         scratch.unlink(missing_ok=True)
         raise
     sync_folder(path.parent)
+
+
+def append(path: Path, line: bytes) -> None:
+    """Add a line to a file, whole and durably, whoever else adds to it at the same time."""
+    with lock(path), path.open("r+b", buffering=0) as file:
+        end = file.seek(0, os.SEEK_END)
+        try:
+            if file.write(line) < len(line):
+                raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
+            os.fsync(file.fileno())
+        except OSError:
+            file.truncate(end)
+            raise
+    if not end:
+        sync_folder(path.parent)
 
 
 def move(source: Path, target: Path) -> None:

@@ -102,3 +102,7 @@ class KeyConflictError(StoreError):
 
 class SettingsError(FishplateError, ValueError):
     """An environment variable of Fishplate is wrong or not known."""
+
+
+class TokenError(FishplateError, ValueError):
+    """A token cannot be made or revoked as asked."""

@@ -177,4 +177,9 @@ class Record:
 
 def now() -> str:
     """The time of the day, UTC, as RFC 3339 writes it."""
-    return datetime.now(UTC).isoformat(timespec="milliseconds").replace("+00:00", "Z")
+    return timestamp(datetime.now(UTC))
+
+
+def timestamp(moment: datetime) -> str:
+    """A time in UTC as RFC 3339 writes it; texts of this form sort as the times do."""
+    return moment.isoformat(timespec="milliseconds").replace("+00:00", "Z")
