@@ -410,12 +410,12 @@ class Job:
     plate: Plate
     supports: tuple[Support, ...]
     load_cases: tuple[LoadCase, ...]
-    cases: tuple[Combination, ...] = ()
     combinations: tuple[Combination, ...] = ()
     meshing: Meshing = Meshing()
     requests: Requests = Requests()
     limits: Limits = Limits()
     label: str | None = None
+    cases: tuple[Combination, ...] = ()
 
     def region(self, name: str) -> Region | None:
         return next((r for r in self.geometry.regions if r.name == name), None)

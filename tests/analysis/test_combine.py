@@ -1,11 +1,19 @@
 """Load cases and combinations as columns of factors."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 
 from tests.plates import plate_job
-from workers.analysis.combine import States, load_states, superpose, superpose_blocks
-from workers.job import BodyForce, Combination
+from workers.analysis.combine import (
+    States,
+    factors_of,
+    load_states,
+    superpose,
+    superpose_blocks,
+)
+from workers.job import BodyForce, Combination, Job
 
 
 @pytest.fixture
@@ -65,3 +73,41 @@ def test_blocks_are_superposed_one_by_one(states: States) -> None:
 @pytest.mark.parametrize("size", [1, 2, 5, 9])
 def test_chunks_cover_all_states_once(states: States, size: int) -> None:
     assert [column for chunk in states.chunks(size) for column in chunk] == [0, 1, 2, 3, 4]
+
+
+# --- cases made of factors -----------------------------------------------------------------------
+
+
+@pytest.fixture
+def factored() -> Job:
+    load = [BodyForce(force=(1.0, 0.0))]
+    job = plate_job((), {"x": load, "y": load})
+    return replace(
+        job,
+        cases=(Combination("rope 1", {"x": 0.8, "y": 0.6}), Combination("y", {"x": 3.0})),
+        combinations=(Combination("both", {"y": 2.0, "rope 1": 10.0}),),
+    )
+
+
+def test_cases_made_of_factors_take_the_place_of_the_load_cases(factored: Job) -> None:
+    states = load_states(factored)
+    assert states.names == ("rope 1", "y", "both")
+    assert states.kinds == ("case", "case", "combination")
+    # both = 2 (3 x) + 10 (0.8 x + 0.6 y) = 14 x + 6 y
+    np.testing.assert_allclose(states.factors, [[0.8, 3.0, 14.0], [0.6, 0.0, 6.0]], rtol=1e-15)
+
+
+@pytest.mark.parametrize("columns", [range(0, 1), range(1, 2), range(0, 2), range(3)])
+def test_superposition_of_factored_cases_by_hand(factored: Job, columns: range) -> None:
+    values = np.random.default_rng(0).random((4, 2, 2))
+    x, y = values[..., 0], values[..., 1]
+    by_hand = np.stack((0.8 * x + 0.6 * y, 3 * x, 14 * x + 6 * y), axis=-1)
+    result = superpose(values, load_states(factored), columns)
+    np.testing.assert_allclose(result, by_hand[..., columns.start : columns.stop], rtol=1e-14)
+
+
+def test_factors_of_a_state_by_load_case(factored: Job) -> None:
+    assert factors_of(factored, "rope 1") == {"x": 0.8, "y": 0.6}
+    assert factors_of(factored, "both") == {"x": 14.0, "y": 6.0}
+    with pytest.raises(KeyError):
+        factors_of(factored, "x")  # a pattern only

@@ -12,7 +12,7 @@ from workers.document.context import reading
 from workers.document.faults import MOST_FAULTS, nest
 from workers.document.fields import Text
 from workers.document.geometry import GeometrySchema
-from workers.document.loads import Combinations, LoadCases
+from workers.document.loads import Combinations, FactoredCases, LoadCases
 from workers.document.materials import MaterialSchema, PlateSchema, UnitsSchema
 from workers.document.raw import table
 from workers.document.record import Record
@@ -56,7 +56,11 @@ class JobSchema(Record):
         "support with a prescribed value",
         required=True,
     )
-    combinations = Combinations("Combinations of load cases, by name")
+    cases = FactoredCases(
+        "Cases by name, made of factors on the load cases. Where they are given, the load cases "
+        "are only patterns: the results hold these cases, and combinations are of these"
+    )
+    combinations = Combinations("Combinations of cases, by name")
     requests = Part(RequestsSchema, "What the results should hold beside the peaks")
     limits = Part(LimitsSchema, "What the results are measured against")
 

@@ -5,14 +5,15 @@ A new kind of load is a row in KINDS and a field of the same name in LoadSchema.
 
 from collections.abc import Mapping
 from types import MappingProxyType
-from typing import Any, Literal, NamedTuple
+from typing import Any, Literal, NamedTuple, cast
 
-from marshmallow import ValidationError, validates_schema
+from marshmallow import ValidationError, fields, validates_schema
 
 from workers.document.containers import ListOf, MapOf, Part, Varying, Vector
 from workers.document.context import here, inside
-from workers.document.faults import pointer
-from workers.document.fields import Number, Quantity
+from workers.document.factor_table import read_table
+from workers.document.faults import MOST_FAULTS, pointer, seen
+from workers.document.fields import Number, Plain, Quantity, described
 from workers.document.record import Record
 from workers.document.targets import On
 from workers.document.units import (
@@ -169,13 +170,11 @@ class LoadCases(MapOf):
 
 
 class Combinations(MapOf):
-    """Factors on load cases, by name of the combination."""
+    """Factors on cases, by name."""
 
-    def __init__(self, description: str, **options: Any) -> None:
-        factors = MapOf(
-            Number("Factor"), "Factors by name of the load case", least=1, most=MOST_CASES
-        )
-        super().__init__(factors, description, most=MOST_CASES, **options)
+    def __init__(self, description: str, *, least: int = 0, **options: Any) -> None:
+        factors = MapOf(Number("Factor"), "Factors by name of the case", least=1, most=MOST_CASES)
+        super().__init__(factors, description, least=least, most=MOST_CASES, **options)
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
         found = super()._deserialize(value, attr, data, **kwargs)
@@ -188,3 +187,42 @@ class Combinations(MapOf):
     def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
         by_name = {combination.name: combination.factors for combination in value}
         return super()._serialize(by_name, attr, obj, **kwargs)
+
+
+class FactoredCases(Plain, fields.Field[tuple[Combination, ...]]):
+    """Cases made of factors on the load cases: an object, or the same as a CSV table."""
+
+    def __init__(self, description: str, **options: Any) -> None:
+        self.by_name = Combinations("Factors by name of the load case, by name", least=1)
+        factors = {"type": "object", "additionalProperties": {"type": "number"}}
+        as_object = {**self.by_name.metadata, "additionalProperties": factors}
+        as_table = {
+            "type": "string",
+            "description": "CSV (RFC 4180): a heading with the names of load cases from the second "
+            "column on, then a line for each case, its name first; an empty cell leaves out",
+            "examples": ["case,pull x,pull y\nrope 1,0.8,0.6\n"],
+        }
+        super().__init__(metadata=described(description, anyOf=[as_object, as_table]), **options)
+
+    def _deserialize(
+        self, value: Any, attr: Any, data: Any, **kwargs: Any
+    ) -> tuple[Combination, ...]:
+        if isinstance(value, str):
+            with inside(attr):  # a line of a table has no pointer of its own
+                return _from_table(value)
+        if not isinstance(value, Mapping):
+            raise ValidationError(f"must be an object or CSV text, not {seen(value)}")
+        with inside(attr):
+            return cast(tuple[Combination, ...], self.by_name.deserialize(value))
+
+    def _serialize(self, value: Any, attr: Any, obj: Any, **kwargs: Any) -> Any:
+        return self.by_name._serialize(value, attr, obj, **kwargs)
+
+
+def _from_table(text: str) -> tuple[Combination, ...]:
+    table = read_table(text)
+    if table.faults:
+        raise ValidationError(table.faults[:MOST_FAULTS])
+    if len(table.cases) > MOST_CASES:
+        raise ValidationError(f"must have at most {MOST_CASES} cases, not {len(table.cases)}")
+    return tuple(Combination(name, factors, here()) for name, factors in table.cases.items())

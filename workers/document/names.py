@@ -3,9 +3,10 @@
 Works on the document as it was written, so that these faults are found beside those of form.
 """
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Collection, Iterator, Mapping
 from typing import Any
 
+from workers.document.factor_table import read_table
 from workers.document.faults import pointer, seen, unknown
 from workers.document.inventory import Inventory, take_inventory
 from workers.document.loads import KINDS
@@ -44,18 +45,65 @@ def _materials(document: Mapping[str, Any]) -> Iterator[Fault]:
 
 
 def _cases(document: Mapping[str, Any]) -> Iterator[Fault]:
-    cases = table(document.get("load_cases"))
+    patterns = table(document.get("load_cases"))
     for i, support in rows(document.get("supports")):
         case = support.get("case")
-        if isinstance(case, str) and case not in cases:
-            yield Fault(pointer("supports", i, "case"), unknown("load case", case, cases))
+        if isinstance(case, str) and case not in patterns:
+            yield Fault(pointer("supports", i, "case"), unknown("load case", case, patterns))
+    yield from _factored(document, patterns)
+    cases = _case_names(document)
+    if cases is None:
+        return
+    word = "case" if "cases" in document else "load case"
     for name, factors in table(document.get("combinations")).items():
         place = pointer("combinations", name)
         if name in cases:
-            yield Fault(place, f"{seen(name)} is already the name of a load case")
+            yield Fault(place, f"{seen(name)} is already the name of a {word}")
         for case in table(factors):
             if case not in cases:
-                yield Fault(place + pointer(case), unknown("load case", case, cases))
+                yield Fault(place + pointer(case), unknown(word, case, cases))
+    yield from _fields_wanted(document, cases)
+
+
+def _fields_wanted(document: Mapping[str, Any], cases: Collection[str]) -> Iterator[Fault]:
+    """States whose field files are asked for exist."""
+    states = dict.fromkeys([*cases, *table(document.get("combinations"))])
+    wanted = table(document.get("requests")).get("fields")
+    for i, name in enumerate(wanted if isinstance(wanted, list | tuple) else ()):
+        if isinstance(name, str) and name not in states:
+            text = unknown("case or combination", name, states)
+            yield Fault(pointer("requests", "fields", i), text)
+
+
+def _factored(document: Mapping[str, Any], patterns: Collection[str]) -> Iterator[Fault]:
+    """Cases made of factors are made of load cases that there are."""
+    cases = document.get("cases")
+    if isinstance(cases, str):
+        found = read_table(cases)
+        if found.heading in patterns:
+            text = (
+                f"line 1, column 1: {seen(found.heading)} is a load case; the first column is for "
+                'the names of the cases, under a heading such as "case"'
+            )
+            yield Fault("/cases", text)
+        for name, column in found.patterns.items():
+            if name not in patterns:
+                text = f"line 1, column {column}: {unknown('load case', name, patterns)}"
+                yield Fault("/cases", text)
+    for name, factors in table(cases).items():
+        for pattern in table(factors):
+            if pattern not in patterns:
+                place = pointer("cases", name, pattern)
+                yield Fault(place, unknown("load case", pattern, patterns))
+
+
+def _case_names(document: Mapping[str, Any]) -> Collection[str] | None:
+    """Names of the cases that the results will hold; None where a table leaves them open."""
+    cases = document.get("cases")
+    if isinstance(cases, str):
+        found = read_table(cases)
+        return None if found.faults else found.cases
+    return table(cases if "cases" in document else document.get("load_cases"))
 
 
 def _regions_used(document: Mapping[str, Any], inventory: Inventory) -> Iterator[Fault]:

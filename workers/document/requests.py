@@ -103,11 +103,14 @@ class HotSpotSchema(Record):
 
 
 class FieldsWanted(Plain, fields.Field[str | tuple[str, ...]]):
-    """"all", "envelope", or a list of names."""
+    """One of the words "all" and "envelope", or a list of names."""
 
     def __init__(self, description: str, **options: Any) -> None:
         self.names = ListOf(
-            Name("Name of a case or combination"), "Those of some states", least=1, most=MOST_REQUESTS
+            Name("Name of a case or combination"),
+            "Those of some states",
+            least=1,
+            most=MOST_REQUESTS,
         )
         word = {"type": "string", "enum": list(WHOLESALE)}
         ways = [word, dict(self.names.metadata)]

@@ -5,8 +5,11 @@ in the file. A machine that cannot render off-screen raises PicturesUnavailableE
 reason; its jobs finish without pictures.
 """
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from pathlib import Path
+from typing import Any
+
+import numpy as np
 
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
@@ -14,17 +17,21 @@ from workers.analysis.mesh import Mesh
 from workers.cautions import Caution
 from workers.job import Job
 from workers.outputs.drawing.fields import (
+    ROUNDING_OF_MODULUS,
     STRESS_QUANTITIES,
     deformation_factor,
     draw_deformed,
     draw_stress,
 )
+from workers.outputs.drawing.graph import Panel, draw_graph
 from workers.outputs.drawing.model import draw_model
-from workers.outputs.drawing.numbers import TIMES, show
+from workers.outputs.drawing.numbers import TIMES, show, vector
 from workers.outputs.drawing.offscreen import probe, require
 from workers.outputs.drawing.page import Page
 
-__all__ = ["QUANTITIES", "probe", "render_deformed", "render_field", "render_model"]
+__all__ = [
+    "QUANTITIES", "probe", "render_deformed", "render_field", "render_line", "render_model",
+]  # fmt: skip
 
 QUANTITIES = ("model", "deformed", *STRESS_QUANTITIES)
 
@@ -100,9 +107,44 @@ def render_deformed(
     page.save(path, {**facts, "Scale": show(factor, 1)})
 
 
+def render_line(
+    path: Path, job: Job, name: str, line: Mapping[str, Any], *, cautions: Sequence[Caution]
+) -> None:
+    """Draw what the results hold of one line: von Mises stress and the stress across it.
+
+    Needs no off-screen rendering. `line` is `results["lines"][name]`.
+
+    Raises OSError where the file could not be written.
+    """
+    points, distance = np.array(line["points"]), np.array(line["distance"])
+    start, end = (f"{vector(*points[k], digits=4)}" for k in (0, -1))
+    page = Page(job.title, f"{name} · Stress along the line from {start} to {end}", cautions)
+    dx, dy = (points[-1] - points[0]) / distance[-1]
+    stress = np.array([state["stress"] for state in line["cases"].values()])
+    across = stress @ np.array([dy * dy, dx * dx, -2 * dx * dy])  # n sigma n with n = (-dy, dx)
+    unit, length = job.units.stress, job.units.length
+    draw_graph(
+        page.canvas,
+        page.drawing,
+        distance,
+        [
+            Panel(
+                f"Von Mises stress [{unit}]",
+                np.array([state["von_mises"] for state in line["cases"].values()]),
+            ),
+            Panel(f"Normal stress across the line [{unit}]", across),
+        ],
+        list(line["cases"]),
+        along=f"Distance from {start} [{length}]",
+        unit=unit,
+        rounding=ROUNDING_OF_MODULUS * max(m.youngs_modulus for m in job.materials.values()),
+    )
+    page.save(path, {**_facts("", "line", unit), "Line": name})
+
+
 def _with_factors(job: Job, state: str) -> str:
-    """A combination with its factors, e.g. "ULS = 1.5 × lift + 1.35 × self weight"."""
-    for combination in job.combinations:
+    """A state with its factors, e.g. "ULS = 1.5 × lift + 1.35 × self weight"."""
+    for combination in (*job.cases, *job.combinations):
         if combination.name == state:
             terms = (f"{show(k, 4)} {TIMES} {case}" for case, k in combination.factors.items())
             return f"{state} = {' + '.join(terms)}"

@@ -1,20 +1,21 @@
-"""Which loads act in a load case or combination, and with what factor."""
+"""Which loads act in a case or combination, and with what factor."""
 
 from dataclasses import dataclass
 
+from workers.analysis.combine import factors_of
 from workers.job import Job, Load
 
 
 @dataclass(frozen=True)
 class Acting:
-    """A load and the factor with which it acts in a case (1) or combination."""
+    """A load and the factor with which it acts in a state."""
 
     load: Load
     factor: float
 
 
 def acting_loads(job: Job, state: str | None) -> list[Acting]:
-    """The loads of a case, or those of a combination with their factors.
+    """The loads of a case or combination with their factors.
 
     Raises
     ------
@@ -22,21 +23,14 @@ def acting_loads(job: Job, state: str | None) -> list[Acting]:
     """
     if state is None:
         return []
-    cases = {case.name: case.loads for case in job.load_cases}
-    if state in cases:
-        return [Acting(load, 1.0) for load in cases[state]]
-    factors = {combination.name: combination.factors for combination in job.combinations}[state]
+    loads = {case.name: case.loads for case in job.load_cases}
     return [
         Acting(load, factor)
-        for name, factor in factors.items()
-        if factor != 0
-        for load in cases[name]
+        for name, factor in factors_of(job, state).items()
+        for load in loads[name]
     ]
 
 
 def acting_cases(job: Job, state: str | None) -> set[str]:
     """Names of the load cases that take part in a case or combination."""
-    factors = {combination.name: combination.factors for combination in job.combinations}
-    if state in factors:
-        return {name for name, factor in factors[state].items() if factor != 0}
-    return set() if state is None else {state}
+    return set() if state is None else set(factors_of(job, state))
