@@ -44,11 +44,15 @@ def gunzip(data: bytes, limit: int) -> bytes:
     """Decompress without ever holding more than `limit` bytes of the result."""
     unpacker = zlib.decompressobj(GZIP_WINDOW)
     pieces: list[bytes] = []
-    size = 0
+    size = taken = 0
+    waiting = b""
     try:
-        while data and not unpacker.eof:
-            piece = unpacker.decompress(data, min(CHUNK, limit - size + 1))
-            data = unpacker.unconsumed_tail
+        while not unpacker.eof and (waiting or taken < len(data)):
+            # By the piece: what is not yet unpacked is copied at each call.
+            if not waiting:
+                waiting, taken = data[taken : taken + CHUNK], taken + CHUNK
+            piece = unpacker.decompress(waiting, min(CHUNK, limit - size + 1))
+            waiting = unpacker.unconsumed_tail
             size += len(piece)
             if size > limit:
                 raise RefusalError(
@@ -57,7 +61,7 @@ def gunzip(data: bytes, limit: int) -> bytes:
             pieces.append(piece)
     except zlib.error as error:
         raise RefusalError(MEDIA_TYPE_UNKNOWN, f"The body is not gzip data: {error}.") from error
-    if not unpacker.eof or unpacker.unused_data:
+    if not unpacker.eof or unpacker.unused_data or taken < len(data):
         raise RefusalError(
             MEDIA_TYPE_UNKNOWN, "The gzip data is cut short or followed by something."
         )

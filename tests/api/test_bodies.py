@@ -1,6 +1,7 @@
 """Request bodies: encodings, media types and limits."""
 
 import gzip
+import random
 
 import pytest
 from flask import Flask, request
@@ -23,6 +24,13 @@ def test_gzip_of_up_to_the_limit_is_unpacked(size: int) -> None:
     data = bytes(range(256)) * 4
     packed = gzip.compress(data[:size])
     assert read(packed, Content_Type="application/json", Content_Encoding="gzip") == data[:size]
+
+
+@pytest.mark.parametrize("size", [65_535, 65_536, 300_000])
+def test_what_does_not_pack_is_unpacked_piece_by_piece(size: int) -> None:
+    """Noise: the packed data is longer than one piece, and cut at any place."""
+    data = random.Random(size).randbytes(size)
+    assert gunzip(gzip.compress(data), size) == data
 
 
 def test_gzip_bomb_is_refused_before_it_unpacks() -> None:
