@@ -225,6 +225,10 @@ class FilesSchema(Answer):
         required=True,
         metadata={"description": "Made with the job, by case and quantity"},
     )
+    lines = fields.Dict(
+        keys=fields.String(), values=fields.String(), required=True,
+        metadata={"description": "Graphs of lines that were drawn with the job"},
+    )  # fmt: skip
 
 
 class PicturesSchema(Answer):

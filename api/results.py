@@ -75,6 +75,21 @@ def show_preview(job_id: str, case: str, quantity: str) -> Response:
     return file_answer(path, PNG, address(job_id), download_name=f"{case} {quantity}.png")
 
 
+@blueprint.get("/jobs/<job_id>/lines/<line>.png")
+@blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409, 500, 503)})
+def show_line(job_id: str, line: str) -> Response:
+    """The stress along a requested line, as a picture
+
+    Von Mises stress and the normal stress across the line over the distance, a curve for each case.
+    """
+    folder = _folder(job_id)
+    path = folder / "lines" / f"{file_name(line)}.png"
+    if not path.is_file():
+        _require(line, "line", _lines(folder))
+        make_artefact(job_id, "line", line)
+    return file_answer(path, PNG, address(job_id), download_name=f"{line}.png")
+
+
 @blueprint.get("/jobs/<job_id>/tables/<name>.csv")
 @blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409)})
 def show_table(job_id: str, name: str) -> Response:
@@ -118,3 +133,9 @@ def _states(folder: Path) -> tuple[str, ...]:
     """Names of the cases and combinations."""
     results: dict[str, Any] = orjson.loads((folder / RESULTS).read_bytes())
     return (*results["cases"], *results["combinations"])
+
+
+@lru_cache(maxsize=256)
+def _lines(folder: Path) -> tuple[str, ...]:
+    """Names of the lines that the job asked for."""
+    return tuple(orjson.loads((folder / RESULTS).read_bytes())["lines"])

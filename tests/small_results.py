@@ -95,6 +95,10 @@ RESULTS: dict[str, Any] = {
     },
     "convergence": None,
     "cautions": [CAUTION, *(caution.as_json() for caution in STANDING)],
-    "files": {"fields": {"pull": "fields/pull.vtu"}, "previews": {"pull": {"model": "x"}}},
+    "files": {
+        "fields": {"pull": "fields/pull.vtu"},
+        "previews": {"pull": {"model": "x"}},
+        "lines": {"axis": "lines/axis.png"},
+    },
     "pictures": {"available": True},
 }

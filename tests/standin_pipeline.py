@@ -52,6 +52,13 @@ def render(folder: Path, case: str, quantity: str) -> Path:
     return path
 
 
+def render_line(folder: Path, name: str) -> Path:
+    path = folder / "lines" / f"{name}.png"
+    path.parent.mkdir(parents=True, exist_ok=True)
+    path.write_text(name)
+    return path
+
+
 def do_nothing(folder: Path, progress: Progress) -> None:
     progress("reading", 1.0)
 

@@ -21,6 +21,7 @@ from workers.record import CANCELLED, FAILED, RUNNING
 # Values for the variable parts of addresses, good and bad ones.
 VALUES: dict[str, tuple[str, ...]] = {
     "case": ("pull", "pull, factored", "no such case"),
+    "line": ("axis", "no such line"),
     "quantity": ("model", "von_mises", "colour"),
     "name": ("peaks", "lines", "no such table"),
 }

@@ -7,11 +7,11 @@ with the job or months later.
     job.json            the document as it was given
     displacements.npy   (N, 2, c) of all load cases
     results.json        what `GET /v1/jobs/{id}/results` answers
-    fields/NAME.vtu     previews/NAME/QUANTITY.png
+    fields/NAME.vtu     previews/NAME/QUANTITY.png     lines/NAME.png
 """
 
 import hashlib
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from importlib.metadata import version
@@ -74,7 +74,7 @@ def run(
     ----------
     progress : called with the stage (reading, meshing, assembling, factorising, solving,
         recovering, reviewing, writing, drawing) and the fraction of it that is done
-    pictures : how many to draw now
+    pictures : how many to draw now, of the plate and of the lines
     fields : states whose field file is written now; None for all
 
     Returns
@@ -113,6 +113,7 @@ def run(
         }
         filed = Filing(folder, work, cautions, results)
         results["files"] = {"fields": filed.write_some_fields(fields, progress)}
+        results["files"]["lines"] = filed.draw_some_lines(pictures)
         results["files"]["previews"], results["pictures"] = filed.draw_some(pictures, progress)
         (folder / RESULTS).write_bytes(orjson.dumps(results, option=orjson.OPT_INDENT_2))
     return results
@@ -154,6 +155,28 @@ def render(folder: Path, state: str, quantity: str) -> Path:
     """
     with threadpool_limits(1):
         return _reopen(folder).draw(state, quantity)
+
+
+def render_line(folder: Path, name: str) -> Path:
+    """Draw the stress along one line of a finished job; returns its path.
+
+    Raises
+    ------
+    KeyError   the job has no such line.
+    """
+    results = orjson.loads((folder / RESULTS).read_bytes())
+    job = read_document((folder / DOCUMENT).read_bytes())
+    return _draw_line(folder, job, name, results, [Caution(**c) for c in results["cautions"]])
+
+
+def _draw_line(
+    folder: Path, job: Job, name: str, results: Mapping[str, Any], cautions: Sequence[Caution]
+) -> Path:
+    line = results["lines"][name]
+    path = folder / "lines" / f"{file_name(name)}.png"
+    path.parent.mkdir(exist_ok=True)
+    preview.render_line(path, job, name, line, cautions=cautions)
+    return path
 
 
 @dataclass(frozen=True, eq=False)
@@ -255,6 +278,14 @@ class Filing:
                 return drawn, {"available": False, "reason": str(error)}
             drawn.setdefault(state, {})[quantity] = str(path.relative_to(self.folder))
         return drawn, {"available": True}
+
+    def draw_some_lines(self, count: int) -> dict[str, str]:
+        """Graphs of the first lines; their paths within the folder."""
+        drawn = {}
+        for name in islice(self.results["lines"], count):
+            path = _draw_line(self.folder, self.work.job, name, self.results, self.cautions)
+            drawn[name] = str(path.relative_to(self.folder))
+        return drawn
 
     def _worth_drawing(self) -> Iterator[tuple[str, str]]:
         """Everything about the governing state, then the rest case by case."""

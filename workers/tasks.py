@@ -161,6 +161,8 @@ def _make(store: Store, folder: Path, kind: str, case: str, quantity: str | None
             made = pipeline.write_fields(scratch, case)
         elif kind == "preview" and quantity is not None:
             made = pipeline.render(scratch, case, quantity)
+        elif kind == "line":
+            made = pipeline.render_line(scratch, case)
         else:
             raise KeyError(kind)
         place = folder / made.relative_to(scratch)

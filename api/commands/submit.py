@@ -92,3 +92,6 @@ def fetch_files(client: Client, here: str, results: dict[str, Any], folder: Path
         for quantity in pictures:
             target = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
             client.fetch(f"{here}/previews/{quote(case, safe='')}/{quote(quantity)}.png", target)
+    for line in results["files"]["lines"]:
+        target = folder / "lines" / f"{file_name(line)}.png"
+        client.fetch(f"{here}/lines/{quote(line, safe='')}.png", target)

@@ -134,6 +134,7 @@ def test_submit_waits_prints_the_summary_and_fetches_every_file(
     assert json.loads((folder / "results.json").read_bytes())["cases"]["pull"]
     assert (folder / "fields" / "pull.vtu").read_bytes() == b"fields/pull.vtu"
     assert (folder / "previews" / "pull" / "model.png").is_file()
+    assert (folder / "lines" / "axis.png").read_bytes() == b"lines/axis.png"
 
 
 def test_submit_ends_with_one_and_the_reason_when_the_job_fails(

@@ -49,7 +49,9 @@ def test_a_finished_job_shows_its_own_cautions_first(client: FlaskClient, job_id
     assert client.get(f"/v1/jobs/{job_id}").get_json()["cautions"][0] == CAUTION
 
 
-@pytest.mark.parametrize("path", ["results", "fields/pull.vtu", "previews/pull/model.png"])
+@pytest.mark.parametrize(
+    "path", ["results", "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png"]
+)
 def test_an_unchanged_file_is_not_sent_again(get: Get, path: str) -> None:
     """RFC 9110 section 13.1.2: If-None-Match with the current ETag gives 304 and no body."""
     etag = get(path).headers["ETag"]
@@ -72,7 +74,8 @@ def test_names_are_not_paths(get: Get) -> None:
 @pytest.mark.parametrize(
     ("path", "kind"),
     [("fields/push.vtu", "case or combination"), ("previews/push/model.png", "case or combination"),
-     ("previews/pull/colour.png", "quantity"), ("tables/push.csv", "table")],
+     ("previews/pull/colour.png", "quantity"), ("lines/push.png", "line"),
+     ("tables/push.csv", "table")],
 )  # fmt: skip
 def test_an_unknown_name_is_answered_with_those_there_are(get: Get, path: str, kind: str) -> None:
     problem = get(path).get_json()
@@ -178,7 +181,9 @@ def test_results_of_a_failed_job_say_why_it_failed(
     services.store.transition(job_id, RUNNING)
     fault = Fault("/supports", "part 1 can rotate")
     services.store.transition(job_id, FAILED, reason="free to move", faults=(fault,))
-    for path in ("results", "fields/pull.vtu", "previews/pull/model.png", "tables/peaks.csv"):
+    paths = ("results", "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png",
+             "tables/peaks.csv")  # fmt: skip
+    for path in paths:
         problem = client.get(f"/v1/jobs/{job_id}/{path}").get_json()
         assert (problem["status"], problem["detail"]) == (409, "free to move")
         assert problem["errors"] == [fault.as_json()]
@@ -206,6 +211,8 @@ def test_tables_read_back_as_the_numbers_of_the_results(get: Get) -> None:
     assert float(probe["von Mises [MPa]"]) == 100.0
     cut = read(get("tables/cuts.csv"))[0]
     assert float(cut["normal [N]"]) == RESULTS["cuts"]["root"]["pull"]["normal"]
+    spot = read(get("tables/hot_spots.csv"))[0]
+    assert float(spot["hot-spot stress [MPa]"]) == 103.35
     line = read(get("tables/lines.csv"))
     assert [float(row["xy [MPa]"]) for row in line] == [0.0, 0.25]
     assert [float(row["distance [mm]"]) for row in line] == RESULTS["lines"]["axis"]["distance"]

@@ -117,7 +117,7 @@ def render_line(
     Raises OSError where the file could not be written.
     """
     points, distance = np.array(line["points"]), np.array(line["distance"])
-    start, end = (f"{vector(*points[k], digits=4)}" for k in (0, -1))
+    start, end = (vector(float(x), float(y), digits=4) for x, y in points[[0, -1]])
     page = Page(job.title, f"{name} · Stress along the line from {start} to {end}", cautions)
     dx, dy = (points[-1] - points[0]) / distance[-1]
     stress = np.array([state["stress"] for state in line["cases"].values()])
