@@ -19,10 +19,14 @@ def whole(description: str) -> fields.Integer:
     return fields.Integer(required=True, metadata={"description": description})
 
 
-def numbers(description: str, length: int | None = None) -> fields.List:
+def numbers(description: str, length: int | None = None, **options: Any) -> fields.List:
     exactly = validate.Length(equal=length) if length else None
     return fields.List(
-        fields.Float(), required=True, validate=exactly, metadata={"description": description}
+        fields.Float(),
+        required=True,
+        validate=exactly,
+        metadata={"description": description},
+        **options,
     )
 
 
@@ -48,19 +52,42 @@ class LeastSchema(Answer):
     value = number("The smallest value anywhere")
 
 
-class PeakSchema(Answer):
-    value = number("The extreme value")
+class SingularSchema(Answer):
+    value = number("What the mesh shows at a place where the stress of the model is infinite")
+    at = place()
+    kind = text(
+        "re-entrant-corner, fixed-end, thickness-step, point-load or point-support", required=True
+    )
+    exponent = number("The stress there goes as r to this power less one")
+    radius = number("Of the neighbourhood that the peak leaves out [L]")
+    element_size = number("Longest side of an element there [L]")
+    confirmed = fields.Boolean(
+        required=True,
+        allow_none=True,
+        metadata={"description": "Whether it grew as the mesh was refined; null with one mesh"},
+    )
+
+
+class _StressSchema(Answer):
+    value = number("The extreme value outside the neighbourhoods of singular places")
     at = place()
     region = text("Region in which it is", required=True)
     error = number("Estimated discretisation error of the value, where known", allow_none=True)
+    interval = numbers(
+        "[low, high] that holds the true peak by all that is known; displacements have none",
+        2,
+        allow_none=True,
+    )
+    singular = part(
+        SingularSchema, "The worse value at a singular place, if there is one", allow_none=True
+    )
+
+
+class PeakSchema(_StressSchema):
     least = part(LeastSchema, "The other end of the range")
 
 
-class GoverningSchema(Answer):
-    value = number("The extreme over all cases and combinations")
-    at = place()
-    region = text("Region in which it is", required=True)
-    error = number("Estimated discretisation error of the value, where known", allow_none=True)
+class GoverningSchema(_StressSchema):
     governs = text("The case or combination", required=True)
 
 

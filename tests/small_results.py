@@ -12,8 +12,12 @@ CAUTION = {
     "action": "Look at it.",
 }
 AT = [50.0, 20.0]
-PEAK = {"value": 100.0, "at": AT, "error": 0.5, "region": "plate", "least": {"value": 0.0}}
-GOVERNING = {"value": 100.0, "at": AT, "error": 0.5, "region": "plate", "governs": "pull"}
+_WORST = {
+    "value": 100.0, "at": AT, "error": 0.5, "region": "plate",
+    "interval": [99.5, 100.5], "singular": None,
+}  # fmt: skip
+PEAK = {**_WORST, "least": {"value": 0.0}}
+GOVERNING = {**_WORST, "governs": "pull"}
 QUANTITIES = ("von_mises", "principal_max", "principal_min", "shear_max", "displacement")
 STATE = {
     **dict.fromkeys(QUANTITIES, PEAK),

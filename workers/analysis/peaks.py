@@ -5,7 +5,8 @@ equivalent stresses (`error_estimate.error_stress`), times a factor of safety, b
 at a point may be further off than the mean over an element. On 500 meshes of Kirsch's plate (four
 elements, smooth and warped, 3 to 32 elements to a quarter of the hole) the true error of the peak
 was mostly a tenth to a half of the estimate, and above it, by a tenth, only with four elements or
-fewer to the quarter. The estimate cannot see a singularity: there every mesh is wrong.
+fewer to the quarter. The estimate cannot see a singularity: there every mesh is wrong, and the
+peak is sought outside the neighbourhoods of the singular places (`zones.py`).
 """
 
 from collections.abc import Mapping
@@ -17,11 +18,14 @@ from numpy.typing import NDArray
 
 from workers.analysis.envelope import WORST
 from workers.analysis.field_mesh import FieldMesh
+from workers.analysis.zones import ActiveZones
 
 SAFETY = 2.0
 
 Array = NDArray[np.float64]
 Measure = NDArray[np.floating[Any]]
+
+NO_ZONES = ActiveZones(np.empty(0, np.intp), np.zeros((0, 0), bool))
 
 
 @dataclass(frozen=True, eq=False)
@@ -32,16 +36,23 @@ class Peak:
     point : (k,)         number of the field point
     least : (k,)         the other end of the field's range
     error : (k,) or None    estimated, same dimension as the value
+    singular : (k,)         point with a worse value in an excluded neighbourhood; -1 if none
+    singular_value : (k,)   the value there, nan if none
     """
 
     value: Measure
     point: NDArray[np.intp]
     least: Measure
     error: Array | None
+    singular: NDArray[np.intp]
+    singular_value: Measure
 
 
 def find_peaks(
-    field_mesh: FieldMesh, values: Mapping[str, Measure], element_error: tuple[Array, ...]
+    field_mesh: FieldMesh,
+    values: Mapping[str, Measure],
+    element_error: tuple[Array, ...],
+    zones: ActiveZones = NO_ZONES,
 ) -> dict[str, Peak]:
     """Peaks of all measures of k states.
 
@@ -49,17 +60,41 @@ def find_peaks(
     ----------
     values : measure -> (P, k), as `envelope.measures` makes them
     element_error : for each block (m, k), as an equivalent stress [F/L^2]
+    zones : where stress is not reported; displacements are finite everywhere
     """
     found = {}
     for name, sign in WORST.items():
-        point = worst(values[name], sign)
+        is_stress = name != "displacement"
+        everywhere = worst(values[name], sign)
+        point = _outside(values[name], sign, everywhere, zones) if is_stress else everywhere
+        beaten = point != everywhere
         found[name] = Peak(
-            value=np.take_along_axis(values[name], point[None], axis=0)[0],
+            value=_at(values[name], point),
             point=point,
             least=values[name].min(axis=0) if sign > 0 else values[name].max(axis=0),
-            error=None if name == "displacement" else _error(field_mesh, point, element_error),
+            error=_error(field_mesh, point, element_error) if is_stress else None,
+            singular=np.where(beaten, everywhere, -1),
+            singular_value=np.where(beaten, _at(values[name], everywhere), np.nan),
         )
     return found
+
+
+def _at(values: Measure, point: NDArray[np.intp]) -> Measure:
+    return np.take_along_axis(values, point[None], axis=0)[0]
+
+
+def _outside(
+    values: Measure, sign: int, everywhere: NDArray[np.intp], zones: ActiveZones
+) -> NDArray[np.intp]:
+    """Where values are worst outside the zones; everywhere if a state has nothing outside."""
+    if not zones.excluded.any():
+        return everywhere
+    inside = values[zones.points].copy()
+    values[zones.points] = np.where(zones.excluded, -sign * np.inf, inside)
+    point = worst(values, sign)
+    nothing = np.isinf(_at(values, point))
+    values[zones.points] = inside
+    return np.where(nothing, everywhere, point)
 
 
 def _error(
@@ -86,11 +121,13 @@ def worst(values: Measure, sign: int, axis: int = 0) -> NDArray[np.intp]:
 class Utilisation:
     """Von Mises over yield strength, at its worst, in each of k states; (k,) each."""
 
-    value: Array
+    value: Measure
     point: NDArray[np.intp]
 
 
-def find_utilisation(von_mises: Measure, yield_strength: Array) -> Utilisation | None:
+def find_utilisation(
+    von_mises: Measure, yield_strength: Array, zones: ActiveZones = NO_ZONES
+) -> Utilisation | None:
     """Worst utilisation of k states; None where no material states a yield strength.
 
     von_mises : (P, k) [F/L^2]; yield_strength : (P,) at the field points, nan where unknown.
@@ -99,5 +136,9 @@ def find_utilisation(von_mises: Measure, yield_strength: Array) -> Utilisation |
     if not len(known):
         return None
     ratio = von_mises[known] / yield_strength[known][:, None]
-    worst = ratio.argmax(axis=0)
-    return Utilisation(ratio[worst, np.arange(ratio.shape[1])], known[worst])
+    rows = np.searchsorted(known, zones.points)
+    rows = np.minimum(rows, len(known) - 1)
+    there = known[rows] == zones.points
+    inside = ActiveZones(rows[there], zones.excluded[there])
+    row = _outside(ratio, 1, worst(ratio, 1), inside)
+    return Utilisation(_at(ratio, row), known[row])

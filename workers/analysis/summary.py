@@ -18,12 +18,15 @@ from workers.analysis.error_estimate import element_volumes, error_stress, estim
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.loads.kinds import Places
 from workers.analysis.model import Model
+from workers.analysis.peak_interval import peak_intervals
 from workers.analysis.peaks import Peak, find_peaks, find_utilisation
 from workers.analysis.quality import mesh_quality
 from workers.analysis.recovery import OperatorStore, Recovery
 from workers.analysis.resultants import equilibrium, imbalance, reactions
 from workers.analysis.samples import Samples
+from workers.analysis.sizes_wanted import SizesWanted
 from workers.analysis.solution import Solution, SolverReport
+from workers.analysis.zones import Zones
 from workers.errors import Fault, MeshError
 
 Array = NDArray[np.float64]
@@ -41,6 +44,7 @@ def summarise(
     states: States,
     progress: Progress | None = None,
     envelope: Envelope | None = None,
+    wanted: SizesWanted | None = None,
 ) -> Json:
     """Results of all states.
 
@@ -48,6 +52,7 @@ def summarise(
     ----------
     progress : called with the stage and the fraction of it that is done
     envelope : takes in every state, for whoever wants its fields afterwards
+    wanted : takes in the element errors of every state, for whoever refines the mesh
 
     Returns
     -------
@@ -62,11 +67,14 @@ def summarise(
     samples = Samples(recovery.field_mesh, job, states)
     cuts = _cuts(solution, states)
     by_state = _balances(solution, states)
+    zones = Zones.build(solution, recovery.field_mesh, states)
     at_once = _states_at_once(recovery)
     if len(states) > at_once:
         recovery = replace(recovery, operators=OperatorStore(KEPT_BYTES))
     for columns in states.chunks(at_once):
-        results = _strain_and_stress(solution, recovery, states, columns, samples, envelope)
+        results = _strain_and_stress(
+            solution, recovery, states, columns, zones, (samples, envelope, wanted)
+        )
         for column, result in zip(columns, results, strict=True):
             by_state[column] = result | by_state[column]
         if progress is not None:
@@ -111,30 +119,42 @@ def _strain_and_stress(
     recovery: Recovery,
     states: States,
     columns: range,
-    samples: Samples,
-    envelope: Envelope | None,
+    zones: Zones,
+    listeners: tuple[Samples, Envelope | None, SizesWanted | None],
 ) -> list[Json]:
-    """Peaks, error estimate and utilisation of some states; feeds samples and envelope."""
+    """Peaks, error estimate and utilisation of some states; feeds those who listen."""
     field_mesh = recovery.field_mesh
     displacement = superpose(solution.displacement, states, columns)
     temperature = superpose_blocks(solution.temperature, states, columns)
     stress = recovery.nodal_stress(displacement, temperature)
     estimate = estimate_error(recovery, displacement, stress, temperature)
     at_points = displacement[field_mesh.origin]
-    samples.include(columns, at_points, stress)
     values = measures(at_points, stress)
+    samples, envelope, wanted = listeners
+    samples.include(columns, at_points, stress)
     if envelope is not None:
         envelope.include(columns, values)
-    peaks = find_peaks(field_mesh, values, error_stress(solution.model, estimate))
+    if wanted is not None:
+        wanted.include(estimate)
+    excluded = zones.within(columns)
+    peaks = find_peaks(field_mesh, values, error_stress(solution.model, estimate), excluded)
+    intervals = peak_intervals(recovery, peaks, values, displacement, temperature)
     results: list[Json] = [
-        {name: _peak(peak, row, field_mesh) for name, peak in peaks.items()}
-        for row in range(len(columns))
+        {
+            name: {
+                **_peak(peak, row, field_mesh),
+                "interval": intervals[name][row].tolist() if name in intervals else None,
+                "singular": _singular(peak, row, zones, field_mesh, column),
+            }
+            for name, peak in peaks.items()
+        }
+        for row, column in enumerate(columns)
     ]
     errors = zip(estimate.relative.tolist(), estimate.energy_norm.tolist(), strict=True)
     for result, (relative, norm) in zip(results, errors, strict=True):
         result["error_estimate"] = {"relative": relative, "energy_norm": norm}
     strength = _yield_strength(solution.model)[field_mesh.region]
-    utilisation = find_utilisation(values["von_mises"], strength)
+    utilisation = find_utilisation(values["von_mises"], strength, excluded)
     for row, result in enumerate(results):
         result["utilisation"] = utilisation and {
             "value": float(utilisation.value[row]),
@@ -150,6 +170,25 @@ def _peak(peak: Peak, row: int, field_mesh: FieldMesh) -> Json:
         "error": None if peak.error is None else float(peak.error[row]),
         "least": {"value": float(peak.least[row])},
         **_place(peak.point[row], field_mesh),
+    }
+
+
+def _singular(
+    peak: Peak, row: int, zones: Zones, field_mesh: FieldMesh, column: int
+) -> Json | None:
+    """What the mesh shows at a singular place, if it is worse than the peak reported."""
+    point = int(peak.singular[row])
+    if point < 0:
+        return None
+    place = zones.place_of(field_mesh, point, column)
+    return {
+        "value": float(peak.singular_value[row]),
+        "at": list(place.at),
+        "kind": place.kind,
+        "exponent": place.exponent,
+        "radius": place.radius,
+        "element_size": place.element_size,
+        "confirmed": None,
     }
 
 
