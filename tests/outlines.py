@@ -1,4 +1,4 @@
-"""Jobs on outlines, from the document on: read, meshed and solved as a worker does it.
+"""Jobs on outlines and own meshes, from the document on: meshed and solved as a worker does it.
 
 Everything in N and mm. The oracles (hand sums, closed forms) stay with the tests.
 """
@@ -43,18 +43,15 @@ def document(
 ) -> Json:
     """A job document; loads of one case, or of several by name."""
     materials = materials or {"steel": STEEL}
-    meshing: Json = {"element": element}
-    if size is not None:
-        meshing["size"] = size
-    if sizes is not None:
-        meshing["sizes"] = dict(sizes)
+    meshing = {"element": element, "size": size, "sizes": sizes and dict(sizes)}
+    given = {key: value for key, value in meshing.items() if value is not None}
     return {
         "title": "Plate from an outline",
         "units": {"length": "mm", "force": "N"},
         "materials": dict(materials),
         "geometry": geometry,
         "plate": {"material": next(iter(materials)), "thickness": thickness},
-        "meshing": meshing,
+        **({} if "mesh" in geometry else {"meshing": given}),
         "supports": list(supports),
         "load_cases": dict(loads) if isinstance(loads, Mapping) else {"load": list(loads)},
         **more,
