@@ -1,32 +1,54 @@
 """The Flask application, put together. What it answers is in the modules it registers."""
 
 from flask import Flask
+from werkzeug.middleware.proxy_fix import ProxyFix
 
-from api import catalogue, docs, health, jobs, problems, results
+from api import access, catalogue, docs, health, jobs, problems, rates, results
 from api.openapi import ABOUT, SETTINGS, Api
 from api.preferences import WaitingRoom
 from api.responses import CautiousJSON
 from api.services import KEY, Services
+from workers.audit import Audit
 from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
+from workers.tokens import Tokens
 
 BLUEPRINTS = (jobs.blueprint, results.blueprint, catalogue.blueprint, health.blueprint)
 
 
 def create_app(settings: Settings | None = None) -> Flask:
-    """The application; without settings, those of the environment (`workers/settings.py`)."""
+    """The application; without settings, those of the environment (`workers/settings.py`).
+
+    Raises
+    ------
+    SettingsError   a setting is wrong, or anybody could reach the server.
+    """
     settings = settings or Settings.from_environment()
     app = Flask("api", static_folder=None)
     app.config.update(SETTINGS)
     app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes + 1  # see bodies.py
     app.json = CautiousJSON(app)
+    access.require_tokens_beyond_loopback(settings)
     app.extensions[KEY] = Services(
-        settings, Store(settings.store), Queue(settings), WaitingRoom(settings.api_threads // 2)
+        settings,
+        Store(settings.store),
+        Queue(settings),
+        WaitingRoom(settings.api_threads // 2),
+        Tokens(settings.store),
+        Audit(settings.store),
     )
     api = Api(app, spec_kwargs={"info": {"description": ABOUT}})
+    api.describe_tokens()
     problems.register(app)
     for blueprint in BLUEPRINTS:
         api.register_blueprint(blueprint)
     app.register_blueprint(docs.blueprint)
+    # In this order: whose request it is, whether he asks too often, whether he may.
+    app.before_request(access.identify)
+    rates.register(app, settings)
+    app.before_request(access.authorise)
+    if settings.proxies:
+        believed = dict.fromkeys(("x_for", "x_proto", "x_host"), settings.proxies)
+        app.wsgi_app = ProxyFix(app.wsgi_app, **believed)  # type: ignore[method-assign]
     return app

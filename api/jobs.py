@@ -12,6 +12,8 @@ import flask
 from marshmallow import RAISE
 from redis.exceptions import RedisError
 
+from api.access import caller, note, visible_record
+from api.admission import choose_line, require_room
 from api.bodies import read_document_bytes
 from api.example import EXAMPLE
 from api.openapi import Blueprint, problems_of
@@ -23,13 +25,16 @@ from api.schemas import (
     JobQuerySchema,
     JobStatusSchema,
     RemovalSchema,
+    SubmissionQuerySchema,
 )
 from api.services import services
+from workers.audit import CANCELLED, PINNED, REMOVED, SUBMITTED, UNPINNED
 from workers.document.job import JobSchema
 from workers.document.read import read_document
 from workers.errors import UnknownJobError
 from workers.preflight import preflight
 from workers.record import RUNNING, Record
+from workers.sizes import check_size
 
 log = logging.getLogger(__name__)
 blueprint = Blueprint("jobs", __name__, url_prefix="/v1", description="Jobs and their states")
@@ -53,6 +58,7 @@ LOCATION = {"Location": {"description": "Address of the job", "schema": {"type":
 
 
 @blueprint.post("/jobs")
+@blueprint.arguments(SubmissionQuerySchema, location="query", unknown=RAISE)
 @blueprint.response(202, JobStatusSchema, headers=LOCATION, description="Accepted and on disk")
 @blueprint.alt_response(
     200, schema=JobStatusSchema, headers=LOCATION, description="Accepted earlier with this key"
@@ -65,18 +71,30 @@ LOCATION = {"Location": {"description": "Address of the job", "schema": {"type":
     parameters=[IDEMPOTENCY_KEY],
     responses=problems_of(400, 413, 415, 422, 503),
 )
-def submit() -> Any:
+def submit(query: dict[str, Any]) -> Any:
     """Submit a job document
 
     The document is read and, where its mesh can be built at once, looked over before it is
     accepted; every fault found is answered together. The body may be gzip (`Content-Encoding`).
     """
     key = _idempotency_key()
+    asks = caller()
+    require_room(asks)
     document = read_document_bytes(flask.request, services().settings.body_bytes)
     job = read_document(document)
-    preflight(job)
-    record, created = services().store.accept(document, label=job.label, title=job.title, key=key)
+    check_size(job, services().settings)
+    mesh = preflight(job)
+    record, created = services().store.accept(
+        document,
+        label=job.label,
+        title=job.title,
+        key=key,
+        workspace=asks.workspace,
+        owner=asks.name,
+        priority=choose_line(query.get("priority"), job, mesh, asks),
+    )
     if created:
+        note(SUBMITTED, record)
         _enqueue(record.id)
     return describe(record), 202 if created else 200, {"Location": address(record.id)}
 
@@ -114,6 +132,7 @@ def list_jobs(query: dict[str, Any]) -> Any:
     records, after = services().store.list(
         state=query.get("state"),
         label=query.get("label"),
+        workspace=caller().scope,
         after=query.get("after"),
         limit=query["limit"],
     )
@@ -131,7 +150,7 @@ def show_job(job_id: str) -> Any:
     With `Prefer: wait=30` the answer is held until the job is final or 30 seconds have passed; the
     server may shorten the wait and says so in `Preference-Applied`.
     """
-    record = services().store.record(job_id)
+    record = visible_record(job_id)
     wait = wanted_wait(flask.request.headers.get("Prefer", ""))
     headers: dict[str, str] = {}
     if wait is not None:
@@ -151,18 +170,47 @@ def _is_final(job_id: str) -> bool:
 
 @blueprint.delete("/jobs/<job_id>")
 @blueprint.response(200, RemovalSchema)
-@blueprint.doc(responses=problems_of(404, 503))
+@blueprint.doc(responses=problems_of(404, 409, 503))
 def delete_job(job_id: str) -> dict[str, Any]:
     """Cancel a job that waits or runs; remove one that is final
 
-    A cancelled job stays in the list until it is deleted once more.
+    A cancelled job stays in the list until it is deleted once more. One that is pinned is not
+    removed.
     """
-    record = services().store.record(job_id)
+    record = visible_record(job_id)
     if record.is_final:
         services().store.remove(job_id)
+        note(REMOVED, record)
         return {"id": job_id, "done": "removed"}
     services().queue.cancel(job_id)
+    note(CANCELLED, record)
     return {"id": job_id, "done": "cancelled"}
+
+
+@blueprint.put("/jobs/<job_id>/pin")
+@blueprint.response(200, JobStatusSchema)
+@blueprint.doc(responses=problems_of(404, 503))
+def pin_job(job_id: str) -> dict[str, Any]:
+    """Keep a job
+
+    It is removed neither for its age nor for the room that it takes, nor on request, until it is
+    unpinned. The body is empty.
+    """
+    return _pin(job_id, True)
+
+
+@blueprint.delete("/jobs/<job_id>/pin")
+@blueprint.response(200, JobStatusSchema)
+@blueprint.doc(responses=problems_of(404, 503))
+def unpin_job(job_id: str) -> dict[str, Any]:
+    """Keep a job no longer than others"""
+    return _pin(job_id, False)
+
+
+def _pin(job_id: str, pinned: bool) -> dict[str, Any]:
+    if visible_record(job_id).pinned != pinned:
+        note(PINNED if pinned else UNPINNED, services().store.pin(job_id, pinned))
+    return describe(services().store.record(job_id))
 
 
 def address(job_id: str) -> str:
@@ -177,6 +225,10 @@ def summarise(record: Record) -> dict[str, Any]:
         "state": record.state,
         "title": record.title,
         "label": record.label,
+        "workspace": record.workspace,
+        "owner": record.owner,
+        "priority": record.priority,
+        "pinned": record.pinned,
         "times": {
             "accepted": record.accepted,
             "started": record.started,
@@ -188,6 +240,7 @@ def summarise(record: Record) -> dict[str, Any]:
             "field": f"{here}/fields/{{case}}.vtu",
             "preview": f"{here}/previews/{{case}}/{{quantity}}.png",
             "table": f"{here}/tables/{{name}}.csv",
+            "pin": f"{here}/pin",
         },
     }
 

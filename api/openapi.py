@@ -11,13 +11,16 @@ from webargs.flaskparser import FlaskParser
 from werkzeug.exceptions import HTTPException
 
 from api import problems
+from api.access import needed_role
 from api.schemas import ProblemSchema
+from workers.tokens import READ
 
 SETTINGS = {
     "API_TITLE": "Fishplate",
     "API_VERSION": version("fishplate"),
     "OPENAPI_VERSION": "3.1.0",
 }
+SCHEME = "token"
 ABOUT = (
     "Checks thin plates loaded in their own plane. Post a job document, wait for the job, fetch "
     "results, VTK fields and pictures. Every JSON body carries `cautions`; files carry a `Link` "
@@ -29,6 +32,19 @@ class Api(flask_smorest.Api):
     """flask-smorest's Api whose error responses are problem documents."""
 
     ERROR_SCHEMA = ProblemSchema
+
+    def describe_tokens(self) -> None:
+        """How a token is sent; servers without tokens need none, hence the `{}` beside it."""
+        self.spec.components.security_scheme(
+            SCHEME,
+            {
+                "type": "http",
+                "scheme": "bearer",
+                "description": "A token that whoever runs the server made with `fishplate tokens "
+                "add` (RFC 6750). On the server's own machine, as long as none was made, it is "
+                "not needed.",
+            },
+        )
 
     def _register_responses(self) -> None:
         for status in [*http.HTTPStatus, None]:
@@ -56,7 +72,24 @@ class QueryParser(FlaskParser):
 
 
 class Blueprint(flask_smorest.Blueprint):
+    """flask-smorest's Blueprint whose operations tell that they may need a token."""
+
     ARGUMENTS_PARSER = QueryParser()
+
+    def __init__(self, *arguments: Any, **options: Any) -> None:
+        super().__init__(*arguments, **options)
+        self._prepare_doc_cbks.append(self._prepare_security_doc)
+
+    @staticmethod
+    def _prepare_security_doc(
+        doc: dict[str, Any], doc_info: dict[str, Any], *, method: str, **_: Any
+    ) -> dict[str, Any]:
+        """An operation that is open to everybody says so with `security=[]`."""
+        if doc_info.get("manual_doc", {}).get("security") != []:
+            refusals = (401, 429) if needed_role(method.upper()) == READ else (401, 403, 429)
+            doc["security"] = [{SCHEME: []}, {}]
+            doc["responses"] = {**problems_of(*refusals), **doc.get("responses", {})}
+        return doc
 
 
 def problems_of(*statuses: int) -> dict[int, str]:

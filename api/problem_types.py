@@ -46,9 +46,36 @@ KEY_REUSED = ProblemType(
     "idempotency-key-reused", 422, "The Idempotency-Key belongs to another document",
     "One key stands for one document. Send the same bytes to repeat a request, or use a new key.",
 )  # fmt: skip
+JOB_TOO_LARGE = ProblemType(
+    "job-too-large", 413, "The job is larger than this server takes",
+    "`errors` says what there is too much of, and how much is allowed.",
+)  # fmt: skip
+TOKEN_NEEDED = ProblemType(
+    "token-needed", 401, "A token is needed",
+    "This server answers only to whoever sends a token that it knows: "
+    "`Authorization: Bearer TOKEN` (RFC 6750). Whoever runs the server makes them.",
+)  # fmt: skip
+ROLE_NEEDED = ProblemType(
+    "role-needed", 403, "The token is not for this",
+    "The role of the token does not allow this; `WWW-Authenticate` names the role that does.",
+)  # fmt: skip
+TOO_MANY = ProblemType(
+    "too-many-requests", 429, "Too many requests",
+    "The requests of one token, or of one address without, are limited in number. Ask again after "
+    "`Retry-After` seconds.",
+)  # fmt: skip
+LINE_FULL = ProblemType(
+    "line-full", 429, "The workspace has too many unfinished jobs",
+    "Nothing was accepted. Send the job again after `Retry-After` seconds, or when others are "
+    "done.",
+)  # fmt: skip
+PINNED = ProblemType(
+    "pinned", 409, "The job is pinned",
+    "Somebody wants it kept. Whoever may remove it may unpin it first.",
+)  # fmt: skip
 UNKNOWN_JOB = ProblemType(
     "unknown-job", 404, "There is no such job",
-    "No job has this id; it was never accepted here, or it was removed.",
+    "No job of your workspace has this id: it was never accepted here, or it was removed.",
 )  # fmt: skip
 NOTHING_OF_THAT_NAME = ProblemType(
     "unknown-name", 404, "The job has nothing of that name",

@@ -18,11 +18,13 @@ from api.problem_types import (
     BAD_REQUEST,
     BODY_TOO_LARGE,
     INVALID_DOCUMENT,
+    JOB_TOO_LARGE,
     KEY_REUSED,
     MEDIA_TYPE_UNKNOWN,
     NOT_FINAL,
     OVERTAKEN,
     PICTURES_UNAVAILABLE,
+    PINNED,
     QUEUE_AWAY,
     STORE_REFUSED,
     UNEXPECTED,
@@ -38,9 +40,11 @@ from workers.errors import (
     DocumentError,
     FaultyError,
     KeyConflictError,
+    LimitError,
     MeshError,
     NotFinalError,
     PicturesUnavailableError,
+    PinnedError,
     StoreError,
     TransitionError,
     UnknownJobError,
@@ -52,12 +56,14 @@ log = logging.getLogger(__name__)
 
 BY_ERROR: Mapping[type[Exception], ProblemType] = {
     DocumentError: INVALID_DOCUMENT,
+    LimitError: JOB_TOO_LARGE,
     MeshError: UNMESHABLE,
     AnalysisError: UNSOLVABLE,
     PicturesUnavailableError: PICTURES_UNAVAILABLE,
     StoreError: STORE_REFUSED,
     UnknownJobError: UNKNOWN_JOB,
     NotFinalError: NOT_FINAL,
+    PinnedError: PINNED,
     TransitionError: OVERTAKEN,
     KeyConflictError: KEY_REUSED,
     RedisError: QUEUE_AWAY,
@@ -157,6 +163,8 @@ def _text(error: Exception) -> str:
 
 def http_problem(error: HTTPException) -> Response:
     """Routing and parsing errors: 404, 405, 413, malformed query parameters, ..."""
+    if isinstance(error.response, Response):  # whoever raised it has said all (rates.py)
+        return error.response
     kept = {k: v for k, v in error.get_headers() if k not in ("Content-Type", "Content-Length")}
     parameters = _wrong_parameters(error)
     if parameters:

@@ -11,6 +11,7 @@ from typing import Any
 import orjson
 from flask import Response
 
+from api.access import visible_record
 from api.artefacts import make_artefact
 from api.jobs import address
 from api.openapi import Blueprint, describe_file, problems_of
@@ -105,7 +106,7 @@ def show_table(job_id: str, name: str) -> Response:
 
 def _folder(job_id: str) -> Path:
     """Where the results of a finished job are; a refusal that says why where it is not finished."""
-    record = services().store.record(job_id)
+    record = visible_record(job_id)
     if record.state == FINISHED:
         return services().store.results_path(job_id)
     reason = record.reason or ""

@@ -6,7 +6,7 @@ The job document itself is described in `workers/document/`, the results in `res
 from marshmallow import INCLUDE, RAISE, Schema, ValidationError, fields, validate
 
 from workers.cautions import SEVERITIES
-from workers.record import STATES, is_id
+from workers.record import PRIORITIES, STATES, is_id
 
 
 def text(description: str, **options: object) -> fields.String:
@@ -96,6 +96,7 @@ class LinksSchema(Answer):
     field = text("Address template (RFC 6570) of a VTK field file", required=True)
     preview = text("Address template of a picture", required=True)
     table = text("Address template of a CSV table", required=True)
+    pin = text("PUT keeps the job, DELETE keeps it no longer than others", required=True)
 
 
 class JobSummarySchema(Answer):
@@ -103,6 +104,16 @@ class JobSummarySchema(Answer):
     state = fields.String(required=True, validate=validate.OneOf(STATES))
     title = text("From the document", required=True)
     label = text("From the document", allow_none=True, required=True)
+    workspace = text("Whose it is", required=True)
+    owner = text("Name of the token that it came with", allow_none=True, required=True)
+    priority = fields.String(
+        required=True,
+        validate=validate.OneOf(PRIORITIES),
+        metadata={"description": "The line that it stands in, or stood in"},
+    )
+    pinned = fields.Boolean(
+        required=True, metadata={"description": "Kept until it is unpinned, whatever happens"}
+    )
     times = fields.Nested(TimesSchema, required=True)
     links = fields.Nested(LinksSchema, required=True)
 
@@ -140,6 +151,19 @@ class JobQuerySchema(Schema):
         load_default=50,
         validate=validate.Range(1, 200),
         metadata={"description": "Jobs on one page"},
+    )
+
+
+class SubmissionQuerySchema(Schema):
+    """How to treat a job; what it is stands in the document."""
+
+    priority = fields.String(
+        validate=validate.OneOf(PRIORITIES),
+        metadata={
+            "description": "The line that the job should stand in; interactive is worked on "
+            "first. Without it a small job without a label is interactive. Of one token's jobs "
+            "only a few stand there at a time; `priority` of the answer says where it stands"
+        },
     )
 
 

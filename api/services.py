@@ -1,13 +1,15 @@
-"""What the views work with: settings, store, queue and waiting room of one application."""
+"""What the views work with: settings, store, queue and what else one application has."""
 
 from dataclasses import dataclass
 
 from flask import current_app
 
 from api.preferences import WaitingRoom
+from workers.audit import Audit
 from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
+from workers.tokens import Tokens
 
 KEY = "fishplate"
 
@@ -18,6 +20,8 @@ class Services:
     store: Store
     queue: Queue
     waiting_room: WaitingRoom
+    tokens: Tokens
+    audit: Audit
 
 
 def services() -> Services:

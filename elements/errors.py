@@ -6,6 +6,7 @@ FishplateError
 │   ├── UnknownElementError              no such element type is installed
 │   └── ElementRegistrationError         a plug-in is broken or its name is taken
 ├── DocumentError                        (workers/errors.py) the job document is wrong
+├── LimitError                           the job is larger than the operator allows
 ├── MeshError                            the plate could not be meshed
 ├── AnalysisError                        the system could not be solved
 │   ├── MechanismError                   the plate, or a part of it, is free to move

@@ -4,8 +4,9 @@ The addresses come from the application's own URL map, so a new route is visited
 named here; one that cannot be reached with the values below makes `visit_all` fail.
 """
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Sequence
 from dataclasses import dataclass
+from itertools import product
 from typing import Any
 
 from flask import Flask
@@ -29,6 +30,8 @@ VALUES: dict[str, tuple[str, ...]] = {
 REQUESTS: dict[tuple[str, str], list[dict[str, Any]]] = {
     ("POST", "/v1/jobs"): [
         {"json": strip()},
+        {"json": strip(), "query_string": {"priority": "interactive"}},
+        {"json": strip(), "query_string": {"priority": "highest"}},
         {"json": strip(), "headers": {"Idempotency-Key": "a"}},
         {"json": strip(), "headers": {"Idempotency-Key": "a"}},
         {"json": strip(length=50.0), "headers": {"Idempotency-Key": "a"}},
@@ -60,8 +63,13 @@ class Visit:
     answer: TestResponse
 
 
-def visit_all(app: Flask, finish: Finish, monkeypatch: Any) -> list[Visit]:
-    """One visit for every combination; the application must accept 100 kB bodies at most."""
+def visit_all(
+    app: Flask, finish: Finish, monkeypatch: Any, bearers: Sequence[str | None] = (None,)
+) -> list[Visit]:
+    """One visit for every combination; the application must accept 100 kB bodies at most.
+
+    bearers : tokens that each visit is made with, one after the other; None is no token.
+    """
     services: Services = app.extensions[KEY]
 
     def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None,
@@ -74,12 +82,18 @@ def visit_all(app: Flask, finish: Finish, monkeypatch: Any) -> list[Visit]:
     for rule in app.url_map.iter_rules():
         for method in sorted((rule.methods or set()) - AUTOMATIC):
             for address in addresses(app, rule, finish):
-                for request in REQUESTS.get((method, rule.rule), [{}]):
-                    answer = app.test_client().open(
-                        address, method=method, buffered=True, **request
-                    )
+                for request, bearer in product(REQUESTS.get((method, rule.rule), [{}]), bearers):
+                    sent = with_token(request, bearer)
+                    answer = app.test_client().open(address, method=method, buffered=True, **sent)
                     visits.append(Visit(rule, method, answer))
     return visits
+
+
+def with_token(request: dict[str, Any], bearer: str | None) -> dict[str, Any]:
+    if bearer is None:
+        return request
+    headers = {"Authorization": f"Bearer {bearer}", **request.get("headers", {})}
+    return {**request, "headers": headers}
 
 
 def addresses(app: Flask, rule: Rule, finish: Finish) -> Iterator[str]:
@@ -104,4 +118,7 @@ def jobs(app: Flask, finish: Finish) -> tuple[str, ...]:
     services.store.transition(failed, RUNNING)
     services.store.transition(failed, FAILED, reason="why", faults=(Fault("/plate", "thin"),))
     services.store.transition(cancelled, CANCELLED)
-    return (queued, running, finished, failed, cancelled, "unknown")
+    pinned = services.store.accept(b"{}", title="pinned").record.id
+    services.store.transition(pinned, CANCELLED)
+    services.store.pin(pinned, True)
+    return (queued, running, finished, failed, cancelled, pinned, "unknown")

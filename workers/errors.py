@@ -37,6 +37,10 @@ class DocumentError(FaultyError, ValueError):
     """The job document is wrong; carries every fault found, not only the first."""
 
 
+class LimitError(FaultyError, ValueError):
+    """The job is larger than the operator allows."""
+
+
 class MeshError(FaultyError, ValueError):
     """The plate could not be meshed, or something named is not on the mesh."""
 

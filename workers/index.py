@@ -11,7 +11,7 @@ from pathlib import Path
 from urllib.parse import quote
 
 from workers import durable
-from workers.record import QUEUED, RUNNING, STATES, Record, day_of, is_id
+from workers.record import INTERACTIVE, QUEUED, RUNNING, STATES, Record, day_of, is_id
 
 
 class Index:
@@ -64,6 +64,7 @@ class Indexes:
         self._labels = root / "labels"
         self._workspaces = root / "workspaces"
         self._lines = root / "lines"
+        self._interactive = root / "interactive"
 
     def of_state(self, state: str) -> Index:
         return self._states[state]
@@ -79,6 +80,10 @@ class Indexes:
         """The unfinished jobs of a workspace: small, so that counting them is quick."""
         return Index(self._lines / workspace)
 
+    def interactive_of(self, workspace: str, owner: str | None) -> Index:
+        """The unfinished jobs of an owner that stand in the interactive line."""
+        return Index(self._interactive / f"{workspace}.{owner or ''}")
+
     def unfinished(self) -> set[str]:
         """Ids of the jobs that are queued or running, and perhaps of others that were."""
         return {i for state in (QUEUED, RUNNING) for i in self._states[state].newest_first()}
@@ -86,8 +91,9 @@ class Indexes:
     def enter(self, record: Record, *, sync: bool = False) -> None:
         """Before the record is written: name the job wherever it is to be found."""
         self._states[record.state].add(record.id, sync=sync)
-        if not record.is_final:
-            self.line_of(record.workspace).add(record.id)  # not worth a sync: only counted
+        if not record.is_final:  # not worth a sync: these are only counted
+            for line in self._lines_with(record):
+                line.add(record.id)
         self.of_workspace(record.workspace).add(record.id, sync=sync)
         if record.label is not None:
             self.of_label(record.label).add(record.id, sync=sync)
@@ -98,7 +104,13 @@ class Indexes:
             if state != record.state:
                 index.discard(record.id)
         if record.is_final:
-            self.line_of(record.workspace).discard(record.id)
+            for line in self._lines_with(record):
+                line.discard(record.id)
+
+    def _lines_with(self, record: Record) -> Iterator[Index]:
+        yield self.line_of(record.workspace)
+        if record.priority == INTERACTIVE:
+            yield self.interactive_of(record.workspace, record.owner)
 
     def drop(self, record: Record) -> None:
         """Take out a job that is no more."""
@@ -111,8 +123,9 @@ class Indexes:
         """The same where there is no record to tell the workspace; the states lead others here."""
         for index in self._states.values():
             index.discard(job_id)
-        for workspace in _names(self._lines):
-            self.line_of(workspace).discard(job_id)
+        for folder in (self._lines, self._interactive):
+            for name in _names(folder):
+                Index(folder / name).discard(job_id)
 
 
 def _common(folders: Iterable[Path]) -> set[str]:

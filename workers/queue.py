@@ -48,9 +48,14 @@ POLL = 0.1  # between two looks for an answer [s]
 log = logging.getLogger(__name__)
 
 
+def redis_address(settings: Settings) -> str:
+    """URL of the Redis server: the one that is named, or the private one."""
+    return settings.redis_url or address(settings.store)
+
+
 def connect(settings: Settings) -> redis.Redis:
     """A client that gives up after seconds rather than hang."""
-    url = settings.redis_url or address(settings.store)
+    url = redis_address(settings)
     return redis.Redis.from_url(url, socket_timeout=5.0, socket_connect_timeout=2.0)
 
 

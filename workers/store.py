@@ -9,6 +9,7 @@
     labels/LABEL/DAY/ID        index: the jobs of a label
     workspaces/NAME/DAY/ID     index: the jobs of a workspace
     lines/NAME/DAY/ID          index: those of them that are unfinished
+    interactive/WHO/DAY/ID     index: unfinished interactive jobs of an owner in a workspace
     keys/DIGEST                the job that an Idempotency-Key stands for, within a workspace
     incoming/ID, removed/ID    on the way in and out
 

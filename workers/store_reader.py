@@ -104,6 +104,11 @@ class StoreReader:
         with telling("the unfinished jobs could not be listed"):
             return tuple(sorted(self.indexes.unfinished()))
 
+    def interactive_jobs(self, workspace: str, owner: str | None) -> int:
+        """Number of unfinished jobs of an owner in the interactive line."""
+        with telling("the unfinished jobs could not be counted"):
+            return self.indexes.interactive_of(workspace, owner).count()
+
     def _folder(self, job_id: str) -> Path:
         self.record(job_id)
         return self.jobs.path(job_id)

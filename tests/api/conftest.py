@@ -16,6 +16,7 @@ from tests.small_results import RESULTS
 from workers.private_redis import PrivateRedis
 from workers.record import RUNNING
 from workers.settings import Settings
+from workers.tokens import ROLES
 
 
 @pytest.fixture(scope="session")
@@ -36,6 +37,16 @@ def app(settings: Settings) -> Iterator[Flask]:
     connection = app.extensions[KEY].queue.connection
     connection.flushall()
     connection.close()
+
+
+@pytest.fixture
+def tokens(app: Flask) -> dict[str, str]:
+    """Tokens of every role, with which the application becomes guarded; "other" is elsewhere."""
+    made = app.extensions[KEY].tokens
+    return {
+        **{role: made.add(role, role)[1] for role in ROLES},
+        "other": made.add("other", "submit", "elsewhere")[1],
+    }
 
 
 @pytest.fixture

@@ -10,6 +10,7 @@ from flask import Flask
 from flask.testing import FlaskClient
 from werkzeug.test import TestResponse
 
+from api.access import OPEN
 from api.services import Services
 from tests.walk import AUTOMATIC, visit_all
 from workers.cautions import STANDING
@@ -40,6 +41,30 @@ def test_every_route_answers_with_cautions(
             }
             assert min(statuses) < 400, f"{method} {rule} never works"
             assert max(statuses) >= 400 or not rule.arguments, f"{method} {rule} never fails"
+
+
+def test_every_refusal_of_a_guarded_server_carries_cautions_and_says_what_is_needed(
+    app: Flask,
+    finish: Callable[[str], None],
+    monkeypatch: pytest.MonkeyPatch,
+    tokens: dict[str, str],
+) -> None:
+    """Without a token, with a wrong one, with one of too low a role, and of another workspace."""
+    bearers = (None, "wrong", tokens["read"], tokens["other"])
+    visits = visit_all(app, finish, monkeypatch, bearers)
+    for visit in visits:
+        assert_cautions(visit.answer)
+        refused = visit.answer.status_code in (401, 403)
+        assert refused == ("WWW-Authenticate" in visit.answer.headers)
+    for place in range(0, len(visits), len(bearers)):
+        nobody, wrong, reader, other = visits[place : place + len(bearers)]
+        is_open = nobody.rule.endpoint in OPEN
+        changes = nobody.method not in ("GET", "HEAD", "OPTIONS")
+        assert (nobody.answer.status_code == 401) == (not is_open)
+        assert (wrong.answer.status_code == 401) == (not is_open)
+        assert (reader.answer.status_code == 403) == changes
+        if "job_id" in other.rule.arguments:
+            assert other.answer.status_code == 404
 
 
 def test_links_of_files_lead_to_cautions(

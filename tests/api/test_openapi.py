@@ -12,12 +12,14 @@ from flask import Flask
 from flask.testing import FlaskClient
 from jsonschema import Draft202012Validator
 
+from api.access import OPEN
 from api.openapi import Blueprint
+from api.services import KEY
 from tests.job_documents import strip
 from tests.walk import visit_all
 
-# Described as possible everywhere a queue or store is used; provoked in test_outages.py.
-OUTAGES = {"500", "503"}
+# Described as possible everywhere; provoked in test_outages.py, and 429 in test_fairness.py.
+OUTAGES = {"429", "500", "503"}
 
 
 @pytest.fixture
@@ -46,9 +48,14 @@ def test_routes_answer_what_the_document_says(
     finish: Callable[[str], None],
     monkeypatch: pytest.MonkeyPatch,
 ) -> None:
-    """Status, media type and body of every answer; and every status described does occur."""
+    """Status, media type and body of every answer; and every status described does occur.
+
+    First as the one person on the machine, then on a guarded server.
+    """
     seen: dict[tuple[str, str], set[str]] = defaultdict(set)
-    for visit in visit_all(app, finish, monkeypatch):
+    visits = visit_all(app, finish, monkeypatch)
+    reader = app.extensions[KEY].tokens.add("reader", "read")[1]
+    for visit in [*visits, *visit_all(app, finish, monkeypatch, (None, reader))]:
         path = re.sub(r"<(\w+)>", r"{\1}", visit.rule.rule)
         operation = document["paths"].get(path, {}).get(visit.method.lower())
         if operation is None:
@@ -75,6 +82,20 @@ def test_every_api_route_is_described(app: Flask, document: dict[str, Any]) -> N
     for rule in app.url_map.iter_rules():
         if isinstance(app.blueprints[rule.endpoint.split(".")[0]], Blueprint):
             assert re.sub(r"<(\w+)>", r"{\1}", rule.rule) in document["paths"]
+
+
+def test_the_document_says_where_a_token_may_be_needed(
+    app: Flask, document: dict[str, Any]
+) -> None:
+    """The description of an operation and the guard at its door agree."""
+    (scheme,) = document["components"]["securitySchemes"]
+    assert document["components"]["securitySchemes"][scheme]["scheme"] == "bearer"  # RFC 6750
+    for rule in app.url_map.iter_rules():
+        item = document["paths"].get(re.sub(r"<(\w+)>", r"{\1}", rule.rule), {})
+        for method in item.keys() - {"parameters"}:
+            needed = [{scheme: []}, {}] if rule.endpoint not in OPEN else []
+            if method.upper() in (rule.methods or ()):
+                assert item[method]["security"] == needed, rule
 
 
 def test_all_schemas_are_json_schema(document: dict[str, Any]) -> None:
