@@ -68,8 +68,11 @@ def _rounded(shape: Polygon, vertex: np.ndarray, radius: float) -> Polygon:
     centre = vertex + along / np.linalg.norm(along) * radius / math.sin(half)
     kite = Polygon([vertex, p, centre, q])
     corner = kite.difference(shapely.Point(centre).buffer(radius, quad_segs=FINE // 4))
+    corner = corner.buffer(1e-9 * radius)  # over the sides, which rounding has moved
     concave = not shape.buffer(1e-9 * radius).contains(shapely.Point(vertex + 1e-3 * reach * along))
-    return shape.union(corner) if concave else shape.difference(corner)
+    found = shape.union(corner) if concave else shape.difference(corner)
+    largest = max(getattr(found, "geoms", [found]), key=lambda part: part.area)
+    return Polygon(largest.exterior)  # no slivers
 
 
 def plate_polygon(geometry: Json) -> Polygon:

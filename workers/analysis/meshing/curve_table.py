@@ -5,6 +5,7 @@ Every method takes `index`, which of the curves each row is about.
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 import shapely
@@ -13,7 +14,7 @@ from numpy.typing import NDArray
 from workers.analysis.meshing.curves import Arc, Curve
 
 Array = NDArray[np.float64]
-Index = NDArray[np.intp]
+Index = NDArray[np.integer[Any]]
 
 WIDEST = 0.05  # radians that one chord of a polyline may span
 

@@ -6,7 +6,9 @@ be wrong with it, is in `outline.py`; what meshes it is in `free.py`."""
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from functools import cached_property
 
+from workers.analysis.meshing.curve_table import CurveTable
 from workers.analysis.meshing.curves import Curve, enclosed
 from workers.job import Vector
 
@@ -17,7 +19,7 @@ OUTSIDE = 0  # the domain beyond the plate's edge and inside holes
 class Edge:
     """A piece of a side between two domains.
 
-    curve : straight line, or arc of less than a full turn.
+    curve : straight line, or arc of at most a right angle.
     side : name of the side or hole that it belongs to, None if it has none.
     left, right : domains seen along the direction of travel; OUTSIDE or 1 + index into
         `Drawing.regions`. Equal domains make an embedded line that nodes follow.
@@ -53,6 +55,10 @@ class Drawing:
     regions: tuple[str, ...]
     points: Mapping[str, Vector] = field(default_factory=dict)
     inner: Mapping[str, int] = field(default_factory=dict)
+
+    @cached_property
+    def table(self) -> CurveTable:
+        return CurveTable.of([edge.curve for edge in self.edges])
 
     @property
     def area(self) -> float:

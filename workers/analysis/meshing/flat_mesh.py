@@ -5,6 +5,7 @@ fine mesh, and turns triangles into quadrilaterals on the way.
 """
 
 from dataclasses import dataclass, replace
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -43,7 +44,13 @@ class FlatMesh:
         return len(self.triangles) + len(self.quadrilaterals)
 
 
-def cell_edges(cells: Indices) -> NDArray[np.int64]:
+def side_keys(sides: NDArray[np.int64]) -> NDArray[np.int64]:
+    """One number for each side (..., 2), whichever way it runs."""
+    low, high = sides.min(axis=-1), sides.max(axis=-1)
+    return np.asarray((low << 32) | high)
+
+
+def cell_edges(cells: NDArray[np.integer[Any]]) -> NDArray[np.int64]:
     """Both ends of every side of every cell, (m, n, 2); side i runs from corner i to i + 1."""
     return np.stack((cells, np.roll(cells, -1, axis=1)), axis=2).astype(np.int64)
 
@@ -57,16 +64,13 @@ def middles(mesh: FlatMesh, drawing: Drawing) -> tuple[Array, list[Indices], Ind
     of_cells : for triangles and quadrilaterals (m, n), the middle of each side of each cell
     of_segments : (s,)
     """
-    count = len(mesh.nodes)
     sides = [cell_edges(cells).reshape(-1, 2) for cells in mesh.cells]
-    ends = np.sort(np.concatenate((*sides, mesh.segments.astype(np.int64))), axis=1)
-    keys, inverse = np.unique(ends[:, 0] * count + ends[:, 1], return_inverse=True)
-    places = (mesh.nodes[keys // count] + mesh.nodes[keys % count]) / 2
+    ends = np.concatenate((*sides, mesh.segments.astype(np.int64)))
+    keys, inverse = np.unique(side_keys(ends), return_inverse=True)
+    places = (mesh.nodes[keys >> 32] + mesh.nodes[keys & 0xFFFFFFFF]) / 2
     m, k = mesh.triangles.size, mesh.quadrilaterals.size
     of_segments = inverse[m + k :].astype(np.int32)
-    for number in np.unique(mesh.segment_edge):
-        own = of_segments[mesh.segment_edge == number]
-        places[own] = drawing.edges[number].curve.project(places[own])
+    places[of_segments] = drawing.table.project(mesh.segment_edge, places[of_segments])
     of_cells = [
         inverse[:m].reshape(-1, 3).astype(np.int32),
         inverse[m : m + k].reshape(-1, 4).astype(np.int32),

@@ -1,37 +1,42 @@
 """Free meshing: a drawing becomes a mesh of one element type.
 
-Choose sizes, let the library mesh coarsely, split every element once, smooth, put mid-side nodes
-on the true curves, and name sides and points.
+Choose sizes, let the library mesh coarsely, split every element once, smooth; where that comes out
+poor, again and finer there. The library's outcome is never trusted: a mesh is whole and has no
+inverted element, or the job fails with the reason.
 """
 
-from collections.abc import Mapping
 from dataclasses import replace
 
 import numpy as np
-from numpy.typing import NDArray
 
 from elements import registry
 from elements.contract import ElementType
-from workers.analysis.mesh import Block, Mesh
-from workers.analysis.meshing.drawing import OUTSIDE, Drawing
+from workers.analysis.mesh import Mesh
+from workers.analysis.meshing.audit import flaws
+from workers.analysis.meshing.curves import Line
+from workers.analysis.meshing.drawing import Drawing
+from workers.analysis.meshing.embedded import embedded_lines
+from workers.analysis.meshing.finish import finish, outward
 from workers.analysis.meshing.flat_mesh import (
     FlatMesh,
-    middles,
     split_into_quadrilaterals,
     split_into_triangles,
 )
-from workers.analysis.meshing.mesher import MesherFailedError, Sizes, run_mesher
-from workers.analysis.meshing.sizing import choose_sizes
-from workers.analysis.meshing.smooth import qualities, smooth, triangle_quality
+from workers.analysis.meshing.judge import Verdict, judge
+from workers.analysis.meshing.mesher import MesherFailedError, run_mesher
+from workers.analysis.meshing.pairing import pair_triangles, split_poor, split_wide
+from workers.analysis.meshing.plan import Plan, count_faults, plan_faults, plan_mesh
+from workers.analysis.meshing.sizing import Sizes, around, boundary_pieces
+from workers.analysis.meshing.smooth import smooth
 from workers.errors import Fault, MeshError
 from workers.job import Meshing
 
-MOST_ELEMENTS = 2_000_000
-SECONDS = 120.0  # for the library; the coarse mesh of a million elements takes about half of it
-POOR_QUADRILATERAL = 0.3  # scaled Jacobian below which two triangles may do better
-
-# The element that fills in where a quadrilateral would be too poor, and the reverse.
-TRIANGLE_LIKE: Mapping[int, str] = {1: "T3", 2: "T6"}
+PATIENCE = 20.0  # for the library [s], and
+PER_ELEMENT = 2e-4  # more for each element that is expected [s]; about ten times what it takes
+TRIES = 3  # with triangles
+MOST_ROWS = 600.0  # pieces of border of a coarse mesh in which the library may lay quadrilaterals
+FINER = 0.6  # of the size that a poor element has: what is asked for there the next time
+SMALLER = 0.8  # of all sizes: what is asked for after the library failed
 
 
 def mesh_drawing(drawing: Drawing, meshing: Meshing) -> Mesh:
@@ -39,136 +44,98 @@ def mesh_drawing(drawing: Drawing, meshing: Meshing) -> Mesh:
 
     Raises
     ------
-    MeshError   too many elements would be needed, or the library failed.
+    MeshError             a size is absurd, or no sound mesh could be made.
+    UnknownElementError   the element type is not installed.
     """
-    element, area = registry.get(meshing.element), drawing.area
-    sizes = choose_sizes(drawing, element.order, area, meshing.size, meshing.sizes)
-    _check_count(area, sizes)
-    flat = _flat_mesh(drawing, sizes, quads=not element.is_triangle)
-    return _build(flat, drawing, element)
+    element = registry.get(meshing.element)
+    if faults := plan_faults(drawing, element, meshing):
+        raise MeshError(faults)
+    plan = plan_mesh(drawing, element, meshing)
+    if faults := count_faults(plan, meshing):
+        raise MeshError(faults)
+    local, whole, sizes = _with_points(plan, drawing)
+    seconds = PATIENCE + PER_ELEMENT * plan.elements
+    flat = _best(local, sizes, element, seconds)
+    return finish(outward(flat, local, plan.frame, whole), whole, element)
 
 
-def _check_count(area: float, sizes: Sizes) -> None:
-    # An upper bound for triangles of the general size in every run that was measured.
-    count = area / (0.433 * sizes.general**2)
-    if count > MOST_ELEMENTS:
-        raise MeshError(
-            [
-                Fault(
-                    "/meshing/size",
-                    f"size {sizes.general:g} would make about {count:.2g} elements; at most "
-                    f"{MOST_ELEMENTS} are allowed, which needs a size of at least "
-                    f"{np.sqrt(area / (0.433 * MOST_ELEMENTS)):.3g}",
-                )
-            ]
-        )
-
-
-def _flat_mesh(drawing: Drawing, sizes: Sizes, *, quads: bool) -> FlatMesh:
-    coarse = Sizes(2 * sizes.general, 2 * sizes.edges, sizes.points * [1.0, 1.0, 2.0])
-    try:
-        made = run_mesher(drawing, coarse, quads=quads, seconds=SECONDS)
-    except MesherFailedError as error:
-        raise MeshError(
-            [
-                Fault(
-                    "/geometry",
-                    f"the plate could not be meshed: {error}; try another size, or simplify "
-                    "details that are much smaller than it",
-                )
-            ]
-        ) from error
-    split = split_into_quadrilaterals if quads else split_into_triangles
-    return _split_poor(smooth(split(made, drawing)))
-
-
-def _split_poor(mesh: FlatMesh) -> FlatMesh:
-    """Poor quadrilaterals become two triangles where those are better."""
-    quality = qualities(mesh)[1]
-    poor = np.flatnonzero(quality < POOR_QUADRILATERAL)
-    if not len(poor):
-        return mesh
-    a, b, c, d = mesh.quadrilaterals[poor].T
-    ways = np.stack(
-        [
-            np.stack((np.stack((a, b, c), axis=1), np.stack((a, c, d), axis=1)), axis=1),
-            np.stack((np.stack((a, b, d), axis=1), np.stack((b, c, d), axis=1)), axis=1),
-        ]
+def _with_points(plan: Plan, drawing: Drawing) -> tuple[Drawing, Drawing, Sizes]:
+    """The drawing in both coordinates, and its sizes, with the lines that hold inner points."""
+    lines = embedded_lines(plan.local, plan.sizes)
+    exact = {plan.local.points[name]: np.array(drawing.points[name]) for name in drawing.inner}
+    outside = tuple(
+        replace(line, curve=Line(exact[line.start], plan.frame.outward(line.curve.end)))
+        for line in lines
     )
-    worst = triangle_quality(mesh.nodes[ways]).min(axis=2)
-    way = worst.argmax(axis=0)
-    better = worst.max(axis=0) > quality[poor]
-    chosen = ways[way, np.arange(len(poor))][better]
-    keep = np.ones(len(mesh.quadrilaterals), bool)
-    keep[poor[better]] = False
-    domain = np.repeat(mesh.quadrilateral_domain[poor[better]], 2)
-    return replace(
-        mesh,
-        triangles=np.concatenate((mesh.triangles, chosen.reshape(-1, 3))),
-        triangle_domain=np.concatenate((mesh.triangle_domain, domain)),
-        quadrilaterals=mesh.quadrilaterals[keep],
-        quadrilateral_domain=mesh.quadrilateral_domain[keep],
-    )
-
-
-# --- the finished mesh ----------------------------------------------------------------------------
-
-
-def _build(flat: FlatMesh, drawing: Drawing, element: ElementType) -> Mesh:
-    """Blocks of the wanted order, with sides and points by name."""
-    nodes, cells = flat.nodes, list(flat.cells)
-    if element.order > 1:
-        places, of_cells, _ = middles(flat, drawing)
-        cells = [
-            np.concatenate((c, mids + len(nodes)), axis=1)
-            for c, mids in zip(cells, of_cells, strict=True)
-        ]
-        nodes = np.concatenate((nodes, places))
-    if element.is_triangle:
-        types = [element, element]
-    else:
-        types = [registry.get(TRIANGLE_LIKE[element.order]), element]
-    domains = (flat.triangle_domain, flat.quadrilateral_domain)
-    blocks = tuple(
-        Block(kind, own.astype(np.int32), (domain - 1).astype(np.int32))
-        for kind, own, domain in zip(types, cells, domains, strict=True)
-        if len(own)
-    )
-    nodes, blocks, renumbered = _numbered_by_place(nodes, blocks)
-    mesh = Mesh(nodes, blocks, drawing.regions)
-    return replace(
-        mesh,
-        sides=_sides(mesh, renumbered[flat.segments], flat.segment_edge, drawing),
-        points={name: _node_at(nodes, place) for name, place in drawing.points.items()},
-    )
-
-
-def _numbered_by_place(
-    nodes: NDArray[np.float64], blocks: tuple[Block, ...]
-) -> tuple[NDArray[np.float64], tuple[Block, ...], NDArray[np.int32]]:
-    """Neighbours get near numbers: faster gathers, and files that compress better."""
-    order = np.lexsort((nodes[:, 0], np.rint(nodes[:, 1] / (np.ptp(nodes[:, 1]) / 64))))
-    renumbered = np.empty(len(nodes), np.int32)
-    renumbered[order] = np.arange(len(nodes), dtype=np.int32)
+    edges = np.concatenate((plan.sizes.edges, [line.curve.length for line in lines]))
     return (
-        nodes[order],
-        tuple(replace(block, connectivity=renumbered[block.connectivity]) for block in blocks),
-        renumbered,
+        replace(plan.local, edges=plan.local.edges + lines),
+        replace(drawing, edges=drawing.edges + outside),
+        plan.sizes._replace(edges=edges),
     )
 
 
-def _sides(
-    mesh: Mesh, segments: NDArray[np.int32], segment_edge: NDArray[np.int32], drawing: Drawing
-) -> dict[str, NDArray[np.int32]]:
-    named: dict[str, list[NDArray[np.int32]]] = {}
-    for number, edge in enumerate(drawing.edges):
-        if edge.side is None:
+# --- one mesh, and another if it is poor -----------------------------------------------------
+
+
+def _best(local: Drawing, sizes: Sizes, element: ElementType, seconds: float) -> FlatMesh:
+    """The first mesh without a poor element, or the best of a few.
+
+    Raises
+    ------
+    MeshError   none of them was sound.
+    """
+    best: tuple[Verdict, FlatMesh] | None = None
+    reasons: list[str] = []
+    for rows in _ways(local, sizes, element):
+        try:
+            mesh = _made(local, sizes, element, seconds, rows=rows)
+        except MesherFailedError as error:
+            reasons.append(str(error))
+            sizes = sizes.scaled(SMALLER)
             continue
-        pairs = segments[segment_edge == number]
-        # The facet that runs with the pair has its element on the left.
-        named.setdefault(edge.side, []).append(pairs[:, ::-1] if edge.left == OUTSIDE else pairs)
-    return {name: mesh.find_facets(np.concatenate(pairs)) for name, pairs in named.items()}
+        if found := flaws(mesh, local):
+            reasons.append("; ".join(found))
+            sizes = sizes.scaled(SMALLER)
+            continue
+        verdict = judge(mesh, local, element)
+        if best is None or verdict.worst > best[0].worst:
+            best = verdict, mesh
+        if not len(verdict.poor):
+            break
+        if not rows:
+            sizes = _finer(sizes, verdict)
+    if best is None or not best[0].is_sound:
+        raise MeshError([_failure(reasons)])
+    return best[1]
 
 
-def _node_at(nodes: NDArray[np.float64], place: tuple[float, float]) -> int:
-    return int(np.argmin(np.linalg.norm(nodes - place, axis=1)))
+def _ways(local: Drawing, sizes: Sizes, element: ElementType) -> list[bool]:
+    """Whether the library lays quadrilaterals in rows, one try after the other."""
+    rows = not element.is_triangle and boundary_pieces(local, sizes.scaled(2)) <= MOST_ROWS
+    return [True] * rows + [False] * TRIES
+
+
+def _made(
+    local: Drawing, sizes: Sizes, element: ElementType, seconds: float, *, rows: bool
+) -> FlatMesh:
+    coarse = run_mesher(local, sizes.scaled(2), quads=rows, seconds=seconds)
+    if element.is_triangle:
+        return smooth(split_into_triangles(coarse, local))
+    paired = split_wide(coarse) if rows else pair_triangles(coarse)
+    return split_poor(smooth(split_into_quadrilaterals(paired, local)))
+
+
+def _finer(sizes: Sizes, verdict: Verdict) -> Sizes:
+    """Smaller elements where the last mesh had poor ones."""
+    rings = [around((x, y), FINER * size, sizes.general) for x, y, size in verdict.poor]
+    return sizes._replace(points=np.concatenate((sizes.points, *rings)))
+
+
+def _failure(reasons: list[str]) -> Fault:
+    seen = reasons[-1] if reasons else "elements on arcs fold over"
+    return Fault(
+        "/geometry",
+        f"the plate could not be meshed: {seen}; try another size, or simplify details that are "
+        "much smaller than it",
+    )

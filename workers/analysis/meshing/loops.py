@@ -4,6 +4,7 @@ What can be wrong inside one loop is found here and in `fillets.py`: sides too s
 not exist, fillets that do not fit. Where loops cross is found on the arrangement (`contacts.py`).
 """
 
+import math
 from dataclasses import dataclass, replace
 from functools import cached_property
 
@@ -18,6 +19,7 @@ from workers.job import CircleShape, Vertex
 
 Array = NDArray[np.float64]
 
+WIDEST = math.pi / 2  # of an arc: what the mesh library's splines follow exactly
 SHORTEST = 1e-5  # of the plate's diagonal: closer vertices and shorter sides are faults
 
 
@@ -91,7 +93,21 @@ def vertex_sides(
             sides.append(Side(rest, vertex.side or name, vertex.pointer))
     if sum(enclosed(side.curve) for side in sides) < 0:
         sides = [replace(side, curve=side.curve.reverse) for side in reversed(sides)]
-    return tuple(sides), faults
+    return tuple(part for side in sides for part in _quarters(side)), faults
+
+
+def _quarters(side: Side) -> list[Side]:
+    """The side, an arc of more than a right angle in equal parts of less."""
+    arc = side.curve
+    if not isinstance(arc, Arc):
+        return [side]
+    count = max(1, math.ceil(abs(arc.sweep) / WIDEST - 1e-9))
+    t = np.arange(count + 1) / count
+    places = arc.at(t)
+    return [
+        replace(side, curve=arc.part(t[i], t[i + 1], places[i], places[i + 1]))
+        for i in range(count)
+    ]
 
 
 def _side(vertex: Vertex, following: Vertex, shortest: float, faults: list[Fault]) -> Curve | None:

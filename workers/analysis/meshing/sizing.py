@@ -1,22 +1,44 @@
-"""How fine the free mesh is where: the general size, arcs, narrow gaps, and what the job asks.
+"""How fine the free mesh is where: the general size, arcs, and what the job asks.
 
-Sizes are those of the finished mesh. What the document gives by name (`sizes`) replaces the default
-along that side; narrow gaps are always resolved, since the mesh library follows chords and would
-cross itself where two sides come closer than a chord's rise.
+Sizes are those of the finished mesh, in the mesher's coordinates. What the document gives by name
+(`sizes`) replaces the default there; an arc always gets enough elements to be an arc. Narrow gaps
+are looked at apart (`gaps.py`).
 """
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from typing import NamedTuple
 
 import numpy as np
-import shapely
 from numpy.typing import NDArray
 
-from workers.analysis.meshing.curves import Arc
-from workers.analysis.meshing.drawing import Drawing
-from workers.analysis.meshing.mesher import Sizes
+from workers.analysis.meshing.corners import sharp_corners
+from workers.analysis.meshing.curves import Arc, enclosed
+from workers.analysis.meshing.drawing import OUTSIDE, Drawing
+from workers.job import Vector
 
 Array = NDArray[np.float64]
+
+GRADING = 0.25  # growth of the size away from a fine place; 0.2-0.3 keeps neighbours alike
+
+
+class Sizes(NamedTuple):
+    """Wanted element sizes.
+
+    general : largest anywhere
+    edges : (e,) largest along each edge of the drawing; inf where nothing is asked
+    domains : (d,) largest in each domain of the drawing
+    points : (k, 3) x, y and size; the size grows away from each by `GRADING`
+    """
+
+    general: float
+    edges: Array
+    domains: Array
+    points: Array
+
+    def scaled(self, factor: float) -> "Sizes":
+        """All sizes so much larger; twice as large for a mesh whose elements are split once."""
+        points = self.points * [1.0, 1.0, factor]
+        return Sizes(factor * self.general, factor * self.edges, factor * self.domains, points)
 
 
 class Fineness(NamedTuple):
@@ -24,58 +46,68 @@ class Fineness(NamedTuple):
 
     elements : that the general size aims at over the plate's area
     per_turn : along a full circle
+    least_per_turn : the same, where the document asks for a size
     per_gap : across a narrow gap
     """
 
     elements: int
     per_turn: int
+    least_per_turn: int
     per_gap: int
 
 
 # Quadratic elements follow an arc and a stress gradient with far fewer elements than linear ones.
-DEFAULTS: Mapping[int, Fineness] = {1: Fineness(3000, 48, 4), 2: Fineness(800, 24, 2)}
-FINEST = 2e-4  # of the diagonal: no automatic size goes below
-POINTS_LIMIT = 200_000  # of gap samples; bounds the time
-RINGS = 4  # around a named point inside the plate, where the size grows back
-SAGITTA = 1e-4  # of an arc's radius: how closely polylines follow it for measuring gaps
+DEFAULTS: Mapping[int, Fineness] = {1: Fineness(3000, 48, 24, 4), 2: Fineness(800, 24, 16, 2)}
+RINGS = 4  # around a named point, where the size grows back
+SHARP = 50.0  # degrees: a corner between arcs that is sharper needs smaller elements
+TRIANGLE = 0.433  # area of an equilateral triangle over the square of its side
 
 
 def choose_sizes(
-    drawing: Drawing,
-    order: int,
-    area: float,
-    size: float | None,
-    sizes: Mapping[str, float],
+    drawing: Drawing, order: int, size: float | None, sizes: Mapping[str, float]
 ) -> Sizes:
-    """Wanted sizes of a drawing [L].
+    """Wanted sizes of a drawing in the mesher's coordinates.
 
     Parameters
     ----------
     order : of the element, 1 or 2
-    area : of the plate [L^2]
-    size : general size that the job asks for, None for the default [L]
-    sizes : by name of a side, hole, region or point [L]
+    size : general size that the job asks for, None for the default
+    sizes : by name of a side, hole, region or point
     """
     fineness = DEFAULTS[order]
-    general = size or float(np.sqrt(area / fineness.elements))
-    edges = np.array([_edge_size(edge.curve, general, fineness) for edge in drawing.edges])
+    general = size or float(np.float32(np.sqrt(drawing.area / fineness.elements)))
+    domains = np.array([min(sizes.get(name, general), general) for name in drawing.regions])
+    turn = np.where(drawing.table.is_arc, 2 * np.pi * drawing.table.radius, np.inf)
+    edges = np.minimum(general, turn / fineness.per_turn)
     for number, edge in enumerate(drawing.edges):
         if edge.side is not None and edge.side in sizes:
-            edges[number] = sizes[edge.side]
-    points = [_gap_points(drawing, general, fineness.per_gap)]
-    points += [
-        _around(drawing.points[n], s, general) for n, s in sizes.items() if n in drawing.points
+            edges[number] = min(sizes[edge.side], general, turn[number] / fineness.least_per_turn)
+        beside = [domains[d - 1] for d in (edge.left, edge.right) if d != OUTSIDE]
+        edges[number] = min(edges[number], *beside)
+    points = [
+        around(drawing.points[n], s, general) for n, s in sizes.items() if n in drawing.points
     ]
-    return Sizes(general, edges, np.concatenate(points))
+    points += [around(at, s, general) for at, s in _sharp_corners(drawing, general)]
+    return Sizes(general, edges, domains, np.concatenate([np.empty((0, 3)), *points]))
 
 
-def _edge_size(curve: object, general: float, fineness: Fineness) -> float:
-    if not isinstance(curve, Arc):
-        return general
-    return min(general, 2 * np.pi * curve.radius / fineness.per_turn)
+def _sharp_corners(drawing: Drawing, general: float) -> Iterator[tuple[Vector, float]]:
+    """Sharp corners between arcs, and a size with which an arc turns little against the angle."""
+    sharp = sharp_corners(drawing.edges, SHARP)
+    if not sharp:
+        return
+    radius: dict[Vector, float] = {}
+    for edge in drawing.edges:
+        if isinstance(edge.curve, Arc):
+            for place in (edge.start, edge.end):
+                radius[place] = min(radius.get(place, np.inf), edge.curve.radius)
+    for corner in sharp:
+        size = radius.get(corner.at, np.inf) * np.radians(corner.degrees) / 3
+        if size < general:
+            yield corner.at, size
 
 
-def _around(place: tuple[float, float], size: float, general: float) -> Array:
+def around(place: tuple[float, float], size: float, general: float) -> Array:
     """Size points at a place and in rings about it; a lone point would not be followed."""
     rings = [np.array([[*place, size]])]
     radius = size
@@ -87,74 +119,26 @@ def _around(place: tuple[float, float], size: float, general: float) -> Array:
     return np.concatenate(rings)
 
 
-# --- gaps -------------------------------------------------------------------------------------
+def estimate_triangles(drawing: Drawing, sizes: Sizes) -> float:
+    """About how many triangles the sizes make, rather too many than too few.
 
-
-def _gap_points(drawing: Drawing, general: float, per_gap: int) -> Array:
-    """Size points along every edge that comes near another that it does not touch, (k, 3).
-
-    Each edge is sampled finer and finer where the gap is small against the sampling.
+    Over each domain area / (0.433 h^2); beside an edge of length L where the size s grows with
+    distance d as s + g d, the integral of L / (0.433 (s + g d)^2) over d on both sides.
     """
-    far = general * per_gap
-    lines = _polylines(drawing)
-    vertices = np.array([(edge.start, edge.end) for edge in drawing.edges]).reshape(-1, 2)
-    ends = np.unique(vertices, axis=0, return_inverse=True)[1].reshape(-1, 2)
-    tree = shapely.STRtree(lines)
-    least = FINEST * float(np.linalg.norm(np.ptp(shapely.get_coordinates(lines), axis=0)))
-    owner = np.arange(len(lines))
-    low, high = np.zeros(len(lines)), np.ones(len(lines))
-    lengths = np.array([edge.curve.length for edge in drawing.edges])
-    found, count = [], 0
-    while len(owner) and count < POINTS_LIMIT:
-        middle = (low + high) / 2
-        places = _places(drawing, owner, middle)
-        gap = _gaps(tree, lines, ends, places, owner, far + (high - low) * lengths[owner])
-        reach = (high - low) * lengths[owner]
-        fine = (reach <= np.maximum(gap / per_gap, least)) & (gap < far)
-        found.append(np.column_stack((places, gap / per_gap))[fine])
-        count += int(fine.sum())
-        # A stretch none of which comes near another edge needs no more samples.
-        near = ~fine & (gap - reach / 2 < far) & (reach > least)
-        owner, low, middle, high = owner[near], low[near], middle[near], high[near]
-        owner = np.concatenate((owner, owner))
-        low, high = np.concatenate((low, middle)), np.concatenate((middle, high))
-    points = np.concatenate([np.empty((0, 3)), *found])
-    points[:, 2] = np.maximum(points[:, 2], least)
-    return points
-
-
-def _places(drawing: Drawing, owner: NDArray[np.intp], parameter: Array) -> Array:
-    places = np.empty((len(owner), 2))
-    for number in np.unique(owner):
-        rows = owner == number
-        places[rows] = drawing.edges[number].curve.at(parameter[rows])
-    return places
-
-
-def _gaps(
-    tree: shapely.STRtree,
-    lines: NDArray,
-    ends: NDArray,
-    places: Array,
-    owner: NDArray[np.intp],
-    reach: Array,
-) -> Array:
-    """Distance of each place to the nearest edge that its own does not touch; inf beyond reach."""
-    points = shapely.points(places)
-    row, other = tree.query(points, predicate="dwithin", distance=reach)
-    mine, theirs = ends[owner[row]], ends[other]
-    touching = (mine[:, :, None] == theirs[:, None, :]).any(axis=(1, 2))
-    row, other = row[~touching], other[~touching]
-    gap = np.full(len(places), np.inf)
-    np.minimum.at(gap, row, shapely.distance(points[row], lines[other]))
-    return gap
-
-
-def _polylines(drawing: Drawing) -> NDArray:
-    lines = []
+    areas = np.zeros(len(drawing.regions))
     for edge in drawing.edges:
-        pieces = 1
-        if isinstance(edge.curve, Arc):
-            pieces = int(np.ceil(abs(edge.curve.sweep) / np.sqrt(8 * SAGITTA)))
-        lines.append(shapely.LineString(edge.curve.at(np.linspace(0, 1, pieces + 1))))
-    return np.array(lines)
+        for domain, sign in ((edge.left, 1.0), (edge.right, -1.0)):
+            if domain != OUTSIDE:
+                areas[domain - 1] += sign * enclosed(edge.curve)
+    inside = float((areas / (TRIANGLE * sizes.domains**2)).sum())
+    # A place in a gap stands for a stretch of about its own size.
+    stretches = np.concatenate((drawing.table.lengths, sizes.points[:, 2]))
+    fine = np.concatenate((sizes.edges, sizes.points[:, 2]))
+    beside = stretches / (TRIANGLE * GRADING) * (1 / fine - 1 / sizes.general)
+    return inside + float(np.maximum(beside, 0.0).sum())
+
+
+def boundary_pieces(drawing: Drawing, sizes: Sizes) -> float:
+    """About how many pieces the edges are cut into."""
+    along = drawing.table.lengths / sizes.edges
+    return float(along.sum()) + len(sizes.points)
