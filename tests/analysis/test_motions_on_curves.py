@@ -62,13 +62,24 @@ def test_a_corner_has_the_normals_of_both_legs_and_its_neighbours_keep_theirs(ki
 
 @pytest.mark.parametrize("kind", ELEMENTS)
 def test_a_wide_bend_has_one_normal(kind: str) -> None:
-    """A polygon of more than 135 degrees stands for a curve: here 150, halved but for the lengths
-    of the legs, which differ by a seventh."""
+    """A polygon of angles beyond 138 degrees stands for a curve: here 150, halved but for the
+    lengths of the legs, which differ by a seventh."""
     mesh = grid(kind, 4, 2, shape=lambda x, y: (x, y + np.maximum(x - 0.5, 0) / np.sqrt(3)))
     nodes, normals = node_normals(mesh, mesh.sides["bottom"])
     assert len(set(nodes.tolist())) == len(nodes)
     (bend,) = normals[mesh.nodes[nodes, 0] == 0.5]
     assert np.degrees(np.arctan2(bend[0], -bend[1])) == pytest.approx(15, abs=2)
+
+
+@pytest.mark.parametrize("turned", [0.0, 0.1, 1.0, 2.0])
+@pytest.mark.parametrize(("chords", "rows"), [(6, 12), (8, 16), (9, 9), (12, 12), (48, 48)])
+def test_an_octagon_has_corners_and_a_circle_of_nine_chords_has_none(
+    chords: int, rows: int, turned: float
+) -> None:
+    mesh = ring("Q4", chords, 1, 1.0, 2.0)
+    c, s = np.cos(turned), np.sin(turned)
+    mesh = Mesh(mesh.nodes @ [[c, s], [-s, c]], mesh.blocks, mesh.regions, mesh.sides)
+    assert len(node_normals(mesh, mesh.sides["bore"])[0]) == rows
 
 
 def test_one_chord_alone_has_its_own_normal() -> None:

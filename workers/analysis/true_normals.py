@@ -15,7 +15,9 @@ Array = NDArray[np.float64]
 Numbers = NDArray[np.intp]
 
 IN_LINE = 1e-9  # rise over chord below which three points count as in line
-KINK = np.cos(np.radians(45))  # cosine of a turn beyond which two chords are no one curve
+# Cosine of a turn beyond which two chords are no one curve: an octagon is eight straight sides, a
+# circle of nine chords or more is a circle.
+KINK = np.cos(np.radians(42))
 
 
 def facet_normals(mesh: Mesh, facets: Facets) -> Array:
