@@ -1,0 +1,197 @@
+"""The review sheet: one page of HTML that tells a job to the engineer who checks and files it.
+
+Made from the job, its results and the files in their folder alone. The page needs no script and
+nothing from elsewhere: pictures are in it as data URIs, plots as inline SVG. Every text of the
+client's goes through the template's escaping.
+"""
+
+from base64 import b64encode
+from collections import Counter
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from pathlib import Path
+from typing import Any
+
+from jinja2 import Environment, FileSystemLoader, StrictUndefined
+
+from workers.cautions import SEVERITIES
+from workers.job import Job
+from workers.outputs import wording
+from workers.outputs.assumptions import assumptions
+from workers.outputs.drawing import numbers
+from workers.outputs.drawing.numbers import NO_BREAK
+from workers.outputs.governing import all_states, governing_states, plate_size, worth_a_row
+from workers.outputs.names import file_name
+from workers.outputs.sheet_parts import balance_part, cut_parts, line_parts, peak_plot
+
+Json = Mapping[str, Any]
+
+SHEET = "sheet.html"
+PICTURES = ("model", "von_mises", "deformed", "principal_max", "principal_min")
+DIGITS = 4  # more than any of these numbers can be trusted for
+MOST_PEAKS = 24  # states with a row of their own; more are listed in small print
+MOST_LISTED = 900  # states in the small print; further ones are in the table files
+MOST_LOAD_CASES = 24  # whose loads are told; of more, those of the governing states
+MOST_ERRORS = 5  # states whose error estimate is shown, the largest first
+MOST_EVIDENCE = 6  # entries of a list in the evidence of a caution
+PNG_SIZE = slice(16, 24)  # where a PNG file has its width and height
+
+
+def render_sheet(job: Job, results: Json, folder: Path) -> str:
+    """The sheet of a finished job as HTML.
+
+    folder : of the results; pictures that are not in it are missing on the sheet, which says so
+    """
+    states = all_states(results)
+    governing = results["envelope"]["von_mises"]["governs"]
+    governed = governing_states(results)
+    leading = worth_a_row(results, MOST_PEAKS)
+    return _ENVIRONMENT.get_template(SHEET).render(
+        job=job,
+        results=results,
+        units=job.units,
+        states=states,
+        governing=governing,
+        governed=governed,
+        leading=leading,
+        others=[name for name in states if name not in leading][:MOST_LISTED],
+        left_out=max(0, len(states) - len(leading) - MOST_LISTED),
+        told_cases=told_cases(job, governed),
+        told_combinations=[
+            c for c in job.combinations if len(states) <= MOST_PEAKS or c.name in governed
+        ],
+        used_materials={region["material"] for region in results["mesh"]["regions"].values()},
+        worst_errors=sorted(states, key=lambda name: -relative_error(states[name]))[:MOST_ERRORS],
+        cautions=sorted_cautions(results),
+        counts=Counter(caution["severity"] for caution in results["cautions"]),
+        severities=SEVERITIES,
+        pictures=find_pictures(folder, governing),
+        peak_plot=peak_plot(job, results) if len(states) > MOST_PEAKS else None,
+        balance=balance_part(job, results),
+        cuts=cut_parts(job, results),
+        lines=line_parts(job, results),
+        plate_size=plate_size(results),
+        assumptions=assumptions(job),
+    )
+
+
+def write_sheet(job: Job, results: Json, folder: Path) -> Path:
+    """Write the sheet into the folder of the results; returns its path."""
+    path = folder / SHEET
+    path.write_text(render_sheet(job, results, folder), encoding="utf-8")
+    return path
+
+
+# --- what is on it -------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True)
+class Picture:
+    """A PNG file as a data URI, with its size in pixels."""
+
+    source: str
+    width: int
+    height: int
+
+
+def find_pictures(folder: Path, state: str) -> dict[str, Picture]:
+    """The pictures of a state that have been drawn, by quantity."""
+    found = {}
+    for quantity in PICTURES:
+        path = folder / "previews" / file_name(state) / f"{quantity}.png"
+        if path.is_file():
+            data = path.read_bytes()
+            size = data[PNG_SIZE]
+            found[quantity] = Picture(
+                f"data:image/png;base64,{b64encode(data).decode()}",
+                int.from_bytes(size[:4]),
+                int.from_bytes(size[4:]),
+            )
+    return found
+
+
+def sorted_cautions(results: Json) -> list[Json]:
+    """The gravest first; within a severity in their order."""
+    order = list(SEVERITIES)
+    return sorted(results["cautions"], key=lambda caution: order.index(caution["severity"]))
+
+
+def relative_error(state: Json) -> float:
+    return float(state["error_estimate"]["relative"])
+
+
+def told_cases(job: Job, governing: Iterable[str]) -> list[str]:
+    """Load cases whose loads are told: all, or of many those that take part in what governs."""
+    names = [case.name for case in job.load_cases]
+    if len(names) <= MOST_LOAD_CASES:
+        return names
+    factors = {c.name: {n for n, k in c.factors.items() if k} for c in job.combinations}
+    needed = {case for state in governing for case in factors.get(state, {state})}
+    return [name for name in names if name in needed]
+
+
+# --- how it is written ---------------------------------------------------------------------------
+
+
+def number(value: float, digits: int = DIGITS) -> str:
+    return numbers.show(value, digits)
+
+
+def place(at: Any) -> str:
+    return numbers.vector(*at, DIGITS)
+
+
+def percent(value: float) -> str:
+    digits = 0 if value >= 0.1 else 1
+    return f"{100 * value:.{digits}f}{NO_BREAK}%"
+
+
+def moment(text: str) -> str:
+    """A time as a reader wants it: "2031-04-05T06:07:08.910Z" to "2031-04-05 06:07 UTC"."""
+    return f"{text[:10]} {text[11:16]} UTC"
+
+
+def evidence_words(evidence: Json) -> str:
+    """The facts of a caution on one line, e.g. "value 412.3 · limit 355 · at (12, 40)"."""
+    return " · ".join(f"{key.replace('_', ' ')} {_fact(value)}" for key, value in evidence.items())
+
+
+def _fact(value: Any) -> str:
+    if isinstance(value, bool) or not isinstance(value, int | float | list | dict):
+        return str(value)
+    if isinstance(value, int | float):
+        return number(value)
+    if isinstance(value, dict):
+        return ", ".join(f"{key} {_fact(part)}" for key, part in value.items())
+    if len(value) == 2 and all(isinstance(part, int | float) for part in value):
+        return place(value)
+    more = f" and {len(value) - MOST_EVIDENCE} more" if len(value) > MOST_EVIDENCE else ""
+    return ", ".join(_fact(part) for part in value[:MOST_EVIDENCE]) + more
+
+
+def css_string(text: str) -> str:
+    """Text for between quotes in a style sheet: all but plain letters and digits as escapes."""
+    return "".join(c if c.isascii() and c.isalnum() else f"\\{ord(c):06x}" for c in text)
+
+
+def _environment() -> Environment:
+    environment = Environment(
+        loader=FileSystemLoader(Path(__file__).parent / "templates"),
+        autoescape=True,
+        undefined=StrictUndefined,
+        trim_blocks=True,
+        lstrip_blocks=True,
+    )
+    environment.filters |= {
+        "number": number,
+        "place": place,
+        "moment": moment,
+        "percent": percent,
+        "evidence": evidence_words,
+        "css_string": css_string,
+    }
+    environment.globals |= {"words": wording}
+    return environment
+
+
+_ENVIRONMENT = _environment()
