@@ -5,6 +5,7 @@ poor, again and finer there. The library's outcome is never trusted: a mesh is w
 inverted element, or the job fails with the reason.
 """
 
+from collections.abc import Callable
 from dataclasses import replace
 
 import numpy as np
@@ -31,6 +32,8 @@ from workers.analysis.meshing.smooth import smooth
 from workers.errors import Fault, MeshError
 from workers.job import Meshing
 
+Revise = Callable[[Plan], Plan]
+
 PATIENCE = 20.0  # for the library [s], and
 PER_ELEMENT = 2e-4  # more for each element that is expected [s]; about ten times what it takes
 TRIES = 3  # with triangles
@@ -39,8 +42,10 @@ FINER = 0.6  # of the size that a poor element has: what is asked for there the 
 SMALLER = 0.8  # of all sizes: what is asked for after the library failed
 
 
-def mesh_drawing(drawing: Drawing, meshing: Meshing) -> Mesh:
+def mesh_drawing(drawing: Drawing, meshing: Meshing, revise: Revise | None = None) -> Mesh:
     """Mesh a checked drawing.
+
+    revise : changes the sizes that the job asks for, for whoever refines the mesh
 
     Raises
     ------
@@ -51,6 +56,8 @@ def mesh_drawing(drawing: Drawing, meshing: Meshing) -> Mesh:
     if faults := plan_faults(drawing, element, meshing):
         raise MeshError(faults)
     plan = plan_mesh(drawing, element, meshing)
+    if revise is not None:
+        plan = revise(plan)
     if faults := count_faults(plan, meshing):
         raise MeshError(faults)
     local, whole, sizes = _with_points(plan, drawing)

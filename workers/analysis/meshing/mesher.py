@@ -20,7 +20,7 @@ from elements.errors import FishplateError
 from workers.analysis.meshing.curves import Arc
 from workers.analysis.meshing.drawing import Drawing
 from workers.analysis.meshing.flat_mesh import FlatMesh
-from workers.analysis.meshing.sizing import GRADING, Sizes
+from workers.analysis.meshing.sizing import Sizes
 from workers.job import Vector
 
 Array = NDArray[np.float64]
@@ -113,7 +113,7 @@ def _lower_limit(kind: int, limit: int) -> None:
 def mesh_here(drawing: Drawing, sizes: Sizes, *, quads: bool) -> FlatMesh:
     """What the child does: only for drawings that are known to be harmless."""
     geometry = _geometry(drawing, sizes)
-    parameters = MeshingParameters(maxh=sizes.general, grading=GRADING)
+    parameters = MeshingParameters(maxh=sizes.general, grading=sizes.grading)
     for x, y, size in sizes.points:
         parameters.RestrictH(float(x), float(y), 0.0, float(size))
     return _read(geometry.GenerateMesh(mp=parameters, quad_dominated=quads), drawing)

@@ -27,18 +27,24 @@ class Sizes(NamedTuple):
     general : largest anywhere
     edges : (e,) largest along each edge of the drawing; inf where nothing is asked
     domains : (d,) largest in each domain of the drawing
-    points : (k, 3) x, y and size; the size grows away from each by `GRADING`
+    points : (k, 3) x, y and size
+    grading : how much the size grows over a distance away from a fine place
     """
 
     general: float
     edges: Array
     domains: Array
     points: Array
+    grading: float = GRADING
 
     def scaled(self, factor: float) -> "Sizes":
         """All sizes so much larger; twice as large for a mesh whose elements are split once."""
-        points = self.points * [1.0, 1.0, factor]
-        return Sizes(factor * self.general, factor * self.edges, factor * self.domains, points)
+        return self._replace(
+            general=factor * self.general,
+            edges=factor * self.edges,
+            domains=factor * self.domains,
+            points=self.points * [1.0, 1.0, factor],
+        )
 
 
 class Fineness(NamedTuple):
@@ -134,7 +140,7 @@ def estimate_triangles(drawing: Drawing, sizes: Sizes) -> float:
     # A place in a gap stands for a stretch of about its own size.
     stretches = np.concatenate((drawing.table.lengths, sizes.points[:, 2]))
     fine = np.concatenate((sizes.edges, sizes.points[:, 2]))
-    beside = stretches / (TRIANGLE * GRADING) * (1 / fine - 1 / sizes.general)
+    beside = stretches / (TRIANGLE * sizes.grading) * (1 / fine - 1 / sizes.general)
     return inside + float(np.maximum(beside, 0.0).sum())
 
 
