@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 
 from tests.plates import ELEMENTS, MIXED, grid, plate_job, ring, warp
-from workers.analysis.loads.bearing import fit_circle
+from workers.analysis.circle_fit import fit_circle
 from workers.analysis.loads.cases import Loads, resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import build_model

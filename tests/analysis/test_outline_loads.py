@@ -12,7 +12,8 @@ import numpy as np
 import pytest
 from numpy.polynomial.legendre import leggauss
 
-from tests.outlines import ELEMENTS, STEEL, Json, Solved, document, solved
+from tests.outlines import ELEMENTS, STEEL, Json, Solved, document, laid, solved
+from workers.errors import FaultyError
 
 RHO = STEEL["density"]
 T, PAD = 4.0, 10.0  # thickness of the plate and of the pad around the eye
@@ -251,3 +252,39 @@ def test_nodal_forces_on_an_arc_are_consistent(name: str, element: str) -> None:
     polynomial = name in ("nose, pressure", "nose, shear")
     tolerance = 1e-12 if polynomial else 1e-5
     np.testing.assert_allclose(nodal, expected, atol=tolerance * np.abs(expected).max())
+
+
+# --- loads that cannot act where they are put ----------------------------------------------------
+
+TWICE: Json = {  # one name for two sides that do not touch
+    **PLATE,
+    "outline": [{**vertex, "side": "edge" if vertex["side"] in ("base", "top") else vertex["side"]}
+                for vertex in PLATE["outline"]],
+    "holes": [*PLATE["holes"], {"name": "slot", "outline": [
+        {"at": [115, 40]}, {"at": [135, 40]}, {"at": [135, 60]}, {"at": [115, 60]}]}],
+}  # fmt: skip
+FAULTY: dict[str, tuple[Json, str]] = {
+    "varying load on two pieces": (
+        {"on": "edge", "pressure": {"from": 0, "to": 1}}, "one connected side",
+    ),
+    "bearing in a square hole": ({"on": "slot", "bearing": [1, 0]}, "a round hole"),
+    "bearing on a nose": ({"on": "nose", "bearing": [1, 0]}, "bulges outwards"),
+    "bearing on a region": ({"on": "pad", "bearing": [1, 0]}, "pad"),
+    "moment on a curved side": ({"on": "nose", "total_moment": 1}, "straight side"),
+    "force on a side": ({"on": "left", "force": [1, 0]}, "total_force"),
+    "total force at a point": ({"on": "tip", "total_force": [1, 0]}, "force"),
+    "pressure on a region": ({"on": "pad", "pressure": 1}, "pad"),
+    "body force on a side": ({"on": "left", "body_force": [1, 0]}, "region"),
+    "pressure where no side is": (
+        {"on": {"segment": [[0, 0], [0, 70]]}, "pressure": 1}, "ends inside",
+    ),
+}  # fmt: skip
+
+
+@pytest.mark.parametrize("name", FAULTY)
+def test_a_load_that_cannot_act_is_a_fault_at_its_place(name: str) -> None:
+    load, words = FAULTY[name]
+    fine: Json = {"on": "left", "pressure": 1}
+    with pytest.raises(FaultyError, match=words) as caught:
+        laid(document(TWICE, [{"on": "left", "ux": 0, "uy": 0}], [fine, load], size=20))
+    assert {fault.pointer[:21] for fault in caught.value.faults} == {"/load_cases/load/1/on"}

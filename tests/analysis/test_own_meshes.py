@@ -9,7 +9,9 @@ from tests.large_documents import large_document
 from tests.outlines import STEEL, Json, Solved, document, solved
 from tests.plates import ELEMENTS, MIXED, grid, ring
 from workers.analysis.mesh import Mesh
-from workers.errors import FaultyError
+from workers.document.read import read_document
+from workers.errors import DocumentError, FaultyError
+from workers.preflight import preflight
 
 E, NU = STEEL["youngs_modulus"], STEEL["poissons_ratio"]
 every_mesh = pytest.mark.parametrize("kind", ELEMENTS + MIXED)
@@ -121,3 +123,30 @@ def test_a_segment_that_ends_inside_an_element_is_a_fault() -> None:
             )
         )
     assert caught.value.faults[0].pointer == "/load_cases/load/0/on"
+
+
+@pytest.mark.parametrize(
+    ("radius", "load", "words"),
+    [
+        (25, {"bearing": [1, 0]}, "bulges outwards"),
+        (10, {"total_moment": 5}, "straight side"),
+    ],
+)
+def test_a_load_on_the_wrong_kind_of_side_is_known_before_solving(
+    radius: float, load: Json, words: str
+) -> None:
+    """A fault of the document, which the API answers at once, not of a job that ran."""
+    circles = [{"circle": {"centre": [0, 0], "radius": r}} for r in (10, 25)]
+    job = read_document(
+        orjson.dumps(
+            document(
+                _geometry(ring("Q8", 22, 3, 10.0, 25.0)),
+                [{"on": on, "ux": 0, "uy": 0} for on in circles],
+                [{"on": {"circle": {"centre": [0, 0], "radius": radius}}, **load}],
+            ),
+            option=orjson.OPT_SERIALIZE_NUMPY,
+        )
+    )
+    with pytest.raises(DocumentError, match=words) as caught:
+        preflight(job)
+    assert [fault.pointer for fault in caught.value.faults] == ["/load_cases/load/0/on"]

@@ -1,7 +1,7 @@
 """Where does every load act, and can it? Said without computing any load.
 
-What a load comes to is in `loads/`, which also says what only its figures can tell: a hole that is
-not round, a material without density.
+What a load comes to is in `loads/`, which also says what only its figures can tell: a material
+without density, a pin's force that part of a hole cannot bear.
 """
 
 from collections.abc import Callable, Hashable, Iterator, Mapping
@@ -10,8 +10,10 @@ from dataclasses import dataclass, field
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.analysis.circle_fit import fit_circle
 from workers.analysis.mesh import BrokenChainError, Facets, Mesh
 from workers.analysis.selection import Finder, Selection, everything
+from workers.analysis.true_normals import facet_normals
 from workers.errors import Fault, FaultyError, MeshError
 from workers.job import (
     Acceleration,
@@ -30,6 +32,9 @@ from workers.job import (
     TotalMoment,
     Traction,
 )
+
+STRAIGHT = 1e-3  # sine of the angle between two normals; coordinates may be rounded
+ROUND = 0.02  # nodes may leave the circle by this part of the radius
 
 Check = Callable[[Load, Selection, Mesh], str | None]
 
@@ -111,6 +116,28 @@ def _is_border(load: Load, selection: Selection, mesh: Mesh) -> str | None:
     )
 
 
+def _is_straight(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    normals = facet_normals(mesh, selection.facets).reshape(-1, 2)
+    first = normals[0]
+    if np.abs(normals[:, 0] * first[1] - normals[:, 1] * first[0]).max() <= STRAIGHT:
+        return None
+    return "a moment is spread over a straight side, and this one is not"
+
+
+def _is_round_hole(load: Load, selection: Selection, mesh: Mesh) -> str | None:
+    nodes = mesh.nodes[selection.nodes]
+    centre, radius = fit_circle(nodes)
+    off = np.abs(np.linalg.norm(nodes - centre, axis=1) - radius).max()
+    if not np.isfinite(radius) or off > ROUND * radius:
+        return "a bearing acts on the wall of a round hole, and this is not one"
+    start, end = mesh.nodes[mesh.facet_ends(selection.facets)].transpose(1, 0, 2)
+    (ax, ay), (bx, by) = (start - centre).T, (end - centre).T
+    # With the material on the left the wall of a hole runs clockwise about its centre.
+    if (ax * by > ay * bx).any():
+        return "a bearing acts inside a hole, and this side bulges outwards"
+    return None
+
+
 def _is_one_side_if_varying(load: Load, selection: Selection, mesh: Mesh) -> str | None:
     if not _varies(load):
         return None
@@ -139,11 +166,11 @@ ON_AN_AREA = (Acceleration, BodyForce, Spin, TemperatureChange)
 CHECKS: Mapping[type[Load], tuple[Check, ...]] = {
     PointForce: (_is_a_point,),
     TotalForce: (_is_a_side,),
-    TotalMoment: (_is_a_side,),
+    TotalMoment: (_is_a_side, _is_straight),
     Traction: (_is_a_side, _is_one_side_if_varying),
     LineLoad: (_is_a_side, _is_one_side_if_varying),
     Pressure: (_is_a_side, _is_border, _is_one_side_if_varying),
     Shear: (_is_a_side, _is_border, _is_one_side_if_varying),
-    Bearing: (_is_a_side, _is_border),
+    Bearing: (_is_a_side, _is_border, _is_round_hole),
     **dict.fromkeys(ON_AN_AREA, (_is_an_area,)),
 }

@@ -13,19 +13,19 @@ Concentration Factors, chapter on pinned joints (from memory).
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.analysis.circle_fit import fit_circle
 from workers.analysis.loads.side import Side
 from workers.errors import Fault, MeshError
 
 Array = NDArray[np.float64]
 
-ROUND = 0.02  # nodes may leave the circle by this part of the radius
 STEPS = 60
 SETTLED = 1e-13
 ILL_FACED = 1e-6  # ratio of the eigenvalues of the sum of r r^T: the side faces one way only
 
 
 def bearing_load(side: Side, nodes: Array, force: tuple[float, float], pointer: str) -> Array:
-    """Force per length at the points of the side, (p, 2) [F/L].
+    """Force per length at the points of the wall of a round hole, (p, 2) [F/L].
 
     Parameters
     ----------
@@ -33,39 +33,13 @@ def bearing_load(side: Side, nodes: Array, force: tuple[float, float], pointer: 
 
     Raises
     ------
-    MeshError   the side is not round, not a hole, or does not face the force.
+    MeshError   the side does not face the force.
     """
-    centre, radius = fit_circle(nodes)
-    off = np.abs(np.linalg.norm(nodes - centre, axis=1) - radius).max()
-    if not np.isfinite(radius) or off > ROUND * radius:
-        raise _fault(pointer, "a bearing acts on the wall of a round hole, and this is not one")
+    centre, _ = fit_circle(nodes)
     radial = side.position - centre
     radial /= np.linalg.norm(radial, axis=1, keepdims=True)
-    if (np.einsum("pi,pi->p", radial, side.normal) > 0).any():
-        raise _fault(pointer, "a bearing acts inside a hole, and this side bulges outwards")
     c = _balance(radial, side.length, np.asarray(force, float), pointer)
     return np.maximum(radial @ c, 0.0)[:, None] * radial
-
-
-def fit_circle(points: Array) -> tuple[Array, float]:
-    """Centre and radius of the circle through points (k, 2), by linear least squares [L].
-
-    References
-    ----------
-    Kasa, "A circle fitting procedure and its error analysis", IEEE Trans. Instrum. Meas. 25
-    (1976).
-    """
-    middle = points.mean(axis=0)
-    p = points - middle
-    size = np.abs(p).max()
-    p = p / size
-    A = np.column_stack([p, np.ones(len(p))])
-    solution, _, rank, _ = np.linalg.lstsq(A, (p**2).sum(axis=1), rcond=1e-9)
-    if rank < 3:
-        return middle, np.inf
-    centre = solution[:2] / 2
-    radius = np.sqrt(solution[2] + centre @ centre)
-    return middle + size * centre, float(size * radius)
 
 
 def _balance(radial: Array, length: Array, force: Array, pointer: str) -> Array:
@@ -87,8 +61,5 @@ def _balance(radial: Array, length: Array, force: Array, pointer: str) -> Array:
         missing = force - np.einsum("p,p,pi->i", length, pressure, radial)
         if np.abs(missing).max() <= SETTLED * np.abs(force).max():
             return c
-    raise _fault(pointer, "no pressure on this side can balance the force: it faces elsewhere")
-
-
-def _fault(pointer: str, message: str) -> MeshError:
-    return MeshError([Fault(pointer, message)])
+    message = "no pressure on this side can balance the force: it faces elsewhere"
+    raise MeshError([Fault(pointer, message)])

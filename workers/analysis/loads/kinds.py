@@ -13,7 +13,6 @@ from workers.analysis.loads.bearing import bearing_load
 from workers.analysis.loads.side import Side, fractions, side_of
 from workers.analysis.model import Model
 from workers.analysis.selection import Finder
-from workers.errors import Fault, MeshError
 from workers.job import (
     Bearing,
     LineLoad,
@@ -27,8 +26,6 @@ from workers.job import (
 )
 
 Array = NDArray[np.float64]
-
-STRAIGHT = 1e-6  # sine of the angle between two normals of a straight side
 
 
 @dataclass(frozen=True, eq=False)
@@ -115,9 +112,6 @@ def _(load: TotalMoment, places: Places) -> tuple[Side, Array]:
     """A normal traction that is linear along the side and has no resultant force."""
     side = places.side(load)
     normal = side.normal[0]
-    if np.abs(side.tangent @ normal).max() > STRAIGHT:
-        message = "a moment is spread over a straight side, and this one is not"
-        raise MeshError([Fault(load.pointer, message)])
     centre = np.average(side.position, axis=0, weights=side.length)
     along = (side.position - centre) @ side.tangent[0]
     unit = np.outer(along, normal)
