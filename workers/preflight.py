@@ -5,11 +5,13 @@ requests on it, and looks for free motions. NumPy and shapely only, so that the 
 once. An outline is checked as a drawing; what finds no place on its mesh shows in a worker.
 """
 
+from elements.registry import get
 from workers.analysis.held import held_by
 from workers.analysis.load_places import load_faults
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
 from workers.analysis.meshing.outline import draw
+from workers.analysis.meshing.plan import plan_faults
 from workers.analysis.motions import free_motions
 from workers.analysis.request_places import request_faults
 from workers.analysis.selection import Finder
@@ -31,7 +33,9 @@ def preflight(job: Job) -> Mesh | None:
     UnknownElementError   the element type is not installed.
     """
     if isinstance(job.geometry, OutlineGeometry):
-        draw(job.geometry)
+        drawing = draw(job.geometry)
+        if too_many := plan_faults(drawing, get(job.meshing.element), job.meshing):
+            raise DocumentError(too_many)
     try:
         mesh = mesh_directly(job)
     except MeshError as error:
