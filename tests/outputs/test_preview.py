@@ -4,15 +4,15 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from PIL import Image
 from scipy import ndimage
 
 from tests.output_samples import fields_of, mapped_mesh, plain_job, quarter_ring, rectangle
+from tests.pictures import Picture, like_ink
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.cautions import STANDING, Caution
 from workers.job import Region
-from workers.outputs.drawing.palette import DIVERGING, INK, SEQUENTIAL
+from workers.outputs.drawing.palette import DIVERGING, SEQUENTIAL
 from workers.outputs.preview import QUANTITIES, render_deformed, render_field
 
 pytestmark = pytest.mark.usefixtures("rendering")
@@ -28,44 +28,6 @@ def state(mesh, stress, displacement=still) -> tuple[FieldMesh, Fields]:
     field_mesh = FieldMesh.build(mesh)
     values = np.column_stack(np.broadcast_arrays(*stress(*field_mesh.points.T)))
     return field_mesh, fields_of(field_mesh, displacement, values.astype(float))
-
-
-def like_ink(pixels: np.ndarray) -> np.ndarray:
-    """Near the ink of outlines; the dark end of the colour map is 40 steps redder."""
-    ink = np.array([int(INK[i : i + 2], 16) for i in (1, 3, 5)])
-    return np.abs(pixels - ink).max(axis=-1) < 30
-
-
-class Picture:
-    """A picture read back; places are given as parts of the plate's width and height."""
-
-    def __init__(self, path: Path) -> None:
-        with Image.open(path) as image:
-            self.pixels = np.asarray(image.convert("RGB")).astype(int)
-            self.text = image.text
-        # The outline of the plate is the widest connected patch of ink.
-        patches, _ = ndimage.label(like_ink(self.pixels), structure=np.ones((3, 3)))
-        boxes = ndimage.find_objects(patches)
-        rows, columns = max(
-            boxes, key=lambda b: (b[0].stop - b[0].start) * (b[1].stop - b[1].start)
-        )
-        # The line is 2.6 pixels wide: its middle, to a pixel.
-        self.left, self.right = columns.start + 0.5, columns.stop - 1.5
-        self.top, self.bottom = rows.start + 0.5, rows.stop - 1.5
-
-    @property
-    def width(self) -> float:
-        return self.right - self.left
-
-    @property
-    def height(self) -> float:
-        return self.bottom - self.top
-
-    def place(self, s: float, t: float) -> tuple[int, int]:
-        return round(self.bottom - t * self.height), round(self.left + s * self.width)
-
-    def at(self, s: float, t: float) -> np.ndarray:
-        return self.pixels[self.place(s, t)]
 
 
 def drawn(tmp_path, mesh, stress, quantity="von_mises", **options) -> Picture:

@@ -52,6 +52,11 @@ class States:
             yield range(start, min(start + size, len(self)))
 
 
+def state_names(job: Job) -> tuple[str, ...]:
+    """Names of all cases, then of all combinations."""
+    return tuple(state.name for state in (*(job.cases or job.load_cases), *job.combinations))
+
+
 def load_states(job: Job) -> States:
     """The states of a job, in the order of the document."""
     patterns = tuple(case.name for case in job.load_cases)
@@ -63,7 +68,7 @@ def load_states(job: Job) -> States:
     combined = factors @ _columns(cases, job.combinations)
     kinds: tuple[Kind, ...] = tuple("case" for _ in cases)
     return States(
-        names=cases + tuple(combination.name for combination in job.combinations),
+        names=state_names(job),
         kinds=kinds + tuple("combination" for _ in job.combinations),
         factors=np.hstack((factors, combined)),
         loaded=0 if job.cases else len(cases),

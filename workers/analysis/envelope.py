@@ -2,6 +2,7 @@
 
 from collections.abc import Mapping
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
@@ -18,6 +19,7 @@ WORST: Mapping[str, int] = {
 }
 
 
+STATE = ".state"  # behind the name of a measure, where arrays have names
 POINTS_AT_ONCE = 1024  # what is formed on the way stays in the cache
 
 
@@ -67,6 +69,14 @@ class Envelope:
 
     value: dict[str, Array] = field(default_factory=dict)
     state: dict[str, NDArray[np.int32]] = field(default_factory=dict)
+
+    def arrays(self) -> dict[str, Any]:
+        """All of it by name, for whoever keeps it."""
+        return {**self.value, **{name + STATE: state for name, state in self.state.items()}}
+
+    @classmethod
+    def from_arrays(cls, arrays: Mapping[str, NDArray]) -> "Envelope":
+        return cls({n: arrays[n] for n in WORST}, {n: arrays[n + STATE] for n in WORST})
 
     def include(self, columns: range, values: Mapping[str, NDArray]) -> None:
         """Take in the measures (P, k) of some states."""

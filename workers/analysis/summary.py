@@ -21,7 +21,7 @@ from workers.analysis.model import Model
 from workers.analysis.peak_interval import peak_intervals
 from workers.analysis.peaks import Peak, find_peaks, find_utilisation
 from workers.analysis.quality import mesh_quality
-from workers.analysis.recovery import OperatorStore, Recovery
+from workers.analysis.recovery import OperatorStore, Recovery, Temperature
 from workers.analysis.resultants import equilibrium, imbalance, reactions
 from workers.analysis.samples import Samples
 from workers.analysis.sizes_wanted import SizesWanted
@@ -68,7 +68,7 @@ def summarise(
     cuts = _cuts(solution, states)
     by_state = _balances(solution, states)
     zones = Zones.build(solution, recovery.field_mesh, states)
-    at_once = _states_at_once(recovery)
+    at_once = states_at_once(recovery)
     if len(states) > at_once:
         recovery = replace(recovery, operators=OperatorStore(KEPT_BYTES))
     for columns in states.chunks(at_once):
@@ -99,7 +99,7 @@ def summarise(
     }
 
 
-def _states_at_once(recovery: Recovery) -> int:
+def states_at_once(recovery: Recovery) -> int:
     """How many states fit CHUNK_BYTES.
 
     When the measures are formed there are displacements at nodes and points, the recovered stress
@@ -109,6 +109,18 @@ def _states_at_once(recovery: Recovery) -> int:
     nodes = recovery.model.mesh.node_count
     numbers = 2 * nodes + max((2 + 3 + 5) * points, 3 * points + 3 * samples)
     return max(1, int(CHUNK_BYTES / (8 * numbers)))
+
+
+def form_envelope(
+    recovery: Recovery, displacement: Array, temperature: Temperature, states: States
+) -> Envelope:
+    """The envelope alone, of the displacements (N, 2, c) of the load cases."""
+    envelope = Envelope()
+    for columns in states.chunks(states_at_once(recovery)):
+        u = superpose(displacement, states, columns)
+        stress = recovery.nodal_stress(u, superpose_blocks(temperature, states, columns))
+        envelope.include(columns, measures(u[recovery.field_mesh.origin], stress))
+    return envelope
 
 
 # --- one chunk of states -------------------------------------------------------------------------

@@ -11,6 +11,7 @@ from typing import Any
 
 import numpy as np
 
+from workers.analysis.envelope import Envelope
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.mesh import Mesh
@@ -23,6 +24,7 @@ from workers.outputs.drawing.fields import (
     draw_deformed,
     draw_stress,
 )
+from workers.outputs.drawing.governing import HEADINGS, draw_governing
 from workers.outputs.drawing.graph import Panel, draw_graph
 from workers.outputs.drawing.model import draw_model
 from workers.outputs.drawing.numbers import TIMES, show, vector
@@ -30,7 +32,8 @@ from workers.outputs.drawing.offscreen import probe, require
 from workers.outputs.drawing.page import Page
 
 __all__ = [
-    "QUANTITIES", "probe", "render_deformed", "render_field", "render_line", "render_model",
+    "QUANTITIES", "probe", "render_deformed", "render_field", "render_governing", "render_line",
+    "render_model",
 ]  # fmt: skip
 
 QUANTITIES = ("model", "deformed", *STRESS_QUANTITIES)
@@ -105,6 +108,29 @@ def render_deformed(
     draw_deformed(page, job, mesh, fields, factor)
     facts = _facts(fields.name, "deformed", job.units.length)
     page.save(path, {**facts, "Scale": show(factor, 1)})
+
+
+def render_governing(
+    path: Path,
+    job: Job,
+    mesh: FieldMesh,
+    envelope: Envelope,
+    quantity: str,
+    names: Sequence[str],
+    *,
+    cautions: Sequence[Caution],
+) -> None:
+    """Draw which state governs where, for one measure of an envelope.
+
+    names : of the states that the envelope counts
+
+    Raises PicturesUnavailableError, KeyError and OSError as `render_field` does.
+    """
+    heading = HEADINGS[quantity]
+    require()
+    page = Page(job.title, f"Envelope · Which case governs: {heading}", cautions)
+    draw_governing(page, job, mesh, envelope, quantity, names)
+    page.save(path, _facts("envelope", quantity, job.units.stress))
 
 
 def render_line(

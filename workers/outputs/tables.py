@@ -4,11 +4,11 @@ Works on the results object alone. The first row names the columns, with units; 
 so that they read back exactly. CSV has no place for cautions: whoever serves a table links to them.
 """
 
-import csv
-import io
 from collections.abc import Callable, Iterator, Mapping
 from types import MappingProxyType
 from typing import Any
+
+from workers.outputs.csv_text import csv_text
 
 Results = Mapping[str, Any]
 Row = list[Any]
@@ -21,9 +21,7 @@ def write_table(name: str, results: Results) -> str:
     ------
     KeyError   there is no table of this name; `TABLES` has them all.
     """
-    text = io.StringIO(newline="")
-    csv.writer(text).writerows(TABLES[name](results))
-    return text.getvalue()
+    return csv_text(TABLES[name](results))
 
 
 def _states(results: Results) -> Iterator[tuple[str, Mapping[str, Any]]]:
@@ -40,6 +38,15 @@ def _peaks(results: Results) -> Iterator[Row]:
                          "displacement"):  # fmt: skip
             peak = state[quantity]
             yield [name, quantity, peak["value"], *peak["at"], peak.get("error")]
+
+
+def _envelope(results: Results) -> Iterator[Row]:
+    stress, length = results["units"]["stress"], results["units"]["length"]
+    yield ["quantity", f"value [{stress}; {length}; 1]", "governing case", f"x [{length}]",
+           f"y [{length}]", "region"]  # fmt: skip
+    for quantity, peak in results["envelope"].items():
+        if peak is not None:
+            yield [quantity, peak["value"], peak["governs"], *peak["at"], peak["region"]]
 
 
 def _reactions(results: Results) -> Iterator[Row]:
@@ -104,6 +111,7 @@ def _hot_spots(results: Results) -> Iterator[Row]:
 TABLES: Mapping[str, Callable[[Results], Iterator[Row]]] = MappingProxyType(
     {
         "peaks": _peaks,
+        "envelope": _envelope,
         "reactions": _reactions,
         "equilibrium": _equilibrium,
         "probes": _probes,

@@ -15,12 +15,14 @@ from vtkmodules.vtkCommonCore import vtkDataArray, vtkPoints, vtkStringArray
 from vtkmodules.vtkCommonDataModel import vtkCellArray, vtkFieldData, vtkUnstructuredGrid
 from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridWriter
 
+from workers.analysis.envelope import Envelope
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.cautions import Caution
 from workers.job import Job, Units
 
 STRESS_COMPONENTS = ("xx", "yy", "xy")
+MAGNITUDE = "displacement_magnitude"  # of a vector: not to be taken for one
 
 
 def write_fields(
@@ -40,13 +42,44 @@ def write_fields(
     """
     grid = _grid(field_mesh)
     _add_point_data(grid, field_mesh, fields)
-    _add_cell_data(grid, job, field_mesh, fields)
-    data = grid.GetFieldData()
-    _add_strings(data, "title", [job.title])
-    _add_strings(data, "state", [fields.name])
-    _add_strings(data, "cautions", map(caution_line, cautions))
-    _add_strings(data, "units", _unit_lines(job.units))
-    _add_strings(data, "region_names", field_mesh.mesh.regions)
+    raw = _single(np.concatenate(fields.cell_stress))
+    cells = grid.GetCellData()
+    cells.AddArray(_array(raw, "raw_stress", STRESS_COMPONENTS))
+    cells.AddArray(_array(_single(np.concatenate(fields.cell_error)), "error"))
+    _add_section(grid, job, field_mesh)
+    _add_strings(grid.GetFieldData(), "state", [fields.name])
+    _add_facts(grid, job, field_mesh, cautions)
+    _write(path, grid)
+
+
+def write_envelope(
+    path: Path,
+    job: Job,
+    field_mesh: FieldMesh,
+    envelope: Envelope,
+    names: Sequence[str],
+    cautions: Sequence[Caution],
+) -> None:
+    """Write the worst of all states at every point, and which state that is.
+
+    Point data: von_mises, principal_max, principal_min, shear_max [F/L^2] and
+    displacement_magnitude [L] (single precision); for each of them NAME_governs, the number of the
+    state in the field data `states`; node. Cell and field data as in `write_fields`.
+
+    Raises
+    ------
+    OSError   the file could not be written completely.
+    """
+    grid = _grid(field_mesh)
+    data = grid.GetPointData()
+    for measure, values in envelope.value.items():
+        name = MAGNITUDE if measure == "displacement" else measure
+        data.AddArray(_array(_single(values), name))
+        data.AddArray(_array(envelope.state[measure], f"{name}_governs"))
+    data.AddArray(_array(field_mesh.origin.astype(np.int32), "node"))
+    _add_section(grid, job, field_mesh)
+    _add_strings(grid.GetFieldData(), "states", names)
+    _add_facts(grid, job, field_mesh, cautions)
     _write(path, grid)
 
 
@@ -88,16 +121,22 @@ def _add_point_data(grid: vtkUnstructuredGrid, field_mesh: FieldMesh, fields: Fi
     data.AddArray(_array(field_mesh.origin.astype(np.int32), "node"))
 
 
-def _add_cell_data(
-    grid: vtkUnstructuredGrid, job: Job, field_mesh: FieldMesh, fields: Fields
+def _add_facts(
+    grid: vtkUnstructuredGrid, job: Job, field_mesh: FieldMesh, cautions: Sequence[Caution]
 ) -> None:
+    """What a file needs to be understood on its own."""
+    data = grid.GetFieldData()
+    _add_strings(data, "title", [job.title])
+    _add_strings(data, "cautions", map(caution_line, cautions))
+    _add_strings(data, "units", _unit_lines(job.units))
+    _add_strings(data, "region_names", field_mesh.mesh.regions)
+
+
+def _add_section(grid: vtkUnstructuredGrid, job: Job, field_mesh: FieldMesh) -> None:
     mesh = field_mesh.mesh
     region = np.concatenate([block.region for block in mesh.blocks]).astype(np.int32)
     thickness = np.array([job.thickness_of(name) for name in mesh.regions])
     data = grid.GetCellData()
-    raw = _single(np.concatenate(fields.cell_stress))
-    data.AddArray(_array(raw, "raw_stress", STRESS_COMPONENTS))
-    data.AddArray(_array(_single(np.concatenate(fields.cell_error)), "error"))
     data.AddArray(_array(region, "region"))
     data.AddArray(_array(_single(thickness[region]), "thickness"))
 

@@ -102,6 +102,11 @@ DIVERGING: NDArray[np.uint8] = np.vstack(
 )
 
 
+def rgb(colour: str) -> NDArray[np.uint8]:
+    """The three parts of an ink."""
+    return np.array([int(colour[i : i + 2], 16) for i in (1, 3, 5)], np.uint8)
+
+
 def grey(colours: NDArray) -> NDArray[np.float64]:
     """Luma of 8-bit colours as grey printers form it (ITU-R BT.601), (..., 3) -> (...)."""
     return np.asarray(colours, float) @ np.array([0.299, 0.587, 0.114])

@@ -30,11 +30,13 @@ class Surface:
     values : (n, k)   whatever was interpolated; elements do not share corners
     triangles : (t, 3)
     counts : how many of the n belong to each block
+    nearest : (t,)   number of the node of its element that is nearest to each triangle
     """
 
     values: Array
     triangles: NDArray[np.int64]
     counts: tuple[int, ...]
+    nearest: NDArray[np.int64]
 
 
 @cache
@@ -66,7 +68,7 @@ def tessellate(
     pixels_per_length : decides how finely elements are cut
     """
     room = MOST_TRIANGLES / max(1, sum(len(c) for c in connectivity))
-    values, triangles, start = [], [], 0
+    values, triangles, nearest, start = [], [], [], 0
     for element, nodes in zip(elements, connectivity, strict=True):
         pieces = _pieces(nodal[nodes[:, : element.corners], :2] * pixels_per_length, room)
         points, cut = lattice(element.is_triangle, pieces)
@@ -76,8 +78,20 @@ def tessellate(
             (cut + len(points) * np.arange(len(nodes))[:, None, None]).reshape(-1, 3) + start
         )
         values.append(block.reshape(-1, nodal.shape[1]))
+        nearest.append(nodes[:, _nearest(element, points[cut].mean(axis=1))].ravel())
         start += len(values[-1])
-    return Surface(np.concatenate(values), np.concatenate(triangles), tuple(len(v) for v in values))
+    return Surface(
+        np.concatenate(values),
+        np.concatenate(triangles),
+        tuple(len(v) for v in values),
+        np.concatenate(nearest),
+    )
+
+
+def _nearest(element: ElementType, points: Array) -> NDArray[np.intp]:
+    """Local number of the node nearest to each natural point."""
+    away = np.linalg.norm(points[:, None] - element.natural_nodes, axis=2)
+    return np.asarray(away.argmin(axis=1))
 
 
 def _pieces(corners: Array, room: float) -> int:
