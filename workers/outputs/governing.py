@@ -5,13 +5,9 @@ Works on the results object alone.
 
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from math import sqrt
 from typing import Any
 
 Json = Mapping[str, Any]
-
-# Beside what a state's stress amounts to as a force, and beside its stiffness: rounding.
-ROUNDING_OF_STATE, ROUNDING_OF_MODULUS = 1e-9, 1e-12
 
 
 @dataclass(frozen=True)
@@ -58,57 +54,22 @@ def severity(state: Json) -> float:
 
 def reaction_extremes(results: Json) -> list[Extreme]:
     """The largest and smallest x, y and moment of every support."""
-    states = all_states(results)
-    supports = dict.fromkeys(label for state in states.values() for label in state["reactions"])
+    by_support: dict[str, dict[str, Json]] = {}
+    for name, state in all_states(results).items():
+        for label, reaction in state["reactions"].items():
+            x, y = reaction["force"]
+            carried = {"x": x, "y": y, "moment": reaction["moment"]}
+            by_support.setdefault(label, {})[name] = carried
     return [
         extreme
-        for label in supports
-        for number, component in enumerate(("x", "y", "moment"))
-        for extreme in _ends(
-            label,
-            component,
-            {
-                name: (*state["reactions"][label]["force"], state["reactions"][label]["moment"])[
-                    number
-                ]
-                for name, state in states.items()
-            },
-        )
+        for label, by_state in by_support.items()
+        for extreme in extremes(label, by_state, ("x", "y", "moment"))
     ]
 
 
-def cut_extremes(by_state: Json, cut: str) -> list[Extreme]:
-    """The largest and smallest normal force, shear and moment of a cut."""
-    return [
-        extreme
-        for component in ("normal", "shear", "moment")
-        for extreme in _ends(cut, component, {n: found[component] for n, found in by_state.items()})
-    ]
-
-
-def _ends(name: str, component: str, values: Mapping[str, float]) -> Iterator[Extreme]:
-    for pick in (max, min):
-        state = pick(values, key=lambda n: values[n])
-        yield Extreme(name, component, values[state], state)
-
-
-def rounding_force(results: Json, state: Json, stiffest: float) -> float:
-    """The force below which a sum of nodal forces of this state is nothing but rounding [F].
-
-    stiffest : the largest Young's modulus of the job [F/L^2]
-    """
-    stress = max(
-        ROUNDING_OF_STATE * state["von_mises"]["value"], ROUNDING_OF_MODULUS * stiffest
-    )  # fmt: skip
-    thickness = max(region["thickness"] for region in results["mesh"]["regions"].values())
-    return float(stress * thickness * plate_size(results))
-
-
-def plate_size(results: Json) -> float:
-    """The side of the square of the same area [L]."""
-    return sqrt(sum(region["area"] for region in results["mesh"]["regions"].values()))
-
-
-def settled(values: Sequence[float], rounding: float) -> list[float]:
-    """Zero where a value is nothing but rounding."""
-    return [value if abs(value) > rounding else 0.0 for value in values]
+def extremes(name: str, by_state: Json, components: Sequence[str]) -> Iterator[Extreme]:
+    """The largest and the smallest of each component of something."""
+    for component in components:
+        for pick in (max, min):
+            state = pick(by_state, key=lambda s: by_state[s][component])
+            yield Extreme(name, component, by_state[state][component], state)

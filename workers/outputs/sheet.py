@@ -20,9 +20,15 @@ from workers.outputs import wording
 from workers.outputs.assumptions import assumptions
 from workers.outputs.drawing import numbers
 from workers.outputs.drawing.numbers import NO_BREAK
-from workers.outputs.governing import all_states, governing_states, plate_size, worth_a_row
+from workers.outputs.governing import (
+    all_states,
+    governing_states,
+    reaction_extremes,
+    worth_a_row,
+)
 from workers.outputs.names import file_name
-from workers.outputs.sheet_parts import balance_part, cut_parts, line_parts, peak_plot
+from workers.outputs.rounding import settle
+from workers.outputs.sheet_parts import MOST_ROWS, cut_parts, line_parts, peak_plot
 
 Json = Mapping[str, Any]
 
@@ -30,6 +36,7 @@ SHEET = "sheet.html"
 PICTURES = ("model", "von_mises", "deformed", "principal_max", "principal_min")
 DIGITS = 4  # more than any of these numbers can be trusted for
 MOST_PEAKS = 24  # states with a row of their own; more are listed in small print
+MOST_REACTIONS = 30  # rows; for more, those of the governing states and the extremes
 MOST_LISTED = 900  # states in the small print; further ones are in the table files
 MOST_LOAD_CASES = 24  # whose loads are told; of more, those of the governing states
 MOST_ERRORS = 5  # states whose error estimate is shown, the largest first
@@ -42,10 +49,12 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
 
     folder : of the results; pictures that are not in it are missing on the sheet, which says so
     """
+    results = settle(job, results)
     states = all_states(results)
     governing = results["envelope"]["von_mises"]["governs"]
     governed = governing_states(results)
     leading = worth_a_row(results, MOST_PEAKS)
+    few_reactions = len(states) * len(job.supports) <= MOST_REACTIONS
     return _ENVIRONMENT.get_template(SHEET).render(
         job=job,
         results=results,
@@ -67,10 +76,12 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
         severities=SEVERITIES,
         pictures=find_pictures(folder, governing),
         peak_plot=peak_plot(job, results) if len(states) > MOST_PEAKS else None,
-        balance=balance_part(job, results),
+        balanced=worth_a_row(results, MOST_ROWS),
+        worst_balance=max(states, key=lambda name: states[name]["equilibrium"]["residual"]),
+        reacting=list(states) if few_reactions else list(governed),
+        extreme_reactions=[] if few_reactions else reaction_extremes(results),
         cuts=cut_parts(job, results),
         lines=line_parts(job, results),
-        plate_size=plate_size(results),
         assumptions=assumptions(job),
     )
 
@@ -138,7 +149,8 @@ def number(value: float, digits: int = DIGITS) -> str:
 
 
 def place(at: Any) -> str:
-    return numbers.vector(*at, DIGITS)
+    x, y = at
+    return numbers.vector(x, y, DIGITS)
 
 
 def percent(value: float) -> str:
@@ -171,7 +183,9 @@ def _fact(value: Any) -> str:
 
 def css_string(text: str) -> str:
     """Text for between quotes in a style sheet: all but plain letters and digits as escapes."""
-    return "".join(c if c.isascii() and c.isalnum() else f"\\{ord(c):06x}" for c in text)
+    # Isolated, so that a title in right-to-left script does not turn around what follows it.
+    isolated = f"\N{FIRST STRONG ISOLATE}{text}\N{POP DIRECTIONAL ISOLATE}"
+    return "".join(c if c.isascii() and c.isalnum() else f"\\{ord(c):06x}" for c in isolated)
 
 
 def _environment() -> Environment:

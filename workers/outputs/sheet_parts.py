@@ -1,95 +1,25 @@
-"""What the review sheet tells of balance, cuts and lines: rows and plots, numbers cleared of noise.
+"""What the review sheet tells of cuts and lines, and of many states at a glance: rows and plots.
 
-Where there are many cases and combinations, each part shows the governing ones and the extremes.
+Where there are many cases and combinations, the governing ones and the extremes stand for all.
 """
 
 from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import Any
 
-from workers.job import Job
+from workers.job import Job, Vector
 from workers.outputs.drawing.numbers import vector
-from workers.outputs.governing import (
-    Extreme,
-    all_states,
-    cut_extremes,
-    governing_states,
-    plate_size,
-    reaction_extremes,
-    rounding_force,
-    settled,
-    severity,
-    worth_a_row,
-)
+from workers.outputs.governing import all_states, extremes, governing_states, severity
 from workers.outputs.plots import Curve, Plot, lay_out
 
 Json = Mapping[str, Any]
 
-MOST_ROWS = 14  # of a table; for more states the governing ones and the extremes
-MOST_CURVES = 3  # of states on one plot; the others as a band
+MOST_ROWS = 14  # states with a row in the table of a cut
+MOST_CURVES = 3  # states with a curve of their own on the plot of a line
 CUT_COMPONENTS = ("normal", "shear", "moment")
-STRESS_COMPONENTS = ("σx", "σy", "τxy")
-
-
-# --- equilibrium and reactions -------------------------------------------------------------------
-
-
-@dataclass(frozen=True)
-class Balance:
-    """Loads and reactions of one state about one point: x, y, moment."""
-
-    state: str
-    applied: Sequence[float]
-    reaction: Sequence[float]
-    residual: float
-
-
-@dataclass(frozen=True)
-class Reaction:
-    state: str
-    support: str
-    shown: Sequence[float]
-    about: Sequence[float]
-
-
-@dataclass(frozen=True)
-class BalancePart:
-    """worst : the state with the largest residual; extremes : in place of the reactions of many"""
-
-    balances: list[Balance]
-    worst: Balance
-    about: Sequence[float]
-    reactions: list[Reaction]
-    extremes: list[Extreme]
-
-
-def balance_part(job: Job, results: Json) -> BalancePart:
-    states, noise = all_states(results), _Noise(job, results)
-    supports = len(next(iter(states.values()))["reactions"])
-    shown = worth_a_row(results, MOST_ROWS)
-    few = len(states) * supports <= 2 * MOST_ROWS
-    balances = [
-        Balance(
-            name,
-            noise.clear(name, states[name]["equilibrium"]["applied"]),
-            noise.clear(name, states[name]["equilibrium"]["reaction"]),
-            states[name]["equilibrium"]["residual"],
-        )
-        for name in states
-    ]
-    told = list(states) if few else list(governing_states(results))
-    reactions = [
-        Reaction(name, label, noise.clear(name, (*found["force"], found["moment"])), found["about"])
-        for name in told
-        for label, found in states[name]["reactions"].items()
-    ]
-    return BalancePart(
-        [balance for balance in balances if balance.state in shown],
-        max(balances, key=lambda balance: balance.residual),
-        next(iter(states.values()))["equilibrium"]["about"],
-        reactions,
-        [] if few else [noise.cleared(extreme) for extreme in reaction_extremes(results)],
-    )
+STRESS_COMPONENTS = ("\N{GREEK SMALL LETTER SIGMA}x", "\N{GREEK SMALL LETTER SIGMA}y", "τxy")
+BY_NUMBER = "number of case or combination"
+GIVEN = 6  # digits of places that the job gives
 
 
 # --- cuts ----------------------------------------------------------------------------------------
@@ -100,12 +30,14 @@ class CutRow:
     """Normal force, shear and moment of a state, and each as a part of the largest, -1 to 1."""
 
     state: str
-    shown: Sequence[float]
+    carried: Sequence[float]
     parts: Sequence[float]
 
 
 @dataclass(frozen=True)
 class CutPart:
+    """plots : the components over all states, where the rows do not have them all"""
+
     name: str
     where: str
     about: Sequence[float]
@@ -114,49 +46,50 @@ class CutPart:
 
 
 def cut_parts(job: Job, results: Json) -> list[CutPart]:
-    noise = _Noise(job, results)
-    return [_cut(job, results, noise, name, found) for name, found in results["cuts"].items()]
+    return [_cut(job, results, name, by_state) for name, by_state in results["cuts"].items()]
 
 
-def _cut(job: Job, results: Json, noise: "_Noise", name: str, by_state: Json) -> CutPart:
-    cleared = {
-        state: noise.clear(state, [found[c] for c in CUT_COMPONENTS])
-        for state, found in by_state.items()
-    }
-    most = [max(abs(values[i]) for values in cleared.values()) for i in range(3)]
-    shown: list[str] = list(by_state)
-    plots: list[Plot] = []
+def _cut(job: Job, results: Json, name: str, by_state: Json) -> CutPart:
+    carried = {s: [found[c] for c in CUT_COMPONENTS] for s, found in by_state.items()}
+    largest = [max(map(abs, column)) for column in zip(*carried.values(), strict=True)]
+    shown, plots = list(by_state), []
     if len(by_state) > MOST_ROWS:
-        governing = dict.fromkeys(governing_states(results))
-        shown = list(governing | dict.fromkeys(e.state for e in cut_extremes(by_state, name)))
-        plots = _cut_plots(job, name, list(cleared.values()))
-    cut = job.requests.cuts[name]
+        at_the_ends = [e.state for e in extremes(name, by_state, CUT_COMPONENTS)]
+        shown = list(dict.fromkeys([*governing_states(results), *at_the_ends]))
+        plots = _cut_plots(job, name, list(carried.values()))
+    asked = job.requests.cuts[name]
     return CutPart(
         name,
-        f"from {vector(*cut.start, 6)} to {vector(*cut.end, 6)} {job.units.length}",
+        _from_to(job, asked.start, asked.end),
         next(iter(by_state.values()))["about"],
-        [
-            CutRow(s, cleared[s], [v / m if m else 0.0 for v, m in zip(cleared[s], most)])
-            for s in shown
-        ],
+        [CutRow(state, carried[state], _parts(carried[state], largest)) for state in shown],
         plots,
     )
 
 
-def _cut_plots(job: Job, name: str, values: list[list[float]]) -> list[Plot]:
+def _parts(values: Sequence[float], largest: Sequence[float]) -> list[float]:
+    return [v / most if most else 0.0 for v, most in zip(values, largest, strict=True)]
+
+
+def _cut_plots(job: Job, name: str, carried: list[list[float]]) -> list[Plot]:
     force = job.units.force
     units = (force, force, f"{force}·{job.units.length}")
-    places = list(range(1, len(values) + 1))
     return [
         lay_out(
-            f"{component.capitalize()} carried through {name}",
-            "number of case or combination",
+            f"{component.capitalize()} in cut {name}",
+            BY_NUMBER,
             f"{component} [{unit}]",
-            places,
-            [Curve(component, [v[i] for v in values])],
+            range(1, len(carried) + 1),
+            [Curve(component, column)],
         )
-        for i, (component, unit) in enumerate(zip(CUT_COMPONENTS, units, strict=True))
+        for component, unit, column in zip(
+            CUT_COMPONENTS, units, zip(*carried, strict=True), strict=True
+        )
     ]
+
+
+def _from_to(job: Job, start: Vector, end: Vector) -> str:
+    return f"from {vector(*start, GIVEN)} to {vector(*end, GIVEN)} {job.units.length}"
 
 
 # --- lines ---------------------------------------------------------------------------------------
@@ -164,10 +97,12 @@ def _cut_plots(job: Job, name: str, values: list[list[float]]) -> list[Plot]:
 
 @dataclass(frozen=True)
 class LinePart:
+    """The largest von Mises stress on a line, where and in which state; and the line's plots."""
+
     name: str
     where: str
     peak: float
-    peak_at: Sequence[float]
+    at: Sequence[float]
     state: str
     plots: list[Plot]
 
@@ -177,42 +112,48 @@ def line_parts(job: Job, results: Json) -> list[LinePart]:
 
 
 def _line(job: Job, results: Json, name: str, line: Json) -> LinePart:
-    """Two plots: von Mises stress in the severest states, and the components in the first."""
-    cases, distance = line["cases"], line["distance"]
+    cases = line["cases"]
     ranked = sorted(cases, key=lambda state: -max(cases[state]["von_mises"]))
-    worst = ranked[0]
-    von_mises = cases[worst]["von_mises"]
+    von_mises = cases[ranked[0]]["von_mises"]
     number = max(range(len(von_mises)), key=lambda i: von_mises[i])
     asked = job.requests.lines[name]
-    x_label, stress = f"distance along the line [{job.units.length}]", job.units.stress
-    band = None
-    if len(ranked) > MOST_CURVES:
-        every = list(zip(*(case["von_mises"] for case in cases.values()), strict=True))
-        band = [min(column) for column in every], [max(column) for column in every]
-    tensors = list(zip(*cases[worst]["stress"], strict=True))
+    shown = ranked[:MOST_CURVES]
+    if len(ranked) > MOST_ROWS:  # neighbours among many cases look all the same
+        shown = list(dict.fromkeys((ranked[0], results["envelope"]["von_mises"]["governs"])))
     return LinePart(
         name,
-        f"from {vector(*asked.start, 6)} to {vector(*asked.end, 6)} {job.units.length}",
+        _from_to(job, asked.start, asked.end),
         von_mises[number],
         line["points"][number],
-        worst,
-        [
-            lay_out(
-                f"Von Mises stress along {name}",
-                x_label,
-                f"von Mises [{stress}]",
-                distance,
-                [Curve(state, cases[state]["von_mises"]) for state in ranked[:MOST_CURVES]],
-                band=band,
-            ),
-            lay_out(
-                f"Stress components along {name} in {worst}",
-                x_label,
-                f"stress [{stress}]",
-                distance,
-                [Curve(c, v) for c, v in zip(STRESS_COMPONENTS, tensors, strict=True)],
-            ),
-        ],
+        ranked[0],
+        [_von_mises_plot(job, name, line, shown), _component_plot(job, name, line, ranked[0])],
+    )
+
+
+def _von_mises_plot(job: Job, name: str, line: Json, shown: Sequence[str]) -> Plot:
+    """Some states as curves, all of them as a band where there are more."""
+    cases, band = line["cases"], None
+    if len(cases) > len(shown):
+        columns = list(zip(*(case["von_mises"] for case in cases.values()), strict=True))
+        band = ([min(column) for column in columns], [max(column) for column in columns])
+    return lay_out(
+        f"Von Mises stress along {name}",
+        f"distance along the line [{job.units.length}]",
+        f"von Mises [{job.units.stress}]",
+        line["distance"],
+        [Curve(state, cases[state]["von_mises"]) for state in shown],
+        band=band,
+    )
+
+
+def _component_plot(job: Job, name: str, line: Json, state: str) -> Plot:
+    columns = zip(*line["cases"][state]["stress"], strict=True)
+    return lay_out(
+        f"Stress components along {name} in {state}",
+        f"distance along the line [{job.units.length}]",
+        f"stress [{job.units.stress}]",
+        line["distance"],
+        [Curve(c, column) for c, column in zip(STRESS_COMPONENTS, columns, strict=True)],
     )
 
 
@@ -220,41 +161,15 @@ def _line(job: Job, results: Json, name: str, line: Json) -> LinePart:
 
 
 def peak_plot(job: Job, results: Json) -> Plot:
-    """Peak von Mises stress, or where strengths are known utilisation, over the states."""
+    """Utilisation, or where no strength is known peak stress, over the states in their order."""
     states = list(all_states(results).values())
-    used = all(state["utilisation"] is not None for state in states)
-    factor = job.limits.factor_on_yield
-    label = "of yield" if used else f"von Mises [{job.units.stress}]"
+    known = all(state["utilisation"] is not None for state in states)
+    what = "Share of the yield strength" if known else "Largest von Mises stress"
     return lay_out(
-        "Utilisation of every case and combination"
-        if used
-        else "Peak von Mises stress of every case and combination",
-        "number of case or combination",
-        label,
-        list(range(1, len(states) + 1)),
-        [Curve(label, [severity(state) for state in states])],
-        limit=1 / (factor or 1.0) if used else None,
+        f"{what} in every case and combination",
+        BY_NUMBER,
+        "of yield" if known else f"von Mises [{job.units.stress}]",
+        range(1, len(states) + 1),
+        [Curve(what, [severity(state) for state in states])],
+        limit=1 / (job.limits.factor_on_yield or 1.0) if known else None,
     )
-
-
-class _Noise:
-    """Clears forces and moments of what is nothing but rounding in their state."""
-
-    def __init__(self, job: Job, results: Json) -> None:
-        stiffest = max(material.youngs_modulus for material in job.materials.values())
-        self.size = plate_size(results)
-        self.force = {
-            name: rounding_force(results, state, stiffest)
-            for name, state in all_states(results).items()
-        }
-
-    def clear(self, state: str, values: Sequence[float]) -> list[float]:
-        """Two forces and a moment."""
-        force = self.force[state]
-        return [*settled(values[:2], force), *settled(values[2:], force * self.size)]
-
-    def cleared(self, extreme: Extreme) -> Extreme:
-        rounding = self.force[extreme.state]
-        if extreme.component == "moment":
-            rounding *= self.size
-        return replace(extreme, value=settled([extreme.value], rounding)[0])

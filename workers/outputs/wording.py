@@ -34,7 +34,7 @@ from workers.job import (
     Units,
 )
 from workers.outputs.drawing import numbers
-from workers.outputs.drawing.numbers import TIMES
+from workers.outputs.drawing.numbers import MINUS, TIMES
 
 GIVEN = 6  # digits of what was given
 MOST_NODES = 6  # that are listed by number
@@ -119,7 +119,7 @@ def _spring_unit(job: Job, target: Target) -> str:
 # --- loads ---------------------------------------------------------------------------------------
 
 
-def load_words(load: Load, units: Units) -> str:
+def load_words(load: Load, units: Units) -> str:  # noqa: PLR0911  a table of the kinds
     """One line for a load, e.g. "bearing force (0, 80 000) N"."""
     force, length, stress = units.force, units.length, units.stress
     match load:
@@ -159,7 +159,7 @@ def factor_words(combination: Combination) -> str:
     words = ""
     for case, factor in combination.factors.items():
         if factor:
-            sign = " − " if factor < 0 else " + "
+            sign = f" {MINUS} " if factor < 0 else " + "
             words += f"{sign if words or factor < 0 else ''}{show(abs(factor))} {TIMES} {case}"
     return words.strip() or "nothing: all factors are zero"
 
