@@ -116,7 +116,7 @@ FORCE = PointForce(on=Named("NE"), force=(0.0, -1000.0))
 @pytest.mark.parametrize("at", [CORNER, (180.0, 90.0)])
 def test_a_peak_next_to_a_point_load_tells_the_size_of_the_elements(at) -> None:
     results = sound_results({"pull": stressed(200.0, at)})
-    (caution,) = raised(sound_job(load_cases=pointed((FORCE,))), results)["stress-at-point-load"]
+    (caution,) = raised(sound_job(load_cases=pointed((FORCE,))), results)["point-load"]
     assert caution.evidence["case"] == "pull"
     assert caution.evidence["at"] == [200, 100]
     assert caution.evidence["value"] < caution.evidence["limit"] == pytest.approx(47.14, rel=1e-3)
@@ -127,7 +127,7 @@ def test_a_combination_inherits_the_point_loads_of_its_cases() -> None:
         load_cases=pointed((FORCE,)), combinations=(Combination("twice", {"pull": 2.0}),)
     )
     results = sound_results(combinations={"twice": stressed(200.0, CORNER)})
-    assert raised(job, results)["stress-at-point-load"][0].evidence["case"] == "twice"
+    assert raised(job, results)["point-load"][0].evidence["case"] == "twice"
 
 
 @pytest.mark.parametrize(
@@ -169,7 +169,7 @@ PROP = Support("prop", Named("SE"), uy=0.0)
     "support", [PROP, Support("pad", Named("SE"), spring=Spring(x=0.0, y=5000.0))]
 )
 def test_a_peak_next_to_a_loaded_point_support_tells_the_size_of_the_elements(support) -> None:
-    (caution,) = held(support, 1000.0, (199.0, 3.0))["stress-at-point-support"]
+    (caution,) = held(support, 1000.0, (199.0, 3.0))["point-support"]
     assert caution.evidence["at"] == [200, 0]
 
 

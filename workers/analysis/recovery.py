@@ -17,6 +17,7 @@ from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.model import Model
 from workers.analysis.patch_recovery import border_corners, recovery_operator
 from workers.analysis.plane_stress import thermal_strain
+from workers.analysis.probes import interpolation, locate
 
 Array = NDArray[np.float64]
 Temperature = tuple[Array, ...] | None  # for each block (m, k) [K]
@@ -92,6 +93,17 @@ class Recovery:
         samples = self.sample_stress(displacement, temperature)
         flat = self.operator @ samples.reshape(len(samples), -1)
         return flat.reshape(-1, 3, displacement.shape[2])
+
+    def interpolate(self, points: Array) -> csr_array:
+        """Operator from values at the field points to values at places in the plate (p, 2).
+
+        Raises
+        ------
+        MeshError   a place is outside the plate.
+        """
+        return interpolation(
+            self.field_mesh, locate(self.field_mesh.mesh, points, [""] * len(points))
+        )
 
 
 def raw_stress(

@@ -4,23 +4,31 @@ from types import ModuleType
 
 from workers.cautions import STANDING
 from workers.review import (
+    assumptions,
     discretisation,
     equations,
+    fatigue,
     inputs,
     kinematics,
     loading,
     model_validity,
+    restraint,
+    stability,
     strength,
 )
 from workers.review.rule import Rule
 
 MODULES: tuple[ModuleType, ...] = (
     strength,
+    stability,
+    fatigue,
     kinematics,
     equations,
     model_validity,
     discretisation,
+    restraint,
     loading,
+    assumptions,
     inputs,
 )
 

@@ -16,7 +16,8 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.selection import Selection, select
 from workers.job import Job, Target
 
-if TYPE_CHECKING:  # the solution brings SciPy, which the API process must not load
+if TYPE_CHECKING:  # these bring SciPy, which the API process must not load
+    from workers.analysis.recovery import Recovery
     from workers.analysis.solution import Solution
 
 Array = NDArray[np.float64]
@@ -39,13 +40,14 @@ class ReviewContext:
     """One job under review.
 
     results : as in results.json, cautions not needed; {} before the solution.
-    solution : None where only the results are known.
+    solution, recovery : None where only the results are known.
     """
 
     job: Job
     mesh: Mesh
     results: Mapping[str, Any] = field(default_factory=dict)
     solution: "Solution | None" = None
+    recovery: "Recovery | None" = None
 
     # --- states: load cases and combinations -------------------------------------------------
 
@@ -53,6 +55,11 @@ class ReviewContext:
     def states(self) -> dict[str, Mapping[str, Any]]:
         """Results of every load case and combination, by name."""
         return {**self.results.get("cases", {}), **self.results.get("combinations", {})}
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """Names of all load cases and combinations, also before there are results."""
+        return self._load_states.names
 
     def factors(self, state: str) -> Array:
         """Factor of every load case in a state, in the order of the job, (c,)."""
@@ -108,6 +115,27 @@ class ReviewContext:
         pairs = zip(strains, self.solution.temperature, strict=True)
         return [strain * (change @ self.factors(state)) for strain, change in pairs]
 
+    def nodal_stress(self, state: str) -> Array | None:
+        """Recovered stress at the field points in a state, (P, 3) [F/L^2]; None if not known.
+
+        Remembered: ask for the few states that matter, see `governing`.
+        """
+        u = self.displacement(state)
+        if u is None or self.recovery is None:
+            return None
+        if state not in self._nodal_stress:
+            temperature = None
+            if self.solution is not None and self.solution.temperature is not None:
+                factors = self.factors(state)[:, None]
+                temperature = tuple(change @ factors for change in self.solution.temperature)
+            nodal = self.recovery.nodal_stress(u[..., None], temperature)
+            self._nodal_stress[state] = nodal[..., 0]
+        return self._nodal_stress[state]
+
+    @cached_property
+    def _nodal_stress(self) -> dict[str, Array]:
+        return {}
+
     @cached_property
     def _centre_gradients(self) -> list[Array]:
         """Derivatives of the shape functions at element centres, for each block (m, 2, n)."""
@@ -140,6 +168,9 @@ class ReviewContext:
             for column in block.connectivity.T:
                 np.maximum.at(size, column, apart)
         return size
+
+    def nearest_node(self, at: Iterable[float]) -> int:
+        return int(np.linalg.norm(self.mesh.nodes - np.array(list(at)), axis=1).argmin())
 
     @cached_property
     def regions_used(self) -> list[str]:

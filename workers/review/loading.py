@@ -71,7 +71,7 @@ def settlement_factored(context: ReviewContext) -> Iterator[Finding]:
 
 
 @rule(
-    "stress-at-point-load",
+    "point-load",
     "check",
     title="The peak stress is at a point load",
     looks_at="The distance from the peak von Mises stress to the point forces of the state, "
@@ -79,7 +79,7 @@ def settlement_factored(context: ReviewContext) -> Iterator[Finding]:
     action="Spread the force over the length on which it really acts; under a point force the "
     "stress is infinite, and the number only tells the size of the elements.",
 )
-def stress_at_point_load(context: ReviewContext) -> Iterator[Finding]:
+def point_load(context: ReviewContext) -> Iterator[Finding]:
     loaded = [
         _point_load_nodes(context, [load for load in case.loads if isinstance(load, PointForce)])
         for case in context.job.load_cases
@@ -100,7 +100,7 @@ def _point_load_nodes(context: ReviewContext, loads: list[PointForce]) -> Number
 
 
 @rule(
-    "stress-at-point-support",
+    "point-support",
     "check",
     title="The peak stress is at a point support",
     looks_at="The distance from the peak von Mises stress to supports at single nodes that carry "
@@ -108,7 +108,7 @@ def _point_load_nodes(context: ReviewContext, loads: list[PointForce]) -> Number
     action="Support the length on which the plate really rests; at a point support the stress is "
     "infinite, and the number only tells the size of the elements.",
 )
-def stress_at_point_support(context: ReviewContext) -> Iterator[Finding]:
+def point_support(context: ReviewContext) -> Iterator[Finding]:
     held: dict[str, Numbers] = {}
     for support in context.job.supports:
         caught = context.select(support.on, support.pointer)

@@ -1,4 +1,4 @@
-"""Rules about the model: is the plate thin enough for plane stress?"""
+"""Rules about the model: is the plate thin enough for plane stress, and flat?"""
 
 from collections.abc import Iterator
 from itertools import chain
@@ -18,6 +18,10 @@ OF_PLATE = 0.25  # thickness over in-plane size
 OF_RADIUS = 2.0
 # Saint-Venant: what enters over less than half a thickness has not spread across it.
 OF_SIDE = 2.0
+# Thicker over thinner. Where one face is flush, the middle planes of thicknesses t and 1.5 t are
+# 0.25 t apart: bending doubles the tension at a face of the thinner plate (6 x 0.25 = 1.5 times the
+# membrane stress, shared between the two plates by their stiffness).
+STEP = 1.5
 
 
 @rule(
@@ -73,4 +77,42 @@ def _worst(
         at=feature.at,
         region=region,
         places=len(found),
+    )
+
+
+@rule(
+    "thickness-step",
+    "check",
+    title="Sudden change of thickness",
+    looks_at="The thickness of neighbouring regions.",
+    action="Check the step: the model has both parts centred on one plane and the whole thickness "
+    "at work at once. One-sided steps bend, and the edge of a doubler or its weld has a stress of "
+    "its own.",
+)
+def thickness_step(context: ReviewContext) -> Iterator[Finding]:
+    mesh, job = context.mesh, context.job
+    one, other = mesh.shared_facets()
+    first, second = mesh.facet_regions(one), mesh.facet_regions(other)
+    thickness = np.array([job.thickness_of(name) for name in mesh.regions])
+    ratio = thickness[first] / thickness[second]
+    ratio = np.maximum(ratio, 1 / ratio)
+    steps = np.flatnonzero(ratio > STEP)
+    if not len(steps):
+        return
+    # Where the steps are equally large, the one in the middle of the list stands for all.
+    largest = steps[ratio[steps] >= ratio[steps].max() * (1 - 1e-12)]
+    place = largest[len(largest) // 2]
+    pair = sorted((first[place], second[place]), key=lambda region: thickness[region])
+    thin, thick = (mesh.regions[region] for region in pair)
+    t, T = thickness[pair]
+    kinds = np.unique(np.sort(np.column_stack((first[steps], second[steps])), axis=1), axis=0)
+    more = f" ({len(kinds) - 1} more pairs of regions like it)" if len(kinds) > 1 else ""
+    yield finding(
+        f"Between {thin!r} and {thick!r} the thickness jumps from {context.length(t)} to "
+        f"{context.length(T)}{more}.",
+        value=ratio[place],
+        limit=STEP,
+        at=mesh.nodes[mesh.facet_ends(one[[place]])[0]].mean(axis=0),
+        regions=[thin, thick],
+        places=len(kinds),
     )

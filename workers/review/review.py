@@ -11,6 +11,7 @@ from workers.review.context import ReviewContext
 from workers.review.rule import Rule
 
 if TYPE_CHECKING:
+    from workers.analysis.recovery import Recovery
     from workers.analysis.solution import Solution
 
 
@@ -19,13 +20,15 @@ def review(
     mesh: Mesh,
     results: Mapping[str, Any] | None = None,
     solution: "Solution | None" = None,
+    recovery: "Recovery | None" = None,
 ) -> list[Caution]:
     """Cautions for a job: stop, check, note, and the standing ones last.
 
     results : as in results.json; None for a job that has not been solved
-    solution : displacements of the load cases; rules that need them find nothing without
+    solution, recovery : displacements of the load cases, and how stress is formed from them; rules
+        that need them find nothing without
     """
-    context = ReviewContext(job, mesh, results or {}, solution)
+    context = ReviewContext(job, mesh, results or {}, solution, recovery)
     found = [caution for rule in RULES for caution in _apply(rule, context)]
     grades = list(SEVERITIES)
     return [*sorted(found, key=lambda caution: grades.index(caution.severity)), *STANDING]
