@@ -90,10 +90,10 @@ def _sides(
     named = np.flatnonzero(side >= 0)
     named = named[np.argsort(side[named], kind="stable")]
     facets = mesh.find_facets(pairs[named])
-    ends = np.cumsum(np.bincount(side[named], minlength=len(number)))
+    first = np.cumsum([0, *np.bincount(side[named], minlength=len(number))])
     return {
-        name: facets[first:last]
-        for name, first, last in zip(number, [0, *ends[:-1]], ends, strict=True)
+        name: facets[low:high]
+        for name, low, high in zip(number, first[:-1], first[1:], strict=True)
     }
 
 
