@@ -241,6 +241,16 @@ class MeshFiguresSchema(Answer):
     parts = whole("Unconnected parts")
 
 
+class EnvelopeFilesSchema(Answer):
+    fields_ = fields.String(
+        data_key="fields", metadata={"description": "Field file of the envelope, if made"}
+    )
+    previews = fields.Dict(
+        keys=fields.String(), values=fields.String(), required=True,
+        metadata={"description": "Pictures of what governs where, by measure"},
+    )  # fmt: skip
+
+
 class FilesSchema(Answer):
     fields_ = fields.Dict(
         keys=fields.String(), values=fields.String(), required=True, data_key="fields",
@@ -256,6 +266,7 @@ class FilesSchema(Answer):
         keys=fields.String(), values=fields.String(), required=True,
         metadata={"description": "Graphs of lines that were drawn with the job"},
     )  # fmt: skip
+    envelope = part(EnvelopeFilesSchema, "Of all cases and combinations together")
 
 
 class PicturesSchema(Answer):

@@ -20,6 +20,7 @@ from api.problems import RefusalError
 from api.responses import file_answer, text_answer
 from api.result_schemas import ResultsSchema
 from api.services import services
+from workers.analysis.envelope import WORST
 from workers.outputs.names import file_name
 from workers.outputs.tables import TABLES, write_table
 from workers.record import CANCELLED, FAILED, FINISHED
@@ -76,6 +77,42 @@ def show_preview(job_id: str, case: str, quantity: str) -> Response:
     return file_answer(path, PNG, address(job_id), download_name=f"{case} {quantity}.png")
 
 
+@blueprint.get("/jobs/<job_id>/envelope/fields.vtu")
+@blueprint.doc(responses={200: describe_file(VTU), **problems_of(404, 409, 500, 503)})
+def show_envelope(job_id: str) -> Response:
+    """The worst of all cases and combinations at every node, as a VTK XML file
+
+    Point data von_mises, principal_max, principal_min, shear_max, displacement_magnitude, and for
+    each of them NAME_governs: the number of the governing state in the field data `states`.
+    """
+    return _envelope_file(job_id, "fields", "fields.vtu", VTU)
+
+
+@blueprint.get("/jobs/<job_id>/envelope/nodes.csv")
+@blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409, 500, 503)})
+def show_envelope_table(job_id: str) -> Response:
+    """The worst of all cases and combinations at every node, with the governing one, as a table"""
+    return _envelope_file(job_id, "nodes", "nodes.csv", CSV)
+
+
+@blueprint.get("/jobs/<job_id>/envelope/<measure>.png")
+@blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409, 500, 503)})
+def show_governing(job_id: str, measure: str) -> Response:
+    """A picture of which case or combination governs where
+
+    The measure is one of von_mises, principal_max, principal_min, shear_max, displacement.
+    """
+    _require(measure, "measure", WORST)
+    return _envelope_file(job_id, measure, f"{measure}.png", PNG)
+
+
+def _envelope_file(job_id: str, kind: str, name: str, mimetype: str) -> Response:
+    path = _folder(job_id) / "envelope" / name
+    if not path.is_file():
+        make_artefact(job_id, "envelope", kind)
+    return file_answer(path, mimetype, address(job_id), download_name=f"envelope {name}")
+
+
 @blueprint.get("/jobs/<job_id>/lines/<line>.png")
 @blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409, 500, 503)})
 def show_line(job_id: str, line: str) -> Response:
@@ -96,7 +133,7 @@ def show_line(job_id: str, line: str) -> Response:
 def show_table(job_id: str, name: str) -> Response:
     """A part of the results as a table
 
-    The table is one of peaks, reactions, equilibrium, probes, lines, cuts, hot_spots.
+    The table is one of peaks, envelope, reactions, equilibrium, probes, lines, cuts, hot_spots.
     """
     folder = _folder(job_id)
     _require(name, "table", TABLES)

@@ -103,6 +103,7 @@ RESULTS: dict[str, Any] = {
         "fields": {"pull": "fields/pull.vtu"},
         "previews": {"pull": {"model": "x"}},
         "lines": {"axis": "lines/axis.png"},
+        "envelope": {"fields": "envelope/fields.vtu", "previews": {"von_mises": "x"}},
     },
     "pictures": {"available": True},
 }

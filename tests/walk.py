@@ -9,12 +9,15 @@ from dataclasses import dataclass
 from itertools import product
 from typing import Any
 
+import orjson
 from flask import Flask
 from werkzeug.routing import Rule
 from werkzeug.test import TestResponse
 
 from api.services import KEY, Services
 from tests.job_documents import strip
+from tests.small_check import answer_check
+from workers.checks import Checks
 from workers.errors import Fault
 from workers.queue import Answer
 from workers.record import CANCELLED, FAILED, RUNNING
@@ -23,6 +26,7 @@ from workers.record import CANCELLED, FAILED, RUNNING
 VALUES: dict[str, tuple[str, ...]] = {
     "case": ("pull", "pull, factored", "no such case"),
     "line": ("axis", "no such line"),
+    "measure": ("von_mises", "colour"),
     "quantity": ("model", "von_mises", "colour"),
     "name": ("peaks", "lines", "no such table"),
 }
@@ -41,6 +45,14 @@ REQUESTS: dict[tuple[str, str], list[dict[str, Any]]] = {
         {"data": b"{}", "content_type": "text/plain"},
         {"data": b" " * 200_000, "content_type": "application/json"},
     ],
+    ("POST", "/v1/checks"): [
+        {"json": strip()},
+        {"json": strip(length=60.0)},
+        {"json": strip(length=70.0)},
+        {"json": {}},
+        {"data": b"{}", "content_type": "text/plain"},
+        {"data": b" " * 200_000, "content_type": "application/json"},
+    ],
     ("GET", "/v1/jobs"): [
         {},
         {"query_string": {"limit": 1}},
@@ -52,6 +64,12 @@ ANSWERS = {  # of the workers, when a file must be made; by quantity, None for a
     "model": Answer("pending"),
     None: Answer("failed", reason="the worker process ended before it had an answer"),
 }
+# Of the workers, to checks of strips of other lengths than the usual one, which they answer.
+CHECKED = {
+    60.0: Answer("done", value={"ok": False, "error": "MeshError", "reason": "held too little",
+                                "faults": [{"pointer": "/supports", "message": "it can turn"}]}),
+    70.0: Answer("done", value={"ok": False, "error": "MemoryError", "reason": "too large"}),
+}  # fmt: skip
 AUTOMATIC = {"HEAD", "OPTIONS"}  # answered by the framework, and without a body
 Finish = Callable[[str], None]
 
@@ -76,7 +94,16 @@ def visit_all(
                       *, wait: float) -> Answer:  # fmt: skip
         return ANSWERS[quantity]
 
+    def ask(function: str, *arguments: str, wait: float) -> Answer:
+        check_id = arguments[0]
+        document = orjson.loads(Checks(services.settings.store).document(check_id))
+        length = document["geometry"]["patches"][0]["corners"][1][0]
+        if length not in CHECKED:
+            answer_check(services.settings.store, *arguments)
+        return CHECKED.get(length, Answer("done", value={"ok": True}))
+
     monkeypatch.setattr(services.queue, "make_artefact", make_artefact)
+    monkeypatch.setattr(services.queue, "ask", ask)
     monkeypatch.setattr(services.queue, "workers_alive", lambda: 1)
     visits = []
     for rule in app.url_map.iter_rules():
@@ -100,7 +127,8 @@ def addresses(app: Flask, rule: Rule, finish: Finish) -> Iterator[str]:
     """The address of a rule with all combinations of values, and fresh jobs in all states."""
     partial: list[dict[str, str]] = [{}]
     for name in sorted(rule.arguments):
-        values = jobs(app, finish) if name == "job_id" else VALUES[name]
+        made = {"job_id": lambda: jobs(app, finish), "check_id": lambda: checks(app)}
+        values = made[name]() if name in made else VALUES[name]
         partial = [{**given, name: value} for given in partial for value in values]
     for values in partial:
         yield app.url_map.bind("localhost").build(rule.endpoint, values)
@@ -122,3 +150,13 @@ def jobs(app: Flask, finish: Finish) -> tuple[str, ...]:
     services.store.transition(pinned, CANCELLED)
     services.store.pin(pinned, True)
     return (queued, running, finished, failed, cancelled, pinned, "unknown")
+
+
+def checks(app: Flask) -> tuple[str, ...]:
+    """Ids of checks: of one that is answered, one that is not, and one that is not there."""
+    store = app.extensions[KEY].settings.store
+    answered, waiting = (
+        Checks(store).file(orjson.dumps(strip(length=length))) for length in (100.0, 60.0)
+    )
+    answer_check(store, answered)
+    return (answered, waiting, "0" * 32)

@@ -168,8 +168,8 @@ class Filing:
         path = self._in_envelope(f"{quantity}.png")
         work = self.work
         preview.render_governing(
-            path, work.job, work.field_mesh, work.envelope, quantity, work.states.names,
-            cautions=self.cautions,
+            path, work.job, work.field_mesh, work.envelope.state[quantity], quantity,
+            work.states.names, self.results["envelope"][quantity], cautions=self.cautions,
         )  # fmt: skip
         return path
 

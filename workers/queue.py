@@ -28,6 +28,7 @@ from workers.private_redis import address
 from workers.record import CANCELLED, PRIORITIES, Record
 from workers.settings import Settings
 from workers.store import Store
+from workers.tallies import Tallies
 
 # Workers serve questions first, then the lines of jobs in this order.
 QUESTIONS = "fishplate-questions"
@@ -81,6 +82,7 @@ class Queue:
         self.settings = settings
         self.store = Store(settings.store)
         self.connection = connect(settings)
+        self.tallies = Tallies(self.connection)
         self._questions = self._line(QUESTIONS)
         self._lines = {priority: self._line(name) for priority, name in LINES.items()}
 
@@ -126,6 +128,7 @@ class Queue:
             pass  # neither waiting nor begun: whoever takes it sees that it is cancelled
         except redis.RedisError as error:
             log.warning("job %s is cancelled, but Redis could not be told: %s", job_id, error)
+        self.tallies.add_end(record)
         return record
 
     def waiting(self) -> frozenset[str]:
@@ -164,7 +167,8 @@ class Queue:
     ) -> Answer:
         """Have a file of a finished job made.
 
-        kind : "field" (the VTK file of a case) or "preview" (the picture of one quantity).
+        kind : "field" (the VTK file of a case), "preview" (the picture of one quantity), "line"
+            (a graph) or "envelope"; then `case` says which of its files.
 
         When the answer is "done" the file is in the results folder, whole.
         """

@@ -8,20 +8,44 @@ import errno
 import logging
 import shutil
 import time
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from pathlib import Path
+from types import MappingProxyType
 from typing import Any
 
 import redis
 
 from elements.errors import FishplateError
 from workers import pipeline
-from workers.errors import Fault, FaultyError, TransitionError, UnknownJobError
+from workers.errors import (
+    AnalysisError,
+    DocumentError,
+    Fault,
+    FaultyError,
+    LimitError,
+    MeshError,
+    TransitionError,
+    UnknownJobError,
+)
 from workers.limits import TimeLimitError, memory_limit, time_limit
+from workers.logs import about
 from workers.queue import ANSWER_LIMIT, Queue
-from workers.record import FAILED, QUEUED, RUNNING
+from workers.record import (
+    ANALYSIS,
+    DISK,
+    DOCUMENT,
+    FAILED,
+    LIMIT,
+    MEMORY,
+    MESH,
+    PROGRAM,
+    QUEUED,
+    RUNNING,
+    TIME,
+)
 from workers.settings import GIBIBYTE, Settings
 from workers.store import Store
+from workers.tallies import Stopwatch
 
 REPORT_EVERY = 0.2  # shortest time between two reports of the same stage [s]
 REPORT_AGAIN = 30.0  # after Redis did not answer [s]
@@ -42,6 +66,10 @@ OUR_FAULT = (
     "job document."
 )
 
+CAUSES_OF: Mapping[type[BaseException], str] = MappingProxyType(
+    {DocumentError: DOCUMENT, LimitError: LIMIT, MeshError: MESH, AnalysisError: ANALYSIS}
+)
+
 log = logging.getLogger(__name__)
 
 
@@ -50,7 +78,7 @@ def run_job(job_id: str) -> None:
     settings = Settings.from_environment()
     store = Store(settings.store)
     try:
-        with store.working(job_id) as staging:
+        with about(job=job_id), store.working(job_id) as staging:
             # Someone else at work, cancelled, or in line twice: nothing to do.
             if staging is None or store.record(job_id).state != QUEUED:
                 return
@@ -63,40 +91,48 @@ def run_job(job_id: str) -> None:
 def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
     """One attempt; ends in a final state unless the store refuses even that."""
     settings = queue.settings
+    watch = Stopwatch()
     try:
         with time_limit(settings.time_limit), memory_limit(settings.memory_limit):
             results = pipeline.run(
                 store.document(job_id),
                 staging,
                 job_id=job_id,
-                progress=_reporter(store, queue, job_id),
+                progress=_reporter(store, queue, job_id, watch),
                 pictures=settings.pictures,
+                most_dofs=settings.most_dofs,
             )
-        store.publish(job_id, staging, results["cautions"])
+        watch.enter(None)
+        record = store.publish(job_id, staging, results["cautions"])
     except (TransitionError, UnknownJobError):
         raise
     except (Exception, TimeLimitError) as error:
-        log.warning("job %s failed: %s", job_id, error, exc_info=_is_ours(error))
+        log.warning("job %s failed: %s", job_id, error, exc_info=is_ours(error))
         shutil.rmtree(staging, ignore_errors=True)  # makes room for the record, too
-        store.transition(job_id, FAILED, **_explain(error, settings))
+        record = store.transition(job_id, FAILED, **explain(error, settings))
+    queue.tallies.add_end(record, watch.seconds)
+    log.info("job %s is %s", job_id, record.state)
 
 
-def _explain(error: BaseException, settings: Settings) -> dict[str, Any]:
+def explain(error: BaseException, settings: Settings) -> dict[str, Any]:
     """What went wrong, in plain words; with the faults of the document, if it is to blame."""
     if isinstance(error, FaultyError):
-        return {"reason": _summary(error.faults), "faults": error.faults}
+        cause = next((CAUSES_OF[c] for c in type(error).__mro__ if c in CAUSES_OF), ANALYSIS)
+        return {"reason": _summary(error.faults), "cause": cause, "faults": error.faults}
     if isinstance(error, TimeLimitError):
-        return {"reason": OUT_OF_TIME.format(seconds=error.seconds)}
+        return {"reason": OUT_OF_TIME.format(seconds=error.seconds), "cause": TIME}
     if isinstance(error, MemoryError):
-        return {"reason": OUT_OF_MEMORY.format(gibibytes=settings.memory_limit / GIBIBYTE)}
+        gibibytes = settings.memory_limit / GIBIBYTE
+        return {"reason": OUT_OF_MEMORY.format(gibibytes=gibibytes), "cause": MEMORY}
     if isinstance(error, OSError) and error.errno in (errno.ENOSPC, errno.EDQUOT, errno.EFBIG):
-        return {"reason": DISK_FULL}
+        return {"reason": DISK_FULL, "cause": DISK}
     if isinstance(error, FishplateError):
-        return {"reason": str(error)}
-    return {"reason": OUR_FAULT.format(error=f"{type(error).__name__}: {error}")}
+        return {"reason": str(error), "cause": PROGRAM}
+    reason = OUR_FAULT.format(error=f"{type(error).__name__}: {error}")
+    return {"reason": reason, "cause": PROGRAM}
 
 
-def _is_ours(error: BaseException) -> bool:
+def is_ours(error: BaseException) -> bool:
     """Whether the operator should see where in the program it happened."""
     return not isinstance(error, FishplateError | MemoryError | TimeLimitError)
 
@@ -106,13 +142,16 @@ def _summary(faults: tuple[Fault, ...]) -> str:
     return f"{faults[0].pointer or '/'}: {faults[0].message}{more}"
 
 
-def _reporter(store: Store, queue: Queue, job_id: str) -> Callable[[str, float], None]:
+def _reporter(
+    store: Store, queue: Queue, job_id: str, watch: Stopwatch
+) -> Callable[[str, float], None]:
     """The progress function of a job: tells Redis, seldom; raises once the job is cancelled."""
     reported: object = None
     silent_until = next_look = 0.0
 
     def progress(stage: str, fraction: float) -> None:
         nonlocal reported, silent_until, next_look
+        watch.enter(stage)
         moment = time.monotonic()
         if moment >= next_look:
             next_look = moment + LOOK_EVERY
@@ -140,14 +179,14 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
         with time_limit(ANSWER_LIMIT), memory_limit(settings.memory_limit):
             _make(store, store.results_path(job_id), kind, case, quantity)
     except KeyError as error:
-        return _refusal(error, f"the job has nothing of the name {error}")
+        return refusal(error, f"the job has nothing of the name {error}")
     except (Exception, TimeLimitError) as error:
-        log.warning("no %s of job %s: %s", kind, job_id, error, exc_info=_is_ours(error))
-        return _refusal(error, _explain(error, settings)["reason"])
+        log.warning("no %s of job %s: %s", kind, job_id, error, exc_info=is_ours(error))
+        return refusal(error, explain(error, settings)["reason"])
     return {"ok": True}
 
 
-def _refusal(error: BaseException, reason: str) -> dict[str, Any]:
+def refusal(error: BaseException, reason: str) -> dict[str, Any]:
     return {"ok": False, "error": type(error).__name__, "reason": reason}
 
 
@@ -161,6 +200,8 @@ def _make(store: Store, folder: Path, kind: str, case: str, quantity: str | None
             made = pipeline.write_fields(scratch, case)
         elif kind == "preview" and quantity is not None:
             made = pipeline.render(scratch, case, quantity)
+        elif kind == "envelope":
+            made = pipeline.write_envelope(scratch, case)
         elif kind == "line":
             made = pipeline.render_line(scratch, case)
         else:

@@ -13,7 +13,8 @@ from api.commands.terminal import BAD_INPUT, err, leave
 RESULTS = "results.json"
 MOST_FILES = 20  # that are named one by one
 # All that results ever consist of, see `workers/pipeline.py`.
-OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines"}
+OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines",
+        "envelope", "envelope.npz"}  # fmt: skip
 
 
 def refuse_foreign(folder: Path) -> None:

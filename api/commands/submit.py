@@ -13,7 +13,7 @@ from api.commands.folders import RESULTS, name_files, refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
 from workers.outputs.names import file_name
-from workers.record import CANCELLED, FINISHED, UNFINISHED
+from workers.record import CANCELLED, FINISHED, PRIORITIES, UNFINISHED
 
 PAUSE = 0.25  # shortest time between two looks at a job [s]
 
@@ -26,6 +26,13 @@ PAUSE = 0.25  # shortest time between two looks at a job [s]
     show_default=True,
     help="Address of the server.",
 )
+@click.option(
+    "--token",
+    envvar="FISHPLATE_TOKEN",
+    help="Token, where the server wants one; better in FISHPLATE_TOKEN, which other users of this "
+    "machine cannot read.",
+)
+@click.option("--priority", type=click.Choice(PRIORITIES), help="Line that the job should wait in.")
 @click.option("--wait", is_flag=True, help="Wait for the job and print its results.")
 @click.option(
     "--out",
@@ -33,7 +40,14 @@ PAUSE = 0.25  # shortest time between two looks at a job [s]
     type=click.Path(file_okay=False, path_type=Path),
     help="Fetch results, fields and pictures into this folder (implies --wait).",
 )
-def command(job: Path, url: str, wait: bool, folder: Path | None) -> None:  # fmt: skip
+def command(
+    job: Path,
+    url: str,
+    token: str | None,
+    priority: str | None,
+    wait: bool,
+    folder: Path | None,
+) -> None:
     """Send the job document JOB to a server.
 
     Prints the address of the job; with --wait also the summary of its results.
@@ -41,8 +55,10 @@ def command(job: Path, url: str, wait: bool, folder: Path | None) -> None:  # fm
     if folder:
         refuse_foreign(folder)
     try:
-        client = Client(url)
-        accepted = client.submit(job.read_bytes(), key=str(uuid.uuid4()))
+        client = Client(url, token)
+        if client.shows_token:
+            err().print("[yellow]The token travels unencrypted; use https.[/yellow]")
+        accepted = client.submit(job.read_bytes(), key=str(uuid.uuid4()), priority=priority)
         here = client.url.rstrip("/") + accepted["links"]["self"]
         err().print(f"accepted: {here}", soft_wrap=True)
         if not (wait or folder):
@@ -92,6 +108,11 @@ def fetch_files(client: Client, here: str, results: dict[str, Any], folder: Path
         for quantity in pictures:
             target = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
             client.fetch(f"{here}/previews/{quote(case, safe='')}/{quote(quantity)}.png", target)
+    made = results["files"]["envelope"]
+    names = [f"{measure}.png" for measure in made["previews"]]
+    for name in [*names, "fields.vtu"] if "fields" in made else names:
+        target = folder / "envelope" / file_name(name)
+        client.fetch(f"{here}/envelope/{quote(name, safe='')}", target)
     for line in results["files"]["lines"]:
         target = folder / "lines" / f"{file_name(line)}.png"
         client.fetch(f"{here}/lines/{quote(line, safe='')}.png", target)

@@ -80,7 +80,10 @@ def finish(services: Services) -> Callable[[str], None]:
         with services.store.working(job_id) as staging:
             assert staging is not None
             (staging / "results.json").write_bytes(orjson.dumps(RESULTS))
-            for name in ("fields/pull.vtu", "previews/pull/model.png", "lines/axis.png"):
+            for name in (
+                "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png",
+                "envelope/fields.vtu", "envelope/nodes.csv", "envelope/von_mises.png",
+            ):  # fmt: skip
                 path = staging / name
                 path.parent.mkdir(parents=True, exist_ok=True)
                 path.write_bytes(name.encode())

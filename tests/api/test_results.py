@@ -50,7 +50,16 @@ def test_a_finished_job_shows_its_own_cautions_first(client: FlaskClient, job_id
 
 
 @pytest.mark.parametrize(
-    "path", ["results", "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png"]
+    "path",
+    [
+        "results",
+        "fields/pull.vtu",
+        "previews/pull/model.png",
+        "lines/axis.png",
+        "envelope/fields.vtu",
+        "envelope/nodes.csv",
+        "envelope/von_mises.png",
+    ],
 )
 def test_an_unchanged_file_is_not_sent_again(get: Get, path: str) -> None:
     """RFC 9110 section 13.1.2: If-None-Match with the current ETag gives 304 and no body."""
@@ -74,7 +83,8 @@ def test_names_are_not_paths(get: Get) -> None:
 @pytest.mark.parametrize(
     ("path", "kind"),
     [("fields/push.vtu", "case or combination"), ("previews/push/model.png", "case or combination"),
-     ("previews/pull/colour.png", "quantity"), ("lines/push.png", "line"),
+     ("previews/pull/colour.png", "quantity"), ("envelope/colour.png", "measure"),
+     ("lines/push.png", "line"),
      ("tables/push.csv", "table")],
 )  # fmt: skip
 def test_an_unknown_name_is_answered_with_those_there_are(get: Get, path: str, kind: str) -> None:

@@ -8,7 +8,7 @@ import pytest
 
 from tests.output_samples import mapped_mesh, plain_job, rectangle
 from tests.pictures import Picture
-from workers.analysis.envelope import WORST, Envelope
+from workers.analysis.envelope import WORST
 from workers.analysis.field_mesh import FieldMesh
 from workers.cautions import STANDING
 from workers.outputs.drawing.governing import HEADINGS
@@ -17,21 +17,13 @@ from workers.outputs.drawing.palette import grey, rgb
 from workers.outputs.preview import render_governing
 
 
-def envelope(state: np.ndarray) -> Envelope:
-    """The same states in all measures; the values grow with the number of the point."""
-    values = np.linspace(1.0, 2.0, len(state))
-    return Envelope(
-        {name: sign * values for name, sign in WORST.items()},
-        {name: state.astype(np.int32) for name in WORST},
-    )
-
-
 def drawn(path: Path, state_of, names, quantity="von_mises", cells=(20, 10), size=(100.0, 50.0)):
     mesh = mapped_mesh("Q8", cells, rectangle(*size))
     field_mesh = FieldMesh.build(mesh)
     state = np.broadcast_to(state_of(*field_mesh.points.T), field_mesh.point_count)
+    peak = {"value": 2.0, "at": list(size), "governs": names[0]}
     render_governing(
-        path, plain_job(mesh), field_mesh, envelope(state), quantity, names, cautions=STANDING
+        path, plain_job(mesh), field_mesh, state, quantity, names, peak, cautions=STANDING
     )
     return Picture(path)
 

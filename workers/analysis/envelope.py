@@ -17,8 +17,6 @@ WORST: Mapping[str, int] = {
     "shear_max": 1,
     "displacement": 1,
 }
-
-
 STATE = ".state"  # behind the name of a measure, where arrays have names
 POINTS_AT_ONCE = 1024  # what is formed on the way stays in the cache
 

@@ -10,8 +10,8 @@ from pathlib import Path
 from typing import Any
 
 import numpy as np
+from numpy.typing import NDArray
 
-from workers.analysis.envelope import Envelope
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.mesh import Mesh
@@ -114,22 +114,25 @@ def render_governing(
     path: Path,
     job: Job,
     mesh: FieldMesh,
-    envelope: Envelope,
+    state: NDArray[np.int32],
     quantity: str,
     names: Sequence[str],
+    peak: Mapping[str, Any] | None,
     *,
     cautions: Sequence[Caution],
 ) -> None:
     """Draw which state governs where, for one measure of an envelope.
 
-    names : of the states that the envelope counts
+    state : (P,)   number of the governing state at each field point
+    names : of the states
+    peak : the extreme as the results have it: `value`, `at` and `governs`; None: none is known
 
     Raises PicturesUnavailableError, KeyError and OSError as `render_field` does.
     """
     heading = HEADINGS[quantity]
     require()
     page = Page(job.title, f"Envelope · Which case governs: {heading}", cautions)
-    draw_governing(page, job, mesh, envelope, quantity, names)
+    draw_governing(page, job, mesh, state, quantity, names, peak)
     page.save(path, _facts("envelope", quantity, job.units.stress))
 
 

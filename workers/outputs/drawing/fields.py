@@ -80,7 +80,7 @@ def draw_stress(
         _draw_directions(page.canvas, mesh, view, fields, quantity)
     peak = int(quantity.peak(nodal))
     value = f"{show(nodal[peak])} {job.units.stress}"
-    mark_peak(page, view, mesh.points[peak], value, where(mesh, peak, job))
+    mark_peak(page, view, mesh.points[peak], value, _where(mesh, peak, job))
 
 
 def stress_scale(nodal: Array, limits: Limits | None, rounding: float, *, signed: bool) -> Scale:
@@ -227,10 +227,10 @@ def draw_deformed(page: Page, job: Job, mesh: FieldMesh, fields: Fields, factor:
     draw_outline(page.canvas, mesh.mesh, view, positions)
     peak = int(np.argmax(size))
     value = f"{show(largest)} {unit}"
-    mark_peak(page, view, moved[peak], value, where(mesh, peak, job))
+    mark_peak(page, view, moved[peak], value, _where(mesh, peak, job))
 
 
-def where(mesh: FieldMesh, point: int, job: Job) -> str:
+def _where(mesh: FieldMesh, point: int, job: Job) -> str:
     """A position to four digits; what is rounding against the size of the plate is zero."""
     place = mesh.points[point]
     x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)

@@ -4,21 +4,19 @@ The states that govern the largest part of the plate get a zone of their own; th
 A zone reaches half-way to the next node, which is all that is known.
 """
 
-from collections.abc import Sequence
-from typing import NamedTuple
+from collections.abc import Mapping, Sequence
+from typing import Any, NamedTuple
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy import ndimage
 
-from workers.analysis.envelope import WORST, Envelope
 from workers.analysis.field_mesh import FieldMesh
-from workers.analysis.peaks import worst
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.fields import mark_peak, where
+from workers.outputs.drawing.fields import mark_peak
 from workers.outputs.drawing.hatching import HATCHINGS, hatch, swatch
-from workers.outputs.drawing.numbers import show
+from workers.outputs.drawing.numbers import show, vector
 from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page
 from workers.outputs.drawing.palette import FAINT, INK, PAPER
 from workers.outputs.drawing.plate import draw_outline
@@ -54,22 +52,32 @@ class Zone(NamedTuple):
 
 
 def draw_governing(
-    page: Page, job: Job, mesh: FieldMesh, envelope: Envelope, quantity: str, names: Sequence[str]
+    page: Page,
+    job: Job,
+    mesh: FieldMesh,
+    state: NDArray[np.int32],
+    quantity: str,
+    names: Sequence[str],
+    peak: Mapping[str, Any] | None,
 ) -> None:
-    """Paint the zones of a measure of the envelope; mark the extreme of all."""
+    """Paint the zones of a measure; mark the extreme of all.
+
+    state : (P,)   number of the governing state at each field point
+    peak : the extreme as the results have it: `value`, `at` and `governs`; None: none is known
+    """
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
     beside = (high - low)[0] * page.drawing.height < 1.6 * (high - low)[1] * page.drawing.width
     surface = _surface(mesh, 1.0)
-    state = envelope.state[quantity][surface.nearest]
-    zones, number_of = _zones(state, _areas(surface), names)
+    zones, number_of = _zones(state[surface.nearest], _areas(surface), names)
     view, legend = _lay_out(page, low, high, len(zones), beside)
-    numbers = _paint(_surface(mesh, view.scale), view, envelope.state[quantity], number_of)
+    numbers = _paint(_surface(mesh, view.scale), view, state, number_of)
     page.paper = hatch(numbers)
     _part(page, numbers)
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes)
     _draw_letters(page.canvas, numbers, zones)
     _draw_legend(page.canvas, legend, zones, beside)
-    _mark(page, job, mesh, view, envelope, quantity, names)
+    if peak is not None:
+        _mark(page, job, view, quantity, peak)
 
 
 def _surface(mesh: FieldMesh, scale: float) -> Surface:
@@ -180,21 +188,11 @@ def _draw_entry(canvas: Canvas, zone: Zone, x: float, y: float, width: float) ->
     canvas.text((x + wide + 44, y), name, LABEL_SIZE, colour=INK)
 
 
-def _mark(
-    page: Page,
-    job: Job,
-    mesh: FieldMesh,
-    view: View,
-    envelope: Envelope,
-    quantity: str,
-    names: Sequence[str],
-) -> None:
+def _mark(page: Page, job: Job, view: View, quantity: str, peak: Mapping[str, Any]) -> None:
     """The extreme over the whole plate, with the state that it belongs to."""
-    values = envelope.value[quantity]
-    point = int(worst(values, WORST[quantity]))
     unit = job.units.length if quantity == "displacement" else job.units.stress
-    name = page.canvas.fit(names[envelope.state[quantity][point]], LABEL_SIZE, 400, bold=True)
-    mark_peak(
-        page, view, mesh.points[point], f"{show(values[point])} {unit}",
-        f"in {name}, {where(mesh, point, job)}",
-    )  # fmt: skip
+    name = page.canvas.fit(peak["governs"], LABEL_SIZE, 400, bold=True)
+    at = np.array(peak["at"])
+    x, y = peak["at"]
+    place = f"at {vector(x, y, digits=4)} {job.units.length}"
+    mark_peak(page, view, at, f"{show(peak['value'])} {unit}", f"in {name}, {place}")
