@@ -7,8 +7,8 @@ E^2 needs
 
     r = (E^2 / sum of e^(2 / (p + 1)))^(1 / 2p)  e^(-1 / (p + 1))
 
-Each state asks for its sizes; the smallest is taken. Next to a singular place the error falls with
-r^lambda only (`wedge.py`), so that the same gain takes r^(p / lambda).
+Each state asks for its sizes; the smallest is taken. At a singular place the error falls with
+r^lambda only (`wedge.py`), so that the same gain takes r^(p / lambda) there.
 
 References
 ----------
@@ -24,11 +24,14 @@ from numpy.typing import NDArray
 
 from workers.analysis.error_estimate import ErrorEstimate
 from workers.analysis.mesh import Mesh
+from workers.analysis.meshing.size_field import element_sizes
 from workers.analysis.singularities import SingularPlace
 
 Array = NDArray[np.float64]
 
-SMALLEST, LARGEST = 0.1, 2.0  # change of the size in one step: errors on a coarse mesh are rough
+# Change of the size in one step: errors on a coarse mesh are rough.
+SMALLEST, LARGEST = 0.1, 2.0
+SMALLEST_AT_CORNER = 0.02
 
 
 class SizesWanted:
@@ -52,20 +55,26 @@ class SizesWanted:
         need = (share * weight).max(axis=1, initial=0.0)
         self._need = need if self._need is None else np.maximum(self._need, need)
 
-    def ratios(self, mesh: Mesh, error: float, places: Iterable[SingularPlace]) -> Array:
+    def ratios(self, error: float) -> Array:
         """New size over old for all elements, block after block, (m,).
 
         error : relative energy norm wanted in every state
         """
         assert self._need is not None
-        p = self._order
         with np.errstate(divide="ignore"):
-            ratio = error ** (1 / p) / self._need
-        for place in places:
-            if place.exponent > 0:
-                touching = np.concatenate(
-                    [(b.connectivity == place.node).any(axis=1) for b in mesh.blocks]
-                )
-                refined = touching & (ratio < 1)
-                ratio[refined] **= p / place.exponent
+            ratio = error ** (1 / self._order) / self._need
         return np.clip(ratio, SMALLEST, LARGEST)
+
+    def at_corners(self, mesh: Mesh, ratios: Array, places: Iterable[SingularPlace]) -> Array:
+        """x, y and size wanted at the singular places themselves, (s, 3) [L]."""
+        sizes = element_sizes(mesh)
+        points = []
+        for place in places:
+            touching = np.concatenate(
+                [(b.connectivity == place.node).any(axis=1) for b in mesh.blocks]
+            )
+            ratio = min(float(ratios[touching].min()), 1.0)
+            if place.exponent > 0:
+                ratio = max(ratio ** (self._order / place.exponent), SMALLEST_AT_CORNER)
+            points.append((*place.at, ratio * sizes[touching].min()))
+        return np.array(points).reshape(-1, 3)
