@@ -9,7 +9,6 @@ Jobs of other workspaces do not exist for a caller: they are answered like ids t
 """
 
 import ipaddress
-import socket
 from dataclasses import dataclass
 from urllib.parse import urlsplit
 
@@ -19,10 +18,9 @@ from flask import Request
 from api.problem_types import ROLE_NEEDED, TOKEN_NEEDED
 from api.problems import RefusalError
 from api.services import services
-from workers.errors import SettingsError, UnknownJobError
+from workers.errors import UnknownJobError
 from workers.record import DEFAULT_WORKSPACE, Record
-from workers.settings import Settings
-from workers.tokens import ADMIN, READ, SUBMIT, Token, Tokens
+from workers.tokens import ADMIN, READ, SUBMIT, Token
 
 # Endpoints that need no token: nothing of any job is in them, and monitors come without one.
 OPEN = frozenset({"health.live", "docs.page", "docs.openapi"})
@@ -30,11 +28,6 @@ REALM = 'Bearer realm="fishplate"'
 LOCAL_NAMES = ("localhost", "127.0.0.1", "::1")
 FORWARDED = ("Forwarded", "X-Forwarded-For", "X-Forwarded-Host", "Via")
 
-BEYOND_LOOPBACK = (
-    "{host} can be reached from other machines, and no token has been made: anybody could submit "
-    "and delete. Make one first, for instance with `fishplate tokens add NAME --role admin`, or "
-    "listen on 127.0.0.1."
-)
 NOT_LOCAL = (
     "Without tokens this server answers requests from its own machine only. Whoever runs it can "
     "make one with `fishplate tokens add NAME --role submit`."
@@ -61,26 +54,6 @@ class Caller:
 
 
 LOCAL = Caller(name=None, token_id=None, role=ADMIN, workspace=DEFAULT_WORKSPACE)
-
-
-def require_tokens_beyond_loopback(settings: Settings) -> None:
-    """Refuse to be reachable for everybody.
-
-    Raises
-    ------
-    SettingsError   with what to do.
-    """
-    if not (is_loopback(settings.host) or any(t.usable for t in Tokens(settings.store).all())):
-        raise SettingsError(BEYOND_LOOPBACK.format(host=settings.host or "every address"))
-
-
-def is_loopback(host: str) -> bool:
-    """Whether an address to listen on can be reached from this machine only."""
-    try:
-        found = {str(entry[4][0]) for entry in socket.getaddrinfo(host, None)} if host else set()
-    except OSError:  # not a name of this machine; listening will fail, and say so
-        found = set()
-    return bool(found) and all(ipaddress.ip_address(address).is_loopback for address in found)
 
 
 def identify() -> None:

@@ -3,7 +3,8 @@
 from flask import Flask
 from werkzeug.middleware.proxy_fix import ProxyFix
 
-from api import access, catalogue, docs, health, jobs, problems, rates, results
+from api import access, catalogue, checks, docs, health, jobs, problems, rates, results, tracing
+from api.exposure import require_tokens_beyond_loopback
 from api.openapi import ABOUT, SETTINGS, Api
 from api.preferences import WaitingRoom
 from api.responses import CautiousJSON
@@ -14,7 +15,13 @@ from workers.settings import Settings
 from workers.store import Store
 from workers.tokens import Tokens
 
-BLUEPRINTS = (jobs.blueprint, results.blueprint, catalogue.blueprint, health.blueprint)
+BLUEPRINTS = (
+    jobs.blueprint,
+    checks.blueprint,
+    results.blueprint,
+    catalogue.blueprint,
+    health.blueprint,
+)
 
 
 def create_app(settings: Settings | None = None) -> Flask:
@@ -29,7 +36,7 @@ def create_app(settings: Settings | None = None) -> Flask:
     app.config.update(SETTINGS)
     app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes + 1  # see bodies.py
     app.json = CautiousJSON(app)
-    access.require_tokens_beyond_loopback(settings)
+    require_tokens_beyond_loopback(settings)
     app.extensions[KEY] = Services(
         settings,
         Store(settings.store),
@@ -44,7 +51,8 @@ def create_app(settings: Settings | None = None) -> Flask:
     for blueprint in BLUEPRINTS:
         api.register_blueprint(blueprint)
     app.register_blueprint(docs.blueprint)
-    # In this order: whose request it is, whether he asks too often, whether he may.
+    # In this order: its name, whose it is, whether he asks too often, whether he may.
+    tracing.register(app)
     app.before_request(access.identify)
     rates.register(app, settings)
     app.before_request(access.authorise)

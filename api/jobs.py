@@ -95,6 +95,7 @@ def submit(query: dict[str, Any]) -> Any:
     )
     if created:
         note(SUBMITTED, record)
+        log.info("job %s is accepted", record.id, extra={"facts": {"job": record.id}})
         _enqueue(record.id)
     return describe(record), 202 if created else 200, {"Location": address(record.id)}
 

@@ -7,7 +7,6 @@ length of the line, sizes) is bounded all the time. Without tokens there is nobo
 and nothing is counted.
 """
 
-import math
 import time
 from typing import Any
 
@@ -53,7 +52,7 @@ def _is_free() -> bool:
 
 
 def _too_many(breached: RequestLimit) -> Response:
-    seconds = max(1, math.ceil(breached.reset_at - time.time()))
+    seconds = max(1, int(breached.reset_at - time.time()))
     return problem(
         TOO_MANY,
         f"More than {breached.limit}; the next is answered in {seconds} s.",

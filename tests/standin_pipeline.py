@@ -27,7 +27,13 @@ def warm_up() -> None:
 
 
 def run(
-    document: bytes, folder: Path, *, job_id: str | None, progress: Progress, pictures: int = 6
+    document: bytes,
+    folder: Path,
+    *,
+    job_id: str | None,
+    progress: Progress,
+    pictures: int = 6,
+    most_dofs: int | None = None,
 ) -> dict[str, Any]:
     order = json.loads(document)
     (folder.parent / f"begun-{time.monotonic_ns()}").touch()

@@ -35,6 +35,7 @@ from workers.job import Job
 from workers.outputs import preview
 from workers.preflight import placing_faults, preflight
 from workers.review.review import review
+from workers.sizes import check_dofs
 
 DOCUMENT, DISPLACEMENTS, RESULTS = "job.json", "displacements.npy", "results.json"
 ENVELOPE = "envelope.npz"
@@ -56,6 +57,7 @@ def run(
     job_id: str | None = None,
     progress: Progress = silent,
     pictures: int = 6,
+    most_dofs: int | None = None,
 ) -> Json:
     """Solve a job and write its results into an empty folder.
 
@@ -72,6 +74,7 @@ def run(
     Raises
     ------
     DocumentError, MeshError, AnalysisError   what is wrong, where, and what to do.
+    LimitError                                more than `most_dofs` degrees of freedom.
     OSError                                   the folder could not be written.
     """
     # Many small fronts and gathers: a second BLAS thread costs more than it brings.
@@ -80,6 +83,7 @@ def run(
         job = read_document(document)
         progress("meshing", 0.0)
         mesh = prepare(job)
+        check_dofs(mesh.dof_count, most_dofs)
         solution = solve(job, mesh, progress)
         progress("recovering", 0.0)
         envelope = Envelope()

@@ -18,6 +18,7 @@ from types import FrameType
 
 import redis
 
+from workers import logs
 from workers.errors import FishplateError
 from workers.lineage import die_with_parent
 from workers.private_redis import PrivateRedis
@@ -142,9 +143,10 @@ def run_pool(settings: Settings) -> None:
 def main() -> int:
     """Run the pool as a child that ends with its parent."""
     die_with_parent(signal.SIGTERM)
-    logging.basicConfig(level=logging.INFO, format="%(asctime)s %(levelname)s %(message)s")
     try:
-        run_pool(Settings.from_environment())
+        settings = Settings.from_environment()
+        logs.configure(settings.log_level)
+        run_pool(settings)
     except FishplateError as error:
         print(error, file=sys.stderr)
         return 1

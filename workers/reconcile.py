@@ -8,11 +8,11 @@ import logging
 
 from workers.errors import StoreError, TransitionError, UnknownJobError
 from workers.queue import Queue
-from workers.record import FAILED, QUEUED, RUNNING
+from workers.record import FAILED, KILLED, QUEUED, RUNNING, TIME
 from workers.store import Store
 
 MOST_ATTEMPTS = 2
-KILLED = "The worker process was killed while it worked on this job."
+KILLED_ONCE = "The worker process was killed while it worked on this job."
 GIVEN_UP = (
     "The worker process was killed {times} times while it worked on this job, most often because "
     "the machine ran out of memory. Try a coarser mesh or fewer load cases at a time, or give the "
@@ -49,7 +49,7 @@ def settle(
 ) -> bool:
     """Decide what happens to a job that nobody works on; returns False when somebody does.
 
-    verdict     : why the worker was killed, when that was on purpose: the job has failed.
+    verdict     : why the worker was killed for taking too long: the job has failed.
     handed_back : the worker was shut down in order: the attempt does not count.
     """
     try:
@@ -75,14 +75,15 @@ def _settle(
         if store.recover_published(job_id):
             return
         if verdict is not None:
-            store.transition(job_id, FAILED, reason=verdict)
+            queue.tallies.add_end(store.transition(job_id, FAILED, reason=verdict, cause=TIME))
             return
         if handed_back:
             store.transition(job_id, QUEUED, reason=HANDED_BACK, attempts=record.attempts - 1)
         elif record.attempts >= MOST_ATTEMPTS:
-            store.transition(job_id, FAILED, reason=GIVEN_UP.format(times=record.attempts))
+            reason = GIVEN_UP.format(times=record.attempts)
+            queue.tallies.add_end(store.transition(job_id, FAILED, reason=reason, cause=KILLED))
             return
         else:
-            store.transition(job_id, QUEUED, reason=KILLED)
+            store.transition(job_id, QUEUED, reason=KILLED_ONCE)
     log.warning("job %s is queued again", job_id)
     queue.submit(job_id)

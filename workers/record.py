@@ -31,6 +31,11 @@ LEGAL = {
     RUNNING: frozenset({QUEUED, FINISHED, FAILED, CANCELLED}),
 }
 
+# Why a job failed, in one word each, for counting.
+DOCUMENT, MESH, ANALYSIS, LIMIT, TIME, MEMORY, DISK, KILLED, PROGRAM = CAUSES = (
+    "document", "mesh", "analysis", "limit", "time", "memory", "disk", "killed", "program",
+)  # fmt: skip
+
 # --- ids -----------------------------------------------------------------------------------------
 
 # Base 32 without i, l, o, u; its order is the order of the characters, so ids sort by time.
@@ -54,10 +59,15 @@ def is_id(text: str) -> bool:
 
 def day_of(job_id: str) -> str:
     """The UTC day inside an id, e.g. "2031-04-05"."""
+    return time_of(job_id).date().isoformat()
+
+
+def time_of(job_id: str) -> datetime:
+    """When the id was made, UTC."""
     microseconds = 0
     for character in job_id[:TIME_CHARACTERS]:
         microseconds = 32 * microseconds + ALPHABET.index(character)
-    return (datetime(1970, 1, 1) + timedelta(microseconds=microseconds)).date().isoformat()
+    return datetime(1970, 1, 1, tzinfo=UTC) + timedelta(microseconds=microseconds)
 
 
 def _base32(value: int, length: int) -> str:

@@ -46,5 +46,12 @@ def as_markdown() -> str:
     return INTRODUCTION + "".join(lines)
 
 
+def as_help() -> str:
+    """Names and defaults for the help of a command; click keeps lines after `\\b` as they are."""
+    width = max(len(name) for name, _, _ in rows())
+    lines = [f"  {name:<{width}}  {default}" for name, default, _ in rows()]
+    return "\n".join(["\b", "Environment variables and their defaults:", *lines])
+
+
 if __name__ == "__main__":
     sys.stdout.write(as_markdown())

@@ -15,6 +15,7 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "work": "Run workers for a queue that runs elsewhere.",
         "solve": "Solve a job here and now, without server or queue.",
         "submit": "Send a job to a server, wait for it, fetch its results.",
+        "tokens": "Make, list and revoke the tokens that a server asks for.",
         "check": "Read a job and say what was understood; solve nothing.",
     }
 )

@@ -31,23 +31,35 @@ class ServerError(FishplateError):
 
 
 class Client:
-    """Talks to the server at one base address.
+    """Talks to the server at one base address, with a token where one is needed.
 
     Raises ServerError where the server refuses or is silent.
     """
 
-    def __init__(self, url: str) -> None:
+    def __init__(self, url: str, token: str | None = None) -> None:
         if urlsplit(url).scheme not in ("http", "https"):
             raise ServerError(f"{url} is no http:// or https:// address", status=400)
         self.url = url if url.endswith("/") else url + "/"
+        self.token = token
 
-    def submit(self, document: bytes, key: str) -> dict[str, Any]:
+    @property
+    def shows_token(self) -> bool:
+        """Whether others on the way can read the token."""
+        parts = urlsplit(self.url)
+        return (
+            self.token is not None
+            and parts.scheme == "http"
+            and parts.hostname not in ("localhost", "127.0.0.1", "::1")
+        )
+
+    def submit(self, document: bytes, key: str, priority: str | None = None) -> dict[str, Any]:
         """Send a document; the key makes it safe to send again."""
         headers = {"Content-Type": "application/json", "Idempotency-Key": key}
         if len(document) >= WORTH_PACKING:
             document = gzip.compress(document, compresslevel=1)
             headers["Content-Encoding"] = "gzip"
-        return self._json(Request(self._at("v1/jobs"), document, headers, method="POST"))
+        query = f"?priority={priority}" if priority else ""
+        return self._json(Request(self._at("v1/jobs" + query), document, headers, method="POST"))
 
     def job(self, job_id: str, wait: int = WAIT) -> dict[str, Any]:
         """State of a job, held by the server until it is final or the wait is over."""
@@ -74,6 +86,9 @@ class Client:
             return body
 
     def _open(self, request: Request) -> Any:
+        if self.token is not None:
+            # Not to wherever an answer might lead.
+            request.add_unredirected_header("Authorization", f"Bearer {self.token}")
         try:
             return urlopen(request, timeout=PATIENCE)
         except HTTPError as error:

@@ -70,7 +70,7 @@ def _start(settings: Settings, listener: socket.socket) -> "subprocess.Popen[byt
         "threads": settings.api_threads,
         "timeout": 2 * settings.longest_wait,
         "graceful-timeout": GRACE,
-        "log-level": "warning",
+        "config": "python:api.gunicorn_config",
     }
     return subprocess.Popen(
         [

@@ -16,16 +16,19 @@ from redis.exceptions import RedisError
 
 from api.commands.http_server import ServerStartError, http_server
 from api.commands.settings import settings_with
-from api.commands.terminal import FAILED, err, leave
+from api.commands.terminal import BAD_INPUT, FAILED, err, leave
+from api.exposure import require_tokens_beyond_loopback
+from elements.errors import FishplateError
 from workers.lineage import die_with_parent
 from workers.queue import Queue
+from workers.setting_table import as_help
 from workers.settings import Settings
 
 TICK = 0.2  # between two looks whether everything still runs [s]
 PATIENCE = 120.0  # for the workers, which load the solver and the renderer first [s]
 
 
-@click.command()
+@click.command(epilog=as_help())
 @click.option("--host", help="Address to listen on; this machine only, if not given.")
 @click.option(
     "--port", type=click.IntRange(0, 65535), help="Port to listen on; 0 takes a free one."
@@ -46,11 +49,16 @@ def command(
     """Run queue, workers and HTTP server on this machine.
 
     Without FISHPLATE_REDIS_URL a private Redis server is started, whose files are in the store.
-    Stop with Ctrl-C or SIGTERM: running jobs may end, what does not is queued again at the next
-    start. Nothing that was accepted is lost.
+    Beyond this machine it listens only when tokens have been made (`fishplate tokens add`). Stop
+    with Ctrl-C or SIGTERM: running jobs may end, what does not is queued again at the next start.
+    Nothing that was accepted is lost.
     """
     store = store.absolute() if store else None
     settings = settings_with(host=host, port=port, store=store, workers=workers)
+    try:
+        require_tokens_beyond_loopback(settings)
+    except FishplateError as error:
+        leave(BAD_INPUT, str(error))
     _exit_on_signals()
     try:
         with worker_pool(settings) as pool, http_server(settings) as (address, server):

@@ -1,11 +1,10 @@
 """`fishplate work`: workers on this machine, for a store and a queue that others share."""
 
-import logging
-
 import click
 
 from api.commands.settings import settings_with
 from api.commands.terminal import FAILED, leave
+from workers import logs
 from workers.errors import FishplateError
 from workers.pool import run_pool
 
@@ -18,8 +17,9 @@ def command(workers: int | None) -> None:
     FISHPLATE_REDIS_URL names the queue and FISHPLATE_STORE the folder of the jobs; both must be
     those of the server. On SIGTERM or SIGINT running jobs may end; what does not is queued again.
     """
-    logging.basicConfig(level=logging.INFO, format="%(asctime)s %(levelname)s %(message)s")
+    settings = settings_with(workers=workers)
+    logs.configure(settings.log_level)
     try:
-        run_pool(settings_with(workers=workers))
+        run_pool(settings)
     except FishplateError as error:
         leave(FAILED, str(error))

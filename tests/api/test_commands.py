@@ -1,5 +1,6 @@
 """The `fishplate` command: exit statuses, and what it prints."""
 
+import dataclasses
 import json
 import threading
 from collections.abc import Callable, Iterator
@@ -12,12 +13,14 @@ from flask import Flask
 from werkzeug.serving import make_server
 
 from api.commands import COMMANDS, main
+from api.commands.client import Client
 from api.commands.folders import replaced
 from api.commands.layout import number
 from api.services import KEY
 from tests.job_documents import strip
 from workers.errors import Fault
 from workers.record import FAILED, RUNNING
+from workers.settings import Settings
 
 
 def run(*arguments: str | Path) -> Result:
@@ -176,6 +179,86 @@ def test_a_large_document_is_sent_packed(job: Path, url: str, app: Flask) -> Non
     job.write_text(json.dumps(document) + " " * 90_000)
     result = run("submit", job, "--url", url)
     assert app.extensions[KEY].store.document(result.stdout.strip()) == job.read_bytes()
+
+
+# --- tokens --------------------------------------------------------------------------------------
+
+
+@pytest.fixture
+def store(app: Flask) -> str:
+    return str(app.extensions[KEY].settings.store)
+
+
+def test_a_token_made_by_the_command_opens_a_running_server(
+    job: Path, url: str, app: Flask, store: str
+) -> None:
+    """The server is the one that was already running; the token is printed alone, for scripts."""
+    made = run("tokens", "add", "ana", "--role", "submit", "--workspace", "dock", "--store", store)
+    assert made.exit_code == 0
+    token = made.stdout.strip()
+    refused = run("submit", job, "--url", url)
+    assert refused.exit_code == 2
+    assert "A token is needed" in refused.stderr
+    for given in (["--token", token], []):
+        sent = CliRunner(env={"FISHPLATE_TOKEN": token}).invoke(
+            main, ["submit", str(job), "--url", url, *given]
+        )
+        assert sent.exit_code == 0
+    record = app.extensions[KEY].store.record(sent.stdout.strip())
+    assert (record.owner, record.workspace) == ("ana", "dock")
+
+
+def test_tokens_are_listed_without_their_secrets_and_revoked_by_name(store: str) -> None:
+    token = run("tokens", "add", "ana", "--role", "read", "--expires", "9", "--store", store)
+    secret = token.stdout.strip().rsplit("_", 1)[1]
+    listed = run("tokens", "list", "--store", store).stdout
+    assert "ana" in listed
+    assert "until" in listed
+    assert secret not in listed
+    assert run("tokens", "revoke", "ana", "--store", store).exit_code == 0
+    assert "revoked" in run("tokens", "list", "--store", store).stdout
+    assert run("tokens", "revoke", "ana", "--store", store).exit_code == 2
+
+
+@pytest.mark.parametrize(
+    "wrong", [["a b", "--role", "read"], ["ana"], ["ana", "--role", "root"],
+              ["ana", "--role", "read", "--workspace", "../x"],
+              ["ana", "--role", "read", "--expires", "0"]],
+)  # fmt: skip
+def test_a_token_that_cannot_be_is_refused(store: str, wrong: list[str]) -> None:
+    assert run("tokens", "add", *wrong, "--store", store).exit_code == 2
+    assert "Tokens" in run("tokens", "list", "--store", store).stdout
+
+
+def test_what_the_command_did_is_in_the_audit_log(store: str) -> None:
+    run("tokens", "add", "ana", "--role", "read", "--store", store)
+    run("tokens", "revoke", "ana", "--store", store)
+    (path,) = Path(store, "audit").iterdir()
+    entries = [json.loads(line) for line in path.read_text().splitlines()]
+    assert [entry["action"] for entry in entries] == ["token added", "token revoked"]
+    assert all(entry["who"] and entry["name"] == "ana" for entry in entries)
+
+
+def test_serve_beyond_this_machine_says_what_to_do_first(store: str) -> None:
+    result = run("serve", "--host", "0.0.0.0", "--port", "0", "--store", store)
+    assert result.exit_code == 2
+    assert "fishplate tokens add" in " ".join(result.stderr.split())
+
+
+def test_serve_help_lists_every_setting() -> None:
+    """As the README says."""
+    listed = run("serve", "--help").stdout
+    assert all(f"FISHPLATE_{f.name.upper()} " in listed for f in dataclasses.fields(Settings))
+
+
+@pytest.mark.parametrize(
+    ("url", "shown"),
+    [("http://plates.example", True), ("https://plates.example", False),
+     ("http://127.0.0.1:8470", False)],
+)  # fmt: skip
+def test_a_token_that_others_can_read_on_the_way_is_noticed(url: str, shown: bool) -> None:
+    assert Client(url, "secret").shows_token is shown
+    assert not Client(url).shows_token
 
 
 # --- solve ---------------------------------------------------------------------------------------

@@ -1,5 +1,6 @@
 """Real forking workers: whatever is killed, each job ends in exactly one final state."""
 
+import json
 import os
 import random
 import signal
@@ -10,6 +11,7 @@ import psutil
 import pytest
 
 from tests.service_pool import (
+    PATIENCE,
     RESULTS,
     Service,
     accept,
@@ -45,6 +47,21 @@ def test_a_job_runs_and_its_results_are_published(service: Service) -> None:
     for name in RESULTS:
         assert (folder / name).read_bytes() == service.store.document(record.id)
     check_one_end(service, record.id)
+
+
+def test_workers_count_how_jobs_ended_and_how_long_each_stage_took(service: Service) -> None:
+    """Stages as the stand-in reports them; every line that a worker logs is a JSON object."""
+    service.ended(service.submit("wait", seconds=0.2))
+    job_id = service.submit("raise", error="DocumentError", message="too thin")
+    service.ended(job_id)
+    ended = {("finished", ""): 1, ("failed", "document"): 1}
+    eventually(lambda: service.queue.tallies.ended() == ended)
+    stages = service.queue.tallies.stages()
+    assert 0.2 <= stages["solving"].total < PATIENCE
+    assert sum(stages["waiting"].counts) == 2
+    log = (service.settings.store / "pool.log").read_text().splitlines()
+    lines = [json.loads(line) for line in log]
+    assert any(line["logger"] == "workers.tasks" and line.get("job") == job_id for line in lines)
 
 
 def test_progress_is_reported_by_stage(service: Service) -> None:
@@ -154,6 +171,7 @@ def test_a_job_killed_twice_fails_and_says_why(patient_service: Service) -> None
     assert (record.state, record.attempts) == ("failed", 2)
     assert "killed 2 times" in record.reason
     assert "memory" in record.reason
+    assert record.cause == "killed"
     assert attempts_in(service.store, record.id) == 2
     check_one_end(service, record.id)
 
@@ -294,6 +312,7 @@ def test_a_job_over_its_time_fails_and_says_so(settings: Settings) -> None:
         record = service.ended(service.submit("wait"))
         assert (record.state, record.attempts) == ("failed", 1)
         assert "longer than the 1 s allowed" in record.reason
+        assert record.cause == "time"
         check_one_end(service, record.id)
 
 
