@@ -95,8 +95,21 @@ class Solution:
         return _parts(len(self.cases), self.model.mesh.dof_count)
 
 
+@dataclass(eq=False)
+class Kept:
+    """A place for the factorised system of a model: whoever solves it first leaves it there, and
+    further jobs of the same model on the same mesh take it.
+    """
+
+    system: System | None = None
+
+
 def solve(
-    job: Job, mesh: Mesh, progress: Progress | None = None, method: str = MULTIFRONTAL
+    job: Job,
+    mesh: Mesh,
+    progress: Progress | None = None,
+    method: str = MULTIFRONTAL,
+    kept: Kept | None = None,
 ) -> Solution:
     """Solve all load cases of a job on its mesh.
 
@@ -104,6 +117,8 @@ def solve(
     ----------
     progress : called with the stage and the fraction of it that is done
     method : "multifrontal", or "superlu" or "pardiso" for comparison
+    kept : takes the factorised system, or has that of a job with the same mesh, sections and
+        supports but for what these prescribe
 
     Raises
     ------
@@ -112,20 +127,23 @@ def solve(
     AnalysisError    the system could not be solved reliably.
     """
     with threadpool_limits(1, user_api="blas"):
-        return _solve(job, mesh, progress or _silent, method)
+        return _solve(job, mesh, progress or _silent, method, kept or Kept())
 
 
-def _solve(job: Job, mesh: Mesh, report: Progress, method: str) -> Solution:
+def _solve(job: Job, mesh: Mesh, report: Progress, method: str, kept: Kept) -> Solution:
     """With one BLAS thread: with two, many small fronts are ten to a hundred times slower."""
     watch = Stopwatch()
     report("assembling", 0.0)
     model = build_model(job, mesh)
     with watch("loads and supports"):
         supports = resolve_supports(job, mesh)
-        if motions := free_motions(mesh, *supports.directions):
+        if kept.system is None and (motions := free_motions(mesh, *supports.directions)):
             raise MechanismError(motions)
         loads = resolve_loads(model)
-    system = build_system(model, supports, watch, report, method)
+    if kept.system is None:
+        kept.system = build_system(model, supports, watch, report, method)
+    system = kept.system
+    system.refinements = 0
     report("solving", 0.0)
     cases = len(job.load_cases)
     displacement = np.empty((mesh.node_count, 2, cases))
