@@ -90,6 +90,7 @@ OUTLINE: dict[str, Any] = {
         "probes": {"side of pin": [56, 90]},
         "lines": {"net section": {"from": [0, 90], "to": [55, 90], "points": 11}},
         "cuts": {"root": {"from": [0, 5], "to": [160, 5]}},
+        "convergence": True,
         "hot_spots": {"toe": {"at": [0, 60], "direction": [3, 1], "thickness": "15 mm"}},
     },
     "limits": {"displacement": 1, "factor_on_yield": 1.5},

@@ -136,6 +136,9 @@ FREE = st.builds(parts.Meshing, ELEMENT, maybe(POSITIVE), SIZES, maybe(ERROR)) |
 )
 
 
+UNTOUCHED = st.just(parts.Meshing())  # a finished mesh stays as it is
+
+
 # --- supports and loads ------------------------------------------------------------------------
 
 TOLERANCE = maybe(POSITIVE)
@@ -213,13 +216,19 @@ COMBINATION = st.builds(
 LINE = st.builds(lambda ends, n: parts.Line(*ends, n), TWO_POINTS, st.integers(2, 2001))
 CUT = TWO_POINTS.map(lambda ends: parts.Cut(*ends))
 HOT_SPOT = st.builds(parts.HotSpot, VECTOR, VECTOR.filter(any), POSITIVE)
-REQUESTS = st.builds(
-    parts.Requests,
-    probes=mapping(NAME, VECTOR),
-    lines=mapping(NAME, LINE),
-    cuts=mapping(NAME, CUT),
-    hot_spots=mapping(NAME, HOT_SPOT),
-)
+
+
+def requests(convergence: st.SearchStrategy[bool]) -> st.SearchStrategy[parts.Requests]:
+    return st.builds(
+        parts.Requests,
+        probes=mapping(NAME, VECTOR),
+        lines=mapping(NAME, LINE),
+        cuts=mapping(NAME, CUT),
+        hot_spots=mapping(NAME, HOT_SPOT),
+        convergence=convergence,
+    )
+
+
 UNITS = st.builds(
     parts.Units,
     st.sampled_from(["mm", "cm", "m", "in", "ft"]),
@@ -239,7 +248,7 @@ def _jobs(geometry: Any, sides: list[str], selector: Any, meshing: Any) -> Any:
         load_cases=cases(load(sides, selector)),
         combinations=st.lists(COMBINATION, max_size=2, unique_by=lambda c: c.name).map(tuple),
         meshing=meshing,
-        requests=REQUESTS,
+        requests=requests(st.booleans() if meshing is not UNTOUCHED else st.just(False)),
         limits=st.builds(parts.Limits, maybe(POSITIVE), maybe(POSITIVE)),
         label=maybe(TITLE),
     )
@@ -248,6 +257,6 @@ def _jobs(geometry: Any, sides: list[str], selector: Any, meshing: Any) -> Any:
 # Any job that the document format can say; its pointers are left empty.
 JOBS: st.SearchStrategy[parts.Job] = st.one_of(
     _jobs(OUTLINE, [SIDE, HOLE], SELECTOR, FREE),
-    _jobs(PATCHES, [SIDE], SELECTOR, st.builds(parts.Meshing, ELEMENT)),
-    _jobs(MESH, [SIDE], SELECTOR | NUMBERS, st.just(parts.Meshing())),
+    _jobs(PATCHES, [SIDE], SELECTOR, st.builds(parts.Meshing, ELEMENT, target_error=maybe(ERROR))),
+    _jobs(MESH, [SIDE], SELECTOR | NUMBERS, UNTOUCHED),
 )

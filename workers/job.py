@@ -379,6 +379,7 @@ class HotSpot:
 class Requests:
     """field_files : whose field files are made with the job: "all", "envelope" for none but that of
     the envelope, or names of cases and combinations; None leaves it to the size of the job.
+    convergence : solve on three meshes, for a record of what the peaks tend to.
     """
 
     probes: Mapping[str, Vector] = field(default_factory=dict)
@@ -386,6 +387,7 @@ class Requests:
     cuts: Mapping[str, Cut] = field(default_factory=dict)
     field_files: str | tuple[str, ...] | None = None
     hot_spots: Mapping[str, HotSpot] = field(default_factory=dict)
+    convergence: bool = False
 
 
 @dataclass(frozen=True)

@@ -226,6 +226,13 @@ MESHING = [
         "below 1"),
     Bad("limit without target", "outline", "/meshing/target_error", DROP, "/meshing/max_dofs",
         "target_error"),
+    Bad("target error of a mesh", "mesh", "/meshing", {"target_error": 0.05},
+        "/meshing/target_error", "finished mesh"),
+    Bad("convergence of a mesh", "mesh", "/requests", {"convergence": True},
+        "/requests/convergence", "finished mesh"),
+    Bad("convergence as a number", "outline", "/requests/convergence", 1,
+        "/requests/convergence", "true or false"),
+    Bad("size of patches", "patches", "/meshing/size", 2, "/meshing/size", "divisions"),
     Bad("unknown method", "outline", "/meshing/method", "mapped", "/meshing/method", "free"),
 ]  # fmt: skip
 

@@ -77,11 +77,17 @@ def _meshing(document: Mapping[str, Any]) -> Iterator[Fault]:
     for key in table(document.get("meshing")):
         if "mesh" in geometry:
             yield Fault(pointer("meshing", key), "has no effect on a finished mesh; leave it out")
-        elif "patches" in geometry and key != "element":
+        elif "patches" in geometry and key in ("size", "sizes", "method"):
             yield Fault(
                 pointer("meshing", key),
                 "has no effect on patches; their divisions and grading set the sizes",
             )
+    if "mesh" in geometry and table(document.get("requests")).get("convergence") is True:
+        yield Fault(
+            pointer("requests", "convergence"),
+            "needs finer meshes, which are made from an outline or from patches; a finished mesh "
+            "stays as it is",
+        )
 
 
 def _empty_cases(document: Mapping[str, Any]) -> Iterator[Fault]:

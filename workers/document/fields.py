@@ -174,6 +174,18 @@ class Quantity(Number):
             raise ValidationError(f"{seen(value)} {error}") from None
 
 
+class Truth(Plain, fields.Field[bool]):
+    """true or false, and nothing that could be taken for them."""
+
+    def __init__(self, description: str, **options: Any) -> None:
+        super().__init__(metadata=described(description, type="boolean"), **options)
+
+    def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> bool:
+        if not isinstance(value, bool):
+            raise ValidationError(f"must be true or false, not {seen(value)}")
+        return value
+
+
 class Whole(Plain, fields.Field[int]):
     """A whole number within limits."""
 

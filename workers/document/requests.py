@@ -14,6 +14,7 @@ from workers.document.fields import (
     Number,
     Plain,
     Quantity,
+    Truth,
     Whole,
     described,
 )
@@ -153,6 +154,11 @@ class RequestsSchema(Record):
         Part(CutSchema, "A cut"),
         "Cuts whose normal force, shear force and moment are wanted",
         most=MOST_REQUESTS,
+    )
+    convergence = Truth(
+        "Solve on the job's own mesh and two finer ones; the results are those of the finest, with "
+        "a record of what the peaks tend to and how sure that is. With a `target_error` the meshes "
+        "of the adaptive run make the record, asked for or not"
     )
     # Not called `fields`: every schema has an attribute of that name already.
     field_files = FieldsWanted(
