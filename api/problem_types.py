@@ -114,6 +114,19 @@ PICTURES_UNAVAILABLE = ProblemType(
     "pictures-unavailable", 503, "This server cannot make pictures",
     "The machine of the workers cannot render off-screen; numbers and fields are not affected.",
 )  # fmt: skip
+UNKNOWN_CHECK = ProblemType(
+    "unknown-check", 404, "There is no such check",
+    "A check is kept for an hour after the last question about it. Send its document again.",
+)  # fmt: skip
+CHECK_LATE = ProblemType(
+    "not-checked-yet", 503, "The check is not made yet",
+    "All workers are busy, or the plate takes long to mesh. Send the same document again after "
+    "`Retry-After` seconds: it is the same check and keeps its place in the line.",
+)  # fmt: skip
+CHECK_FAILED = ProblemType(
+    "check-failed", 500, "The check could not be made",
+    "A worker tried and failed; `detail` gives the reason.",
+)  # fmt: skip
 STORE_REFUSED = ProblemType(
     "store-refused", 503, "The job store refused",
     "The store could not write or read, for instance because the disk is full. Nothing was "
