@@ -78,6 +78,16 @@ class ReviewContext:
         ]
         return sorted(found, key=lambda peak: -abs(peak.value))
 
+    def summits(self, quantity: str) -> list[Peak]:
+        """As `peaks`, but where a singular place was left out with the value and place there."""
+        found = [
+            peak._replace(value=float(hidden["value"]), at=hidden["at"])
+            if (hidden := peak.record.get("singular"))
+            else peak
+            for peak in self.peaks(quantity)
+        ]
+        return sorted(found, key=lambda peak: -abs(peak.value))
+
     def worst(self, quantity: str) -> Peak | None:
         return next(iter(self.peaks(quantity)), None)
 

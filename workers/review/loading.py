@@ -85,7 +85,7 @@ def point_load(context: ReviewContext) -> Iterator[Finding]:
         for case in context.job.load_cases
     ]
     found = []
-    for peak in context.peaks("von_mises"):
+    for peak in context.summits("von_mises"):
         parts = [loaded[case] for case in np.flatnonzero(context.factors(peak.case))]
         node = _near(context, peak, np.concatenate(parts) if parts else np.empty(0, np.intp))
         if node is not None:
@@ -115,7 +115,7 @@ def point_support(context: ReviewContext) -> Iterator[Finding]:
         if not len(caught.facets) and not caught.element_count:
             held[support.label] = caught.nodes.astype(np.intp)
     found = []
-    for peak in context.peaks("von_mises") if held else []:
+    for peak in context.summits("von_mises") if held else []:
         reactions = context.states[peak.case].get("reactions", {})
         size = {label: float(np.hypot(*entry["force"])) for label, entry in reactions.items()}
         enough = HOLDS * max(size.values(), default=0.0)

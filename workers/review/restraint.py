@@ -27,7 +27,7 @@ CONTRACTS = 0.05  # Poisson's ratio below which next to nothing is held back
     "the stress at some distance from it; what really holds the plate gives way a little.",
 )
 def over_restrained(context: ReviewContext) -> Iterator[Finding]:
-    peaks = [peak for peak in context.peaks("von_mises") if peak.value]
+    peaks = [peak for peak in context.summits("von_mises") if peak.value]
     fixed = _fixed_side_nodes(context) if peaks else np.empty(0, np.intp)
     found = []
     for peak in peaks if len(fixed) else []:

@@ -106,7 +106,7 @@ def _worst_strip(context: ReviewContext, edges: Edges, state: str) -> _Buckling 
 
 
 def _compressed_places(context: ReviewContext, stress: Array) -> tuple[Array, Array, list[str]]:
-    """Centres of some compressed elements, the directions of the compression, the regions."""
+    """Centres of some elements, a direction in which each is compressed, its region."""
     assert context.recovery is not None
     centres, means, regions = [], [], []
     for block, points in zip(
@@ -117,15 +117,19 @@ def _compressed_places(context: ReviewContext, stress: Array) -> tuple[Array, Ar
         means.append(stress[corners].mean(axis=1))
         regions.append(block.region)
     centre, mean, region = (np.concatenate(parts) for parts in (centres, means, regions))
-    smallest = principal(mean)[1]
-    pressed = np.flatnonzero(smallest < -COMPRESSED * np.abs(stress).max())
-    chosen = pressed[:: len(pressed) // PLACES + 1]
-    if len(pressed):
-        chosen = np.append(chosen, pressed[smallest[pressed].argmin()])
-    xx, yy, xy = mean[chosen].T
-    angle = 0.5 * np.arctan2(2 * xy, xx - yy) + np.pi / 2  # of the smaller principal stress
-    names = [context.mesh.regions[number] for number in region[chosen]]
-    return centre[chosen], np.column_stack((np.cos(angle), np.sin(angle))), names
+    pressed = COMPRESSED * np.abs(stress).max()
+    found = []
+    for sign, of_direction in zip((1, -1), principal(mean), strict=True):
+        places = np.flatnonzero(of_direction < -pressed)
+        chosen = places[:: len(places) // PLACES + 1]
+        if len(places):
+            chosen = np.append(chosen, places[of_direction[places].argmin()])
+        xx, yy, xy = mean[chosen].T
+        # The larger principal stress acts along this angle, the smaller one across it.
+        angle = 0.5 * np.arctan2(2 * xy, xx - yy) + (0 if sign > 0 else np.pi / 2)
+        found.append((chosen, np.column_stack((np.cos(angle), np.sin(angle)))))
+    chosen, directions = (np.concatenate(parts) for parts in zip(*found, strict=True))
+    return centre[chosen], directions, [context.mesh.regions[n] for n in region[chosen]]
 
 
 def _across(place: Array, direction: Array, strip: Strip | None) -> Array:
