@@ -35,6 +35,7 @@ class Plot:
 
     lines : for each curve the points of a polyline
     band : the outline of the range that further curves lie in, "" for none
+    marks : places of the values, where these are to be seen one by one
     zero, limit : heights of these values, None where they are not in the plot
     """
 
@@ -44,6 +45,7 @@ class Plot:
     names: tuple[str, ...]
     lines: tuple[str, ...]
     band: str
+    marks: tuple[tuple[float, float], ...]
     x_ticks: tuple[Tick, ...]
     y_ticks: tuple[Tick, ...]
     zero: float | None
@@ -65,6 +67,7 @@ def lay_out(
     *,
     band: tuple[Values, Values] | None = None,
     limit: float | None = None,
+    marked: bool = False,
 ) -> Plot:
     """A plot of curves over common places.
 
@@ -73,6 +76,7 @@ def lay_out(
     places : ascending x values; at least one
     band : lowest and highest values of a range at each place
     limit : a value that is drawn as a line across, and kept in view
+    marked : each value has a mark
     """
     shown = [v for curve in curves for v in curve.values] + [v for ends in band or () for v in ends]
     low, high = _range([*shown, *([] if limit is None else [limit])])
@@ -87,6 +91,9 @@ def lay_out(
         tuple(curve.name for curve in curves),
         tuple(_points(zip(xs, map(up.at, c.values), strict=True)) for c in curves),
         "" if band is None else _points(_around(xs, *(list(map(up.at, ends)) for ends in band))),
+        tuple((x, up.at(v)) for c in curves for x, v in zip(xs, c.values, strict=True))
+        if marked
+        else (),
         across.ticks(),
         up.ticks(),
         up.at(0.0) if low <= 0.0 <= high else None,

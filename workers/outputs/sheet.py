@@ -20,7 +20,7 @@ from workers.outputs import wording
 from workers.outputs.assumptions import assumptions
 from workers.outputs.drawing import numbers
 from workers.outputs.drawing.numbers import NO_BREAK
-from workers.outputs.governing import (
+from workers.outputs.leading import (
     all_states,
     governing_states,
     reaction_extremes,
@@ -28,7 +28,13 @@ from workers.outputs.governing import (
 )
 from workers.outputs.names import file_name
 from workers.outputs.rounding import settle
-from workers.outputs.sheet_parts import MOST_ROWS, cut_parts, line_parts, peak_plot
+from workers.outputs.sheet_parts import (
+    MOST_ROWS,
+    convergence_plot,
+    cut_parts,
+    line_parts,
+    peak_plot,
+)
 
 Json = Mapping[str, Any]
 
@@ -71,10 +77,12 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
         ],
         used_materials={region["material"] for region in results["mesh"]["regions"].values()},
         worst_errors=sorted(states, key=lambda name: -relative_error(states[name]))[:MOST_ERRORS],
+        has_singular=any(state["von_mises"]["singular"] for state in states.values()),
         cautions=sorted_cautions(results),
         counts=Counter(caution["severity"] for caution in results["cautions"]),
         severities=SEVERITIES,
         pictures=find_pictures(folder, governing),
+        governing_picture=find_picture(folder / "envelope" / "von_mises.png"),
         peak_plot=peak_plot(job, results) if len(states) > MOST_PEAKS else None,
         balanced=worth_a_row(results, MOST_ROWS),
         worst_balance=max(states, key=lambda name: states[name]["equilibrium"]["residual"]),
@@ -82,6 +90,7 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
         extreme_reactions=[] if few_reactions else reaction_extremes(results),
         cuts=cut_parts(job, results),
         lines=line_parts(job, results),
+        convergence_plot=convergence_plot(job, results),
         assumptions=assumptions(job),
     )
 
@@ -107,18 +116,21 @@ class Picture:
 
 def find_pictures(folder: Path, state: str) -> dict[str, Picture]:
     """The pictures of a state that have been drawn, by quantity."""
-    found = {}
-    for quantity in PICTURES:
-        path = folder / "previews" / file_name(state) / f"{quantity}.png"
-        if path.is_file():
-            data = path.read_bytes()
-            size = data[PNG_SIZE]
-            found[quantity] = Picture(
-                f"data:image/png;base64,{b64encode(data).decode()}",
-                int.from_bytes(size[:4]),
-                int.from_bytes(size[4:]),
-            )
-    return found
+    here = folder / "previews" / file_name(state)
+    found = {quantity: find_picture(here / f"{quantity}.png") for quantity in PICTURES}
+    return {quantity: picture for quantity, picture in found.items() if picture is not None}
+
+
+def find_picture(path: Path) -> Picture | None:
+    if not path.is_file():
+        return None
+    data = path.read_bytes()
+    width, height = data[PNG_SIZE][:4], data[PNG_SIZE][4:]
+    return Picture(
+        f"data:image/png;base64,{b64encode(data).decode()}",
+        int.from_bytes(width),
+        int.from_bytes(height),
+    )
 
 
 def sorted_cautions(results: Json) -> list[Json]:

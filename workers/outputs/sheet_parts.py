@@ -9,7 +9,7 @@ from typing import Any
 
 from workers.job import Job, Vector
 from workers.outputs.drawing.numbers import vector
-from workers.outputs.governing import all_states, extremes, governing_states, severity
+from workers.outputs.leading import all_states, extremes, governing_states, severity
 from workers.outputs.plots import Curve, Plot, lay_out
 
 Json = Mapping[str, Any]
@@ -154,6 +154,26 @@ def _component_plot(job: Job, name: str, line: Json, state: str) -> Plot:
         f"stress [{job.units.stress}]",
         line["distance"],
         [Curve(c, column) for c, column in zip(STRESS_COMPONENTS, columns, strict=True)],
+    )
+
+
+# --- convergence ---------------------------------------------------------------------------------
+
+
+def convergence_plot(job: Job, results: Json) -> Plot | None:
+    """The governing peak over the element size there, with the value that the series tends to."""
+    if results["convergence"] is None:
+        return None
+    state = results["envelope"]["von_mises"]["governs"]
+    peak = results["convergence"]["peaks"][state]["von_mises"]
+    return lay_out(
+        f"Largest von Mises stress in {state} on finer meshes",
+        f"size of the elements there [{job.units.length}]",
+        f"von Mises [{job.units.stress}]",
+        peak["sizes"][::-1],
+        [Curve("on this mesh", peak["values"][::-1])],
+        limit=peak["extrapolated"],
+        marked=True,
     )
 
 
