@@ -129,15 +129,15 @@ def _unfollowed(context: ReviewContext, peak: Peak, stress: Array) -> dict[int, 
 def distorted_elements(context: ReviewContext) -> Iterator[Finding]:
     quality = context.results.get("mesh", {}).get("quality", {})
     for key, words in (
-        ("min_scaled_jacobian", "scaled Jacobian of {:.2g}"),
-        ("min_angle", "corner angle of {:.3g} degrees"),
-        ("max_aspect", "aspect ratio of {:.3g}"),
+        ("min_scaled_jacobian", "a scaled Jacobian of {:.2g}"),
+        ("min_angle", "a corner angle of {:.3g} degrees"),
+        ("max_aspect", "an aspect ratio of {:.3g}"),
     ):
         measure = quality.get(key)
         if measure and measure["bad"]:  # `analysis/quality.py` holds the limits
             x, y = measure["at"]
             yield finding(
-                f"The worst element, at ({x:.4g}, {y:.4g}), has a {words.format(measure['value'])};"
+                f"The worst element, at ({x:.4g}, {y:.4g}), has {words.format(measure['value'])};"
                 f" {measure['bad']} are beyond {measure['limit']:g}.",
                 quantity=key,
                 value=measure["value"],
