@@ -6,6 +6,7 @@ the store while no process holds it had its worker killed: it is queued once mor
 
 import logging
 
+from workers.checks import Checks
 from workers.errors import StoreError, TransitionError, UnknownJobError
 from workers.queue import Queue
 from workers.record import FAILED, KILLED, QUEUED, RUNNING, TIME
@@ -24,12 +25,13 @@ log = logging.getLogger(__name__)
 
 
 def reconcile(store: Store, queue: Queue) -> None:
-    """Look after every unfinished job that Redis does not have in line.
+    """Look after every unfinished job that Redis does not have in line; let old checks go.
 
     Raises
     ------
     redis.RedisError, StoreError   try again later.
     """
+    Checks(store.root).expire()
     waiting = queue.waiting()
     for job_id in store.unfinished():
         if job_id not in waiting:

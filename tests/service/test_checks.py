@@ -6,6 +6,7 @@ from pathlib import Path
 
 import pytest
 
+from tests.service_pool import Service, eventually
 from workers.checks import KEPT, Checks
 from workers.errors import StoreError
 
@@ -100,3 +101,12 @@ def test_a_folder_that_cannot_be_written_is_a_store_error(checks: Checks) -> Non
     with pytest.raises(StoreError, match="could not be filed"):
         checks.file(DOCUMENT)
     checks.expire()
+
+
+@pytest.mark.server
+def test_the_reconciler_removes_what_is_too_old(service: Service) -> None:
+    checks = Checks(service.settings.store)
+    old, new = checks.file(DOCUMENT), checks.file(b"{}")
+    age(checks, old, KEPT + 60)
+    eventually(lambda: checks.workspace(old) is None)
+    assert checks.workspace(new) is not None
