@@ -134,6 +134,10 @@ class StateResultsSchema(Answer):
     )
 
 
+class CombinationResultsSchema(StateResultsSchema):
+    factors = by_name(fields.Float(), "Factor of each load case that takes part")
+
+
 class EnvelopeSchema(Answer):
     von_mises = part(GoverningSchema, "[F/L^2]")
     principal_max = part(GoverningSchema, "[F/L^2]")
@@ -199,6 +203,7 @@ class AboutSchema(Answer):
     label = text("From the document", required=True, allow_none=True)
     checksum = text("sha256 of the document, byte for byte", required=True)
     fishplate = text("Version that made the results", required=True)
+    made = text("When that was, RFC 3339", required=True)
 
 
 class ResultUnitsSchema(Answer):
@@ -267,6 +272,11 @@ class FilesSchema(Answer):
         metadata={"description": "Graphs of lines that were drawn with the job"},
     )  # fmt: skip
     envelope = part(EnvelopeFilesSchema, "Of all cases and combinations together")
+    tables = fields.Dict(
+        keys=fields.String(), values=fields.String(), required=True,
+        metadata={"description": "Tables that have rows, by name"},
+    )  # fmt: skip
+    sheet = text("The review sheet", required=True)
 
 
 class PicturesSchema(Answer):
@@ -280,7 +290,7 @@ class ResultsSchema(CautiousAnswer):
     solver = part(SolverSchema, "How it was solved")
     mesh = part(MeshFiguresSchema, "What it was solved on")
     cases = by_name(StateResultsSchema, "By load case")
-    combinations = by_name(StateResultsSchema, "By combination")
+    combinations = by_name(CombinationResultsSchema, "By combination")
     envelope = part(EnvelopeSchema, "The worst of all, and which case governs")
     probes = by_name(
         fields.Dict(keys=fields.String(), values=fields.Nested(ProbeResultSchema)),

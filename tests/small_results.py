@@ -55,6 +55,7 @@ RESULTS: dict[str, Any] = {
         "label": None,
         "checksum": "sha256:0",
         "fishplate": "0",
+        "made": "2031-04-05T06:07:08.910Z",
     },
     "units": {"length": "mm", "force": "N", "stress": "MPa"},
     "solver": {
@@ -77,7 +78,7 @@ RESULTS: dict[str, Any] = {
         "parts": 1,
     },
     "cases": {"pull": STATE},
-    "combinations": {"pull, factored": STATE},
+    "combinations": {"pull, factored": {**STATE, "factors": {"pull": 1.0}}},
     "envelope": {**dict.fromkeys(QUANTITIES, GOVERNING), "utilisation": None},
     "probes": {"middle": {"pull": PROBE}},
     "lines": {"axis": LINE},
@@ -104,6 +105,8 @@ RESULTS: dict[str, Any] = {
         "previews": {"pull": {"model": "x"}},
         "lines": {"axis": "lines/axis.png"},
         "envelope": {"fields": "envelope/fields.vtu", "previews": {"von_mises": "x"}},
+        "tables": {"peaks": "tables/peaks.csv"},
+        "sheet": "sheet.html",
     },
     "pictures": {"available": True},
 }

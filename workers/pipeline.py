@@ -10,6 +10,7 @@ with the job or months later.
     envelope.npz        the envelope, if there is more than one case or combination
     fields/NAME.vtu     previews/NAME/QUANTITY.png     lines/NAME.png
     envelope/           fields.vtu, nodes.csv, QUANTITY.png
+    tables/NAME.csv     sheet.html
 """
 
 import hashlib
@@ -33,7 +34,10 @@ from workers.errors import MeshError
 from workers.filing import Filing, Json, Progress, Work, draw_line
 from workers.job import Job
 from workers.outputs import preview
+from workers.outputs.sheet import SHEET, write_sheet
+from workers.outputs.tables import write_tables
 from workers.preflight import placing_faults, preflight
+from workers.record import now
 from workers.review.review import review
 from workers.sizes import check_dofs
 
@@ -110,7 +114,9 @@ def run(
         results["files"] = files = filed.write_some(progress)
         files["lines"] = filed.draw_some_lines(pictures)
         results["pictures"] = filed.draw_some(pictures, files, progress)
+        files["tables"], files["sheet"] = write_tables(results, folder), SHEET
         (folder / RESULTS).write_bytes(orjson.dumps(results, option=orjson.OPT_INDENT_2))
+        write_sheet(job, results, folder)
     return results
 
 
@@ -183,6 +189,13 @@ def render_line(folder: Path, name: str) -> Path:
     return draw_line(folder, job, name, results, [Caution(**c) for c in results["cautions"]])
 
 
+def render_sheet(folder: Path) -> Path:
+    """Write the review sheet of a finished job anew; returns its path."""
+    results = orjson.loads((folder / RESULTS).read_bytes())
+    job = read_document((folder / DOCUMENT).read_bytes())
+    return write_sheet(job, results, folder)
+
+
 def _reopen(folder: Path) -> Filing:
     """A finished job from its folder: the document and the displacements say everything."""
     job = read_document((folder / DOCUMENT).read_bytes())
@@ -204,4 +217,5 @@ def about(job: Job, document: bytes, job_id: str | None) -> Json:
         "label": job.label,
         "checksum": f"sha256:{hashlib.sha256(document).hexdigest()}",
         "fishplate": version("fishplate"),
+        "made": now(),
     }

@@ -79,7 +79,7 @@ def summarise(
             by_state[column] = result | by_state[column]
         if progress is not None:
             progress(STAGE, columns.stop / len(states))
-    named = list(zip(states.names, states.kinds, by_state, strict=True))
+    by_name = dict(zip(states.names, by_state, strict=True))
     return {
         "units": {
             "length": job.units.length,
@@ -88,8 +88,11 @@ def summarise(
         },
         "solver": _solver(solution.solver),
         "mesh": mesh_figures(solution.model),
-        "cases": {name: result for name, kind, result in named if kind == "case"},
-        "combinations": {name: result for name, kind, result in named if kind == "combination"},
+        "cases": {case.name: by_name[case.name] for case in job.load_cases},
+        "combinations": {
+            combination.name: {**by_name[combination.name], "factors": dict(combination.factors)}
+            for combination in job.combinations
+        },
         "envelope": _governing(states, by_state),
         "probes": samples.probes(),
         "lines": samples.lines(),

@@ -5,6 +5,8 @@ so that they read back exactly. CSV has no place for cautions: whoever serves a 
 """
 
 from collections.abc import Callable, Iterator, Mapping
+from itertools import islice
+from pathlib import Path
 from types import MappingProxyType
 from typing import Any
 
@@ -12,6 +14,8 @@ from workers.outputs.csv_text import csv_text
 
 Results = Mapping[str, Any]
 Row = list[Any]
+
+STRESSES = ("von_mises", "principal_max", "principal_min", "shear_max")
 
 
 def write_table(name: str, results: Results) -> str:
@@ -24,6 +28,18 @@ def write_table(name: str, results: Results) -> str:
     return csv_text(TABLES[name](results))
 
 
+def write_tables(results: Results, folder: Path) -> dict[str, str]:
+    """Write every table that has a row into the folder of the results; paths within it, by name."""
+    written = {}
+    for name, rows in TABLES.items():
+        if next(islice(rows(results), 1, None), None) is not None:
+            path = folder / "tables" / f"{name}.csv"
+            path.parent.mkdir(exist_ok=True)
+            path.write_bytes(write_table(name, results).encode())
+            written[name] = str(path.relative_to(folder))
+    return written
+
+
 def _states(results: Results) -> Iterator[tuple[str, Mapping[str, Any]]]:
     yield from results["cases"].items()
     yield from results["combinations"].items()
@@ -31,13 +47,27 @@ def _states(results: Results) -> Iterator[tuple[str, Mapping[str, Any]]]:
 
 def _peaks(results: Results) -> Iterator[Row]:
     stress, length = results["units"]["stress"], results["units"]["length"]
-    yield ["case", "quantity", f"value [{stress}; {length}]", f"x [{length}]", f"y [{length}]",
-           "error estimate"]  # fmt: skip
+    yield ["case", "quantity", f"value [{stress}; {length}; 1]", "unit", f"x [{length}]",
+           f"y [{length}]", "region", f"error estimate [{stress}]", f"at least [{stress}]",
+           f"at most [{stress}]", f"left out: singular value [{stress}]",
+           f"left out: x [{length}]", f"left out: y [{length}]"]  # fmt: skip
     for name, state in _states(results):
-        for quantity in ("von_mises", "principal_max", "principal_min", "shear_max",
-                         "displacement"):  # fmt: skip
+        for quantity in (*STRESSES, "displacement"):
             peak = state[quantity]
-            yield [name, quantity, peak["value"], *peak["at"], peak.get("error")]
+            low, high = peak["interval"] or (None, None)
+            singular = peak["singular"] or {"value": None, "at": (None, None)}
+            unit = length if quantity == "displacement" else stress
+            yield [name, quantity, peak["value"], unit, *peak["at"], peak["region"], peak["error"],
+                   low, high, singular["value"], *singular["at"]]  # fmt: skip
+        if (use := state["utilisation"]) is not None:
+            yield [name, "utilisation", use["value"], "1", *use["at"], use["region"], *[None] * 6]
+
+
+def _combinations(results: Results) -> Iterator[Row]:
+    yield ["combination", "case", "factor [1]"]
+    for name, state in results["combinations"].items():
+        for case, factor in state["factors"].items():
+            yield [name, case, factor]
 
 
 def _envelope(results: Results) -> Iterator[Row]:
@@ -70,11 +100,14 @@ def _equilibrium(results: Results) -> Iterator[Row]:
 
 def _probes(results: Results) -> Iterator[Row]:
     stress, length = results["units"]["stress"], results["units"]["length"]
-    yield ["probe", "case", *(f"{c} [{stress}]" for c in ("xx", "yy", "xy")),
-           f"von Mises [{stress}]", f"u [{length}]", f"v [{length}]"]  # fmt: skip
+    yield ["probe", "case", f"x [{length}]", f"y [{length}]",
+           *(f"{c} [{stress}]" for c in ("xx", "yy", "xy")), f"von Mises [{stress}]",
+           f"larger principal [{stress}]", f"smaller principal [{stress}]", f"u [{length}]",
+           f"v [{length}]"]  # fmt: skip
     for probe, by_case in results["probes"].items():
         for case, found in by_case.items():
-            yield [probe, case, *found["stress"], found["von_mises"], *found["displacement"]]
+            yield [probe, case, *found["at"], *found["stress"], found["von_mises"],
+                   *found["principal"], *found["displacement"]]  # fmt: skip
 
 
 def _lines(results: Results) -> Iterator[Row]:
@@ -112,6 +145,7 @@ TABLES: Mapping[str, Callable[[Results], Iterator[Row]]] = MappingProxyType(
     {
         "peaks": _peaks,
         "envelope": _envelope,
+        "combinations": _combinations,
         "reactions": _reactions,
         "equilibrium": _equilibrium,
         "probes": _probes,
