@@ -1,29 +1,21 @@
-"""Solving a job on finer and finer meshes: to a target error, or for a convergence record.
+"""Solving a job on meshes that follow its errors, until a target error is reached.
 
 The results are those of the last mesh, with the record of all of them in `convergence`.
 """
 
 import time
-from collections.abc import Callable
-from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Literal
 
 import numpy as np
 
-from workers.analysis.combine import States, load_states
 from workers.analysis.convergence import Record
 from workers.analysis.mesh import Mesh
-from workers.analysis.recovery import Recovery
 from workers.analysis.refiner import Refiner
 from workers.analysis.singularities import find_singular_places
-from workers.analysis.sizes_wanted import SizesWanted
-from workers.analysis.solution import Solution, solve
-from workers.analysis.summary import summarise
-from workers.errors import Fault, MeshError
+from workers.analysis.solved import Progress, Solved, solve_on
+from workers.errors import MeshError
 from workers.job import Job
 
-Json = dict[str, Any]
-Progress = Callable[[str, float], None]
 Stop = Literal["target", "max_dofs", "steps", "time", "no-gain", "mesh"]
 
 LEAST_MESHES = 3  # a series of fewer tells nothing of convergence
@@ -42,65 +34,20 @@ MESSAGES: dict[Stop, str] = {
     "target": "the target error is reached",
     "max_dofs": "a finer mesh would have more unknowns than allowed",
     "steps": f"the target error is not reached on {MOST_MESHES} meshes",
-    "time": f"a finer mesh would take longer than {SECONDS:.0f} s",
+    "time": "a finer mesh would take longer than allowed",
     "no-gain": "finer meshes no longer reduce the error",
     "mesh": "the plate could not be meshed finer",
 }
 
 
-@dataclass(frozen=True, eq=False)
-class Solved:
-    """A job on one mesh. results : as `summarise` makes them."""
-
-    solution: Solution
-    recovery: Recovery
-    wanted: SizesWanted
-    results: Json
-
-    @property
-    def mesh(self) -> Mesh:
-        return self.solution.model.mesh
-
-    @property
-    def error(self) -> float:
-        """Largest relative error of any state."""
-        states = {**self.results["cases"], **self.results["combinations"]}
-        return max(float(state["error_estimate"]["relative"]) for state in states.values())
-
-
-def solve_series(job: Job, refiner: Refiner, mesh: Mesh, progress: Progress) -> Solved:
-    """Solve a job on its own mesh and two finer ones.
-
-    Raises
-    ------
-    MeshError       the finest mesh would have too many unknowns, or cannot be made.
-    AnalysisError   as `solution.solve`.
-    """
-    states = load_states(job)
-    record = Record(job.meshing.element)
-    solved = _solve(job, mesh, states, progress)
-    record.add(solved.mesh, solved.results)
-    for number in (1, 2):
-        finer = refiner.series(number)
-        limit = job.meshing.max_dofs or MOST_DOFS
-        if finer.dof_count > limit:
-            raise MeshError([_too_many(finer.dof_count, limit)])
-        solved = _solve(job, finer, states, progress)
-        record.add(solved.mesh, solved.results)
-    record.write(solved.results, kind="series")
-    return solved
-
-
-def _too_many(dofs: int, limit: int) -> Fault:
-    return Fault(
-        "/requests/convergence",
-        f"one of the three meshes would have {dofs} unknowns, more than {limit}: coarsen the "
-        "job's own mesh, or leave the record out",
-    )
-
-
 def solve_adaptively(
-    job: Job, refiner: Refiner, mesh: Mesh, progress: Progress, seconds: float = SECONDS
+    job: Job,
+    refiner: Refiner,
+    mesh: Mesh,
+    progress: Progress,
+    *,
+    most_dofs: int | None = None,
+    seconds: float = SECONDS,
 ) -> Solved:
     """Refine until the estimated error of every state is below `meshing.target_error`.
 
@@ -109,13 +56,14 @@ def solve_adaptively(
     Parameters
     ----------
     mesh : the first one
+    most_dofs : beside `meshing.max_dofs`; the smaller one counts
     seconds : for all meshes together
 
     Raises
     ------
     MeshError, AnalysisError   on the first mesh; later ones end the run with the last good mesh.
     """
-    run = _Run(job, refiner, progress, seconds)
+    run = _Run(job, refiner, progress, most_dofs, seconds)
     solved = run.solve(mesh)
     while (stop := run.stop(solved)) is None:
         try:
@@ -128,6 +76,8 @@ def solve_adaptively(
             run.reason = str(error)
             stop = "mesh"
             break
+    if solved.error <= run.target:
+        stop, run.reason = "target", ""  # the limit only cut short the series
     run.record.write(
         solved.results,
         kind="adaptive",
@@ -142,14 +92,21 @@ def solve_adaptively(
 class _Run:
     """One adaptive run: its limits, and what its meshes have shown so far."""
 
-    def __init__(self, job: Job, refiner: Refiner, progress: Progress, seconds: float) -> None:
+    def __init__(
+        self,
+        job: Job,
+        refiner: Refiner,
+        progress: Progress,
+        most_dofs: int | None,
+        seconds: float,
+    ) -> None:
         assert job.meshing.target_error is not None
         self.target = job.meshing.target_error
-        self.most_dofs = job.meshing.max_dofs or MOST_DOFS
+        limits = (job.meshing.max_dofs or MOST_DOFS, most_dofs)
+        self.most_dofs = min(limit for limit in limits if limit is not None)
         self.record = Record(job.meshing.element)
         self.reason = ""
         self._job, self._refiner, self._progress = job, refiner, progress
-        self._states = load_states(job)
         self._end = time.monotonic() + seconds
         self._errors: list[float] = []
         self._goal = 0.0  # asked of the mesh that comes
@@ -157,7 +114,7 @@ class _Run:
 
     def solve(self, mesh: Mesh) -> Solved:
         start = time.monotonic()
-        solved = _solve(self._job, mesh, self._states, self._progress)
+        solved = solve_on(self._job, mesh, self._progress)
         self._last = (mesh.dof_count, time.monotonic() - start)
         self.record.add(solved.mesh, solved.results)
         self._errors.append(solved.error)
@@ -196,8 +153,9 @@ class _Run:
             if most < LEAST_GROWTH * dofs:
                 return limit
             ratios *= (expected / most) ** 0.5
+        self._progress("meshing", 0.0)
         places = find_singular_places(solved.solution.model)
-        corners = solved.wanted.at_corners(solved.mesh, ratios, places)
+        corners = solved.wanted.at_corners(ratios, places)
         finer = self._refiner.finer(solved.mesh, ratios, corners)
         return finer if finer.dof_count <= self.most_dofs else "max_dofs"
 
@@ -209,11 +167,3 @@ class _Run:
         if affordable < MARGIN * self.most_dofs:
             return affordable, "time"
         return MARGIN * self.most_dofs, "max_dofs"
-
-
-def _solve(job: Job, mesh: Mesh, states: States, progress: Progress) -> Solved:
-    solution = solve(job, mesh, progress)
-    recovery = Recovery.build(solution.model)
-    wanted = SizesWanted(mesh.blocks[0].element.order)
-    results = summarise(solution, recovery, states, progress, wanted=wanted)
-    return Solved(solution, recovery, wanted, results)

@@ -35,13 +35,11 @@ SMALLEST_AT_CORNER = 0.02
 
 
 class SizesWanted:
-    """Grows as states stream by; then gives the sizes for any error that is asked for.
+    """Grows as states stream by; then gives the sizes for any error that is asked for."""
 
-    order : polynomial order of the elements, one for the whole mesh
-    """
-
-    def __init__(self, order: int) -> None:
-        self._order = order
+    def __init__(self, mesh: Mesh) -> None:
+        self._mesh = mesh
+        self._order = mesh.blocks[0].element.order  # one for all of a mesh that can be refined
         self._need: Array | None = None  # 1 / r for E = the energy norm of the solution
 
     def include(self, estimate: ErrorEstimate) -> None:
@@ -65,13 +63,12 @@ class SizesWanted:
             ratio = error ** (1 / self._order) / self._need
         return np.clip(ratio, SMALLEST, LARGEST)
 
-    def at_corners(self, mesh: Mesh, ratios: Array, places: Iterable[SingularPlace]) -> Array:
+    def at_corners(self, ratios: Array, places: Iterable[SingularPlace]) -> Array:
         """x, y and size wanted at the singular places themselves, (s, 3) [L]."""
-        sizes = element_sizes(mesh)
-        points = []
+        sizes, points = element_sizes(self._mesh), []
         for place in places:
             touching = np.concatenate(
-                [(b.connectivity == place.node).any(axis=1) for b in mesh.blocks]
+                [(b.connectivity == place.node).any(axis=1) for b in self._mesh.blocks]
             )
             ratio = min(float(ratios[touching].min()), 1.0)
             if place.exponent > 0:

@@ -1,0 +1,62 @@
+"""A job solved on one mesh, with everything that is made from the solution at once."""
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any, Protocol
+
+from workers.analysis.combine import load_states
+from workers.analysis.envelope import Envelope
+from workers.analysis.mesh import Mesh
+from workers.analysis.model import Model
+from workers.analysis.recovery import Recovery
+from workers.analysis.sizes_wanted import SizesWanted
+from workers.analysis.solution import Kept, Solution, solve
+from workers.analysis.summary import summarise
+from workers.job import Job
+
+Json = dict[str, Any]
+Progress = Callable[[str, float], None]
+
+
+@dataclass(frozen=True, eq=False)
+class Solved:
+    """results : as `summarise` makes them."""
+
+    solution: Solution
+    recovery: Recovery
+    envelope: Envelope
+    wanted: SizesWanted
+    results: Json
+
+    @property
+    def mesh(self) -> Mesh:
+        return self.solution.model.mesh
+
+    @property
+    def error(self) -> float:
+        """Largest relative error of any state."""
+        states = {**self.results["cases"], **self.results["combinations"]}
+        return max(float(state["error_estimate"]["relative"]) for state in states.values())
+
+
+class Shared(Protocol):
+    """What jobs of one model have in common, see `workers/shared_model.py`."""
+
+    kept: Kept
+
+    def recovery(self, model: Model) -> Recovery: ...
+
+
+def solve_on(job: Job, mesh: Mesh, progress: Progress, shared: Shared | None = None) -> Solved:
+    """Solve and summarise.
+
+    Raises
+    ------
+    MeshError, AnalysisError   as `solution.solve` and `summarise`.
+    """
+    solution = solve(job, mesh, progress, kept=shared.kept if shared else None)
+    progress("recovering", 0.0)
+    recovery = (shared.recovery if shared else Recovery.build)(solution.model)
+    envelope, wanted = Envelope(), SizesWanted(mesh)
+    results = summarise(solution, recovery, load_states(job), progress, envelope, wanted)
+    return Solved(solution, recovery, envelope, wanted, results)
