@@ -132,10 +132,14 @@ class StateResultsSchema(Answer):
     utilisation = part(
         UtilisationSchema, "Null where no material has a yield strength", allow_none=True
     )
+    factors = fields.Dict(
+        keys=fields.String(), values=fields.Float(),
+        metadata={"description": "On the load cases, where the case is given so"},
+    )  # fmt: skip
 
 
 class CombinationResultsSchema(StateResultsSchema):
-    factors = by_name(fields.Float(), "Factor of each load case that takes part")
+    factors = by_name(fields.Float(), "On its cases")
 
 
 class EnvelopeSchema(Answer):

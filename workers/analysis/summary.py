@@ -28,6 +28,7 @@ from workers.analysis.sizes_wanted import SizesWanted
 from workers.analysis.solution import Solution, SolverReport
 from workers.analysis.zones import Zones
 from workers.errors import Fault, MeshError
+from workers.job import Combination
 
 Array = NDArray[np.float64]
 Json = dict[str, Any]
@@ -88,11 +89,11 @@ def summarise(
         },
         "solver": _solver(solution.solver),
         "mesh": mesh_figures(solution.model),
-        "cases": {case.name: by_name[case.name] for case in job.load_cases},
-        "combinations": {
-            combination.name: {**by_name[combination.name], "factors": dict(combination.factors)}
-            for combination in job.combinations
+        "cases": {
+            **{case.name: by_name[case.name] for case in job.load_cases if not job.cases},
+            **_with_factors(job.cases, by_name),
         },
+        "combinations": _with_factors(job.combinations, by_name),
         "envelope": _governing(states, by_state),
         "probes": samples.probes(),
         "lines": samples.lines(),
@@ -278,6 +279,10 @@ def _cuts(solution: Solution, states: States) -> Json:
     if faults:
         raise MeshError(faults)
     return found
+
+
+def _with_factors(sums: tuple[Combination, ...], by_name: dict[str, Json]) -> Json:
+    return {one.name: {**by_name[one.name], "factors": dict(one.factors)} for one in sums}
 
 
 # --- the job as a whole --------------------------------------------------------------------------

@@ -14,6 +14,7 @@ from typing import Any
 
 from jinja2 import Environment, FileSystemLoader, StrictUndefined
 
+from workers.analysis.combine import factors_of
 from workers.cautions import SEVERITIES
 from workers.job import Job
 from workers.outputs import wording
@@ -72,8 +73,10 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
         others=[name for name in states if name not in leading][:MOST_LISTED],
         left_out=max(0, len(states) - len(leading) - MOST_LISTED),
         told_cases=told_cases(job, governed),
-        told_combinations=[
-            c for c in job.combinations if len(states) <= MOST_PEAKS or c.name in governed
+        told_sums=[
+            one
+            for one in (*job.cases, *job.combinations)
+            if len(states) <= MOST_PEAKS or one.name in governed
         ],
         used_materials={region["material"] for region in results["mesh"]["regions"].values()},
         worst_errors=sorted(states, key=lambda name: -relative_error(states[name]))[:MOST_ERRORS],
@@ -148,8 +151,7 @@ def told_cases(job: Job, governing: Iterable[str]) -> list[str]:
     names = [case.name for case in job.load_cases]
     if len(names) <= MOST_LOAD_CASES:
         return names
-    factors = {c.name: {n for n, k in c.factors.items() if k} for c in job.combinations}
-    needed = {case for state in governing for case in factors.get(state, {state})}
+    needed = {case for state in governing for case in factors_of(job, state)}
     return [name for name in names if name in needed]
 
 

@@ -64,9 +64,9 @@ def _peaks(results: Results) -> Iterator[Row]:
 
 
 def _combinations(results: Results) -> Iterator[Row]:
-    yield ["combination", "case", "factor [1]"]
-    for name, state in results["combinations"].items():
-        for case, factor in state["factors"].items():
+    yield ["case or combination", "of", "factor [1]"]
+    for name, state in _states(results):
+        for case, factor in state.get("factors", {}).items():
             yield [name, case, factor]
 
 
