@@ -1,112 +1,154 @@
 """`fishplate check`: what a job document was understood to say, before anything is solved."""
 
+from collections.abc import Iterator, Mapping
+from contextlib import ExitStack
 from pathlib import Path
+from tempfile import TemporaryDirectory
+from typing import Any
 
 import click
-import numpy as np
 from rich.console import Console
 from rich.markup import escape
 
-from api.commands.layout import number, place, print_cautions, print_table, settled
-from api.commands.terminal import BAD_INPUT, leave, out
-from workers.analysis.loads.cases import resolve_loads
-from workers.analysis.mesh import Mesh
-from workers.analysis.meshing.build import mesh_job
-from workers.analysis.model import build_model
-from workers.analysis.resultants import centroid, resultant
-from workers.analysis.selection import select
-from workers.cautions import STANDING
-from workers.document.read import read_document
+from api.commands.folders import OF_A_CHECK, name_files, refuse_foreign, replaced
+from api.commands.layout import number, place, print_cautions, print_table
+from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
+from elements.errors import FishplateError
+from workers import checking
 from workers.errors import FaultyError
-from workers.job import Job, Named, Support, Target
-from workers.preflight import preflight
 
+Check = Mapping[str, Any]
 Row = tuple[str, ...]
+
+MOST_STATES = 20  # a job of hundreds of cases is read in check.json, not on a terminal
+MEBIBYTE = 1024**2
 
 
 @click.command()
 @click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
-def command(job: Path) -> None:
+@click.option(
+    "--out",
+    "folder",
+    type=click.Path(file_okay=False, path_type=Path),
+    help="Folder for check.json and pictures of the plate with its loads; without it, no files.",
+)
+@click.option("--pictures", default=6, show_default=True, type=click.IntRange(0, 1000),
+              help="Of how many cases to draw the loads, with --out.")  # fmt: skip
+def command(job: Path, folder: Path | None, pictures: int) -> None:
     """Read the job document JOB and say what was understood.
 
-    Meshes the plate, finds every support and load on it, and adds up what each load case applies.
-    Solves nothing.
+    Meshes the plate, finds every support and load on it, adds up what each case applies, and
+    estimates what the job would cost. Solves nothing. Ends with 0, or with 2 where the document is
+    wrong.
     """
+    if folder is not None:
+        refuse_foreign(folder, OF_A_CHECK, "an earlier check")
+    with ExitStack() as places:
+        if folder is None:
+            fresh = Path(places.enter_context(TemporaryDirectory()))
+        else:
+            fresh = places.enter_context(replaced(folder))
+        found = _check(job.read_bytes(), fresh, 0 if folder is None else pictures)
+    print_check(out(), found)
+    if folder is not None:
+        if not found["pictures"]["available"]:
+            out().print(f"\nNo pictures: {found['pictures']['reason']}", soft_wrap=True)
+        name_files(folder)
+
+
+def _check(document: bytes, folder: Path, pictures: int) -> Check:
     try:
-        understood = read_document(job.read_bytes())
-        mesh = preflight(understood) or mesh_job(understood)
-        resultants = _resultants(understood, mesh)
-        supports = _supports(understood, mesh)
+        with progress() as report:
+            return checking.check(document, folder, progress=report, pictures=pictures)
     except FaultyError as error:
         faults = [fault.as_json() for fault in error.faults]
         leave(BAD_INPUT, "The job document is wrong.", faults)
-    console = out()
-    print_cautions(console, [caution.as_json() for caution in STANDING])
-    _print_plate(console, understood, mesh)
-    print_table(console, "Supports", ("name", "on", "holds", "nodes"), supports, words=3)
-    force, length = understood.units.force, understood.units.length
+    except (FishplateError, OSError, MemoryError) as error:
+        leave(FAILED, f"The job could not be checked: {error or 'out of memory'}")
+
+
+def print_check(console: Console, check: Check) -> None:
+    """Summary of a check: cautions first, then the plate, supports, loads and cost."""
+    print_cautions(console, check["cautions"])
+    length, force = check["units"]["length"], check["units"]["force"]
+    _print_plate(console, check)
     print_table(
         console,
-        f"Applied by the loads, moments about the centroid {place(centroid(mesh))}",
-        ("case", "loads", f"x [{force}]", f"y [{force}]", f"moment [{force} {length}]"),
-        resultants,
+        "Supports",
+        ("name", "on", "holds", "nodes", f"length [{length}]"),
+        _supports(check),
+        words=3,
+    )
+    print_table(console, "Loads", ("case", "on", "load"), _loads(check), words=3)
+    print_table(
+        console,
+        f"Applied by the loads, moments about the centroid {place(check['plate']['centroid'])}",
+        ("case", f"x [{force}]", f"y [{force}]", f"moment [{force} {length}]"),
+        _sums(check),
         words=1,
     )
+    states = len(check["cases"]) + len(check["combinations"])
+    if states > MOST_STATES or len(check["load_cases"]) > MOST_STATES:
+        console.print(f"\n... {states} cases and combinations in all; `--out` writes them down")
+    _print_cost(console, check)
 
 
-def _print_plate(console: Console, job: Job, mesh: Mesh) -> None:
-    low, high = mesh.nodes.min(axis=0), mesh.nodes.max(axis=0)
-    length = job.units.length
-    counts: dict[str, int] = {}
-    for block in mesh.blocks:
-        counts[block.element.name] = counts.get(block.element.name, 0) + block.element_count
-    parts = mesh.component_count
-    console.print(f"\n[bold]{escape(job.title)}[/bold]  in {length} and {job.units.force}")
-    console.print(f"from {place(low)} to {place(high)} {length}: "
-                  f"{' x '.join(number(side) for side in high - low)} {length}")  # fmt: skip
-    console.print(f"{mesh.node_count} nodes, "
-                  + ", ".join(f"{count} {name}" for name, count in sorted(counts.items()))
-                  + f", {parts} part{'s' if parts != 1 else ''}")  # fmt: skip
-    for region in mesh.regions:
-        material = job.material_of(region)
+def _print_plate(console: Console, check: Check) -> None:
+    plate, mesh, units = check["plate"], check["mesh"], check["units"]
+    length, parts = units["length"], mesh["parts"]
+    elements = ", ".join(f"{count} {name}" for name, count in sorted(mesh["elements"].items()))
+    mass = plate["mass"]
+    weighs = "mass unknown" if mass is None else f"{number(mass['value'])} {mass['unit']}"
+    console.print(
+        f"\n[bold]{escape(check['job']['title'])}[/bold]  in {length} and {units['force']}"
+    )
+    console.print(f"from {place(plate['from'])} to {place(plate['to'])} {length}: "
+                  f"{' x '.join(map(number, plate['size']))} {length}, "
+                  f"area {number(plate['area'])} {length}2, {weighs}")  # fmt: skip
+    console.print(f"{mesh['nodes']} nodes, {elements}, {parts} part{'s' if parts != 1 else ''}; "
+                  + ", ".join(_quality(mesh["quality"])))  # fmt: skip
+    for name, region in mesh["regions"].items():
         console.print(
-            f"{escape(region)}: {number(job.thickness_of(region))} {length} of "
-            f"{escape(material.name)}, E = {number(material.youngs_modulus)} {job.units.stress}, "
-            f"nu = {number(material.poissons_ratio)}"
+            f"{escape(name)}: {number(region['thickness'])} {length} of "
+            f"{escape(region['material'])}, area {number(region['area'])} {length}2"
         )
 
 
-def _supports(job: Job, mesh: Mesh) -> list[Row]:
-    return [
-        (support.label, _where(support.on), _holds(support),
-         str(len(select(mesh, support.on, support.pointer).nodes)))
-        for support in job.supports
-    ]  # fmt: skip
+def _quality(quality: Check) -> Iterator[str]:
+    """The worst of each measure, in words."""
+    words = {
+        "min_angle": "smallest angle {} degrees",
+        "max_aspect": "largest aspect {}",
+        "min_scaled_jacobian": "smallest scaled Jacobian {}",
+    }
+    for name, measure in quality.items():
+        bad = f" ({measure['bad']} elements beyond {number(measure['limit'])})"
+        yield words[name].format(number(measure["value"], 3)) + (bad if measure["bad"] else "")
 
 
-def _holds(support: Support) -> str:
-    """What a support prescribes, in the words of the document."""
-    held = [f"{name} = {number(value)}" for name in ("ux", "uy", "normal")
-            if (value := getattr(support, name)) is not None]  # fmt: skip
-    if support.along is not None:
-        held.append(f"along {place(support.along)} = {number(support.displacement or 0.0)}")
-    if support.spring is not None:
-        springs = ((name, getattr(support.spring, name))
-                   for name in ("x", "y", "normal", "tangential"))  # fmt: skip
-        held += [f"spring {name} {number(value)}" for name, value in springs if value]
-    return ", ".join(held) + (f" (in {support.case})" if support.case else "")
+def _supports(check: Check) -> Iterator[Row]:
+    for label, support in check["supports"].items():
+        length = number(support["length"]) if support["length"] else "-"
+        yield label, support["on"], support["holds"], str(support["nodes"]), length
 
 
-def _resultants(job: Job, mesh: Mesh) -> list[Row]:
-    """What the loads of each case add up to, about the centroid of the plate."""
-    applied = resolve_loads(build_model(job, mesh)).applied
-    sums = resultant(mesh.nodes, applied, centroid(mesh))
-    scale = np.abs(applied).sum(axis=(0, 1)) * np.array([[1], [1], [mesh.diagonal]])
-    return [
-        (case.name, str(len(case.loads)), *map(number, map(settled, values, scales)))
-        for case, values, scales in zip(job.load_cases, sums.T, scale.T, strict=True)
-    ]
+def _loads(check: Check) -> Iterator[Row]:
+    for case, content in list(check["load_cases"].items())[:MOST_STATES]:
+        for load in content["loads"]:
+            yield case, load["on"], load["load"]
 
 
-def _where(target: Target) -> str:
-    return target.name if isinstance(target, Named) else type(target).__name__.lower()
+def _sums(check: Check) -> Iterator[Row]:
+    states = {**check["cases"], **check["combinations"]}
+    for name, state in list(states.items())[:MOST_STATES]:
+        yield name, *map(number, state["force"]), number(state["moment"])
+
+
+def _print_cost(console: Console, check: Check) -> None:
+    cost = check["estimate"]
+    memory, seconds = cost["memory"]["bytes"] / MEBIBYTE, cost["time"]["seconds"]
+    console.print(
+        f"\nTo solve it: {cost['dofs']} unknowns, about {number(memory, 2)} MiB of memory and "
+        f"{number(seconds, 2)} s of one processor, pictures included"
+    )
+    console.print(cost["basis"], style="dim")

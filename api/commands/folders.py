@@ -1,8 +1,9 @@
-"""The folder that results are written to: a whole new one, or the old one untouched."""
+"""The folder that results or a check are written to: a whole new one, or the old one untouched."""
 
 import shutil
 import tempfile
 from collections.abc import Iterator
+from collections.abc import Set as AbstractSet
 from contextlib import contextmanager
 from pathlib import Path
 
@@ -15,15 +16,18 @@ MOST_FILES = 20  # that are named one by one
 # All that results ever consist of, see `workers/pipeline.py`.
 OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines",
         "envelope", "envelope.npz"}  # fmt: skip
+OF_A_CHECK = {"check.json", "previews"}  # see `workers/checking.py`
 
 
-def refuse_foreign(folder: Path) -> None:
+def refuse_foreign(
+    folder: Path, ours: AbstractSet[str] = OURS, earlier: str = "earlier results"
+) -> None:
     """Results replace earlier results only, never a folder with something else in it."""
-    foreign = sorted({path.name for path in folder.iterdir()} - OURS) if folder.exists() else []
+    foreign = sorted({path.name for path in folder.iterdir()} - ours) if folder.exists() else []
     if foreign:
         leave(
             BAD_INPUT,
-            f"{folder} holds something else than earlier results ({foreign[0]}); choose another.",
+            f"{folder} holds something else than {earlier} ({foreign[0]}); choose another.",
         )
 
 
