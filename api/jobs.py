@@ -241,6 +241,8 @@ def summarise(record: Record) -> dict[str, Any]:
             "field": f"{here}/fields/{{case}}.vtu",
             "preview": f"{here}/previews/{{case}}/{{quantity}}.png",
             "table": f"{here}/tables/{{name}}.csv",
+            "sheet": f"{here}/sheet",
+            "archive": f"{here}/archive.zip",
             "pin": f"{here}/pin",
         },
     }

@@ -4,7 +4,7 @@
 view and a problem all pass through it. Which cautions a job raised is in its results, not here.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -58,6 +58,18 @@ def file_answer(
     """
     answer = flask.send_file(path, mimetype=mimetype, download_name=download_name, conditional=True)
     answer.headers["Link"] = described_by(cautions_at)
+    return answer
+
+
+def stream_answer(
+    pieces: Iterator[bytes], mimetype: str, cautions_at: str, download_name: str, etag: str
+) -> Response:
+    """A file that is made while it is sent; `etag` stands for what it is made from."""
+    answer = Response(pieces, mimetype=mimetype)
+    answer.headers["Link"] = described_by(cautions_at)
+    answer.headers.set("Content-Disposition", "attachment", filename=download_name)
+    answer.set_etag(etag, weak=True)
+    answer.make_conditional(flask.request)
     return answer
 
 

@@ -17,11 +17,12 @@ from api.jobs import address
 from api.openapi import Blueprint, describe_file, problems_of
 from api.problem_types import JOB_CANCELLED, JOB_FAILED, NOT_FINAL, NOTHING_OF_THAT_NAME
 from api.problems import RefusalError
-from api.responses import file_answer, text_answer
+from api.responses import file_answer, stream_answer, text_answer
 from api.result_schemas import ResultsSchema
 from api.services import services
 from workers.analysis.envelope import WORST
-from workers.outputs.names import file_name
+from workers.outputs.archive import fingerprint, stream_archive
+from workers.outputs.names import SHEET, file_name
 from workers.outputs.tables import TABLES, write_table
 from workers.record import CANCELLED, FAILED, FINISHED
 
@@ -30,8 +31,14 @@ QUANTITIES = ("model", "deformed", "von_mises", "principal_max", "principal_min"
 blueprint = Blueprint("results", __name__, url_prefix="/v1", description="What a job came to")
 
 JSON, PNG, CSV = "application/json", "image/png", "text/csv"
+HTML, ZIP = "text/html", "application/zip"
 VTU = "application/octet-stream"  # VTK XML with raw appended data: no registered media type
 RESULTS = "results.json"
+# All that is on the sheet is in it, and the browser is told so.
+SHEET_POLICY = (
+    "default-src 'none'; style-src 'unsafe-inline'; img-src data:; base-uri 'none'; "
+    "form-action 'none'; frame-ancestors 'none'"
+)
 
 
 @blueprint.get("/jobs/<job_id>/results")
@@ -139,6 +146,36 @@ def show_table(job_id: str, name: str) -> Response:
     _require(name, "table", TABLES)
     results = orjson.loads((folder / RESULTS).read_bytes())
     return text_answer(write_table(name, results), CSV, address(job_id))
+
+
+@blueprint.get("/jobs/<job_id>/sheet")
+@blueprint.doc(responses={200: describe_file(HTML), **problems_of(404, 409, 500, 503)})
+def show_sheet(job_id: str) -> Response:
+    """The review sheet: one page to read, print and file
+
+    What was analysed, what governs and how sure that is, with pictures and the cautions first. It
+    needs no script and nothing from elsewhere, and may be kept as a file.
+    """
+    path = _folder(job_id) / SHEET
+    if not path.is_file():
+        make_artefact(job_id, "sheet", "")
+    answer = file_answer(path, HTML, address(job_id), download_name=f"{job_id}.html")
+    answer.headers["Content-Security-Policy"] = SHEET_POLICY
+    return answer
+
+
+@blueprint.get("/jobs/<job_id>/archive.zip")
+@blueprint.doc(responses={200: describe_file(ZIP), **problems_of(404, 409)})
+def show_archive(job_id: str) -> Response:
+    """Everything of a finished job in one file
+
+    Document, results, displacements, fields, pictures, tables and the review sheet, as far as they
+    have been made; `manifest.sha256` has the checksum of each.
+    """
+    folder = _folder(job_id)
+    return stream_answer(
+        stream_archive(folder), ZIP, address(job_id), f"{job_id}.zip", fingerprint(folder)
+    )
 
 
 def _folder(job_id: str) -> Path:

@@ -96,6 +96,8 @@ class LinksSchema(Answer):
     field = text("Address template (RFC 6570) of a VTK field file", required=True)
     preview = text("Address template of a picture", required=True)
     table = text("Address template of a CSV table", required=True)
+    sheet = text("The review sheet: one page of HTML to read, print and file", required=True)
+    archive = text("Everything in one ZIP file", required=True)
     pin = text("PUT keeps the job, DELETE keeps it no longer than others", required=True)
 
 

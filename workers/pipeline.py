@@ -34,7 +34,8 @@ from workers.errors import MeshError
 from workers.filing import Filing, Json, Progress, Work, draw_line
 from workers.job import Job
 from workers.outputs import preview
-from workers.outputs.sheet import SHEET, write_sheet
+from workers.outputs.names import SHEET
+from workers.outputs.sheet import write_sheet
 from workers.outputs.tables import write_tables
 from workers.preflight import placing_faults, preflight
 from workers.record import now
@@ -116,7 +117,7 @@ def run(
         results["pictures"] = filed.draw_some(pictures, files, progress)
         files["tables"], files["sheet"] = write_tables(results, folder), SHEET
         (folder / RESULTS).write_bytes(orjson.dumps(results, option=orjson.OPT_INDENT_2))
-        write_sheet(job, results, folder)
+        write_sheet(job, results, folder, folder)
     return results
 
 
@@ -189,11 +190,11 @@ def render_line(folder: Path, name: str) -> Path:
     return draw_line(folder, job, name, results, [Caution(**c) for c in results["cautions"]])
 
 
-def render_sheet(folder: Path) -> Path:
-    """Write the review sheet of a finished job anew; returns its path."""
+def render_sheet(folder: Path, target: Path) -> Path:
+    """Write the review sheet of a finished job anew, into the target folder; returns its path."""
     results = orjson.loads((folder / RESULTS).read_bytes())
     job = read_document((folder / DOCUMENT).read_bytes())
-    return write_sheet(job, results, folder)
+    return write_sheet(job, results, folder, target)
 
 
 def _reopen(folder: Path) -> Filing:

@@ -204,6 +204,8 @@ def _make(store: Store, folder: Path, kind: str, case: str, quantity: str | None
             made = pipeline.write_envelope(scratch, case)
         elif kind == "line":
             made = pipeline.render_line(scratch, case)
+        elif kind == "sheet":
+            made = pipeline.render_sheet(folder, scratch)
         else:
             raise KeyError(kind)
         place = folder / made.relative_to(scratch)

@@ -15,7 +15,7 @@ RESULTS = "results.json"
 MOST_FILES = 20  # that are named one by one
 # All that results ever consist of, see `workers/pipeline.py`.
 OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines",
-        "envelope", "envelope.npz"}  # fmt: skip
+        "envelope", "envelope.npz", "mesh.npz", "tables", "sheet.html"}  # fmt: skip
 OF_A_CHECK = {"check.json", "previews"}  # see `workers/checking.py`
 
 

@@ -12,7 +12,7 @@ from api.commands.client import Client, ServerError
 from api.commands.folders import RESULTS, name_files, refuse_foreign, replaced
 from api.commands.report import print_results
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
-from workers.outputs.names import file_name
+from workers.outputs.names import SHEET, file_name
 from workers.record import CANCELLED, FINISHED, PRIORITIES, UNFINISHED
 
 PAUSE = 0.25  # shortest time between two looks at a job [s]
@@ -38,7 +38,8 @@ PAUSE = 0.25  # shortest time between two looks at a job [s]
     "--out",
     "folder",
     type=click.Path(file_okay=False, path_type=Path),
-    help="Fetch results, fields and pictures into this folder (implies --wait).",
+    help="Fetch review sheet, results, tables, fields and pictures into this folder (implies "
+    "--wait).",
 )
 def command(
     job: Path,
@@ -100,6 +101,10 @@ def _leave_unless_finished(job: dict[str, Any]) -> None:
 def fetch_files(client: Client, here: str, results: dict[str, Any], folder: Path) -> None:
     """Fetch the results and every file that was made with the job."""
     client.fetch(f"{here}/results", folder / RESULTS)
+    client.fetch(f"{here}/sheet", folder / SHEET)
+    for table in results["files"]["tables"]:
+        target = folder / "tables" / f"{file_name(table)}.csv"
+        client.fetch(f"{here}/tables/{quote(table, safe='')}.csv", target)
     # Names go into addresses and file names by our own rules; paths in an answer are not followed.
     for case in results["files"]["fields"]:
         target = folder / "fields" / f"{file_name(case)}.vtu"

@@ -82,7 +82,7 @@ def finish(services: Services) -> Callable[[str], None]:
             (staging / "results.json").write_bytes(orjson.dumps(RESULTS))
             for name in (
                 "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png",
-                "envelope/fields.vtu", "envelope/nodes.csv", "envelope/von_mises.png",
+                "envelope/fields.vtu", "envelope/nodes.csv", "envelope/von_mises.png", "sheet.html",
             ):  # fmt: skip
                 path = staging / name
                 path.parent.mkdir(parents=True, exist_ok=True)

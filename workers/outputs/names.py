@@ -7,6 +7,7 @@ component on any file system, the same in every process, and never two names in 
 import hashlib
 from urllib.parse import quote
 
+SHEET = "sheet.html"
 # With ".vtu" or a temporary suffix added, still below the 255 bytes that file systems allow.
 LONGEST = 200
 

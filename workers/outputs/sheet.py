@@ -27,7 +27,7 @@ from workers.outputs.leading import (
     reaction_extremes,
     worth_a_row,
 )
-from workers.outputs.names import file_name
+from workers.outputs.names import SHEET, file_name
 from workers.outputs.rounding import settle
 from workers.outputs.sheet_parts import (
     MOST_ROWS,
@@ -39,7 +39,6 @@ from workers.outputs.sheet_parts import (
 
 Json = Mapping[str, Any]
 
-SHEET = "sheet.html"
 PICTURES = ("model", "von_mises", "deformed", "principal_max", "principal_min")
 DIGITS = 4  # more than any of these numbers can be trusted for
 MOST_PEAKS = 24  # states with a row of their own; more are listed in small print
@@ -98,9 +97,9 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
     )
 
 
-def write_sheet(job: Job, results: Json, folder: Path) -> Path:
-    """Write the sheet into the folder of the results; returns its path."""
-    path = folder / SHEET
+def write_sheet(job: Job, results: Json, folder: Path, target: Path) -> Path:
+    """Write the sheet of the results in `folder` into the target folder; returns its path."""
+    path = target / SHEET
     path.write_text(render_sheet(job, results, folder), encoding="utf-8")
     return path
 
