@@ -3,7 +3,20 @@
 from flask import Flask
 from werkzeug.middleware.proxy_fix import ProxyFix
 
-from api import access, catalogue, checks, docs, health, jobs, problems, rates, results, tracing
+from api import (
+    access,
+    catalogue,
+    checks,
+    docs,
+    health,
+    jobs,
+    metrics,
+    packing,
+    problems,
+    rates,
+    results,
+    tracing,
+)
 from api.exposure import require_tokens_beyond_loopback
 from api.openapi import ABOUT, SETTINGS, Api
 from api.preferences import WaitingRoom
@@ -21,6 +34,7 @@ BLUEPRINTS = (
     results.blueprint,
     catalogue.blueprint,
     health.blueprint,
+    metrics.blueprint,
 )
 
 
@@ -45,6 +59,7 @@ def create_app(settings: Settings | None = None) -> Flask:
         Tokens(settings.store),
         Audit(settings.store),
     )
+    packing.register(app)
     api = Api(app, spec_kwargs={"info": {"description": ABOUT}})
     api.describe_tokens()
     problems.register(app)

@@ -7,6 +7,8 @@ they stand for and taken out after it has gone. Readers therefore look at the re
 
 import os
 from collections.abc import Iterable, Iterator, Sequence
+from contextlib import suppress
+from datetime import datetime
 from pathlib import Path
 from urllib.parse import quote
 
@@ -26,8 +28,13 @@ class Index:
     def add(self, job_id: str, *, sync: bool = False) -> None:
         """Name the id; with `sync` the entry is durable on return."""
         path = self.path(job_id)
-        durable.make_folder(path.parent)
-        path.touch()
+        while True:
+            durable.make_folder(path.parent)
+            try:
+                path.touch()
+                break
+            except FileNotFoundError:  # the empty day was tidied away in between
+                continue
         if sync:
             durable.sync_folder(path.parent)
 
@@ -41,6 +48,20 @@ class Index:
     def count(self) -> int:
         """Number of ids."""
         return sum(len(_names(self.root / day)) for day in _names(self.root))
+
+    def oldest(self) -> str | None:
+        """The lowest id."""
+        for day in sorted(_names(self.root)):
+            if ids := [name for name in _names(self.root / day) if is_id(name)]:
+                return min(ids)
+        return None
+
+    def prune(self, before: datetime) -> None:
+        """Take out the empty days before a time, so that counting does not slow down with age."""
+        for day in _names(self.root):
+            if day < before.date().isoformat():
+                with suppress(OSError):  # not empty
+                    (self.root / day).rmdir()
 
 
 def newest_first(indexes: Sequence[Index], after: str | None = None) -> Iterator[str]:
@@ -60,6 +81,7 @@ class Indexes:
     """Where to look for the jobs of a state, of a label, of a workspace."""
 
     def __init__(self, root: Path) -> None:
+        self._root = root
         self._states = {state: Index(root / "states" / state) for state in STATES}
         self._labels = root / "labels"
         self._workspaces = root / "workspaces"
@@ -111,6 +133,15 @@ class Indexes:
         yield self.line_of(record.workspace)
         if record.priority == INTERACTIVE:
             yield self.interactive_of(record.workspace, record.owner)
+
+    def prune(self, before: datetime) -> None:
+        """Take out the empty days before a time from all indexes, and from the jobs themselves."""
+        Index(self._root / "jobs").prune(before)
+        for index in self._states.values():
+            index.prune(before)
+        for folder in (self._labels, self._workspaces, self._lines, self._interactive):
+            for name in _names(folder):
+                Index(folder / name).prune(before)
 
     def drop(self, record: Record) -> None:
         """Take out a job that is no more."""

@@ -13,13 +13,15 @@ import os
 import signal
 import sys
 import time
+from collections.abc import Callable
 from contextlib import nullcontext
 from types import FrameType
 
 import redis
 
 from workers import logs
-from workers.errors import FishplateError
+from workers.errors import FishplateError, StoreError
+from workers.housekeeping import keep_house
 from workers.lineage import die_with_parent
 from workers.private_redis import PrivateRedis
 from workers.queue import Queue
@@ -30,6 +32,7 @@ from workers.store import Store
 TICK = 0.5  # longest time until a signal is noticed [s]
 RESTART_PAUSE = 1.0  # between two starts of workers, so that a broken one does not spin [s]
 SHORTEST_GRACE = 1.5  # rq takes a second signal within 1 s for the first one heard twice [s]
+FIRST_TIDYING = 60.0  # after the start, when workers have begun [s]
 LAST_WAIT = 10.0  # for workers that were told to stop at once [s]
 
 STOP_SIGNALS = (signal.SIGTERM, signal.SIGINT)
@@ -52,6 +55,8 @@ class Pool:
         self.workers: list[multiprocessing.process.BaseProcess] = []
         self._stopping = False
         self._next_start = self._next_look = 0.0
+        self._next_tidying = time.monotonic() + min(FIRST_TIDYING, settings.housekeeping_every)
+        self._tidying: multiprocessing.process.BaseProcess | None = None
 
     def run(self) -> None:
         """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
@@ -65,6 +70,7 @@ class Pool:
                     self.server.keep_alive()
                 self._replace_dead()
                 self._reconcile()
+                self._keep_house()
                 multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
         finally:
             self._stop()
@@ -80,13 +86,8 @@ class Pool:
         self.workers = alive
         if len(alive) < self.settings.workers and time.monotonic() >= self._next_start:
             self._next_start = time.monotonic() + RESTART_PAUSE
-            # A signal must not meet a child that still has our handlers.
-            signal.pthread_sigmask(signal.SIG_BLOCK, STOP_SIGNALS)
             for _ in range(self.settings.workers - len(alive)):
-                worker = _fork.Process(target=_be_worker, args=(self.settings, os.getpid()))
-                worker.start()
-                self.workers.append(worker)
-            signal.pthread_sigmask(signal.SIG_UNBLOCK, STOP_SIGNALS)
+                self.workers.append(_start(_be_worker, self.settings))
 
     def _reconcile(self) -> None:
         if time.monotonic() < self._next_look:
@@ -99,8 +100,19 @@ class Pool:
         except Exception:  # whatever is wrong with one look, the workers must go on
             log.exception("the reconciler will try again")
 
+    def _keep_house(self) -> None:
+        """In a process of its own: looking at a large store takes longer than a tick."""
+        if self._tidying is not None and self._tidying.is_alive():
+            return
+        if time.monotonic() >= self._next_tidying:
+            self._next_tidying = time.monotonic() + self.settings.housekeeping_every
+            self._tidying = _start(_be_housekeeper, self.settings)
+
     def _stop(self) -> None:
         """First ask, then (rq takes a second signal so) insist, then kill."""
+        if self._tidying is not None:
+            self._tidying.kill()  # every step of it is whole, or is done again
+            self._tidying.join()
         self._signal(signal.SIGTERM, max(self.settings.shutdown_grace, SHORTEST_GRACE))
         self._signal(signal.SIGTERM, LAST_WAIT)
         self._signal(signal.SIGKILL, LAST_WAIT)
@@ -114,14 +126,38 @@ class Pool:
             worker.join(max(0.0, until - time.monotonic()))
 
 
-def _be_worker(settings: Settings, parent: int) -> None:
-    """First function of a worker process."""
+def _start(
+    what: Callable[[Settings], None], settings: Settings
+) -> multiprocessing.process.BaseProcess:
+    """A child that does one thing and ends with us."""
+    child = _fork.Process(target=_be_child, args=(what, settings, os.getpid()))
+    # A signal must not meet a child that still has our handlers.
+    signal.pthread_sigmask(signal.SIG_BLOCK, STOP_SIGNALS)
+    child.start()
+    signal.pthread_sigmask(signal.SIG_UNBLOCK, STOP_SIGNALS)
+    return child
+
+
+def _be_child(what: Callable[[Settings], None], settings: Settings, parent: int) -> None:
+    """First function of a child."""
     os.setpgrp()  # an interrupt from the terminal reaches the pool only, which passes it on
     for number in STOP_SIGNALS:
         signal.signal(number, signal.SIG_DFL)
     signal.pthread_sigmask(signal.SIG_UNBLOCK, STOP_SIGNALS)
     die_with_parent(signal.SIGTERM, parent=parent)
+    what(settings)
+
+
+def _be_worker(settings: Settings) -> None:
     importlib.import_module("workers.worker").work(settings)
+
+
+def _be_housekeeper(settings: Settings) -> None:
+    os.nice(19)
+    try:
+        keep_house(settings)
+    except (OSError, StoreError) as error:
+        log.warning("the store could not be looked after: %s", error)
 
 
 def run_pool(settings: Settings) -> None:

@@ -70,6 +70,11 @@ def time_of(job_id: str) -> datetime:
     return datetime(1970, 1, 1, tzinfo=UTC) + timedelta(microseconds=microseconds)
 
 
+def age_of(job_id: str) -> float:
+    """Seconds since the id was made."""
+    return max(0.0, (datetime.now(UTC) - time_of(job_id)).total_seconds())
+
+
 def _base32(value: int, length: int) -> str:
     return "".join(ALPHABET[value >> 5 * place & 31] for place in reversed(range(length)))
 
@@ -99,6 +104,8 @@ class Record:
     workspace : whose it is; owner: name of the token that it came with.
     priority  : the line that it stands in.
     pinned    : never removed for its age or for the room that it takes.
+    model     : digest that jobs of the same model share; None where there is nothing to share.
+    outcome   : what its batch wants to know of the results: units, mesh and envelope.
     """
 
     id: str
@@ -116,6 +123,8 @@ class Record:
     priority: str = BULK
     pinned: bool = False
     cause: str | None = None
+    model: str | None = None
+    outcome: Mapping[str, Any] | None = None
 
     @property
     def state(self) -> str:
@@ -171,6 +180,8 @@ class Record:
             "priority": self.priority,
             "pinned": self.pinned,
             "cause": self.cause,
+            "model": self.model,
+            "outcome": self.outcome,
         }
 
     def as_bytes(self) -> bytes:

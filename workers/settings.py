@@ -128,11 +128,13 @@ class Settings:
     interactive_jobs: int = _setting(
         8,
         readers.whole(0, 10**6),
-        "Unfinished jobs of one workspace that may stand in the interactive line; further ones are "
-        "put into the bulk line.",
+        "Unfinished jobs of one token that may stand in the interactive line; further ones are put "
+        "into the bulk line.",
     )
     request_rate: str = _setting(
-        "3000/minute", readers.rate, "Requests with one token, or from one address without; or off."
+        "3000/minute",
+        readers.rate,
+        "Requests with one token, or from one address without one; or off.",
     )
     submit_rate: str = _setting(
         "1200/minute", readers.rate, "Jobs submitted with one token; or off."
@@ -148,8 +150,8 @@ class Settings:
     keep_bytes: int | None = _setting(
         None,
         readers.size,
-        "While the store holds more, the final jobs that ended first are removed, unless pinned. "
-        "Without it none is removed for its size.",
+        "While the store holds more, the oldest final jobs are removed, unless pinned. Without it "
+        "none is removed for its size.",
     )
     housekeeping_every: float = _setting(
         300.0,

@@ -12,6 +12,8 @@
     interactive/WHO/DAY/ID     index: unfinished interactive jobs of an owner in a workspace
     keys/DIGEST                the job that an Idempotency-Key stands for, within a workspace
     incoming/ID, removed/ID    on the way in and out
+    tokens.json, audit/        who may do what (tokens.py), who did what (audit.py)
+    usage.json                 what the store held when it was looked at last (housekeeping.py)
 
 Redis may be lost at any time; this folder may not. Every method raises StoreError when the file
 system refuses (full disk, no permission), and UnknownJobError for an id without a job.
@@ -76,6 +78,7 @@ class Store(StoreReader):
         workspace: str = DEFAULT_WORKSPACE,
         owner: str | None = None,
         priority: str = BULK,
+        model: str | None = None,
     ) -> Acceptance:
         """File a job. On return it is on the disk: it will be worked on whatever is killed.
 
@@ -96,6 +99,7 @@ class Store(StoreReader):
             workspace=workspace,
             owner=owner,
             priority=priority,
+            model=model,
         )
         with telling("the job could not be filed"):
             if record.key is not None:
@@ -172,11 +176,15 @@ class Store(StoreReader):
             return self._replace(folder, self.record(job_id).moved(state, reason=reason, **facts))
 
     def publish(
-        self, job_id: str, staging: Path, cautions: Sequence[Mapping[str, Any]] = ()
+        self,
+        job_id: str,
+        staging: Path,
+        cautions: Sequence[Mapping[str, Any]] = (),
+        outcome: Mapping[str, Any] | None = None,
     ) -> Record:
         """Make the staged results the results of a running job: all of them, at once.
 
-        cautions : those of the results; the record keeps them for whoever asks for the state only.
+        cautions, outcome : of the results; the record keeps them for whoever asks for no more.
 
         Raises
         ------
@@ -186,7 +194,7 @@ class Store(StoreReader):
         with telling(f"the results of job {job_id} could not be written"):
             durable.sync_tree(staging)
         with self._changing(job_id) as folder:
-            record = self.record(job_id).moved(FINISHED, cautions=tuple(cautions))
+            record = self.record(job_id).moved(FINISHED, cautions=tuple(cautions), outcome=outcome)
             durable.write(staging / FINAL_RECORD, record.as_bytes())
             durable.sync_folder(staging)
             durable.move(staging, folder / "results")

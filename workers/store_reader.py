@@ -4,6 +4,7 @@ How the folder is laid out, and what changes it, is in `store.py`.
 """
 
 import logging
+import os
 from collections.abc import Iterator
 from contextlib import contextmanager
 from pathlib import Path
@@ -108,6 +109,13 @@ class StoreReader:
         """Number of unfinished jobs of an owner in the interactive line."""
         with telling("the unfinished jobs could not be counted"):
             return self.indexes.interactive_of(workspace, owner).count()
+
+    def room_left(self) -> int:
+        """Free bytes on the disk of the store."""
+        with telling("the disk of the store could not be asked"):
+            existing = next(path for path in (self.root, *self.root.parents) if path.exists())
+            room = os.statvfs(existing)
+            return room.f_bavail * room.f_frsize
 
     def _folder(self, job_id: str) -> Path:
         self.record(job_id)
