@@ -189,6 +189,25 @@ def toed(size: int, **spot: Any) -> Json:
     )
 
 
+def panel(fillet: float | None = None, **meshing: Any) -> Json:
+    """An L-shaped panel 200 x 200 x 8, legs 100 wide, one of them pulled, rollers at the other."""
+    corner = {"at": [100, 100], **({"fillet": fillet} if fillet else {})}
+    return {
+        **WEB,
+        "title": "Corner of a frame",
+        "geometry": {
+            "outline": [
+                {"at": [0, 0], "side": "low"}, {"at": [200, 0]}, {"at": [200, 100]}, corner,
+                {"at": [100, 200], "side": "top"}, {"at": [0, 200], "side": "left"},
+            ]
+        },
+        "meshing": {"element": "Q8", **(meshing or {"size": 15})},
+        "load_cases": {"pull": [{"on": "top", "traction": [0, 20]}]},
+    }  # fmt: skip
+
+
+FIXED = [{"on": "left", "ux": 0, "uy": 0}]
+
 # Code -> documents that must raise it, documents that must not.
 CASES: dict[str, tuple[list[Json], list[Json]]] = {
     "yield-exceeded": (
@@ -228,6 +247,17 @@ CASES: dict[str, tuple[list[Json], list[Json]]] = {
              meshing={"element": "Q4"})],
         # a quadratic element follows a linear stress however far it falls
         [web(), bar()],
+    ),
+    "stress-singularity": (
+        # re-entrant by 90 degrees; clamped and free side at a right angle, which for a Poisson's
+        # ratio of zero is no more than a corner of a strip in plain tension
+        [panel(), tie(supports=FIXED)],
+        [panel(fillet=20), tie(supports=FIXED, materials__steel__poissons_ratio=0)],
+    ),
+    "not-converged": (
+        [panel(target_error=1e-3, max_dofs=1500),
+         web(meshing={"element": "Q8", "target_error": 1e-5, "max_dofs": 3000})],
+        [panel(target_error=0.05), tie(requests={"convergence": True})],
     ),
     "low-order-bending": (
         [bar(element="Q4"), bar(element="T3")],

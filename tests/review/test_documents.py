@@ -2,13 +2,13 @@
 
 from typing import Any
 
+import orjson
 import pytest
 
 from tests.caution_documents import CASES, bar, tie, web
-from tests.outlines import solved
-from workers.analysis.combine import load_states
-from workers.analysis.summary import summarise
+from workers import pipeline
 from workers.cautions import STANDING, Caution
+from workers.document.read import read_document
 from workers.review.catalogue import RULES
 from workers.review.review import review
 
@@ -16,16 +16,15 @@ Json = dict[str, Any]
 
 # No document should ever raise these: they stand for a fault of the program (`test_equations.py`).
 OF_THE_PROGRAM = {"equilibrium-open"}
-# Raised from the record of refined meshes, which these small jobs do not have.
 RAISING = [(code, number) for code, (raising, _) in CASES.items() for number in range(len(raising))]
 SILENT = [(code, number) for code, (_, silent) in CASES.items() for number in range(len(silent))]
 
 
 def cautions(document: Json) -> list[Caution]:
     """Read, mesh, solve, summarise, review: as a worker does, without files."""
-    job = solved(document)
-    results = summarise(job.solution, job.recovery, load_states(job.job))
-    return review(job.job, job.mesh, results, job.solution, job.recovery)
+    job = read_document(orjson.dumps(document))
+    done = pipeline.solve(job, pipeline.silent, most_dofs=None, seconds=60.0)
+    return review(job, done.mesh, done.results, done.solution, done.recovery)
 
 
 def named(code: str, found: list[Caution]) -> list[Caution]:
