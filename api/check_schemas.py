@@ -90,7 +90,7 @@ class EstimateSchema(Answer):
 
 class JobCheckSchema(CautiousAnswer):
     id = text("Stands for this document in this workspace", required=True)
-    expires = text("When it may be gone if nobody asks about it before, RFC 3339", required=True)
+    expires = text("When it may be gone if its document is not sent again, RFC 3339", required=True)
     links = fields.Nested(CheckLinksSchema, required=True)
     job = part(AboutSchema, "What was checked")
     units = part(ResultUnitsSchema, "Of every number below")

@@ -1,6 +1,6 @@
 """Checks: what would happen with a job, said by a worker ahead of the queue; nothing is solved.
 
-A check is no job: it is kept for an hour after the last question, and can be asked for again.
+A check is no job: it is kept for an hour after its document was last sent.
 """
 
 from datetime import UTC, datetime

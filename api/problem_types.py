@@ -116,7 +116,7 @@ PICTURES_UNAVAILABLE = ProblemType(
 )  # fmt: skip
 UNKNOWN_CHECK = ProblemType(
     "unknown-check", 404, "There is no such check",
-    "A check is kept for an hour after the last question about it. Send its document again.",
+    "A check is kept for an hour after its document was last sent. Send it again.",
 )  # fmt: skip
 CHECK_LATE = ProblemType(
     "not-checked-yet", 503, "The check is not made yet",

@@ -1,11 +1,11 @@
 """Where checks are kept for a while: documents that somebody wants looked over, and the answers.
 
-    checks/ID/job.json     the document; its age is that of the last question about it
+    checks/ID/job.json     the document; its age counts from when it was last sent or read
               workspace    whose it is
               answer/      what a worker found, put in place by one rename
 
 The id is a digest of workspace and document, so asking again is the same check. Nothing here
-outlives an hour without a question, and nothing is worth protecting from a power cut. Every method
+outlives an hour in which nobody sends it again, and nothing is worth protecting from a power cut. Every method
 raises StoreError when the file system refuses.
 """
 
@@ -23,7 +23,7 @@ from uuid import uuid4
 from workers.errors import StoreError
 from workers.record import DEFAULT_WORKSPACE
 
-KEPT = 3600.0  # after the last question [s]
+KEPT = 3600.0  # after the document was last sent or read [s]
 ID_LENGTH = 32  # hexadecimal digits
 DOCUMENT, WORKSPACE, ANSWER = "job.json", "workspace", "answer"
 
@@ -82,12 +82,12 @@ class Checks:
                 found.rename(self._place(check_id).with_name(ANSWER))
 
     def expires(self, check_id: str) -> float:
-        """When the check may be removed if nobody asks about it before [s since 1970]."""
+        """When the check may be removed if its document is not sent again [s since 1970]."""
         with _telling("the check could not be read"):
             return self._place(check_id).stat().st_mtime + KEPT
 
     def expire(self) -> None:
-        """Remove what nobody has asked about for an hour; never raises."""
+        """Remove what nobody has sent or read for an hour; never raises."""
         for folder in self._folders():
             with suppress(OSError):
                 marks = [path for path in (folder, folder / DOCUMENT) if path.exists()]

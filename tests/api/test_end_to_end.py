@@ -174,6 +174,45 @@ def test_pictures_are_served_whether_made_with_the_job_or_on_request(
     assert np.ptp(image.active_scalars, axis=0).min() > 100  # something is drawn
 
 
+def test_a_check_says_what_would_happen(
+    ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any], tmp_path: Path
+) -> None:
+    """The strip is pulled with 32 kN, weighs 0.2512 kg, and has the mesh that it was solved on."""
+    body, headers = ask("/v1/checks", {**strip(), "combinations": {"pull twice": {"pull": 2}}})
+    found = json.loads(body)
+    assert found["cases"]["pull"]["force"] == pytest.approx([32_000, 0], abs=1e-6)
+    assert found["plate"]["mass"] == {"value": pytest.approx(0.2512), "unit": "kg"}
+    assert found["mesh"] == pulled[1]["mesh"]
+    assert found["estimate"]["factor_entries"] == pulled[1]["solver"]["factor_entries"]
+    document = json.loads(ask("/openapi.json")[0])
+    schema = {"$ref": "#/components/schemas/JobCheck", "components": document["components"]}
+    assert [e.message for e in Draft202012Validator(schema).iter_errors(found)] == []
+    assert json.loads(ask(headers["Content-Location"])[0]) == found
+    if found["pictures"]["available"]:
+        picture, headers = ask(found["links"]["preview"].replace("{case}", "pull twice"))
+        assert picture.startswith(b"\x89PNG")  # ISO/IEC 15948, 5.2
+        assert found["links"]["self"] in headers["Link"]
+
+
+def test_a_check_finds_what_only_the_mesh_shows(ask: Callable[..., tuple[bytes, Any]]) -> None:
+    """An outline is meshed by a worker: only there is a selector found to catch nothing."""
+    document = strip()
+    document["geometry"] = {
+        "outline": [{"at": at} for at in ([0, 0], [100, 0], [100, 40])] + [
+            {"at": [0, 40], "side": "left"}
+        ],
+    }  # fmt: skip
+    document["supports"] = [{"on": "left", "ux": 0, "uy": 0}]
+    nowhere = {"segment": [[10, 0], [10, 40]]}
+    document["load_cases"] = {"pull": [{"on": nowhere, "traction": [1, 0]}]}
+    with pytest.raises(HTTPError) as error:
+        ask("/v1/checks", document)
+    with error.value as answer:
+        assert answer.code == 422
+        faults = json.load(answer)["errors"]
+    assert [fault["pointer"] for fault in faults] == ["/load_cases/pull/0/on"]
+
+
 def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes, Any]]) -> None:
     with pytest.raises(HTTPError) as error:
         ask("/v1/jobs", {**strip(), "supports": [{"on": "left", "uy": 0}]})
