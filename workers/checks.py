@@ -5,8 +5,8 @@
               answer/      what a worker found, put in place by one rename
 
 The id is a digest of workspace and document, so asking again is the same check. Nothing here
-outlives an hour in which nobody sends it again, and nothing is worth protecting from a power cut. Every method
-raises StoreError when the file system refuses.
+outlives an hour in which nobody sends it again, and nothing is worth protecting from a power cut.
+Every method raises StoreError when the file system refuses.
 """
 
 import hashlib
