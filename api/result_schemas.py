@@ -260,7 +260,38 @@ class EnvelopeFilesSchema(Answer):
     )  # fmt: skip
 
 
+class ConvergenceMeshSchema(Answer):
+    dofs = whole("Displacements")
+    elements = whole("Elements")
+    relative_error = number("Largest estimated error of any case, relative, in the energy norm")
+    case = text("Case or combination that has it", required=True)
+
+
+class SeriesSchema(Answer):
+    values = numbers("Of the peak on each mesh")
+    at = fields.List(place(), required=True)
+    sizes = numbers("Of the elements at the peak, on each mesh [L]")
+    behaviour = text("converging, oscillating, growing or unresolved", required=True)
+    observed_order = number("Of convergence with the element size", allow_none=True)
+    extrapolated = number("What the peak tends to (Richardson)", allow_none=True)
+    uncertainty = number("Grid convergence index (Roache 1994), as a value", allow_none=True)
+
+
+class ConvergenceSchema(Answer):
+    kind = text("adaptive, or series where the record was asked for", required=True)
+    target_error = fields.Float(metadata={"description": "Of an adaptive run"})
+    max_dofs = fields.Integer(metadata={"description": "Limit of an adaptive run"})
+    stopped_by = text("target, max_dofs, steps, time, no-gain or mesh; of an adaptive run")
+    message = text("The same in words")
+    meshes = fields.List(fields.Nested(ConvergenceMeshSchema), required=True)
+    peaks = by_name(
+        fields.Dict(keys=fields.String(), values=fields.Nested(SeriesSchema)),
+        "By case and combination, by quantity",
+    )
+
+
 class FilesSchema(Answer):
+    convergence = text("Picture of the error over the unknowns, where there is a record")
     fields_ = fields.Dict(
         keys=fields.String(), values=fields.String(), required=True, data_key="fields",
         metadata={"description": "Made with the job; others are made when asked for"},
@@ -305,8 +336,10 @@ class ResultsSchema(CautiousAnswer):
         fields.Dict(keys=fields.String(), values=fields.Nested(CutResultSchema)), "By name, by case"
     )
     hot_spots = by_name(HotSpotResultSchema, "By name")
-    convergence = fields.Raw(
-        required=True, allow_none=True, metadata={"description": "Record of refined meshes"}
+    convergence = part(
+        ConvergenceSchema,
+        "Record of refined meshes; null where the job was solved on one",
+        allow_none=True,
     )
     files = part(FilesSchema, "Within the results folder")
     pictures = part(PicturesSchema, "Whether previews can be made")

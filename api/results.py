@@ -135,6 +135,23 @@ def show_line(job_id: str, line: str) -> Response:
     return file_answer(path, PNG, address(job_id), download_name=f"{line}.png")
 
 
+@blueprint.get("/jobs/<job_id>/convergence.png")
+@blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409)})
+def show_convergence(job_id: str) -> Response:
+    """The estimated error over the unknowns of all meshes, as a picture
+
+    There is one where the job has a `target_error` or asks for a convergence record.
+    """
+    path = _folder(job_id) / "convergence.png"
+    if not path.is_file():
+        raise RefusalError(
+            NOTHING_OF_THAT_NAME,
+            "The job was solved on one mesh: it has no convergence record. Give it a "
+            "`target_error`, or set `requests.convergence`.",
+        )
+    return file_answer(path, PNG, address(job_id), download_name="convergence.png")
+
+
 @blueprint.get("/jobs/<job_id>/tables/<name>.csv")
 @blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409)})
 def show_table(job_id: str, name: str) -> Response:

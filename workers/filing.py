@@ -25,6 +25,7 @@ from workers.cautions import Caution
 from workers.errors import PicturesUnavailableError
 from workers.job import Job
 from workers.outputs import preview, vtu
+from workers.outputs.convergence import render_convergence
 from workers.outputs.envelope_table import write_envelope_table
 from workers.outputs.names import file_name
 
@@ -64,12 +65,14 @@ class Work:
     displacement : (N, 2, c) of the load cases [L]
     temperature : for each block (m, c) temperature changes [K], None if there are none
     formed : the envelope, where it is known already
+    built : the stress recovery, likewise
     """
 
     model: Model
     displacement: NDArray[np.float64]
     temperature: Temperature
     formed: Envelope | None = None
+    built: Recovery | None = None
 
     @property
     def job(self) -> Job:
@@ -77,7 +80,7 @@ class Work:
 
     @cached_property
     def recovery(self) -> Recovery:
-        return Recovery.build(self.model)
+        return self.built or Recovery.build(self.model)
 
     @cached_property
     def states(self) -> States:
@@ -173,6 +176,13 @@ class Filing:
         )  # fmt: skip
         return path
 
+    def draw_convergence(self) -> Path:
+        """The picture of the convergence record, which the results must have."""
+        path = self.folder / "convergence.png"
+        record = self.results["convergence"]
+        render_convergence(path, self.work.job, record, cautions=self.cautions)
+        return path
+
     def _in_envelope(self, name: str) -> Path:
         # A folder of its own: no case can have the name of anything in it.
         (self.folder / "envelope").mkdir(exist_ok=True)
@@ -187,6 +197,8 @@ class Filing:
         for done, name in enumerate(names):
             progress("writing", done / len(names))
             written["fields"][name] = self._within(self.write_fields(name))
+        if self.results["convergence"] is not None:
+            written["convergence"] = self._within(self.draw_convergence())
         if len(self.work.states) > 1 or self.work.job.requests.field_files == "envelope":
             written["envelope"]["fields"] = self._within(self.write_envelope())
         return written

@@ -83,6 +83,7 @@ def finish(services: Services) -> Callable[[str], None]:
             for name in (
                 "fields/pull.vtu", "previews/pull/model.png", "lines/axis.png",
                 "envelope/fields.vtu", "envelope/nodes.csv", "envelope/von_mises.png", "sheet.html",
+                "convergence.png",
             ):  # fmt: skip
                 path = staging / name
                 path.parent.mkdir(parents=True, exist_ok=True)

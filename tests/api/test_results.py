@@ -56,6 +56,7 @@ def test_a_finished_job_shows_its_own_cautions_first(client: FlaskClient, job_id
         "fields/pull.vtu",
         "previews/pull/model.png",
         "lines/axis.png",
+        "convergence.png",
         "envelope/fields.vtu",
         "envelope/nodes.csv",
         "envelope/von_mises.png",
