@@ -12,6 +12,7 @@ from api import (
     jobs,
     metrics,
     packing,
+    pages,
     problems,
     rates,
     results,
@@ -66,6 +67,7 @@ def create_app(settings: Settings | None = None) -> Flask:
     for blueprint in BLUEPRINTS:
         api.register_blueprint(blueprint)
     app.register_blueprint(docs.blueprint)
+    app.register_blueprint(pages.blueprint)
     # In this order: its name, whose it is, whether he asks too often, whether he may.
     tracing.register(app)
     app.before_request(access.identify)

@@ -53,6 +53,11 @@ REQUESTS: dict[tuple[str, str], list[dict[str, Any]]] = {
         {"data": b"{}", "content_type": "text/plain"},
         {"data": b" " * 200_000, "content_type": "application/json"},
     ],
+    ("GET", "/jobs"): [
+        {},
+        {"query_string": {"limit": 1, "state": "", "label": "", "hold": "true"}},
+        {"query_string": {"state": "lost", "colour": "red"}},
+    ],
     ("GET", "/v1/jobs"): [
         {},
         {"query_string": {"limit": 1}},
