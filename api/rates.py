@@ -21,7 +21,8 @@ from workers.queue import redis_address
 from workers.setting_readers import OFF
 from workers.settings import Settings
 
-SUBMITTING = ("jobs.submit",)
+# What costs a worker time.
+SUBMITTING = ("jobs.submit", "checks.make_check")
 TIMEOUTS: Any = {
     "socket_timeout": 1.0,
     "socket_connect_timeout": 1.0,

@@ -137,7 +137,7 @@ class Settings:
         "Requests with one token, or from one address without one; or off.",
     )
     submit_rate: str = _setting(
-        "1200/minute", readers.rate, "Jobs submitted with one token; or off."
+        "1200/minute", readers.rate, "Jobs submitted with one token, and checks likewise; or off."
     )
 
     # --- keeping ---------------------------------------------------------------------------------
