@@ -104,5 +104,6 @@ class Area:
 
 def _add_at(total: Array, nodes: NDArray, force: Array) -> None:
     """Add (m, n, 2) element forces to (N, 2) nodal forces."""
+    # Counting would go through all nodes of the mesh for each chunk of elements.
     for axis in (0, 1):
-        total[:, axis] += np.bincount(nodes.ravel(), force[..., axis].ravel(), minlength=len(total))
+        np.add.at(total[:, axis], nodes.ravel(), force[..., axis].ravel())
