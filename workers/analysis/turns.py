@@ -1,7 +1,8 @@
 """Where a line of facets turns: the angles of its corners, and which of them are true corners.
 
 An arc that is meshed with straight facets turns at every node, and so does the border of a round
-region; such turns look like their neighbours. A true corner stands out.
+region; such turns look like their neighbours. A true corner stands out. Where a straight facet is a
+chord of an arc, the arc leaves its end at half the angle by which the next chord turns away.
 """
 
 from typing import NamedTuple
@@ -40,14 +41,28 @@ def turns(mesh: Mesh, facets: Facets) -> Turns:
     table = mesh.facet_table(facets)
     leaving, arriving = _end_tangents(mesh, table)
     incoming, outgoing = _follow(table, leaving, arriving)
-    angle = _opening(leaving[outgoing], arriving[incoming])
-    turn = np.abs(np.pi - angle)
-    # The turns at the other ends of both facets; an open end counts as none.
+    turn = np.pi - _opening(leaving[outgoing], arriving[incoming])
+    # The turns at both ends of each facet; an open end counts as none.
     at_start, at_end = np.zeros(len(facets)), np.zeros(len(facets))
     at_start[outgoing], at_end[incoming] = turn, turn
-    beside = np.maximum(at_start[incoming], at_end[outgoing])
-    is_corner = (turn >= LEAST) & ((turn >= PLAIN) | (turn > STANDS_OUT * beside))
+    beside = np.maximum(np.abs(at_start[incoming]), np.abs(at_end[outgoing]))
+    size = np.abs(turn)
+    is_corner = (size >= LEAST) & ((size >= PLAIN) | (size > STANDS_OUT * beside))
+    is_joint = np.zeros((2, len(facets)), bool)
+    is_joint[0, outgoing], is_joint[1, incoming] = ~is_corner, ~is_corner
+    chord = table[:, 2] < 0
+    leaving = _turned(leaving, np.where(chord & is_joint[1], -at_end / 2, 0.0))
+    arriving = _turned(arriving, np.where(chord & is_joint[0], at_start / 2, 0.0))
+    angle = _opening(leaving[outgoing], arriving[incoming])
+    is_corner &= np.abs(np.pi - angle) >= LEAST
     return Turns(incoming, outgoing, table[incoming, 1].astype(np.intp), angle, is_corner)
+
+
+def _turned(directions: Array, angles: Array) -> Array:
+    """Directions (f, 2) turned counter-clockwise by angles (f,)."""
+    cos, sin = np.cos(angles), np.sin(angles)
+    x, y = directions.T
+    return np.stack((cos * x - sin * y, sin * x + cos * y), axis=1)
 
 
 def _end_tangents(mesh: Mesh, table: NDArray[np.int32]) -> tuple[Array, Array]:
