@@ -17,6 +17,7 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "submit": "Send a job to a server, wait for it, fetch its results.",
         "tokens": "Make, list and revoke the tokens that a server asks for.",
         "check": "Read a job and say what was understood; solve nothing.",
+        "verify": "Run the reference cases on this installation.",
     }
 )
 

@@ -1,0 +1,1 @@
+"""Reference cases that a user can run on the installed program."""
