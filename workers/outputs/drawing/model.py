@@ -159,9 +159,11 @@ def _draw_caption(page: Page, job: Job, mesh: Mesh) -> None:
 def _region_labels(job: Job, mesh: Mesh, view: View) -> Iterator[Label]:
     """Name, thickness and material of each region that is not the plate."""
     for number, name in enumerate(mesh.regions):
+        if name == PLATE_REGION:
+            continue
         nodes = [b.connectivity[b.region == number].ravel() for b in mesh.blocks]
         inside = mesh.nodes[np.unique(np.concatenate(nodes))]
-        if name == PLATE_REGION or not len(inside):
+        if not len(inside):
             continue
         middle = inside[np.argmin(np.linalg.norm(inside - inside.mean(axis=0), axis=1))]
         section = f"t = {show(job.thickness_of(name))} {job.units.length}"
