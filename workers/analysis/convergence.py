@@ -13,7 +13,7 @@ from scipy.spatial import KDTree
 
 from elements.registry import get
 from workers.analysis.envelope import WORST
-from workers.analysis.grid_convergence import GridConvergence, grid_convergence
+from workers.analysis.grid_convergence import SURE, UNSURE, GridConvergence, grid_convergence
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.size_field import element_areas
 
@@ -23,6 +23,7 @@ Json = dict[str, Any]
 SAME_PLACE = 1e-6  # of the diagonal
 SAME_RADIUS = 1e-6  # relative
 CONFIRMS = 0.5  # part of the growth that theory foretells
+LEAST_SHARE = 0.25  # of the interval by one mesh, that a series can narrow it to
 LEAST_LEVER = 1.5  # of element sizes, over which growth can be told
 
 
@@ -98,7 +99,7 @@ class Record:
         else:
             sizes = [mesh.sizes[name][quantity] for mesh in self.meshes]
         same = _alike(peaks)
-        verdict = self._verdict(peaks[-same:], sizes[-same:], quantity)
+        verdict = self._verdict(peaks[-same:], sizes[-same:], quantity, SURE if uniform else UNSURE)
         return {
             "values": [peak["value"] for peak in peaks],
             "at": [peak["at"] for peak in peaks],
@@ -109,11 +110,14 @@ class Record:
             "uncertainty": verdict.uncertainty,
         }
 
-    def _verdict(self, peaks: list[Json], sizes: list[float], quantity: str) -> GridConvergence:
+    def _verdict(
+        self, peaks: list[Json], sizes: list[float], quantity: str, safety: float
+    ) -> GridConvergence:
+        # Recovered stress mostly converges faster than the elements' own, but an order above theirs
+        # may be chance, and would make the uncertainty too small.
         order = get(self.element).order
-        # Recovered stress converges faster than the elements' own by up to one order.
-        highest = order + 1.0 if quantity != "displacement" else 2.0 * order
-        return grid_convergence([peak["value"] for peak in peaks], sizes, highest)
+        highest = float(order if quantity != "displacement" else order + 1)
+        return grid_convergence([peak["value"] for peak in peaks], sizes, highest, safety)
 
     def _judged(self, peak: Json, name: str, quantity: str, entry: Json) -> Json:
         """The reported peak in the light of the series."""
@@ -122,9 +126,11 @@ class Record:
         low, high = peak["interval"]
         value, uncertainty = peak["value"], entry["uncertainty"]
         if entry["behaviour"] == "converging":
-            # What a series shows counts for more than what one mesh guesses; never less than
-            # the change that is still to come.
-            low, high = max(low, value - uncertainty), min(high, value + uncertainty)
+            # What a series shows counts for more than what one mesh guesses, within reason; and
+            # never less than the change that is still to come.
+            below, above = value - low, high - value
+            low = value - min(below, max(uncertainty, LEAST_SHARE * below))
+            high = value + min(above, max(uncertainty, LEAST_SHARE * above))
             low, high = min(low, entry["extrapolated"]), max(high, entry["extrapolated"])
         if quantity in ("von_mises", "shear_max"):
             low = max(low, 0.0)

@@ -3,9 +3,10 @@
 References
 ----------
 Roache, "Perspective: a method for uniform reporting of grid refinement studies", J. Fluids Eng. 116
-(1994): grid convergence index with a factor of safety of 1.25 where the order is observed. Celik et
-al., J. Fluids Eng. 130 (2008): the observed order with unequal ratios. Where no order shows, three
-times the last change, as Eca & Hoekstra, J. Comp. Phys. 262 (2014), do with erratic series.
+(1994): grid convergence index with a factor of safety of 1.25 where the order is observed on meshes
+that are finer everywhere, and of 3 where it is not certain. Celik et al., J. Fluids Eng. 130
+(2008): the observed order with unequal ratios. Where no order shows, three times the last change,
+as Eca & Hoekstra, J. Comp. Phys. 262 (2014), do with erratic series.
 """
 
 from collections.abc import Sequence
@@ -20,7 +21,7 @@ Behaviour = Literal["converging", "oscillating", "growing", "unresolved"]
 LEAST_RATIO = 1.1  # of sizes: below this two meshes say nothing of the order
 LEAST_ORDER = 0.5  # observed: slower convergence is not told from none
 LEAST_GROWTH = 0.1  # exponent of growth over size; a sharp but finite peak grows less
-SAFETY, SAFETY_WITHOUT_ORDER = 1.25, 3.0
+SURE, UNSURE = 1.25, 3.0  # factors of safety
 SETTLED = 1e-9  # of the value: changes are rounding
 
 
@@ -41,7 +42,7 @@ class GridConvergence:
 
 
 def grid_convergence(
-    values: Sequence[float], sizes: Sequence[float], highest_order: float
+    values: Sequence[float], sizes: Sequence[float], highest_order: float, safety: float = SURE
 ) -> GridConvergence:
     """Judge a series of values on finer and finer meshes.
 
@@ -49,6 +50,7 @@ def grid_convergence(
     ----------
     sizes : of the elements, falling
     highest_order : an observed order above it counts as this one
+    safety : factor where an order is observed
     """
     if len(values) < 3:
         return _without_order(values, "unresolved")
@@ -62,7 +64,7 @@ def grid_convergence(
     order = _observed_order(first, last, r32, r21, highest_order)
     if order >= LEAST_ORDER:
         change = last / (r21**order - 1)
-        return GridConvergence("converging", order, fine + change, SAFETY * abs(change))
+        return GridConvergence("converging", order, fine + change, safety * abs(change))
     if min(_growth(coarse, middle, r32), _growth(middle, fine, r21)) > LEAST_GROWTH:
         return GridConvergence("growing", None, None, None)
     return _without_order(values, "unresolved")
@@ -71,7 +73,7 @@ def grid_convergence(
 def _without_order(values: Sequence[float], behaviour: Behaviour) -> GridConvergence:
     uncertainty = None
     if len(values) > 1:
-        uncertainty = SAFETY_WITHOUT_ORDER * abs(values[-1] - values[-2])
+        uncertainty = UNSURE * abs(values[-1] - values[-2])
     return GridConvergence(behaviour, None, None, uncertainty)
 
 
