@@ -160,11 +160,12 @@ class Indexes:
 
 
 def _common(folders: Iterable[Path]) -> set[str]:
-    """Names that stand in every one of the folders."""
+    """Names that stand in every one of the folders; the rest are not read once there is none."""
     first, *rest = folders
     common = set(_names(first))
     for folder in rest:
-        common.intersection_update(_names(folder))
+        if common:
+            common.intersection_update(_names(folder))
     return common
 
 

@@ -73,16 +73,16 @@ class StoreReader:
         """Jobs, newest first, below the id `after`; opens little more than `limit` records."""
         if after is not None and not is_id(after):
             raise UnknownJobError(f"{after!r} is not a cursor of this listing")
-        indexes = [self.jobs]
-        if state is not None:
-            indexes.append(self.indexes.of_state(state))
+        indexes = []
         if label is not None:
             indexes.append(self.indexes.of_label(label))
         if workspace is not None:
             indexes.append(self.indexes.of_workspace(workspace))
+        if state is not None:
+            indexes.append(self.indexes.of_state(state))
         records: tuple[Record, ...] = ()
         with telling("the jobs could not be listed"):
-            for job_id in newest_first(indexes, after):
+            for job_id in newest_first(indexes or [self.jobs], after):
                 record = self._readable(job_id)
                 if (
                     record
