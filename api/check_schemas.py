@@ -76,6 +76,12 @@ class TimeEstimateSchema(Answer):
     machine = number("How slow that machine is, 1 where the formulas were measured")
 
 
+class FinestMeshSchema(Answer):
+    dofs = whole("Displacements that the finest mesh may have")
+    bytes = whole("Peak of memory there")
+    seconds = number("Time for that mesh alone")
+
+
 class EstimateSchema(Answer):
     dofs = whole("Displacements")
     factor_entries = whole("Numbers in the factor of the stiffness matrix")
@@ -85,6 +91,12 @@ class EstimateSchema(Answer):
     )
     memory = part(MemoryEstimateSchema, "Memory")
     time = part(TimeEstimateSchema, "Time")
+    finest = part(
+        FinestMeshSchema,
+        "The most that finer meshes may come to, for a job with a target error or a convergence "
+        "record; everything else is of the mesh of this check. Null for a job with one mesh",
+        allow_none=True,
+    )
     basis = text("Where the formulas come from, and how far to trust them", required=True)
 
 

@@ -39,7 +39,7 @@ def main() -> None:
             job = read_document(document)
         with watch("meshing"):
             understood = look_over(job, pipeline.prepare(job))
-        estimate = checking.cost(understood, watch, pictures=pictures)
+        estimate = checking.cost(understood, watch, pictures)
     print(
         json.dumps(
             {

@@ -33,6 +33,7 @@ CHECK: dict[str, Any] = {
         "factor_counted": True,
         "memory": {"bytes": 1_000_000, "by_stage": {"factorising": 1_000_000}},
         "time": {"seconds": 0.1, "by_stage": {"factorising": 0.1}, "machine": 1.0},
+        "finest": None,
         "basis": "invented",
     },
     "cautions": [CAUTION, *(caution.as_json() for caution in STANDING)],

@@ -164,6 +164,21 @@ def test_a_large_mesh_is_estimated_by_formula(
     assert estimate["time"]["seconds"] == pytest.approx(seconds, abs=0.01)
 
 
+@pytest.mark.parametrize(
+    ("meshing", "dofs"), [({"target_error": 0.01}, 100_000), ({"max_dofs": 5000}, 5000)]
+)
+def test_a_job_that_refines_its_mesh_is_told_what_the_finest_may_cost(
+    tmp_path: Path, meshing: dict[str, Any], dofs: int
+) -> None:
+    document = strip()
+    document["meshing"] |= {"target_error": 0.01, **meshing}
+    estimate = check(document, tmp_path, most_dofs=100_000)["estimate"]
+    assert estimate["finest"]["dofs"] == dofs
+    assert estimate["finest"]["bytes"] > estimate["memory"]["bytes"]
+    assert estimate["finest"]["seconds"] > estimate["time"]["seconds"]
+    assert check(strip(), tmp_path)["estimate"]["finest"] is None
+
+
 def test_cautions_known_before_solving_come_first_and_the_standing_ones_last(
     tmp_path: Path,
 ) -> None:
@@ -225,18 +240,18 @@ def test_contradicting_supports_are_a_fault(tmp_path: Path) -> None:
 def test_pictures_of_the_first_states_are_drawn_and_others_later(tmp_path: Path) -> None:
     document = strip()
     document["combinations"] = {"pull, twice": {"pull": 2}}
-    found = check(document, tmp_path, pictures=1)
+    found = check(document, tmp_path, pictures=1, keep_mesh=True)
     assert found["pictures"] == {"available": True}
     assert found["previews"] == {"pull": "previews/pull.png"}
     assert json.loads((tmp_path / "check.json").read_bytes()) == found
     later = tmp_path / "later"
     later.mkdir()
-    made = checking.draw(json.dumps(document).encode(), found, later, "pull, twice")
+    as_bytes = json.dumps(document).encode()
     first = (tmp_path / "previews" / "pull.png").read_bytes()
-    assert made.read_bytes().startswith(b"\x89PNG")  # ISO/IEC 15948, 5.2
-    assert made.read_bytes() != first
+    assert checking.draw(as_bytes, tmp_path, later, "pull").read_bytes() == first
+    assert checking.draw(as_bytes, tmp_path, later, "pull, twice").read_bytes() != first
     with pytest.raises(KeyError):
-        checking.draw(json.dumps(document).encode(), found, later, "push")
+        checking.draw(as_bytes, tmp_path, later, "push")
 
 
 def test_a_machine_that_cannot_draw_says_so(

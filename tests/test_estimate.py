@@ -25,6 +25,7 @@ from workers.estimate import (
     Workload,
     counted_factor,
     estimate,
+    finer,
     fitted_factor,
     measure_slowness,
     memory_by_stage,
@@ -132,10 +133,31 @@ def test_the_estimate_knows_how_much_the_analysis_takes_at_once() -> None:
     assert (CHUNK_BYTES, BLOCK_BYTES) == (summary.CHUNK_BYTES, solution.BLOCK_BYTES)
 
 
+@pytest.mark.parametrize("element", ELEMENTS)
+def test_a_finer_mesh_costs_what_such_a_mesh_costs(element: str) -> None:
+    """Scaled from 20 x 20 cells against 60 x 60 cells themselves."""
+
+    def of(cells: int) -> Workload:
+        mesh = grid(element, cells, cells)
+        return workload(mesh, counted(mesh), cases=3, states=5, fields=1, pictures=0)
+
+    true = of(60)
+    scaled = finer(of(20), true.dofs)
+    assert scaled.elements == pytest.approx(true.elements, rel=0.1)
+    assert scaled.factor.entries == pytest.approx(true.factor.entries, rel=0.3)
+    memory, seconds = (
+        (max(memory_by_stage(w).values()) for w in (scaled, true)),
+        (sum(time_by_stage(w).values()) for w in (scaled, true)),
+    )
+    for scaled_cost, true_cost in (memory, seconds):
+        assert scaled_cost == pytest.approx(true_cost, rel=0.5)
+
+
 def test_a_machine_is_about_as_fast_as_itself() -> None:
+    """Within what else runs on it: a shared core can be half as fast for a while."""
     first, second = measure_slowness(), measure_slowness()
     assert first > 0.0
-    assert 0.5 < first / second < 2.0
+    assert 1 / 3 < first / second < 3
 
 
 # --- against real jobs ---------------------------------------------------------------------------

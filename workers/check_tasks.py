@@ -8,8 +8,6 @@ from collections.abc import Callable
 from pathlib import Path
 from typing import Any
 
-import orjson
-
 from workers import checking
 from workers.checks import Checks
 from workers.errors import FaultyError, StoreError
@@ -42,6 +40,7 @@ def run_check(check_id: str) -> Json:
             found,
             with_job=settings.pictures,
             most_dofs=settings.most_dofs,
+            keep_mesh=True,
         )
         checks.publish(check_id, found)
 
@@ -57,8 +56,7 @@ def draw_check(check_id: str, state: str) -> Json:
         answer = checks.answer(check_id)
         if answer is None:
             raise StoreError("the check is gone; send its document again")
-        check = orjson.loads((answer / checking.CHECK).read_bytes())
-        made = checking.draw(checks.document(check_id), check, scratch, state)
+        made = checking.draw(checks.document(check_id), answer, scratch, state)
         place = answer / "previews" / f"{file_name(state)}.png"
         place.parent.mkdir(exist_ok=True)
         made.replace(place)

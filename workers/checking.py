@@ -2,6 +2,7 @@
 
     check.json            what was understood, the mesh, the cost, the cautions known beforehand
     previews/NAME.png     the plate with mesh, dimensions, supports and the loads of a state
+    mesh.npz              where further pictures may be wanted: the mesh
 
 Used by the queue's tasks and by `fishplate check` alike.
 """
@@ -14,7 +15,8 @@ import numpy as np
 import orjson
 from threadpoolctl import threadpool_limits
 
-from workers.analysis.combine import state_names
+from workers.analysis.adaptive import MOST_DOFS
+from workers.analysis.combine import load_states
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.build import mesh_job
 from workers.analysis.multifrontal.symbolic import analyse
@@ -34,6 +36,7 @@ from workers.estimate import (
 )
 from workers.filing import Json, Progress, eager_states
 from workers.job import Job
+from workers.mesh_file import read_mesh, write_mesh
 from workers.outputs import preview
 from workers.outputs.names import file_name
 from workers.pipeline import about, silent
@@ -41,7 +44,7 @@ from workers.review.review import review
 from workers.sizes import check_dofs
 from workers.understanding import Understood, describe, look_over
 
-CHECK = "check.json"
+CHECK, MESH = "check.json", "mesh.npz"
 EAGER_PICTURES = 3  # drawn with the check, half a second each; further ones when asked for
 # Counting the entries of the factor takes about 3 us for each unknown; beyond this many the
 # formula has to do.
@@ -56,6 +59,7 @@ def check(
     pictures: int = EAGER_PICTURES,
     with_job: int = 6,
     most_dofs: int | None = None,
+    keep_mesh: bool = False,
 ) -> Json:
     """Look a job over and write what was found into an empty folder.
 
@@ -65,6 +69,7 @@ def check(
     pictures : of how many states to draw the loads now
     with_job : pictures that will be drawn with the job itself; they take time
     most_dofs : how many unknowns a mesh may have here; None for any number
+    keep_mesh : for `draw`
 
     Returns
     -------
@@ -98,19 +103,23 @@ def check(
             },
             "mesh": figures,
             **describe(understood, figures["regions"]),
-            "estimate": cost(understood, watch, pictures=with_job).as_json(),
+            "estimate": cost(understood, watch, with_job, most_dofs).as_json(),
             "cautions": [caution.as_json() for caution in cautions],
         }
         states = [*found["cases"], *found["combinations"]]
         found["previews"], found["pictures"] = _draw_some(
             folder, job, mesh, cautions, list(islice(states, pictures)), progress
         )
+    if keep_mesh:
+        write_mesh(folder / MESH, mesh)
     (folder / CHECK).write_bytes(orjson.dumps(found, option=orjson.OPT_INDENT_2))
     return found
 
 
-def draw(document: bytes, check: Json, folder: Path, state: str) -> Path:
-    """Draw the loads of one more state of a checked job into a folder; returns the path.
+def draw(document: bytes, checked: Path, folder: Path, state: str) -> Path:
+    """Draw the loads of one more state of a job into a folder; returns the path.
+
+    checked : folder of the check, with its mesh
 
     Raises
     ------
@@ -119,20 +128,29 @@ def draw(document: bytes, check: Json, folder: Path, state: str) -> Path:
     """
     with threadpool_limits(1):
         job = read_document(document)
-        cautions = [Caution(**caution) for caution in check["cautions"]]
-        return _draw(folder, job, mesh_job(job), cautions, state)
+        found = orjson.loads((checked / CHECK).read_bytes())
+        cautions = [Caution(**caution) for caution in found["cautions"]]
+        return _draw(folder, job, read_mesh(checked / MESH), cautions, state)
 
 
-def cost(understood: Understood, watch: Stopwatch, *, pictures: int) -> Estimate:
+def cost(
+    understood: Understood, watch: Stopwatch, pictures: int, most_dofs: int | None = None
+) -> Estimate:
     """What the job will cost; the watch has the seconds of reading and meshing."""
     job, mesh = understood.job, understood.mesh
-    cases = len(job.load_cases)
-    names = state_names(job)
+    states = load_states(job)
     load = workload(
-        mesh, _factor(mesh), cases=cases, states=len(names),
-        fields=len(eager_states(job, names)), pictures=pictures,
-    )  # fmt: skip
-    return estimate(load, measure_slowness(), watch.seconds)
+        mesh,
+        _factor(mesh),
+        cases=len(job.load_cases),
+        states=len(states),
+        fields=len(eager_states(job, states.names)) + (len(states) > 1),  # and the envelope's
+        pictures=pictures,
+    )
+    finest = None
+    if job.meshing.target_error is not None or job.requests.convergence:
+        finest = min(job.meshing.max_dofs or MOST_DOFS, most_dofs or MOST_DOFS)
+    return estimate(load, measure_slowness(), watch.seconds, finest)
 
 
 def _factor(mesh: Mesh) -> FactorSize:
