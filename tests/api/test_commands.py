@@ -137,6 +137,8 @@ def test_submit_waits_prints_the_summary_and_fetches_every_file(
     assert json.loads((folder / "results.json").read_bytes())["cases"]["pull"]
     assert (folder / "fields" / "pull.vtu").read_bytes() == b"fields/pull.vtu"
     assert (folder / "previews" / "pull" / "model.png").is_file()
+    assert (folder / "sheet.html").read_bytes() == b"sheet.html"
+    assert (folder / "tables" / "peaks.csv").read_text().startswith("case,quantity,")
     assert (folder / "lines" / "axis.png").read_bytes() == b"lines/axis.png"
 
 

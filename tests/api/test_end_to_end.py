@@ -1,7 +1,9 @@
 """A real `fishplate serve`: Redis, workers and HTTP server, with plates whose answer is known."""
 
+import io
 import json
 import os
+import re
 import signal
 import subprocess
 import sys
@@ -13,6 +15,7 @@ from typing import Any
 from urllib.error import HTTPError
 from urllib.parse import quote
 from urllib.request import Request, urlopen
+from zipfile import ZipFile
 
 import numpy as np
 import pytest
@@ -211,6 +214,23 @@ def test_a_check_finds_what_only_the_mesh_shows(ask: Callable[..., tuple[bytes, 
         assert answer.code == 422
         faults = json.load(answer)["errors"]
     assert [fault["pointer"] for fault in faults] == ["/load_cases/pull/0/on"]
+
+
+def test_the_sheet_and_the_archive_tell_the_known_answer(
+    ask: Callable[..., tuple[bytes, Any]], pulled: tuple[str, Any]
+) -> None:
+    """The sheet has the stress of 200 MPa; the archive has the sheet, byte for byte."""
+    here, results = pulled
+    sheet, headers = ask(f"{here}/sheet")
+    assert 'rel="describedby"' in headers["Link"]
+    text = sheet.decode()
+    assert re.search(r"200\s*<span class=\"unit\">MPa", text)
+    assert results["job"]["checksum"] in text
+    assert text.count("data:image/png") == (5 if results["pictures"]["available"] else 0)
+    with ZipFile(io.BytesIO(ask(f"{here}/archive.zip")[0])) as archive:
+        assert archive.testzip() is None
+        assert archive.read("sheet.html") == sheet
+        assert {"job.json", "results.json", "tables/peaks.csv"} <= {*archive.namelist()}
 
 
 def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes, Any]]) -> None:
