@@ -113,7 +113,9 @@ def _lower_limit(kind: int, limit: int) -> None:
 def mesh_here(drawing: Drawing, sizes: Sizes, *, quads: bool) -> FlatMesh:
     """What the child does: only for drawings that are known to be harmless."""
     geometry = _geometry(drawing, sizes)
-    parameters = MeshingParameters(maxh=sizes.general, grading=sizes.grading)
+    parameters = MeshingParameters(
+        maxh=sizes.general, grading=sizes.grading, curvaturesafety=sizes.per_radius
+    )
     for x, y, size in sizes.points:
         parameters.RestrictH(float(x), float(y), 0.0, float(size))
     return _read(geometry.GenerateMesh(mp=parameters, quad_dominated=quads), drawing)

@@ -22,6 +22,8 @@ AREA = {3: 0.433, 4: 0.75}
 # on the way: at 2 % a panel with a corner took half as many again with 0.25; from 0.8 on the
 # quality falls.
 GRADING = 0.6
+# An arc has the elements that the errors ask for; as few as that still follow it.
+PER_RADIUS = 0.7
 AROUND = 12  # places to a ring
 
 
@@ -81,5 +83,7 @@ def follow(plan: Plan, points: Array, elements: float) -> Plan:
     local = points.copy()
     local[:, :2] = (points[:, :2] - plan.frame.middle) / plan.frame.scale
     local[:, 2] /= plan.frame.scale
-    sizes = plan.sizes._replace(points=np.concatenate((plan.sizes.points, local)), grading=GRADING)
+    sizes = plan.sizes._replace(
+        points=np.concatenate((plan.sizes.points, local)), grading=GRADING, per_radius=PER_RADIUS
+    )
     return plan._replace(sizes=sizes, elements=elements)

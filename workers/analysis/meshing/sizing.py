@@ -29,6 +29,7 @@ class Sizes(NamedTuple):
     domains : (d,) largest in each domain of the drawing
     points : (k, 3) x, y and size
     grading : how much the size grows over a distance away from a fine place
+    per_radius : the library's own least fineness along arcs, elements to the length of a radius
     """
 
     general: float
@@ -36,6 +37,7 @@ class Sizes(NamedTuple):
     domains: Array
     points: Array
     grading: float = GRADING
+    per_radius: float = 2.0
 
     def scaled(self, factor: float) -> "Sizes":
         """All sizes so much larger; twice as large for a mesh whose elements are split once."""
