@@ -372,8 +372,8 @@ CASES: dict[str, tuple[list[Json], list[Json]]] = {
         [toed(32), toed(30, thickness=8.5)],
     ),
     "margin-within-error": (
-        [web(meshing={"element": "Q4"}, materials__steel__yield_strength=126),
-         web(meshing={"element": "T3"}, materials__steel__yield_strength=135)],
+        [web(meshing={"element": "Q4"}, materials__steel__yield_strength=155),
+         web(meshing={"element": "T3"}, materials__steel__yield_strength=170)],
         [web(materials__steel__yield_strength=160), web(meshing={"element": "Q4"})],
     ),
 }  # fmt: skip
