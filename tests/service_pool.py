@@ -76,13 +76,26 @@ def children(pid: int) -> list[psutil.Process]:
         return []
 
 
-def accept(store: Store, do: str, priority: str = "bulk", **order: Any) -> str:
+def accept(
+    store: Store, do: str, priority: str = "bulk", model: str | None = None, **order: Any
+) -> str:
     document = json.dumps({"do": do, **order}).encode()
-    return store.accept(document, title=do, priority=priority).record.id
+    return store.accept(document, title=do, priority=priority, model=model).record.id
 
 
 def final_events(record: Record) -> list[Event]:
     return [e for e in record.history if e.state in ("finished", "failed", "cancelled")]
+
+
+def check_one_end(service: Service, job_id: str) -> None:
+    """One final state, the last one; results if and only if finished; nothing left over."""
+    record = service.store.record(job_id)
+    assert len(final_events(record)) == 1
+    assert record.history[-1] == final_events(record)[0]
+    folder = service.store.jobs.path(job_id)
+    assert (folder / "results").is_dir() == (record.state == "finished")
+    eventually(lambda: not (folder / "staging").exists())
+    eventually(lambda: job_id not in service.store.unfinished())
 
 
 def attempts_in(store: Store, job_id: str) -> int:

@@ -34,9 +34,12 @@ def run(
     progress: Progress,
     pictures: int = 6,
     most_dofs: int | None = None,
+    shared: Any = None,
 ) -> dict[str, Any]:
     order = json.loads(document)
     (folder.parent / f"begun-{time.monotonic_ns()}").touch()
+    company = "alone" if shared is None else "shared"
+    (folder.parent / f"{company}-{os.getpid()}").touch()
     globals()["do_" + order.pop("do")](folder, progress, **order)
     for name in RESULTS:
         path = folder / name

@@ -38,14 +38,21 @@ def time_limit(seconds: int) -> Iterator[None]:
         signal.signal(signal.SIGALRM, before)
 
 
+def address_space() -> int:
+    """What this process has now [bytes]."""
+    return int(psutil.Process().memory_info().vms)
+
+
 @contextmanager
-def memory_limit(amount: int) -> Iterator[None]:
+def memory_limit(amount: int, above: int | None = None) -> Iterator[None]:
     """Let the block take `amount` bytes of address space beyond what the process has now.
+
+    above : count from this address space instead, as `address_space` gave it earlier.
 
     Beyond that an allocation fails: numpy raises MemoryError.
     """
     before, hard = resource.getrlimit(resource.RLIMIT_AS)
-    limit = psutil.Process().memory_info().vms + amount
+    limit = (address_space() if above is None else above) + amount
     if hard != resource.RLIM_INFINITY:
         limit = min(limit, hard)
     resource.setrlimit(resource.RLIMIT_AS, (limit, hard))

@@ -1,19 +1,22 @@
 """One job from its document to a folder of results, and single files made from it later.
 
-Used by the queue's tasks and by `fishplate solve` alike. The folder is self-contained: the document
-and the displacements are kept in it, and any field file or picture is made from these two, whether
+Used by the queue's tasks and by `fishplate solve` alike. The folder is self-contained: document,
+mesh and displacements are kept in it, and any field file or picture is made from these, whether
 with the job or months later.
 
     job.json            the document as it was given
     displacements.npy   (N, 2, c) of all load cases
     results.json        what `GET /v1/jobs/{id}/results` answers
     envelope.npz        the envelope, if there is more than one case or combination
+    mesh.npz            the mesh, if it is not simply that of the job's patches or its own
     fields/NAME.vtu     previews/NAME/QUANTITY.png     lines/NAME.png
     envelope/           fields.vtu, nodes.csv, QUANTITY.png
+    convergence.png     the error over the unknowns, if there is a convergence record
     tables/NAME.csv     sheet.html
 """
 
 import hashlib
+from collections.abc import Callable
 from importlib.metadata import version
 from pathlib import Path
 
@@ -21,18 +24,21 @@ import numpy as np
 import orjson
 from threadpoolctl import threadpool_limits
 
+from workers.analysis.adaptive import SECONDS, solve_adaptively
 from workers.analysis.envelope import Envelope
 from workers.analysis.loads.cases import resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.build import mesh_job
 from workers.analysis.model import build_model
-from workers.analysis.solution import solve
-from workers.analysis.summary import summarise
+from workers.analysis.refiner import refiner
+from workers.analysis.series import solve_series
+from workers.analysis.solved import Solved, solve_on
 from workers.cautions import Caution
 from workers.document.read import read_document
 from workers.errors import MeshError
 from workers.filing import Filing, Json, Progress, Work, draw_line
-from workers.job import Job
+from workers.job import Job, OutlineGeometry
+from workers.mesh_file import read_mesh, write_mesh
 from workers.outputs import preview
 from workers.outputs.names import SHEET
 from workers.outputs.sheet import write_sheet
@@ -40,10 +46,11 @@ from workers.outputs.tables import write_tables
 from workers.preflight import placing_faults, preflight
 from workers.record import now
 from workers.review.review import review
+from workers.shared_model import SharedModel
 from workers.sizes import check_dofs
 
 DOCUMENT, DISPLACEMENTS, RESULTS = "job.json", "displacements.npy", "results.json"
-ENVELOPE = "envelope.npz"
+ENVELOPE, MESH = "envelope.npz", "mesh.npz"
 
 
 def silent(stage: str, fraction: float) -> None:
@@ -63,6 +70,8 @@ def run(
     progress: Progress = silent,
     pictures: int = 6,
     most_dofs: int | None = None,
+    seconds: float = SECONDS,
+    shared: SharedModel | None = None,
 ) -> Json:
     """Solve a job and write its results into an empty folder.
 
@@ -71,6 +80,8 @@ def run(
     progress : called with the stage (reading, meshing, assembling, factorising, solving,
         recovering, reviewing, writing, drawing) and the fraction of it that is done
     pictures : how many to draw now, of the plate and of the lines
+    seconds : for all meshes of an adaptive run together
+    shared : what earlier jobs of the same model left, and takes what this one leaves
 
     Returns
     -------
@@ -86,20 +97,20 @@ def run(
     with threadpool_limits(1):
         progress("reading", 0.0)
         job = read_document(document)
-        progress("meshing", 0.0)
-        mesh = prepare(job)
-        check_dofs(mesh.dof_count, most_dofs)
-        solution = solve(job, mesh, progress)
-        progress("recovering", 0.0)
-        envelope = Envelope()
-        work = Work(solution.model, solution.displacement, solution.temperature, envelope)
-        results = summarise(solution, work.recovery, work.states, progress, envelope)
+        solved = solve(job, progress, most_dofs, seconds, shared)
+        solution, results = solved.solution, solved.results
+        work = Work(
+            solution.model, solution.displacement, solution.temperature,
+            solved.envelope, solved.recovery,
+        )  # fmt: skip
         progress("reviewing", 0.0)
-        cautions = review(job, mesh, results, solution, work.recovery)
+        cautions = review(job, solved.mesh, results, solution, work.recovery)
         (folder / DOCUMENT).write_bytes(document)
         np.save(folder / DISPLACEMENTS, solution.displacement)
+        if is_refined(job) or isinstance(job.geometry, OutlineGeometry):
+            write_mesh(folder / MESH, solved.mesh)
         if len(work.states) > 1:
-            np.savez(folder / ENVELOPE, **envelope.arrays())
+            np.savez(folder / ENVELOPE, **solved.envelope.arrays())
         results = {
             "job": about(job, document, job_id),
             "units": {
@@ -108,7 +119,6 @@ def run(
                 "stress": job.units.stress,
             },
             **results,
-            "convergence": None,
             "cautions": [caution.as_json() for caution in cautions],
         }
         filed = Filing(folder, work, cautions, results)
@@ -121,18 +131,56 @@ def run(
     return results
 
 
-def prepare(job: Job) -> Mesh:
+def is_refined(job: Job) -> bool:
+    """Whether a job is solved on more meshes than its own."""
+    return job.meshing.target_error is not None or job.requests.convergence
+
+
+def solve(
+    job: Job,
+    progress: Progress,
+    most_dofs: int | None,
+    seconds: float,
+    shared: SharedModel | None = None,
+) -> Solved:
+    """Mesh and solve a job, as often as it asks for; only one mesh can be shared."""
+    progress("meshing", 0.0)
+    if not is_refined(job):
+        mesh = prepare(job, shared)
+        check_dofs(mesh.dof_count, most_dofs)
+        return solve_on(job, mesh, progress, shared)
+    refining = refiner(job)
+    if job.meshing.target_error is None:
+        mesh = prepare(job)
+        check_dofs(mesh.dof_count, most_dofs)
+        return solve_series(job, refining, mesh, progress, most_dofs)
+    mesh = prepare(job, make=refining.first)
+    check_dofs(mesh.dof_count, most_dofs)
+    return solve_adaptively(job, refining, mesh, progress, most_dofs=most_dofs, seconds=seconds)
+
+
+def prepare(
+    job: Job, shared: SharedModel | None = None, make: Callable[[], Mesh] | None = None
+) -> Mesh:
     """The mesh of a job, with everything that the job puts on it looked over.
+
+    make : makes the mesh of an outline; None for the one that the job describes
 
     Raises
     ------
     DocumentError, MeshError   carry all faults that show before solving.
     """
+    if shared is not None and shared.mesh is not None:
+        if faults := placing_faults(job, shared.mesh):
+            raise MeshError(faults)
+        return shared.mesh
     mesh = preflight(job)
     if mesh is None:
-        mesh = mesh_job(job)
+        mesh = mesh_job(job) if make is None else make()
         if faults := placing_faults(job, mesh):
             raise MeshError(faults)
+    if shared is not None:
+        shared.mesh = mesh
     return mesh
 
 
@@ -198,10 +246,11 @@ def render_sheet(folder: Path, target: Path) -> Path:
 
 
 def _reopen(folder: Path) -> Filing:
-    """A finished job from its folder: the document and the displacements say everything."""
+    """A finished job from its folder: document, mesh and displacements say everything."""
     job = read_document((folder / DOCUMENT).read_bytes())
     results = orjson.loads((folder / RESULTS).read_bytes())
-    model = build_model(job, mesh_job(job))
+    kept = folder / MESH
+    model = build_model(job, read_mesh(kept) if kept.exists() else mesh_job(job))
     displacement = np.load(folder / DISPLACEMENTS, mmap_mode="r")
     formed = None
     if (folder / ENVELOPE).exists():

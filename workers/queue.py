@@ -37,6 +37,7 @@ LINES = {priority: f"fishplate-{priority}" for priority in PRIORITIES}
 RUN_JOB = "workers.tasks.run_job"
 MAKE_ARTEFACT = "workers.tasks.make_artefact"
 PROGRESS = "fishplate:progress:"
+FOLLOWER = "fishplate:follower:"
 
 BACKSTOP = 15  # beyond the job's own time limit, before the worker kills from outside [s]
 ANSWER_LIMIT = 120  # longest work on one question [s]
@@ -96,15 +97,16 @@ class Queue:
 
         If Redis refuses, the reconciler will do it later.
         """
-        line = self._lines[self.store.record(job_id).priority]
-        self._forget(job_id)
-        line.enqueue_call(
+        record = self.store.record(job_id)
+        self.leave_line(job_id)
+        self._lines[record.priority].enqueue_call(
             RUN_JOB,
             args=(job_id,),
             job_id=job_id,
             timeout=self.settings.time_limit + BACKSTOP,
             result_ttl=0,
             failure_ttl=FAILURE_KEPT,
+            description=_description(record),
         )
 
     def cancel(self, job_id: str) -> Record:
@@ -123,7 +125,7 @@ class Queue:
             if job.get_status(refresh=False) == JobStatus.STARTED:
                 send_stop_job_command(self.connection, job_id, serializer=JSONSerializer)
             else:
-                self._forget(job_id)
+                self.leave_line(job_id)
         except (NoSuchJobError, InvalidJobOperation):
             pass  # neither waiting nor begun: whoever takes it sees that it is cancelled
         except redis.RedisError as error:
@@ -135,7 +137,7 @@ class Queue:
         """Ids of the jobs that Redis has in line."""
         return frozenset(i for line in self._lines.values() for i in line.get_job_ids())
 
-    def _forget(self, job_id: str) -> None:
+    def leave_line(self, job_id: str) -> None:
         """Take a job out of the line, and all that rq noted about an earlier attempt."""
         # Not Job.delete(): that fails on the fragments which a flush during an attempt leaves.
         with self.connection.pipeline() as pipeline:
@@ -143,6 +145,32 @@ class Queue:
                 line.remove(job_id, pipeline=pipeline)
             pipeline.delete(Job.key_for(job_id))
             pipeline.execute()
+
+    # --- jobs of one model -----------------------------------------------------------------------
+
+    def kin_in_line(self, first: Record, most: int) -> list[str]:
+        """Ids of the jobs of the same model among the first so many of the same line, in order."""
+        ids = self._lines[first.priority].get_job_ids(0, most)
+        with self.connection.pipeline(transaction=False) as pipeline:
+            for job_id in ids:
+                pipeline.hget(Job.key_for(job_id), "description")
+            said = pipeline.execute()
+        wanted = _description(first).encode()
+        return [i for i, what in zip(ids, said, strict=True) if what == wanted and i != first.id]
+
+    def others_wait(self, priority: str) -> bool:
+        """Whether a question, or a job in a line that comes before this one, waits."""
+        before = PRIORITIES[: PRIORITIES.index(priority)]
+        return any(line.count for line in (self._questions, *(self._lines[p] for p in before)))
+
+    def note_follower(self, first: str, job_id: str) -> None:
+        """Say which job is worked on behind the one that came off the queue."""
+        self.connection.set(FOLLOWER + first, job_id, ex=PROGRESS_KEPT)
+
+    def follower(self, first: str) -> str | None:
+        """The last job that was worked on behind this one; None if there was none."""
+        found = self.connection.getdel(FOLLOWER + first)
+        return None if found is None else as_text(found)
 
     # --- progress --------------------------------------------------------------------------------
 
@@ -235,3 +263,8 @@ class Queue:
         """Number of entries in line: questions, and jobs by priority."""
         lines = {"questions": self._questions, **self._lines}
         return {name: line.count for name, line in lines.items()}
+
+
+def _description(record: Record) -> str:
+    """What rq keeps beside a job: enough to see which jobs are of one model."""
+    return f"model {record.model}" if record.model else f"job {record.id}"

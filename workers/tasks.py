@@ -1,4 +1,4 @@
-"""What rq runs: one job from its document to its published results, or one artefact.
+"""What rq runs: a job from its document to its published results, or one artefact.
 
 Runs in a work-horse: a process forked for this one task. Whatever happens in here, the worker
 outside settles the job afterwards (`reconcile.py`).
@@ -9,6 +9,7 @@ import logging
 import shutil
 import time
 from collections.abc import Callable, Mapping
+from contextlib import suppress
 from pathlib import Path
 from types import MappingProxyType
 from typing import Any
@@ -27,14 +28,17 @@ from workers.errors import (
     TransitionError,
     UnknownJobError,
 )
-from workers.limits import TimeLimitError, memory_limit, time_limit
+from workers.kin import followers, has_followers
+from workers.limits import TimeLimitError, address_space, memory_limit, time_limit
 from workers.logs import about
 from workers.queue import ANSWER_LIMIT, Queue
+from workers.reconcile import settle
 from workers.record import (
     ANALYSIS,
     DISK,
     DOCUMENT,
     FAILED,
+    FINISHED,
     LIMIT,
     MEMORY,
     MESH,
@@ -42,8 +46,10 @@ from workers.record import (
     QUEUED,
     RUNNING,
     TIME,
+    Record,
 )
 from workers.settings import GIBIBYTE, Settings
+from workers.shared_model import SharedModel
 from workers.store import Store
 from workers.tallies import Stopwatch
 
@@ -61,6 +67,7 @@ OUT_OF_MEMORY = (
     "load cases at a time, or have the memory limit raised."
 )
 DISK_FULL = "The disk of the job store is full; the results could not be written."
+CROWDED = "It ran out of memory beside what other jobs of its model had left; it begins anew alone."
 OUR_FAULT = (
     "Fishplate itself failed here ({error}); nothing was made. Please report it together with the "
     "job document."
@@ -70,30 +77,68 @@ CAUSES_OF: Mapping[type[BaseException], str] = MappingProxyType(
     {DocumentError: DOCUMENT, LimitError: LIMIT, MeshError: MESH, AnalysisError: ANALYSIS}
 )
 
+# Of a failed job: its process is as good as new.
+HARMLESS = frozenset(CAUSES_OF.values())
+
 log = logging.getLogger(__name__)
 
 
 def run_job(job_id: str) -> None:
-    """Work on a queued job; its outcome is in the store afterwards."""
+    """Work on a queued job, then on those of the same model behind it; their outcomes are in the
+    store afterwards.
+    """
     settings = Settings.from_environment()
-    store = Store(settings.store)
+    store, queue = Store(settings.store), Queue(settings)
+    resting = address_space()
+    try:
+        first = store.record(job_id)
+    except UnknownJobError as error:
+        log.info("job %s was removed: %s", job_id, error)
+        return
+    shared = SharedModel() if has_followers(queue, first) else None
+    if not _work_on(store, queue, job_id, shared, resting) or shared is None:
+        return
+    for follower in followers(store, queue, first):
+        if _work_on(store, queue, follower, shared, resting) is False:
+            return
+
+
+def _work_on(
+    store: Store, queue: Queue, job_id: str, shared: SharedModel | None, resting: int
+) -> bool | None:
+    """Work on one job, if nobody else does.
+
+    resting : address space of this process before its first job [bytes]
+
+    Returns whether this process is fit for another job; None if it did nothing.
+    """
     try:
         with about(job=job_id), store.working(job_id) as staging:
             # Someone else at work, cancelled, or in line twice: nothing to do.
             if staging is None or store.record(job_id).state != QUEUED:
-                return
+                return None
             store.transition(job_id, RUNNING)
-            _attempt(store, Queue(settings), job_id, staging)
+            record = _attempt(store, queue, job_id, staging, shared, resting)
     except (TransitionError, UnknownJobError) as error:
         log.info("job %s was cancelled or removed: %s", job_id, error)
+        settle(store, queue, job_id)  # takes it off the list of the unfinished
+        return True
+    if record.is_final:
+        with suppress(redis.RedisError):  # whoever finds it in line sees that it is final
+            queue.leave_line(job_id)
+    return record.state == FINISHED or record.cause in HARMLESS
 
 
-def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
-    """One attempt; ends in a final state unless the store refuses even that."""
+def _attempt(
+    store: Store, queue: Queue, job_id: str, staging: Path, shared: SharedModel | None, resting: int
+) -> Record:
+    """One attempt; ends in a final state unless the store refuses even that, or the job shared
+    the memory with others: then it begins anew alone.
+    """
     settings = queue.settings
     watch = Stopwatch()
     try:
-        with time_limit(settings.time_limit), memory_limit(settings.memory_limit):
+        with time_limit(settings.time_limit), memory_limit(settings.memory_limit, resting):
             results = pipeline.run(
                 store.document(job_id),
                 staging,
@@ -101,17 +146,29 @@ def _attempt(store: Store, queue: Queue, job_id: str, staging: Path) -> None:
                 progress=_reporter(store, queue, job_id, watch),
                 pictures=settings.pictures,
                 most_dofs=settings.most_dofs,
+                shared=shared,
             )
         watch.enter(None)
-        record = store.publish(job_id, staging, results["cautions"])
+        record = store.publish(job_id, staging, results["cautions"], results.get("outcome"))
     except (TransitionError, UnknownJobError):
         raise
     except (Exception, TimeLimitError) as error:
         log.warning("job %s failed: %s", job_id, error, exc_info=is_ours(error))
         shutil.rmtree(staging, ignore_errors=True)  # makes room for the record, too
+        if isinstance(error, MemoryError) and shared is not None:
+            return _begin_anew(store, queue, job_id)
         record = store.transition(job_id, FAILED, **explain(error, settings))
     queue.tallies.add_end(record, watch.seconds)
     log.info("job %s is %s", job_id, record.state)
+    return record
+
+
+def _begin_anew(store: Store, queue: Queue, job_id: str) -> Record:
+    """Put a job in line again; after this attempt it will be worked on alone."""
+    record = store.transition(job_id, QUEUED, reason=CROWDED)
+    with suppress(redis.RedisError):  # then the reconciler will do it
+        queue.submit(job_id)
+    return record
 
 
 def explain(error: BaseException, settings: Settings) -> dict[str, Any]:

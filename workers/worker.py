@@ -75,23 +75,26 @@ class Worker(rq.Worker):
             return False
 
     def _settle(self, job_id: str, elapsed: float, patience: float) -> None:
+        """Settle a job, and the one of the same model that was worked on behind it at last."""
         # A call into compiled code can outlast the limit inside the work-horse; then rq killed it.
+        # The one behind has begun later: it gets its time in another attempt, alone.
         limit = self.settings.time_limit
         verdict = OUT_OF_TIME.format(seconds=limit) if elapsed > limit else None
-        until = time.monotonic() + patience
         try:
-            while not settle(
-                self.jobs.store,
-                self.jobs,
-                job_id,
-                verdict=verdict,
-                handed_back=self._handing_back,
-            ):
-                if time.monotonic() >= until:
-                    break
-                time.sleep(0.01)
+            self._settle_one(job_id, verdict, patience)
+            if follower := self.jobs.follower(job_id):
+                self._settle_one(follower, None, patience)
         except (StoreError, redis.RedisError) as error:
             log.warning("job %s is left to the reconciler: %s", job_id, error)
+
+    def _settle_one(self, job_id: str, verdict: str | None, patience: float) -> None:
+        until = time.monotonic() + patience
+        while not settle(
+            self.jobs.store, self.jobs, job_id, verdict=verdict, handed_back=self._handing_back
+        ):
+            if time.monotonic() >= until:
+                break
+            time.sleep(0.01)
 
     def request_force_stop(self, signum: int, frame: FrameType | None) -> None:
         self._handing_back = True

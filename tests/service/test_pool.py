@@ -16,24 +16,13 @@ from tests.service_pool import (
     Service,
     accept,
     attempts_in,
+    check_one_end,
     eventually,
-    final_events,
     running_pool,
 )
 from workers.settings import Settings
 
 pytestmark = pytest.mark.server
-
-
-def check_one_end(service: Service, job_id: str) -> None:
-    """One final state, the last one; results if and only if finished; nothing left over."""
-    record = service.store.record(job_id)
-    assert len(final_events(record)) == 1
-    assert record.history[-1] == final_events(record)[0]
-    folder = service.store.jobs.path(job_id)
-    assert (folder / "results").is_dir() == (record.state == "finished")
-    eventually(lambda: not (folder / "staging").exists())
-    eventually(lambda: job_id not in service.store.unfinished())
 
 
 # --- the ordinary course -------------------------------------------------------------------------
