@@ -216,8 +216,14 @@ class ResultUnitsSchema(Answer):
     stress = text("Of all stresses", required=True)
 
 
+class IterationSchema(Answer):
+    tolerance = number("Allowed residual over the load")
+    iterations = whole("Most of all load cases")
+    energy_error = number("Largest of all cases, over the solution in the energy norm; estimated")
+
+
 class SolverSchema(Answer):
-    name = text("Of the direct solver", required=True)
+    name = text("Of the solver", required=True)
     ordering = text("Of the unknowns", required=True)
     dofs = whole("Displacements in all")
     free_dofs = whole("Those not prescribed")
@@ -225,6 +231,9 @@ class SolverSchema(Answer):
     residual = number("Largest relative residual of all cases")
     refinements = whole("Steps of iterative refinement")
     reciprocal_condition = number("Estimate; near zero where a part is barely held")
+    iteration = part(
+        IterationSchema, "Where there was no factor: what the iteration took", allow_none=True
+    )
     seconds = by_name(fields.Float(), "By stage of the work")
 
 

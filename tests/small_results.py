@@ -67,6 +67,7 @@ RESULTS: dict[str, Any] = {
         "residual": 1e-15,
         "refinements": 0,
         "reciprocal_condition": 1e-4,
+        "iteration": None,
         "seconds": {"solve": 0.1},
     },
     "mesh": {

@@ -297,7 +297,7 @@ class _Sloppy:
 def test_poor_factor_is_refined_once_and_then_replaced(
     error: float, name: str, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    monkeypatch.setattr(Plan, "factorise", lambda _, matrix: _Sloppy(matrix, error))
+    monkeypatch.setattr(Plan, "factorise", lambda _, matrix, _motions: _Sloppy(matrix, error))
     mesh = grid("Q8", 4, 4)
     job = plate_job([CLAMP], [TotalForce(on=RIGHT, force=(1.0, 2.0))])
     solution = solve(job, mesh)

@@ -66,7 +66,7 @@ def solved(reciprocal_condition: float) -> SimpleNamespace:
         cases=solution.cases,
         displacement=solution.displacement,
         temperature=None,
-        solver=SimpleNamespace(reciprocal_condition=reciprocal_condition),
+        solver=SimpleNamespace(reciprocal_condition=reciprocal_condition, iteration=None),
     )
 
 
@@ -83,6 +83,19 @@ def test_an_ordinary_matrix_is_silent(condition: float) -> None:
 
 def test_the_matrix_of_a_sound_plate_is_ordinary() -> None:
     assert raised(solution=solve(sound_job(), sound_mesh())) == {}
+
+
+@pytest.mark.parametrize("element", ["Q4", "Q8"])
+def test_a_plate_solved_by_iteration_is_told_with_what_is_left(element: str) -> None:
+    solution = solve(sound_job(), sound_mesh(element), method="iterative")
+    (caution,) = raised(solution=solution)["solved-by-iteration"]
+    assert 0 < caution.evidence["value"] < caution.evidence["limit"]
+    assert caution.evidence["residual"] == solution.solver.residual.max()
+
+
+@pytest.mark.parametrize("memory", [None, 1e9])
+def test_a_plate_with_a_factor_is_silent_about_iteration(memory: float | None) -> None:
+    assert raised(solution=solve(sound_job(), sound_mesh(), memory=memory)) == {}
 
 
 @pytest.mark.parametrize("residual", [2e-6, 1.0, float("nan")])

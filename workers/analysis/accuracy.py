@@ -36,6 +36,21 @@ def backward_error(matrix: sparray, solution: Array, load: Array, residual: Arra
     return ratio.max(axis=0)
 
 
+def softness(matrix: sparray, motion: Array) -> float:
+    """Energy of a motion (n,) in the matrix scaled to a unit diagonal, over the largest there is.
+
+    At least the reciprocal condition.
+    """
+    scale = 1.0 / np.sqrt(matrix.diagonal())
+    energy = float(motion @ (matrix @ motion))
+    return energy / float(((motion / scale) ** 2).sum()) / _largest(matrix, scale)
+
+
+def _largest(matrix: sparray, scale: Array) -> float:
+    """Bound of the largest eigenvalue of the scaled matrix, by row sums."""
+    return float((scale * np.asarray(abs(matrix) @ scale)).max())
+
+
 def weakest_motion(matrix: sparray, factor: Factor, steps: int = 2) -> tuple[float, Array]:
     """Reciprocal condition of the matrix scaled to a unit diagonal, and the motion behind it.
 
@@ -53,8 +68,7 @@ def weakest_motion(matrix: sparray, factor: Factor, steps: int = 2) -> tuple[flo
     Wilkinson, *The Algebraic Eigenvalue Problem*, ch. 9 (inverse iteration).
     """
     scale = 1.0 / np.sqrt(matrix.diagonal())
-    row_sums = np.asarray(abs(matrix) @ scale)
-    largest = float((scale * row_sums).max())
+    largest = _largest(matrix, scale)
     v = np.random.default_rng(0).standard_normal(matrix.shape[0])  # no motion is orthogonal to it
     smallest = largest
     with np.errstate(over="ignore", invalid="ignore", divide="ignore"):  # a pivot of zero

@@ -11,6 +11,7 @@ import numpy as np
 from numpy.typing import NDArray
 from threadpoolctl import threadpool_limits
 
+from workers.analysis.effort import Effort
 from workers.analysis.loads.cases import Loads, resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model, build_model
@@ -52,6 +53,7 @@ class SolverReport:
     residual : (c,) norm of the forces left out of balance over the norm of the load, by case.
     reciprocal_condition : estimate for the matrix scaled to a unit diagonal; near 1e-16 the plate
         is as good as free to move.
+    iteration : what it took and left; None if there was a factor.
     seconds : wall time by stage.
     """
 
@@ -63,6 +65,7 @@ class SolverReport:
     residual: Array
     refinements: int
     reciprocal_condition: float
+    iteration: Effort | None
     seconds: Mapping[str, float]
 
 
@@ -110,15 +113,17 @@ def solve(
     progress: Progress | None = None,
     method: str = MULTIFRONTAL,
     kept: Kept | None = None,
+    memory: float | None = None,
 ) -> Solution:
     """Solve all load cases of a job on its mesh.
 
     Parameters
     ----------
     progress : called with the stage and the fraction of it that is done
-    method : "multifrontal", or "superlu" or "pardiso" for comparison
+    method : "multifrontal", or "superlu" or "pardiso" for comparison, or "iterative"
     kept : takes the factorised system, or has that of a job with the same mesh, sections and
         supports but for what these prescribe
+    memory : where the factor would need more, the cases are solved by iteration [bytes]
 
     Raises
     ------
@@ -127,10 +132,12 @@ def solve(
     AnalysisError    the system could not be solved reliably.
     """
     with threadpool_limits(1, user_api="blas"):
-        return _solve(job, mesh, progress or _silent, method, kept or Kept())
+        return _solve(job, mesh, progress or _silent, method, kept or Kept(), memory)
 
 
-def _solve(job: Job, mesh: Mesh, report: Progress, method: str, kept: Kept) -> Solution:
+def _solve(
+    job: Job, mesh: Mesh, report: Progress, method: str, kept: Kept, memory: float | None
+) -> Solution:
     """With one BLAS thread: with two, many small fronts are ten to a hundred times slower."""
     watch = Stopwatch()
     report("assembling", 0.0)
@@ -141,9 +148,9 @@ def _solve(job: Job, mesh: Mesh, report: Progress, method: str, kept: Kept) -> S
             raise MechanismError(motions)
         loads = resolve_loads(model)
     if kept.system is None:
-        kept.system = build_system(model, supports, watch, report, method)
+        kept.system = build_system(model, supports, watch, report, method, memory)
     system = kept.system
-    system.refinements = 0
+    system.begin()
     report("solving", 0.0)
     cases = len(job.load_cases)
     displacement = np.empty((mesh.node_count, 2, cases))
@@ -171,6 +178,7 @@ def _solve(job: Job, mesh: Mesh, report: Progress, method: str, kept: Kept) -> S
             residual=residual,
             refinements=system.refinements,
             reciprocal_condition=system.reciprocal_condition,
+            iteration=system.effort,
             seconds=dict(watch.seconds),
         ),
     )

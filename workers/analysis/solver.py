@@ -1,4 +1,4 @@
-"""Direct solution of the symmetric system: factorise once, solve for many right-hand sides.
+"""Solution of the symmetric system: factorise once, solve for many right-hand sides.
 
 One interface for every solver, so that the rest of the analysis does not know which one runs: a
 plan from the mesh alone, then a factor of the matrix, which comes in the plan's order with its held
@@ -15,6 +15,8 @@ from numpy.typing import NDArray
 from scipy.sparse import bsr_array, csc_array, csr_array
 from scipy.sparse.linalg import splu
 
+from workers.analysis.iterative import ConjugateGradients
+from workers.analysis.memory_need import direct_memory
 from workers.analysis.mesh import Mesh
 from workers.analysis.multifrontal.factor import MultifrontalFactor
 from workers.analysis.multifrontal.numeric import NotPositiveDefiniteError
@@ -43,7 +45,12 @@ class Factor(Protocol):
     entries: int
 
     def solve(self, block: Array) -> Array:
-        """Solution (n, k) for the right-hand sides (n, k)."""
+        """Solution (n, k) for the right-hand sides (n, k).
+
+        Raises
+        ------
+        NotConvergedError   by iteration only.
+        """
 
 
 class SuperLUFactor:
@@ -115,8 +122,20 @@ class Plan:
     order: NodeOrder
     fronts: Fronts | None = None
 
-    def factorise(self, matrix: bsr_array) -> Factor:
+    def within(self, memory: float | None) -> "Plan":
+        """This plan, or iteration in the same order where the factor would not fit [bytes]."""
+        if memory is None or self.fronts is None:
+            return self
+        dofs = 2 * self.fronts.node_count
+        if direct_memory(dofs, self.fronts.entries) <= memory:
+            return self
+        return Plan(ITERATIVE, self.order)
+
+    def factorise(self, matrix: bsr_array, motions: Array | None = None) -> Factor:
         """Factorise a symmetric positive definite matrix of 2x2 node blocks.
+
+        motions : (n, 3) rigid motions, zero at held dofs: what the coarse levels of an iteration
+            keep; without them the two shifts
 
         Raises
         ------
@@ -126,6 +145,8 @@ class Plan:
         if not (diagonal > 0).all():
             row = int(np.argmin(diagonal > 0))
             raise SingularMatrixError(f"row {row} of the stiffness matrix has no stiffness")
+        if self.method == ITERATIVE:
+            return ConjugateGradients(matrix, motions)
         if self.fronts is None:
             return LIBRARIES[self.method](matrix)
         try:
@@ -138,11 +159,11 @@ LIBRARIES: Mapping[str, Callable[[bsr_array], Factor]] = {
     "superlu": SuperLUFactor,
     "pardiso": PardisoFactor,
 }
-MULTIFRONTAL = "multifrontal"
+MULTIFRONTAL, ITERATIVE = "multifrontal", "iterative"
 
 
 def plan_solution(mesh: Mesh, method: str = MULTIFRONTAL) -> Plan:
-    """Order the nodes of a mesh for a method: "multifrontal", "superlu" or "pardiso".
+    """Order the nodes of a mesh for a method: "multifrontal", "superlu", "pardiso", "iterative".
 
     Raises
     ------
@@ -151,7 +172,7 @@ def plan_solution(mesh: Mesh, method: str = MULTIFRONTAL) -> Plan:
     if method == MULTIFRONTAL:
         analysis = analyse(mesh)
         return Plan(method, analysis.order, analysis.fronts)
-    if method in LIBRARIES:
+    if method in LIBRARIES or method == ITERATIVE:
         return Plan(method, order_nodes(mesh))
-    known = ", ".join([MULTIFRONTAL, *LIBRARIES])
+    known = ", ".join([MULTIFRONTAL, *LIBRARIES, ITERATIVE])
     raise LookupError(f"no solver {method!r}; there are {known}")

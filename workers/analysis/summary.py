@@ -13,6 +13,7 @@ from numpy.typing import NDArray
 
 from workers.analysis.combine import States, superpose, superpose_blocks
 from workers.analysis.cuts import cut_forces
+from workers.analysis.effort import TOLERANCE
 from workers.analysis.envelope import WORST, Envelope, measures
 from workers.analysis.error_estimate import element_volumes, error_stress, estimate_error
 from workers.analysis.field_mesh import FieldMesh
@@ -312,6 +313,12 @@ def _solver(report: SolverReport) -> Json:
         "residual": float(report.residual.max()),
         "refinements": report.refinements,
         "reciprocal_condition": float(report.reciprocal_condition),
+        "iteration": report.iteration
+        and {
+            "tolerance": TOLERANCE,
+            "iterations": report.iteration.iterations,
+            "energy_error": report.iteration.energy_error,
+        },
         "seconds": {stage: float(seconds) for stage, seconds in report.seconds.items()},
     }
 

@@ -10,9 +10,20 @@ import numpy as np
 from numpy.typing import NDArray
 from scipy.sparse import bsr_array, csr_array
 
-from workers.analysis.accuracy import backward_error, relative_residual, weakest_motion
+from workers.analysis.accuracy import (
+    backward_error,
+    relative_residual,
+    softness,
+    weakest_motion,
+)
 from workers.analysis.assembly import assemble_stiffness, pair_positions
 from workers.analysis.constraints import decouple, turn_matrix, turn_vectors
+from workers.analysis.effort import Effort
+from workers.analysis.iterative import (
+    ConjugateGradients,
+    NotConvergedError,
+    rigid_motions,
+)
 from workers.analysis.mechanism import describe_motion
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model
@@ -39,6 +50,7 @@ EXCUSABLE = 1e-4
 # Mechanisms come out below 1e-17 (all elements, 4 x 4 to 100 x 100 cells), a strip of 1 to 1000 at
 # 2e-14.
 SINGULAR = 1e-15
+SOFT = 1e-14  # a stalled iteration stops at a motion as soft as this only if it is a mechanism
 SHIFT = 1e-8  # of the diagonal: makes a mechanism solvable so that its motion can be seen
 
 
@@ -61,6 +73,17 @@ class System:
     @property
     def ordering(self) -> str:
         return self.order.name
+
+    @property
+    def effort(self) -> Effort | None:
+        """What the iteration took for the load cases so far; None with a factor."""
+        return self.factor.effort if isinstance(self.factor, ConjugateGradients) else None
+
+    def begin(self) -> None:
+        """Count refinements and iterations anew, for another job."""
+        self.refinements = 0
+        if isinstance(self.factor, ConjugateGradients):
+            self.factor.effort = Effort()
 
     def solve(self, forces: Array, prescribed: csr_array) -> tuple[Array, Array, Array]:
         """Displacements for nodal forces and the prescribed displacements of the held nodes.
@@ -104,7 +127,12 @@ class System:
         return (self.at_held.T @ prescribed[rows]).toarray()
 
     def _solve_refined(self, right: Array) -> tuple[Array, Array]:
-        """Solve; where too much is left over, solve for that, with SuperLU at last."""
+        """Solve; where too much is left over, solve for that, with SuperLU at last.
+
+        An iteration has its own limits, and looks after them itself.
+        """
+        if isinstance(self.factor, ConjugateGradients):
+            return self._iterate(self.factor, right)
         solution = self.factor.solve(right)
         left = self.matrix @ solution
         np.subtract(right, left, out=left)
@@ -125,6 +153,13 @@ class System:
             )
             raise AnalysisError([Fault("", message)])
         return solution, residual
+
+    def _iterate(self, factor: ConjugateGradients, right: Array) -> tuple[Array, Array]:
+        try:
+            solution = factor.solve(right)
+        except NotConvergedError as error:
+            raise _unsolved(error) from error
+        return solution, relative_residual(right - self.matrix @ solution, right)
 
     def _refine(self, solution: Array, left: Array) -> Array:
         """One step of iterative refinement."""
@@ -158,15 +193,19 @@ def build_system(
     watch: Stopwatch,
     report: Callable[[str, float], None],
     method: str = MULTIFRONTAL,
+    memory: float | None = None,
 ) -> System:
     """Order, assemble, apply the supports, factorise.
+
+    memory : a factor that needs more is not made; conjugate gradients take its place [bytes]
 
     Raises
     ------
     MechanismError   something is free to move; names the motion.
+    AnalysisError    the iteration does not converge.
     """
     with watch("order"):
-        plan = plan_solution(model.mesh, method)
+        plan = plan_solution(model.mesh, method).within(memory)
         order = plan.order
     with watch("assemble"):
         matrix = assemble_stiffness(model, order.position)
@@ -177,14 +216,17 @@ def build_system(
     report("factorising", 0.0)
     with watch("factorise"):
         try:
-            factor = plan.factorise(matrix)
+            factor = plan.factorise(matrix, _motions(model.mesh, supports, order))
         except SingularMatrixError as error:
             raise _mechanism(model.mesh, matrix, supports, order) from error
     rows = matrix.tocsr()  # four times as fast as blocks with many right-hand sides
     with watch("condition"):
-        condition, _ = weakest_motion(rows, factor)
-    if not condition > SINGULAR:
-        raise _mechanism(model.mesh, matrix, supports, order)
+        if isinstance(factor, ConjugateGradients):
+            condition = _condition_by_iteration(model.mesh, rows, factor, supports, order)
+        else:
+            condition, _ = weakest_motion(rows, factor)
+            if not condition > SINGULAR:
+                raise _mechanism(model.mesh, matrix, supports, order)
     return System(order, supports, rows, at_held, factor, condition)
 
 
@@ -217,6 +259,43 @@ def _mechanism(
         entries = shifted.data[diagonal, axis, axis]
         shifted.data[diagonal, axis, axis] += SHIFT * np.where(entries > 0, entries, 1.0)
     _, motion = weakest_motion(shifted, SuperLUFactor(shifted), steps=6)
+    return _named(mesh, motion, supports, order)
+
+
+def _named(mesh: Mesh, motion: Array, supports: Supports, order: NodeOrder) -> MechanismError:
+    """A motion (2N,) in elimination order and own axes, in words."""
     vectors = motion.reshape(-1, 2, 1)
     turn_vectors(vectors, order.position[supports.turned], supports.axes, back=True)
     return MechanismError([describe_motion(mesh, vectors[order.position, :, 0])])
+
+
+def _motions(mesh: Mesh, supports: Supports, order: NodeOrder) -> Array:
+    """Rigid motions (2N, 3) as the matrix has them: elimination order, own axes, held dofs zero."""
+    motions = rigid_motions(mesh.nodes[order.order])
+    turn_vectors(motions, order.position[supports.turned], supports.axes)
+    motions[supports.held[order.order]] = 0.0
+    return motions.reshape(-1, 3)
+
+
+def _condition_by_iteration(
+    mesh: Mesh, matrix: csr_array, factor: ConjugateGradients, supports: Supports, order: NodeOrder
+) -> float:
+    """Reciprocal condition; an iteration that does not end mostly shows the free motion itself."""
+    try:
+        condition, motion = weakest_motion(matrix, factor)
+    except NotConvergedError as error:
+        if softness(matrix, error.solution) > SOFT:
+            raise _unsolved(error) from error
+        raise _named(mesh, error.solution, supports, order) from error
+    if not condition > SINGULAR:
+        raise _named(mesh, motion, supports, order)
+    return condition
+
+
+def _unsolved(error: NotConvergedError) -> AnalysisError:
+    message = (
+        f"the plate is too large for a factor, and the iteration did not converge: {error}; look "
+        "for parts that are nearly free to move, and for extreme ratios of stiffness or length, "
+        "or use a coarser mesh"
+    )
+    return AnalysisError([Fault("", message)])

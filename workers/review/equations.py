@@ -2,6 +2,7 @@
 
 from collections.abc import Iterator
 
+from workers.analysis.effort import ENERGY_ERROR
 from workers.job import Support, TemperatureChange
 from workers.review.context import ReviewContext
 from workers.review.rule import Finding, finding, rule
@@ -84,6 +85,30 @@ def ill_conditioned(context: ReviewContext) -> Iterator[Finding]:
             value=condition,
             limit=SMALLEST_RECIPROCAL_CONDITION,
         )
+
+
+@rule(
+    "solved-by-iteration",
+    "note",
+    title="Solved by iteration, without a factor",
+    looks_at="Whether the factor of the stiffness matrix would have fitted the memory.",
+    action="Compare the equilibrium of every case with what the decision needs; for the usual "
+    "ten digits use a coarser mesh, or have the memory limit raised.",
+)
+def solved_by_iteration(context: ReviewContext) -> Iterator[Finding]:
+    if context.solution is None or (effort := context.solution.solver.iteration) is None:
+        return
+    residual = float(context.solution.solver.residual.max())
+    yield finding(
+        "The factor would not have fitted the memory, so every case was solved by conjugate "
+        f"gradients: the forces left out of balance are at most {residual:.1e} of the load (a "
+        "factor leaves 1e-10), the error in the energy norm is estimated at "
+        f"{effort.energy_error:.1e} of the solution.",
+        value=effort.energy_error,
+        limit=ENERGY_ERROR,
+        residual=residual,
+        iterations=effort.iterations,
+    )
 
 
 @rule(
