@@ -17,7 +17,7 @@ Array = NDArray[np.float64]
 # Plates and struts that are not quite flat lose up to half of the classical value where it is near
 # their yield strength, and are visibly bent before they reach it. Common practice.
 SHARE = 0.5
-PLACES = 150  # elements from which strips are looked for, evenly spread
+PLACES = 60  # elements from which strips are looked for, evenly spread
 ACROSS = 8  # points on each side of a place at which the stress is read
 COMPRESSED = 0.05  # of the largest stress of the state; less is not worth a strip
 EDGES = {
