@@ -26,8 +26,9 @@ from workers.errors import DocumentError, FaultyError
 def command(job: Path, folder: Path | None, pictures: int) -> None:
     """Solve the job document JOB without server or queue.
 
-    Writes results.json, fields/*.vtu and previews/*/*.png. A folder with earlier results is
-    replaced as a whole, so that old and new files never mix.
+    Writes the review sheet (sheet.html), results.json, tables/*.csv, fields/*.vtu and
+    previews/*/*.png. A folder with earlier results is replaced as a whole, so that old and new
+    files never mix.
     """
     folder = folder or job.with_name(f"{job.stem}-results")
     refuse_foreign(folder)
