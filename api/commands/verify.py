@@ -12,7 +12,7 @@ from workers.cautions import STANDING
 from workers.verification.page import figure, part, render_page, tolerance
 from workers.verification.record import CaseRecord, Record, Row, verify
 
-PASS = {True: "[green]pass[/green]", False: "[bold red]FAIL[/bold red]", None: "[dim]-[/dim]"}
+PASS = {True: "[green]pass[/green]", False: "[bold red]FAIL[/bold red]", None: "[dim]info[/dim]"}
 
 
 @click.command()
@@ -55,7 +55,7 @@ def _line(row: Row) -> str:
     return (
         f"  {PASS[row.passed]}  {escape(check.element):<8} {escape(check.quantity):<52} "
         f"{figure(check.computed):>12}  target {figure(check.target)}, {part(check)} "
-        f"[dim](tolerance {tolerance(check)})[/dim]"
+        f"[dim]({'' if check.tolerance is None else 'tolerance '}{tolerance(check)})[/dim]"
     )
 
 
