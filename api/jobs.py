@@ -13,7 +13,7 @@ from marshmallow import RAISE
 from redis.exceptions import RedisError
 
 from api.access import caller, note, visible_record
-from api.admission import choose_line, require_room
+from api.admission import choose_line, require_memory, require_room
 from api.bodies import read_document_bytes
 from api.example import EXAMPLE
 from api.openapi import Blueprint, problems_of
@@ -33,7 +33,7 @@ from workers.document.job import JobSchema
 from workers.document.read import read_document
 from workers.errors import UnknownJobError
 from workers.model_hash import model_hash
-from workers.preflight import preflight
+from workers.preflight import foresee
 from workers.record import RUNNING, Record
 from workers.sizes import check_size
 
@@ -84,7 +84,8 @@ def submit(query: dict[str, Any]) -> Any:
     document = read_document_bytes(flask.request, services().settings.body_bytes)
     job = read_document(document)
     check_size(job, services().settings)
-    mesh = preflight(job)
+    foreseen = foresee(job)
+    require_memory(job, foreseen)
     record, created = services().store.accept(
         document,
         label=job.label,
@@ -92,7 +93,7 @@ def submit(query: dict[str, Any]) -> Any:
         key=key,
         workspace=asks.workspace,
         owner=asks.name,
-        priority=choose_line(query.get("priority"), job, mesh, asks),
+        priority=choose_line(query.get("priority"), job, foreseen.mesh, asks),
         model=model_hash(job),
     )
     if created:

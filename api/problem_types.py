@@ -48,7 +48,8 @@ KEY_REUSED = ProblemType(
 )  # fmt: skip
 JOB_TOO_LARGE = ProblemType(
     "job-too-large", 413, "The job is larger than this server takes",
-    "`errors` says what there is too much of, and how much is allowed.",
+    "`errors` says what there is too much of, and how much is allowed. Where that is memory, "
+    "`estimate` says how many bytes each stage would take, and `limit` how many there are.",
 )  # fmt: skip
 TOKEN_NEEDED = ProblemType(
     "token-needed", 401, "A token is needed",

@@ -35,6 +35,7 @@ def run(
     pictures: int = 6,
     most_dofs: int | None = None,
     shared: Any = None,
+    memory: float | None = None,
 ) -> dict[str, Any]:
     order = json.loads(document)
     (folder.parent / f"begun-{time.monotonic_ns()}").touch()

@@ -12,7 +12,7 @@ to 1.3 times (one of 22: 1.7), on a machine that others were using as well.
 """
 
 import time
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass, replace
 from types import MappingProxyType
 from typing import Any
@@ -20,6 +20,8 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from elements.contract import ElementType
+from workers.analysis.memory_need import direct_memory, iterative_memory
 from workers.analysis.mesh import Mesh
 
 # Entries of the factor over n log2(n), n unknowns (the growth of nested dissection in the plane:
@@ -64,9 +66,13 @@ def counted_factor(own: NDArray[np.int64], border: NDArray[np.int64]) -> FactorS
 
 def fitted_factor(mesh: Mesh) -> FactorSize:
     """The factor that a mesh of this size has, by its most costly kind of element."""
-    n = float(mesh.dof_count)
-    kinds = {(block.element.corners, block.element.order) for block in mesh.blocks}
-    entries = max(ENTRIES.get(kind, max(ENTRIES.values())) for kind in kinds) * n * np.log2(n)
+    return _fitted(mesh.dof_count, [block.element for block in mesh.blocks])
+
+
+def _fitted(dofs: float, elements: Iterable[ElementType]) -> FactorSize:
+    n = float(dofs)
+    most = max(ENTRIES.values())
+    entries = max(ENTRIES.get((e.corners, e.order), most) for e in elements) * n * np.log2(n)
     work = entries * (WORK_PER_ENTRY + WORK_GROWTH * np.sqrt(n))
     return FactorSize(float(entries), float(work), counted=False)
 
@@ -114,6 +120,17 @@ def workload(
     )
 
 
+def expected_workload(
+    element: ElementType, elements: float, *, cases: int, states: int, pictures: int
+) -> Workload:
+    """The work of a job whose mesh is still to be made, of about so many elements."""
+    corners = elements * (0.5 if element.is_triangle else 1.0)  # Euler: V - E + F = 1, V large
+    sides = elements * element.corners / 2
+    nodes = max(round(corners + (sides if element.order == 2 else 0)), 4)
+    factor = _fitted(2 * nodes, [element])
+    return Workload(nodes, round(corners), round(elements), factor, cases, states, states, pictures)
+
+
 def finer(load: Workload, dofs: int) -> Workload:
     """The same job on a mesh of so many unknowns."""
     times = dofs / load.dofs
@@ -139,7 +156,7 @@ def memory_by_stage(load: Workload) -> dict[str, float]:
     # Five measures at nodes, displacements and three stresses, of the states that fit a chunk.
     chunk = min(CHUNK_BYTES, 48.0 * n * load.states)
     stages = {
-        "factorising": 6.5e6 + 610 * n + 14.8 * entries,
+        "factorising": direct_memory(n, entries),
         "solving": 6.7e6 + 780 * n + 10.6 * entries + 1.5 * displacements + 1.6 * block,
         "recovering": 8.4e6 + 1440 * n + 3.9 * entries + 0.5 * displacements + 1.4 * chunk,
         "writing": 20e6 + 700 * n + 3.9 * entries + 0.9 * displacements,
@@ -147,6 +164,13 @@ def memory_by_stage(load: Workload) -> dict[str, float]:
     if load.pictures:  # the first picture loads what draws it: 0.2 GB whatever the mesh
         stages["drawing"] = 217e6 + 9.5 * entries + 0.9 * displacements
     return stages
+
+
+def memory_by_iteration(load: Workload) -> dict[str, float]:
+    """The same without a factor, where conjugate gradients take its place [bytes]."""
+    stages = memory_by_stage(replace(load, factor=FactorSize(0.0, 0.0, counted=False)))
+    levels = iterative_memory(load.dofs)
+    return {**stages, "factorising": levels, "solving": max(levels, stages["solving"])}
 
 
 def time_by_stage(load: Workload) -> dict[str, float]:

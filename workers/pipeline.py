@@ -72,6 +72,7 @@ def run(
     most_dofs: int | None = None,
     seconds: float = SECONDS,
     shared: SharedModel | None = None,
+    memory: float | None = None,
 ) -> Json:
     """Solve a job and write its results into an empty folder.
 
@@ -82,6 +83,8 @@ def run(
     pictures : how many to draw now, of the plate and of the lines
     seconds : for all meshes of an adaptive run together
     shared : what earlier jobs of the same model left, and takes what this one leaves
+    memory : a plate whose factor needs more is solved by iteration; one that is solved on finer
+        and finer meshes never is [bytes]
 
     Returns
     -------
@@ -97,7 +100,7 @@ def run(
     with threadpool_limits(1):
         progress("reading", 0.0)
         job = read_document(document)
-        solved = solve(job, progress, most_dofs, seconds, shared)
+        solved = solve(job, progress, most_dofs, seconds, shared, memory)
         solution, results = solved.solution, solved.results
         work = Work(
             solution.model, solution.displacement, solution.temperature,
@@ -142,13 +145,14 @@ def solve(
     most_dofs: int | None,
     seconds: float,
     shared: SharedModel | None = None,
+    memory: float | None = None,
 ) -> Solved:
     """Mesh and solve a job, as often as it asks for; only one mesh can be shared."""
     progress("meshing", 0.0)
     if not is_refined(job):
         mesh = prepare(job, shared)
         check_dofs(mesh.dof_count, most_dofs)
-        return solve_on(job, mesh, progress, shared)
+        return solve_on(job, mesh, progress, shared, memory)
     refining = refiner(job)
     if job.meshing.target_error is None:
         mesh = prepare(job)

@@ -5,13 +5,15 @@ requests on it, and looks for free motions. NumPy and shapely only, so that the 
 once. An outline is checked as a drawing; what finds no place on its mesh shows in a worker.
 """
 
+from typing import NamedTuple
+
 from elements.registry import get
 from workers.analysis.held import held_by
 from workers.analysis.load_places import load_faults
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
 from workers.analysis.meshing.outline import draw
-from workers.analysis.meshing.plan import plan_faults
+from workers.analysis.meshing.plan import count_roughly, plan_faults
 from workers.analysis.motions import free_motions
 from workers.analysis.request_places import request_faults
 from workers.analysis.selection import Finder
@@ -19,12 +21,24 @@ from workers.errors import DocumentError, Fault, MechanismError, MeshError
 from workers.job import Job, OutlineGeometry
 
 
-def preflight(job: Job) -> Mesh | None:
-    """Look a job over.
+class Foreseen(NamedTuple):
+    """What is known of a sound job before a worker has it.
 
-    Returns
-    -------
-    Mesh or None   the mesh, if it needs no mesher
+    mesh : if it needs no mesher
+    elements : how many; those of an outline are estimated
+    """
+
+    mesh: Mesh | None
+    elements: float
+
+
+def preflight(job: Job) -> Mesh | None:
+    """The mesh of a job, if it needs no mesher; raises as `foresee`."""
+    return foresee(job).mesh
+
+
+def foresee(job: Job) -> Foreseen:
+    """Look a job over.
 
     Raises
     ------
@@ -33,16 +47,17 @@ def preflight(job: Job) -> Mesh | None:
     UnknownElementError   the element type is not installed.
     """
     if isinstance(job.geometry, OutlineGeometry):
-        drawing = draw(job.geometry)
-        if too_many := plan_faults(drawing, get(job.meshing.element), job.meshing):
+        drawing, element = draw(job.geometry), get(job.meshing.element)
+        if too_many := plan_faults(drawing, element, job.meshing):
             raise DocumentError(too_many)
+        return Foreseen(None, count_roughly(drawing, element, job.meshing))
     try:
-        mesh = mesh_directly(job)
+        mesh = mesh_directly(job.geometry, job.meshing.element)
     except MeshError as error:
         raise DocumentError(error.faults) from error
-    if mesh is not None and (faults := placing_faults(job, mesh)):
+    if faults := placing_faults(job, mesh):
         raise DocumentError(faults)
-    return mesh
+    return Foreseen(mesh, mesh.element_count)
 
 
 def placing_faults(job: Job, mesh: Mesh) -> list[Fault]:

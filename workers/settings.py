@@ -119,6 +119,14 @@ class Settings:
         default_text="three quarters of the machine's, shared by its processors",
     )
 
+    large_jobs: str = _setting(
+        "refuse",
+        readers.one_of("refuse", "iterate"),
+        "What becomes of a job whose factor would not fit the memory of one job: `refuse` answers "
+        "413, `iterate` solves it by conjugate gradients, with half the memory and a hundred times "
+        "the time for each load case.",
+    )
+
     # --- limits of one client --------------------------------------------------------------------
     queue_length: int = _setting(
         5_000,

@@ -99,7 +99,10 @@ def run_job(job_id: str) -> None:
     if not _work_on(store, queue, job_id, shared, resting) or shared is None:
         return
     for follower in followers(store, queue, first):
-        if _work_on(store, queue, follower, shared, resting) is False:
+        fit = _work_on(store, queue, follower, shared, resting)
+        if store.record(follower).is_final:
+            queue.leave_line(follower)
+        if fit is False:
             return
 
 
@@ -123,9 +126,6 @@ def _work_on(
         log.info("job %s was cancelled or removed: %s", job_id, error)
         settle(store, queue, job_id)  # takes it off the list of the unfinished
         return True
-    if record.is_final:
-        with suppress(redis.RedisError):  # whoever finds it in line sees that it is final
-            queue.leave_line(job_id)
     return record.state == FINISHED or record.cause in HARMLESS
 
 
@@ -147,6 +147,7 @@ def _attempt(
                 pictures=settings.pictures,
                 most_dofs=settings.most_dofs,
                 shared=shared,
+                memory=settings.memory_limit if settings.large_jobs == "iterate" else None,
             )
         watch.enter(None)
         record = store.publish(job_id, staging, results["cautions"], results.get("outcome"))

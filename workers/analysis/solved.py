@@ -47,14 +47,22 @@ class Shared(Protocol):
     def recovery(self, model: Model) -> Recovery: ...
 
 
-def solve_on(job: Job, mesh: Mesh, progress: Progress, shared: Shared | None = None) -> Solved:
+def solve_on(
+    job: Job,
+    mesh: Mesh,
+    progress: Progress,
+    shared: Shared | None = None,
+    memory: float | None = None,
+) -> Solved:
     """Solve and summarise.
+
+    memory : for the factor, see `solution.solve` [bytes]
 
     Raises
     ------
     MeshError, AnalysisError   as `solution.solve` and `summarise`.
     """
-    solution = solve(job, mesh, progress, kept=shared.kept if shared else None)
+    solution = solve(job, mesh, progress, kept=shared.kept if shared else None, memory=memory)
     progress("recovering", 0.0)
     recovery = (shared.recovery if shared else Recovery.build)(solution.model)
     envelope, wanted = Envelope(), SizesWanted(mesh)

@@ -18,7 +18,4 @@ def mesh_job(job: Job) -> Mesh:
     """
     if isinstance(job.geometry, OutlineGeometry):
         return mesh_drawing(draw(job.geometry), job.meshing)
-    mesh = mesh_directly(job)
-    if mesh is None:
-        raise TypeError(f"no mesher for {type(job.geometry).__name__}")
-    return mesh
+    return mesh_directly(job.geometry, job.meshing.element)

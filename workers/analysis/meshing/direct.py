@@ -4,19 +4,17 @@ from elements.registry import get
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.explicit import mesh_explicit
 from workers.analysis.meshing.patches import mesh_patches
-from workers.job import Job, MeshGeometry, PatchGeometry
+from workers.job import MeshGeometry, PatchGeometry
 
 
-def mesh_directly(job: Job) -> Mesh | None:
-    """The mesh of patches or of the client's own mesh; None for an outline.
+def mesh_directly(geometry: PatchGeometry | MeshGeometry, element: str) -> Mesh:
+    """The mesh of the client's own, or of patches with the elements of that name.
 
     Raises
     ------
     MeshError             the geometry gives no sound mesh; carries every fault found.
     UnknownElementError   the element type for patches is not installed.
     """
-    if isinstance(job.geometry, MeshGeometry):
-        return mesh_explicit(job.geometry)
-    if isinstance(job.geometry, PatchGeometry):
-        return mesh_patches(job.geometry, get(job.meshing.element))
-    return None
+    if isinstance(geometry, MeshGeometry):
+        return mesh_explicit(geometry)
+    return mesh_patches(geometry, get(element))
