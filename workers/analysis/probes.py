@@ -96,13 +96,16 @@ def _boxed(mesh: Mesh, point: Array) -> NDArray[np.int64]:
     """(block, element) of all elements whose upright box, a little enlarged, holds a point."""
     found = []
     for number in range(len(mesh.blocks)):
-        coords = mesh.coords(number)
-        low, high = coords.min(axis=1), coords.max(axis=1)
-        margin = 0.2 * (high - low).max(axis=1, keepdims=True)  # for sides that bulge
-        holds = ((low - margin <= point) & (point <= high + margin)).all(axis=1)
-        elements = np.flatnonzero(holds)
+        elements = np.flatnonzero(_may_hold(mesh.coords(number), point))
         found.append(np.column_stack((np.full(len(elements), number), elements)))
     return np.concatenate(found)
+
+
+def _may_hold(coords: Array, points: Array) -> NDArray[np.bool_]:
+    """Whether points (c, 2) lie in the boxes, a little enlarged, of elements (c, n, 2)."""
+    low, high = coords.min(axis=1), coords.max(axis=1)
+    margin = 0.2 * (high - low).max(axis=1, keepdims=True)  # for sides that bulge
+    return np.asarray(((low - margin <= points) & (points <= high + margin)).all(axis=1))
 
 
 def _try(mesh: Mesh, found: Located, point: NDArray, owner: NDArray[np.int64]) -> None:
@@ -145,6 +148,8 @@ def _mapped(
         mine = np.flatnonzero(owner[:, 0] == number)
         mine = mine[np.argsort(-owner[mine, 1], kind="stable")]
         coords = mesh.nodes[block.connectivity[owner[mine, 1]]]
+        near = _may_hold(coords, points[mine])  # Newton's iteration costs far more
+        mine, coords = mine[near], coords[near]
         natural, converged = block.element.natural_coordinates(coords, points[mine])
         yield number, block.element, mine[converged], natural[converged]
 
