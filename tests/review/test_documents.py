@@ -14,7 +14,7 @@ from workers.review.review import review
 
 Json = dict[str, Any]
 
-# No document alone raises these: they stand for a fault of the program, or for a machine with little
+# No document alone raises these: they stand for a fault of the program, or a machine of little
 # memory (`test_equations.py`).
 OF_THE_PROGRAM = {"equilibrium-open", "solved-by-iteration"}
 RAISING = [(code, number) for code, (raising, _) in CASES.items() for number in range(len(raising))]
