@@ -13,7 +13,6 @@ from pathlib import Path
 
 import numpy as np
 import orjson
-from threadpoolctl import threadpool_limits
 
 from workers.analysis.adaptive import MOST_DOFS
 from workers.analysis.combine import load_states
@@ -22,6 +21,7 @@ from workers.analysis.meshing.build import mesh_job
 from workers.analysis.multifrontal.symbolic import analyse
 from workers.analysis.stopwatch import Stopwatch
 from workers.analysis.summary import mesh_figures
+from workers.analysis.threads import one_thread
 from workers.cautions import Caution
 from workers.document.read import read_document
 from workers.errors import PicturesUnavailableError
@@ -82,7 +82,7 @@ def check(
     OSError                    the folder could not be written.
     """
     watch = Stopwatch()
-    with threadpool_limits(1):
+    with one_thread():
         progress("reading", 0.0)
         with watch("reading"):
             job = read_document(document)
@@ -126,7 +126,7 @@ def draw(document: bytes, checked: Path, folder: Path, state: str) -> Path:
     KeyError                   the job has no such case or combination.
     PicturesUnavailableError   this machine cannot render; the message says why.
     """
-    with threadpool_limits(1):
+    with one_thread():
         job = read_document(document)
         found = orjson.loads((checked / CHECK).read_bytes())
         cautions = [Caution(**caution) for caution in found["cautions"]]

@@ -22,7 +22,6 @@ from pathlib import Path
 
 import numpy as np
 import orjson
-from threadpoolctl import threadpool_limits
 
 from workers.analysis.adaptive import SECONDS, solve_adaptively
 from workers.analysis.envelope import Envelope
@@ -33,6 +32,7 @@ from workers.analysis.model import build_model
 from workers.analysis.refiner import refiner
 from workers.analysis.series import solve_series
 from workers.analysis.solved import Solved, solve_on
+from workers.analysis.threads import one_thread
 from workers.cautions import Caution
 from workers.document.read import read_document
 from workers.errors import MeshError
@@ -96,8 +96,7 @@ def run(
     LimitError                                more than `most_dofs` degrees of freedom.
     OSError                                   the folder could not be written.
     """
-    # Many small fronts and gathers: a second BLAS thread costs more than it brings.
-    with threadpool_limits(1):
+    with one_thread():
         progress("reading", 0.0)
         job = read_document(document)
         solved = solve(job, progress, most_dofs, seconds, shared, memory)
@@ -195,7 +194,7 @@ def write_fields(folder: Path, state: str) -> Path:
     ------
     KeyError   the job has no such state.
     """
-    with threadpool_limits(1):
+    with one_thread():
         return _reopen(folder).write_fields(state)
 
 
@@ -207,7 +206,7 @@ def render(folder: Path, state: str, quantity: str) -> Path:
     KeyError                   the job has no such state, or there is no such quantity.
     PicturesUnavailableError   this machine cannot render; the message says why.
     """
-    with threadpool_limits(1):
+    with one_thread():
         return _reopen(folder).draw(state, quantity)
 
 
@@ -221,7 +220,7 @@ def write_envelope(folder: Path, kind: str) -> Path:
     KeyError                   there is no such file.
     PicturesUnavailableError   this machine cannot render; the message says why.
     """
-    with threadpool_limits(1):
+    with one_thread():
         filing = _reopen(folder)
         if kind == "fields":
             return filing.write_envelope()

@@ -8,7 +8,7 @@ from scipy.linalg import eigh
 
 from tests.plates import grid, plate_job, ring
 from workers.job import Named, OnCircle, Spring, Support
-from workers.review.strips import Strip, coefficient, find_edges, strip_through
+from workers.review.strips import Strip, coefficient, find_edges, strips_through
 
 X, Y = np.array([1.0, 0.0]), np.array([0.0, 1.0])
 PLACE = np.array([3.0, 2.5])  # in a plate 10 x 4: 3 and 7 to its ends, 2.5 and 1.5 to its edges
@@ -16,7 +16,7 @@ PLACE = np.array([3.0, 2.5])  # in a plate 10 x 4: 3 and 7 to its ends, 2.5 and 
 
 def strip(supports: list[Support], place: np.ndarray = PLACE, along: np.ndarray = X) -> Strip:
     mesh = grid("Q8", 10, 4, size=(10.0, 4.0))
-    found = strip_through(find_edges(plate_job(supports), mesh), place, along)
+    found = strips_through(find_edges(plate_job(supports), mesh), place[None], along[None])[0]
     assert found is not None
     return found
 
@@ -83,7 +83,7 @@ def test_a_hole_ends_a_strip() -> None:
     """In a ring of radii 1 and 3 a strip along the hoop is as wide as the ring."""
     mesh = ring("Q8", 32, 4, 1.0, 3.0)
     bore = Support("bore", OnCircle((0.0, 0.0), 1.0), ux=0.0, uy=0.0)
-    found = strip_through(find_edges(plate_job([bore]), mesh), np.array([0.0, 2.0]), X)
+    found = strips_through(find_edges(plate_job([bore]), mesh), np.array([[0.0, 2.0]]), X[None])[0]
     assert found is not None
     assert found.width == pytest.approx(2.0)
     assert found.held == 1

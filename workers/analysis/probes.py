@@ -2,6 +2,8 @@
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from typing import NamedTuple
+from weakref import WeakKeyDictionary
 
 import numpy as np
 from numpy.typing import NDArray
@@ -44,7 +46,8 @@ def locate(mesh: Mesh, points: Array, pointers: Sequence[str]) -> Located:
     ------
     MeshError   points outside the plate; the first for each pointer (points may share one).
     """
-    tree, owner = _centres(mesh)
+    search = _search(mesh)
+    tree, owner = search.centres, search.owner
     found = Located(
         np.full(len(points), -1), np.full(len(points), -1),
         np.zeros((len(points), 2)), np.array(points, float),
@@ -81,31 +84,53 @@ def interpolation(field_mesh: FieldMesh, located: Located) -> csr_array:
     return coo_array(entries, shape=(len(located.block), field_mesh.point_count)).tocsr()
 
 
-def _centres(mesh: Mesh) -> tuple[cKDTree, NDArray[np.int64]]:
-    """Search tree of the elements' centres, and (block, element) of each, (M, 2)."""
-    centres, owners = [], []
+class _Search(NamedTuple):
+    """What is looked up for every point.
+
+    centres : of all elements; owner (M, 2): block and element of each
+    low, high : for each block (m, 2), the upright boxes of its elements, a little enlarged
+    """
+
+    centres: cKDTree
+    owner: NDArray[np.int64]
+    low: tuple[Array, ...]
+    high: tuple[Array, ...]
+
+    def may_hold(self, block: int, elements: NDArray | slice, points: Array) -> NDArray[np.bool_]:
+        """Whether points lie in the boxes of elements, one by one."""
+        low, high = self.low[block][elements], self.high[block][elements]
+        return np.asarray(((low <= points) & (points <= high)).all(axis=1))
+
+
+_SEARCHES: WeakKeyDictionary[Mesh, _Search] = WeakKeyDictionary()
+
+
+def _search(mesh: Mesh) -> _Search:
+    """Made once for a mesh."""
+    if mesh in _SEARCHES:
+        return _SEARCHES[mesh]
+    centres, owners, lows, highs = [], [], [], []
     for number, block in enumerate(mesh.blocks):
-        corners = block.connectivity[:, : block.element.corners]
-        centres.append(mesh.nodes[corners].mean(axis=1))
+        coords = mesh.coords(number)
+        centres.append(coords[:, : block.element.corners].mean(axis=1))
         count = block.element_count
         owners.append(np.column_stack((np.full(count, number), np.arange(count))))
-    return cKDTree(np.concatenate(centres)), np.concatenate(owners)
+        low, high = coords.min(axis=1), coords.max(axis=1)
+        margin = 0.2 * (high - low).max(axis=1, keepdims=True)  # for sides that bulge
+        lows.append(low - margin)
+        highs.append(high + margin)
+    tree = cKDTree(np.concatenate(centres))
+    found = _Search(tree, np.concatenate(owners), tuple(lows), tuple(highs))
+    return _SEARCHES.setdefault(mesh, found)
 
 
 def _boxed(mesh: Mesh, point: Array) -> NDArray[np.int64]:
-    """(block, element) of all elements whose upright box, a little enlarged, holds a point."""
+    """(block, element) of all elements whose box holds a point."""
     found = []
     for number in range(len(mesh.blocks)):
-        elements = np.flatnonzero(_may_hold(mesh.coords(number), point))
+        elements = np.flatnonzero(_search(mesh).may_hold(number, slice(None), point))
         found.append(np.column_stack((np.full(len(elements), number), elements)))
     return np.concatenate(found)
-
-
-def _may_hold(coords: Array, points: Array) -> NDArray[np.bool_]:
-    """Whether points (c, 2) lie in the boxes, a little enlarged, of elements (c, n, 2)."""
-    low, high = coords.min(axis=1), coords.max(axis=1)
-    margin = 0.2 * (high - low).max(axis=1, keepdims=True)  # for sides that bulge
-    return np.asarray(((low - margin <= points) & (points <= high + margin)).all(axis=1))
 
 
 def _try(mesh: Mesh, found: Located, point: NDArray, owner: NDArray[np.int64]) -> None:
@@ -147,9 +172,9 @@ def _mapped(
         block = mesh.blocks[number]
         mine = np.flatnonzero(owner[:, 0] == number)
         mine = mine[np.argsort(-owner[mine, 1], kind="stable")]
+        # Newton's iteration costs far more than a look at the boxes.
+        mine = mine[_search(mesh).may_hold(number, owner[mine, 1], points[mine])]
         coords = mesh.nodes[block.connectivity[owner[mine, 1]]]
-        near = _may_hold(coords, points[mine])  # Newton's iteration costs far more
-        mine, coords = mine[near], coords[near]
         natural, converged = block.element.natural_coordinates(coords, points[mine])
         yield number, block.element, mine[converged], natural[converged]
 

@@ -9,7 +9,6 @@ from dataclasses import dataclass
 
 import numpy as np
 from numpy.typing import NDArray
-from threadpoolctl import threadpool_limits
 
 from workers.analysis.effort import Effort
 from workers.analysis.loads.cases import Loads, resolve_loads
@@ -20,6 +19,7 @@ from workers.analysis.solver import MULTIFRONTAL
 from workers.analysis.stopwatch import Stopwatch
 from workers.analysis.supports import Supports, resolve_supports
 from workers.analysis.system import System, build_system
+from workers.analysis.threads import one_thread
 from workers.errors import MechanismError
 from workers.job import Job
 
@@ -131,7 +131,7 @@ def solve(
     MechanismError   the plate, or a part of it, is free to move; names the motion.
     AnalysisError    the system could not be solved reliably.
     """
-    with threadpool_limits(1, user_api="blas"):
+    with one_thread():
         return _solve(job, mesh, progress or _silent, method, kept or Kept(), memory)
 
 

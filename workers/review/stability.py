@@ -10,7 +10,7 @@ from workers.analysis.hot_spots import stress_along
 from workers.analysis.plane_stress import principal
 from workers.review.context import ReviewContext
 from workers.review.rule import Finding, finding, rule
-from workers.review.strips import Edges, Strip, coefficient, find_edges, strip_through
+from workers.review.strips import Edges, Strip, coefficient, find_edges, strips_through
 
 Array = NDArray[np.float64]
 
@@ -87,7 +87,7 @@ def _worst_strip(context: ReviewContext, edges: Edges, state: str) -> _Buckling 
     if stress is None or context.recovery is None:
         return None
     places, directions, regions = _compressed_places(context, stress)
-    strips = [strip_through(edges, p, d) for p, d in zip(places, directions, strict=True)]
+    strips = strips_through(edges, places, directions)
     kept = [number for number, strip in enumerate(strips) if strip is not None]
     if not kept:
         return None

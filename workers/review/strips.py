@@ -79,23 +79,29 @@ def _is_roller(held: list[tuple[Array, float]], normal: Array) -> bool:
     return all(abs(d @ normal) > ALONG_NORMAL and value == 0 for d, value in held)
 
 
-def strip_through(edges: Edges, place: Array, direction: Array) -> Strip | None:
-    """The strip along a direction (2,) through a place (2,) in the plate; None in a crevice."""
-    across = np.array([-direction[1], direction[0]])
-    left, right = _hit(edges, place, across), _hit(edges, place, -across)
-    ahead, behind = _hit(edges, place, direction), _hit(edges, place, -direction)
-    if left is None or right is None or ahead is None or behind is None:
+def strips_through(edges: Edges, places: Array, directions: Array) -> list[Strip | None]:
+    """The strip along each direction (p, 2) through each place (p, 2); None in a crevice."""
+    across = np.column_stack((-directions[:, 1], directions[:, 0]))
+    hits = [_hits(edges, places, ray) for ray in (across, -across, directions, -directions)]
+    distance, kind = (np.array(part).T.tolist() for part in zip(*hits, strict=True))
+    return [_strip(*both) for both in zip(distance, kind, strict=True)]
+
+
+def _strip(distance: list[float], kind: list[int]) -> Strip | None:
+    """From the distances to the edges at the left, right, ahead and behind, and their kinds."""
+    if not np.isfinite(distance).all():
         return None
-    kinds = left[1], right[1]
-    width, length = left[0] + right[0], ahead[0] + behind[0]
+    left, right, ahead, behind = distance
+    kinds = kind[0], kind[1]
+    width, length = left + right, ahead + behind
     held = kinds.count(HELD)
     if MIRROR in kinds:
         width, held = 2 * width, 2 * held
         if kinds == (MIRROR, MIRROR):
             width = np.inf
-    end_mirrored = MIRROR in (ahead[1], behind[1])
+    end_mirrored = MIRROR in kind[2:]
     return Strip(
-        sides=(left[0], right[0]),
+        sides=(left, right),
         width=width,
         length=2 * length if end_mirrored else length,
         held=held,
@@ -103,20 +109,28 @@ def strip_through(edges: Edges, place: Array, direction: Array) -> Strip | None:
     )
 
 
-def _hit(edges: Edges, place: Array, direction: Array) -> tuple[float, int] | None:
-    """Distance to the border along a ray, and what the edge there is."""
-    a, b = edges.border.start - place, edges.border.end - place
-    before = a[:, 0] * direction[1] - a[:, 1] * direction[0]
-    after = b[:, 0] * direction[1] - b[:, 1] * direction[0]
-    crossed = np.flatnonzero((before > 0) != (after > 0))
-    part = before[crossed] / (before[crossed] - after[crossed])
-    points = a[crossed] + part[:, None] * (b[crossed] - a[crossed])
-    distance = points @ direction
-    ahead = distance > BESIDE * np.abs(distance).max(initial=0.0)
-    if not ahead.any():
-        return None
-    nearest = np.flatnonzero(ahead)[distance[ahead].argmin()]
-    return float(distance[nearest]), int(edges.kind[crossed[nearest]])
+def _hits(edges: Edges, places: Array, directions: Array) -> tuple[Array, NDArray[np.int64]]:
+    """Distance to the border along a ray from each place, inf if none, and the kind of edge."""
+    border, count = edges.border, len(places)
+    distance, kind = np.full(count, np.inf), np.zeros(count, np.int64)
+    turned = np.stack((directions[:, 1], -directions[:, 0]), axis=1)
+    from_ray = np.einsum("pi,pi->p", places, turned)[:, None]
+    before = turned @ border.start.T - from_ray
+    after = turned @ border.end.T - from_ray
+    ray, facet = np.nonzero((before > 0) != (after > 0))
+    if not len(ray):
+        return distance, kind
+    one, other = before[ray, facet], after[ray, facet]
+    part = (one / (one - other))[:, None]
+    points = (1 - part) * border.start[facet] + part * border.end[facet] - places[ray]
+    along = np.einsum("ci,ci->c", points, directions[ray])
+    reach = np.zeros(count)
+    np.maximum.at(reach, ray, np.abs(along))
+    ahead = np.flatnonzero(along > BESIDE * reach[ray])
+    # The farthest first: of repeated rays the last entry, the nearest, stays.
+    ahead = ahead[np.argsort(-along[ahead], kind="stable")]
+    distance[ray[ahead]], kind[ray[ahead]] = along[ahead], edges.kind[facet[ahead]]
+    return distance, kind
 
 
 def coefficient(strip: Strip) -> tuple[float, float]:
