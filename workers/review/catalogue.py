@@ -14,6 +14,7 @@ from workers.review import (
     model_validity,
     refinement,
     restraint,
+    shapes,
     stability,
     strength,
 )
@@ -28,6 +29,7 @@ MODULES: tuple[ModuleType, ...] = (
     model_validity,
     discretisation,
     refinement,
+    shapes,
     restraint,
     loading,
     assumptions,

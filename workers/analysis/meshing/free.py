@@ -15,6 +15,7 @@ from elements.contract import ElementType
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.audit import flaws
 from workers.analysis.meshing.curves import Line
+from workers.analysis.meshing.cutting import cut_edges
 from workers.analysis.meshing.drawing import Drawing
 from workers.analysis.meshing.embedded import embedded_lines
 from workers.analysis.meshing.finish import finish, outward
@@ -60,7 +61,7 @@ def mesh_drawing(drawing: Drawing, meshing: Meshing, revise: Revise | None = Non
         plan = revise(plan)
     if faults := count_faults(plan, meshing):
         raise MeshError(faults)
-    local, whole, sizes = _with_points(plan, drawing)
+    local, whole, sizes = cut_edges(*_with_points(plan, drawing))
     seconds = PATIENCE + PER_ELEMENT * plan.elements
     flat = _best(local, sizes, element, seconds)
     return finish(outward(flat, local, plan.frame, whole), whole, element)

@@ -17,8 +17,9 @@ from workers.analysis.meshing.drawing import OUTSIDE, Drawing
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
-FINEST = 2e-4  # of the diagonal: elements across a gap do not get smaller than this
-POINTS_LIMIT = 200_000  # of gap samples; bounds the time
+FINEST = (2e-5, 2e-4)  # of the diagonal: elements across a gap do not get smaller than this;
+MANY = 20_000  # the second, if the first makes more points
+POINTS_LIMIT = 200_000  # bounds the time
 PAIRS = 2_000_000  # of places and edges looked at together; bounds the memory
 
 
@@ -33,21 +34,28 @@ def gap_points(drawing: Drawing, general: float, per_gap: int) -> Array:
     drawing : in the mesher's coordinates, whose diagonal is 1
     per_gap : elements wanted across the material in a gap
     """
-    look = _Look(drawing, per_gap)
+    found = _points(drawing, general, per_gap, FINEST[0], MANY)
+    if len(found) >= MANY:
+        found = _points(drawing, general, per_gap, FINEST[1], POINTS_LIMIT)
+    return found
+
+
+def _points(drawing: Drawing, general: float, per_gap: int, finest: float, limit: int) -> Array:
+    look = _Look(drawing, per_gap, finest)
     lengths = drawing.table.lengths
     owner = np.arange(len(drawing.edges))
     low, high = np.zeros(len(owner)), np.ones(len(owner))
     found, count = [np.empty((0, 3))], 0
-    while len(owner) and count < POINTS_LIMIT:
+    while len(owner) and count < limit:
         middle, reach = (low + high) / 2, (high - low) * lengths[owner]
         places = drawing.table.at(owner, middle)
         seen = look.from_places(owner, middle, places, general * per_gap + reach)
         narrow = seen.size < general
-        fine = narrow & (reach <= np.maximum(seen.size, FINEST))
+        fine = narrow & (reach <= np.maximum(seen.size, finest))
         found.append(np.column_stack((places, seen.size))[fine])
         count += int(fine.sum())
         # A stretch none of which comes near another edge needs no more places.
-        near = ~fine & (seen.gap - reach / 2 < general * per_gap) & (reach > FINEST)
+        near = ~fine & (seen.gap - reach / 2 < general * per_gap) & (reach > finest)
         owner, low, middle, high = owner[near], low[near], middle[near], high[near]
         owner = np.concatenate((owner, owner))
         low, high = np.concatenate((low, middle)), np.concatenate((middle, high))
@@ -64,9 +72,10 @@ class _Seen(NamedTuple):
 class _Look:
     """Looks from places on edges at the other edges that those do not touch."""
 
-    def __init__(self, drawing: Drawing, per_gap: int) -> None:
+    def __init__(self, drawing: Drawing, per_gap: int, finest: float) -> None:
         self._table: CurveTable = drawing.table
         self._per_gap = per_gap
+        self._finest = finest
         self._tree = shapely.STRtree(self._table.polylines())
         vertices = np.concatenate((self._table.start, self._table.end))
         numbers = np.unique(vertices, axis=0, return_inverse=True)[1].reshape(2, -1)
@@ -98,7 +107,7 @@ class _Look:
         width = norm(towards)
         leftward = cross(self._table.tangent(one, t), towards) > 0
         material = np.where(leftward, self._left[one], self._right[one])
-        wanted = np.where(material, np.maximum(width / self._per_gap, FINEST), np.inf)
+        wanted = np.where(material, np.maximum(width / self._per_gap, self._finest), np.inf)
         # The rise of a chord s of radius r is s^2 / 8 r; s is twice the size, since the library
         # meshes coarsely, and a quarter of the width leaves room for chords on both sides.
         radius = np.minimum(_bend(self._table, one), _bend(self._table, other))

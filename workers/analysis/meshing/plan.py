@@ -17,17 +17,23 @@ from workers.analysis.meshing.sizing import DEFAULTS, Sizes, choose_sizes, estim
 from workers.errors import Fault
 from workers.job import Meshing
 
-MOST_ELEMENTS = 2_000_000
+MOST_NODES = 1_000_000
+# Nodes for each element of a large mesh, by corners and order: Euler's formula.
+NODES = {(3, 1): 0.5, (3, 2): 2.0, (4, 1): 1.0, (4, 2): 3.0}
 SMALLEST = 1e-5  # of the diagonal: no size may be smaller
 
 
 class Plan(NamedTuple):
-    """A drawing in the mesher's coordinates and the sizes of its mesh; elements : the estimate."""
+    """A drawing in the mesher's coordinates and the sizes of its mesh.
+
+    elements, nodes : about how many there will be
+    """
 
     frame: Frame
     local: Drawing
     sizes: Sizes
     elements: float
+    nodes: float
 
 
 def plan_mesh(drawing: Drawing, element: ElementType, meshing: Meshing) -> Plan:
@@ -36,11 +42,11 @@ def plan_mesh(drawing: Drawing, element: ElementType, meshing: Meshing) -> Plan:
     general = plan.sizes.general
     gaps = gap_points(plan.local, general, DEFAULTS[element.order].per_gap)
     sizes = plan.sizes._replace(points=np.concatenate((gaps, plan.sizes.points)))
-    return plan._replace(sizes=sizes, elements=_elements(plan.local, sizes, element))
+    return Plan(plan.frame, plan.local, sizes, *_counts(plan.local, sizes, element))
 
 
 def plan_faults(drawing: Drawing, element: ElementType, meshing: Meshing) -> list[Fault]:
-    """Sizes that no mesh can have, or that make too many elements."""
+    """Sizes that no mesh can have, or that make too many nodes."""
     diagonal = Frame.around(drawing).scale
     if faults := list(_size_faults(meshing, diagonal)):
         return faults
@@ -53,8 +59,8 @@ def count_roughly(drawing: Drawing, element: ElementType, meshing: Meshing) -> f
 
 
 def count_faults(plan: Plan, meshing: Meshing) -> list[Fault]:
-    """The fault of too many elements, which names what makes them; [] if they are few enough."""
-    if plan.elements <= MOST_ELEMENTS:
+    """The fault of too many nodes, which names what makes them; [] if they are few enough."""
+    if plan.nodes <= MOST_NODES:
         return []
     pointer, size = "/meshing/size", meshing.size
     if meshing.sizes and (size is None or min(meshing.sizes.values()) < size / 2):
@@ -65,15 +71,15 @@ def count_faults(plan: Plan, meshing: Meshing) -> list[Fault]:
     return [
         Fault(
             pointer,
-            f"{seen} would make about {plan.elements:.2g} elements; at most {MOST_ELEMENTS} are "
-            f"allowed{more}",
+            f"{seen} would make about {plan.elements:.2g} elements with {plan.nodes:.2g} nodes; at "
+            f"most {MOST_NODES} nodes are allowed{more}",
         )
     ]
 
 
 def _enough(plan: Plan, size: float) -> float:
     # Between 1/h (along a side) and 1/h^2 (over an area); the latter asks for no more than needed.
-    return size * float(np.sqrt(plan.elements / MOST_ELEMENTS))
+    return size * float(np.sqrt(plan.nodes / MOST_NODES))
 
 
 def _without_gaps(drawing: Drawing, element: ElementType, meshing: Meshing) -> Plan:
@@ -82,12 +88,13 @@ def _without_gaps(drawing: Drawing, element: ElementType, meshing: Meshing) -> P
     size = None if meshing.size is None else frame.length(meshing.size)
     sizes = {name: frame.length(size) for name, size in meshing.sizes.items()}
     chosen = choose_sizes(local, element.order, size, sizes)
-    return Plan(frame, local, chosen, _elements(local, chosen, element))
+    return Plan(frame, local, chosen, *_counts(local, chosen, element))
 
 
-def _elements(local: Drawing, sizes: Sizes, element: ElementType) -> float:
+def _counts(local: Drawing, sizes: Sizes, element: ElementType) -> tuple[float, float]:
     # Two triangles make a quadrilateral.
-    return estimate_triangles(local, sizes) / (1.0 if element.is_triangle else 2.0)
+    count = estimate_triangles(local, sizes) / (1.0 if element.is_triangle else 2.0)
+    return count, count * NODES[element.corners, element.order]
 
 
 def _size_faults(meshing: Meshing, diagonal: float) -> Iterator[Fault]:
