@@ -25,6 +25,7 @@ from workers.tokens import ADMIN, READ, SUBMIT, Token
 # Endpoints that need no token: nothing of any job is in them, and monitors come without one.
 OPEN = frozenset({"health.live", "docs.page", "docs.openapi"})
 REALM = 'Bearer realm="fishplate"'
+BROWSER_REALM = 'Basic realm="fishplate: any name, and your token as the password"'
 LOCAL_NAMES = ("localhost", "127.0.0.1", "::1")
 FORWARDED = ("Forwarded", "X-Forwarded-For", "X-Forwarded-Host", "Via")
 
@@ -143,9 +144,17 @@ def _caller(token: Token) -> Caller:
 
 
 def _presented(request: Request) -> str:
-    """The token of the Authorization header (RFC 6750, section 2.1), or nothing."""
-    scheme, _, text = request.headers.get("Authorization", "").partition(" ")
-    return text.strip() if scheme.lower() == "bearer" else ""
+    """The token of the Authorization header, or nothing.
+
+    As RFC 6750 section 2.1 has it, or as the password of RFC 7617, which is what a browser asks a
+    person for; the user name does not matter. A browser then sends it by itself, also when a page
+    from elsewhere sends it here: but such a page can only look (and not see), because whatever
+    changes something is JSON, PUT or DELETE, for which browsers ask the server first.
+    """
+    sent = request.authorization
+    if sent is None:
+        return ""
+    return (sent.token if sent.type == "bearer" else sent.password) or ""
 
 
 def _is_local(request: Request) -> bool:
@@ -164,6 +173,9 @@ def _is_local(request: Request) -> bool:
 def _refusal(request: Request) -> RefusalError:
     if not services().tokens.all():
         return RefusalError(TOKEN_NEEDED, NOT_LOCAL, headers={"WWW-Authenticate": REALM})
+    if request.accept_mimetypes.best_match(["application/json", "text/html"]) == "text/html":
+        detail = "Give your token as the password."
+        return RefusalError(TOKEN_NEEDED, detail, headers={"WWW-Authenticate": BROWSER_REALM})
     if not _presented(request):
         detail = "Send `Authorization: Bearer TOKEN` with the token that you were given."
         return RefusalError(TOKEN_NEEDED, detail, headers={"WWW-Authenticate": REALM})

@@ -41,8 +41,8 @@ class Api(flask_smorest.Api):
                 "type": "http",
                 "scheme": "bearer",
                 "description": "A token that whoever runs the server made with `fishplate tokens "
-                "add` (RFC 6750). On the server's own machine, as long as none was made, it is "
-                "not needed.",
+                "add` (RFC 6750); a browser sends it as the password. On the server's own machine, "
+                "as long as none was made, it is not needed.",
             },
         )
 

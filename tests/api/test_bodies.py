@@ -5,6 +5,7 @@ import random
 
 import pytest
 from flask import Flask, request
+from flask.testing import FlaskClient
 
 from api.bodies import gunzip, read_document_bytes
 from api.problem_types import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN
@@ -67,3 +68,20 @@ def test_other_media_types_are_refused(media: str) -> None:
 
 def test_a_charset_after_the_media_type_does_no_harm() -> None:
     assert read(b"{}", Content_Type="application/json; charset=utf-8") == b"{}"
+
+
+@pytest.mark.parametrize("depth", [50, 1000, 15_000])  # the last fills what is allowed here
+@pytest.mark.parametrize("opening", ["[", '{"a":'])
+@pytest.mark.parametrize("place", ["", '{"supports": ', '{"geometry": {"mesh": {"nodes": '])
+def test_a_deeply_nested_document_is_a_fault_and_nothing_more(
+    client: FlaskClient, depth: int, opening: str, place: str
+) -> None:
+    """Neither the stack nor the time of the server is used up, closed or not."""
+    closing = "]" if opening == "[" else "}"
+    for text in (
+        place + opening * depth,
+        place + opening * depth + "1" + closing * depth + "}" * place.count("{"),
+    ):
+        answer = client.post("/v1/jobs", data=text, content_type="application/json")
+        assert answer.status_code == 422
+        assert answer.get_json()["errors"]
