@@ -67,6 +67,17 @@ def test_a_field_file_is_made_again_from_what_is_stored(
     assert path.read_bytes() == first
 
 
+def test_the_sheet_is_made_again_from_what_is_stored(
+    service: Service, finished: Record, folder: Path
+) -> None:
+    path = folder / "sheet.html"
+    first = path.read_bytes()
+    assert b"100 <span" in first  # MPa, as above
+    path.unlink()
+    assert service.queue.make_artefact(finished.id, "sheet", "", wait=60.0).state == "done"
+    assert path.read_bytes() == first
+
+
 def test_a_picture_is_made_when_asked_for_or_refused_with_the_reason(
     service: Service, finished: Record, folder: Path
 ) -> None:
