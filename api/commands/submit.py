@@ -73,7 +73,8 @@ def command(
                 fetch_files(client, final["links"]["self"], results, fresh)
             name_files(folder)
     except ServerError as error:
-        bad = error.status is not None and 400 <= error.status < 500
+        # 429 is nothing wrong with the job: the same may be sent later.
+        bad = error.status is not None and 400 <= error.status < 500 and error.status != 429
         leave(BAD_INPUT if bad else FAILED, str(error), error.errors)
     print_results(out(), results)
 

@@ -4,12 +4,14 @@
     python queue_rope_directions.py --url http://127.0.0.1:8470 --as-jobs
 
 The hoist's rope can pull the lug at any angle within 75 degrees of the vertical. Needs nothing but
-Python's standard library: this is how any program calls Fishplate over plain HTTP.
+Python's standard library: this is how any program calls Fishplate over plain HTTP. Where the server
+wants a token, put it into FISHPLATE_TOKEN.
 """
 
 import argparse
 import json
 import math
+import os
 import sys
 import time
 import urllib.error
@@ -40,10 +42,15 @@ def call(method, url, body=None, headers=None):
     request = urllib.request.Request(url, data, headers or {}, method=method)
     if data is not None:
         request.add_header("Content-Type", "application/json")
+    if token := os.environ.get("FISHPLATE_TOKEN"):
+        request.add_unredirected_header("Authorization", f"Bearer {token}")
     try:
         with urllib.request.urlopen(request, timeout=120) as answer:
             return answer.status, answer.headers, json.loads(answer.read())
     except urllib.error.HTTPError as error:
+        if error.code == 429:  # too many at a time: the server says when there is room again
+            time.sleep(int(error.headers["Retry-After"]))
+            return call(method, url, body, headers)
         problem = json.loads(error.read())
         faults = "".join(f"\n  {f['pointer']}: {f['message']}" for f in problem.get("errors", []))
         sys.exit(f"{error.code} {problem['title']}: {problem.get('detail', '')}{faults}")

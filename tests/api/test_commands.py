@@ -183,6 +183,11 @@ def test_a_large_document_is_sent_packed(job: Path, url: str, app: Flask) -> Non
     assert app.extensions[KEY].store.document(result.stdout.strip()) == job.read_bytes()
 
 
+def test_submit_may_ask_for_the_line_of_bulk(job: Path, url: str, app: Flask) -> None:
+    result = run("submit", job, "--url", url, "--priority", "bulk")
+    assert app.extensions[KEY].store.record(result.stdout.strip()).priority == "bulk"
+
+
 # --- tokens --------------------------------------------------------------------------------------
 
 
