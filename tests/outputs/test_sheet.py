@@ -79,7 +79,7 @@ def test_the_sheet_is_whole_html(small: Page) -> None:
         "1 x pull",
         "loads against reactions",
         "sha256:0",
-        "max aspect 2.5 10 0",
+        "largest aspect ratio 2.5 10 0",
         "hot-spot stresses",
         "2031-04-05 06:07 UTC",
         "One mesh only",
