@@ -9,29 +9,46 @@ import errno
 import fcntl
 import os
 from collections.abc import Iterator
+from concurrent.futures import ThreadPoolExecutor
 from contextlib import contextmanager
 from pathlib import Path
 
+MOST_AT_ONCE = 32  # syncs
 
-def sync_folder(folder: Path) -> None:
-    """Make the names inside a folder durable."""
-    descriptor = os.open(folder, os.O_RDONLY | os.O_DIRECTORY)
+
+def sync(*paths: Path) -> None:
+    """Make the content of files, and the names inside folders, durable; in any order.
+
+    Together, because the disk then writes once: 18 files take 6 ms, one after the other 108 ms.
+    """
+    if len(paths) == 1:
+        _sync(paths[0])
+        return
+    with ThreadPoolExecutor(min(len(paths), MOST_AT_ONCE)) as threads:
+        for _ in threads.map(_sync, paths):
+            pass  # raises what the thread has met
+
+
+def _sync(path: Path) -> None:
+    descriptor = os.open(path, os.O_RDONLY)
     try:
         os.fsync(descriptor)
     finally:
         os.close(descriptor)
 
 
+def sync_folder(folder: Path) -> None:
+    """Make the names inside a folder durable."""
+    _sync(folder)
+
+
 def sync_tree(folder: Path) -> None:
     """Make every file and folder below `folder` durable."""
-    for parent, _, names in os.walk(folder, topdown=False):
-        for name in names:
-            descriptor = os.open(Path(parent, name), os.O_RDONLY)
-            try:
-                os.fsync(descriptor)
-            finally:
-                os.close(descriptor)
-        sync_folder(Path(parent))
+    tree = list(os.walk(folder))
+    sync(
+        *(Path(parent) for parent, _, _ in tree),
+        *(Path(parent, name) for parent, _, names in tree for name in names),
+    )
 
 
 def make_folder(folder: Path) -> None:
@@ -82,9 +99,7 @@ def append(path: Path, line: bytes) -> None:
 def move(source: Path, target: Path) -> None:
     """Rename durably; both must be on one file system."""
     source.rename(target)
-    sync_folder(target.parent)
-    if source.parent != target.parent:
-        sync_folder(source.parent)
+    sync(*{target.parent, source.parent})
 
 
 @contextmanager

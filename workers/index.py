@@ -25,8 +25,8 @@ class Index:
     def path(self, job_id: str) -> Path:
         return self.root / day_of(job_id) / job_id
 
-    def add(self, job_id: str, *, sync: bool = False) -> None:
-        """Name the id; with `sync` the entry is durable on return."""
+    def add(self, job_id: str) -> Path:
+        """Name the id; returns the folder to sync, where that is wanted."""
         path = self.path(job_id)
         while True:
             durable.make_folder(path.parent)
@@ -35,8 +35,7 @@ class Index:
                 break
             except FileNotFoundError:  # the empty day was tidied away in between
                 continue
-        if sync:
-            durable.sync_folder(path.parent)
+        return path.parent
 
     def discard(self, job_id: str) -> None:
         self.path(job_id).unlink(missing_ok=True)
@@ -110,15 +109,18 @@ class Indexes:
         """Ids of the jobs that are queued or running, and perhaps of others that were."""
         return {i for state in (QUEUED, RUNNING) for i in self._states[state].newest_first()}
 
-    def enter(self, record: Record, *, sync: bool = False) -> None:
-        """Before the record is written: name the job wherever it is to be found."""
-        self._states[record.state].add(record.id, sync=sync)
+    def enter(self, record: Record) -> tuple[Path, ...]:
+        """Before the record is written: name the job wherever it is to be found.
+
+        Returns the folders to sync, where the entries are to be durable.
+        """
         if not record.is_final:  # not worth a sync: these are only counted
             for line in self._lines_with(record):
                 line.add(record.id)
-        self.of_workspace(record.workspace).add(record.id, sync=sync)
+        indexes = [self._states[record.state], self.of_workspace(record.workspace)]
         if record.label is not None:
-            self.of_label(record.label).add(record.id, sync=sync)
+            indexes.append(self.of_label(record.label))
+        return tuple(index.add(record.id) for index in indexes)
 
     def tidy(self, record: Record) -> None:
         """After it was written: take the job out of wherever it is no more."""

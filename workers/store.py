@@ -115,25 +115,26 @@ class Store(StoreReader):
             except UnknownJobError:
                 # The key is written first: a crash in between leaves it pointing at no job, which
                 # counts as unused. So a key can never stand for two jobs.
-                durable.write(key, record.id.encode())
-                durable.sync_folder(self._keys)
-                self._file(record, document)
+                key.write_text(record.id)
+                self._file(record, document, key, self._keys)
                 return Acceptance(record, created=True)
         if earlier.checksum != record.checksum:
             raise KeyConflictError(earlier.id)
         return Acceptance(earlier, created=False)
 
-    def _file(self, record: Record, document: bytes) -> None:
+    def _file(self, record: Record, document: bytes, *before: Path) -> None:
+        """Make everything durable, what must be there `before` as well; then the rename."""
         incoming = self._incoming / record.id
         target = self.jobs.path(record.id)
         try:
             durable.make_folder(self._incoming)
             durable.make_folder(target.parent)
             incoming.mkdir()
-            durable.write(incoming / "job.json", document)
-            durable.write(incoming / "record.json", record.as_bytes())
-            durable.sync_folder(incoming)
-            self.indexes.enter(record, sync=True)
+            (incoming / "job.json").write_bytes(document)
+            (incoming / "record.json").write_bytes(record.as_bytes())
+            entries = self.indexes.enter(record)
+            files = [incoming / "job.json", incoming / "record.json", incoming]
+            durable.sync(*files, *entries, *before)
             durable.move(incoming, target)
         except OSError:
             for half_done in (target, incoming):
@@ -195,8 +196,8 @@ class Store(StoreReader):
             durable.sync_tree(staging)
         with self._changing(job_id) as folder:
             record = self.record(job_id).moved(FINISHED, cautions=tuple(cautions), outcome=outcome)
-            durable.write(staging / FINAL_RECORD, record.as_bytes())
-            durable.sync_folder(staging)
+            (staging / FINAL_RECORD).write_bytes(record.as_bytes())
+            durable.sync(staging / FINAL_RECORD, staging)
             durable.move(staging, folder / "results")
             return self._replace(folder, record)
 

@@ -1,6 +1,7 @@
 """The store: accepted means on the disk, one final state, results all at once or not at all."""
 
 import errno
+import itertools
 import json
 import os
 import resource
@@ -89,13 +90,11 @@ def test_a_full_disk_at_any_step_leaves_nothing_half_accepted(
 ) -> None:
     """A keyed and labelled job needs ten syncs; whichever of them fails, nothing is accepted."""
     kept = accept(store, key="other", label="yard")
-    calls = 0
+    calls = itertools.count(1)  # from several threads
     real = os.fsync
 
     def fsync(descriptor: int) -> None:
-        nonlocal calls
-        calls += 1
-        if calls == refused:
+        if next(calls) == refused:
             raise OSError(errno.ENOSPC, os.strerror(errno.ENOSPC))
         real(descriptor)
 
