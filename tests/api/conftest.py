@@ -33,8 +33,9 @@ def settings(redis_url: str, tmp_path: Path) -> Settings:
 @pytest.fixture
 def app(settings: Settings) -> Iterator[Flask]:
     app = create_app(settings)
-    yield app
     connection = app.extensions[KEY].queue.connection
+    connection.flushall()  # whatever an application that a test made by itself has left
+    yield app
     connection.flushall()
     connection.close()
 
