@@ -39,6 +39,7 @@ def cut_edges(local: Drawing, whole: Drawing, sizes: Sizes) -> tuple[Drawing, Dr
 def _cuts(drawing: Drawing, sizes: Sizes) -> dict[int, list[float]]:
     """Parameters at which edges are cut, by the number of the edge."""
     table, points = drawing.table, sizes.points
+    points = points[points[:, 2] * LONGEST < table.lengths.max()]
     if not len(points):
         return {}
     reach = NEAR * points[:, 2]

@@ -24,7 +24,7 @@ def embedded_lines(drawing: Drawing, sizes: Sizes) -> tuple[Edge, ...]:
         return ()
     places = np.array([drawing.points[name] for name in drawing.inner])
     domains = np.array(list(drawing.inner.values()))
-    longest = 2 * sizes.domains[domains - 1]
+    longest = 2 * _sizes_at(places, sizes.domains[domains - 1], sizes)
     nearest = _nearest(drawing, places, longest / SHARE)
     away = places - nearest
     clearance = norm(away)
@@ -35,6 +35,17 @@ def embedded_lines(drawing: Drawing, sizes: Sizes) -> tuple[Edge, ...]:
         Edge(Line(places[k], ends[k]), None, int(domains[k]), int(domains[k]))
         for k in sorted(unique.values())
     )
+
+
+def _sizes_at(places: Array, general: Array, sizes: Sizes) -> Array:
+    """The size wanted at each place, (k,), not more than the general one there."""
+    wanted = general.copy()
+    row, point = shapely.STRtree(shapely.points(sizes.points[:, :2])).query(
+        shapely.points(places), predicate="dwithin", distance=general
+    )
+    away = norm(places[row] - sizes.points[point, :2])
+    np.minimum.at(wanted, row, sizes.points[point, 2] + sizes.grading * away)
+    return wanted
 
 
 def _nearest(drawing: Drawing, places: Array, reach: Array) -> Array:

@@ -21,6 +21,8 @@ from workers.job import Vector
 Array = NDArray[np.float64]
 Indices = NDArray[np.int32]
 
+ROWS = 64  # of nodes with consecutive numbers
+
 
 def outward(flat: FlatMesh, local: Drawing, frame: Frame, drawing: Drawing) -> FlatMesh:
     """A mesh in the mesher's coordinates moved to the drawing's own, exactly onto its curves.
@@ -40,8 +42,11 @@ def outward(flat: FlatMesh, local: Drawing, frame: Frame, drawing: Drawing) -> F
     return replace(flat, nodes=nodes)
 
 
-def finish(flat: FlatMesh, drawing: Drawing, element: ElementType) -> Mesh:
-    """Blocks of the wanted type, with sides and points by name."""
+def finish(flat: FlatMesh, drawing: Drawing, frame: Frame, element: ElementType) -> Mesh:
+    """Blocks of the wanted type, with sides and points by name.
+
+    flat, drawing : in the drawing's coordinates
+    """
     nodes, cells = flat.nodes, list(flat.cells)
     if element.order > 1:
         places, of_cells, _ = middles(flat, drawing)
@@ -57,7 +62,7 @@ def finish(flat: FlatMesh, drawing: Drawing, element: ElementType) -> Mesh:
         for kind, own, domain in zip((triangle, element), cells, domains, strict=True)
         if len(own)
     )
-    nodes, blocks, number = _numbered_by_place(nodes, blocks)
+    nodes, blocks, number = _numbered_by_place(nodes, blocks, frame)
     mesh = Mesh(nodes, blocks, drawing.regions)
     return replace(
         mesh,
@@ -67,10 +72,11 @@ def finish(flat: FlatMesh, drawing: Drawing, element: ElementType) -> Mesh:
 
 
 def _numbered_by_place(
-    nodes: Array, blocks: tuple[Block, ...]
+    nodes: Array, blocks: tuple[Block, ...], frame: Frame
 ) -> tuple[Array, tuple[Block, ...], Indices]:
     """Neighbours get near numbers: faster gathers, and files that compress better."""
-    order = np.lexsort((nodes[:, 0], np.rint(nodes[:, 1] / (np.ptp(nodes[:, 1]) / 64))))
+    x, y = frame.places(nodes).T
+    order = np.lexsort((x, np.rint(y * (ROWS / np.ptp(y)))))
     number = np.empty(len(nodes), np.int32)
     number[order] = np.arange(len(nodes), dtype=np.int32)
     renumbered = tuple(replace(b, connectivity=number[b.connectivity]) for b in blocks)

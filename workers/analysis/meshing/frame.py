@@ -39,19 +39,20 @@ class Frame:
         return replace(drawing, edges=edges, points=points)
 
     def _curve(self, curve: Curve) -> Curve:
-        start, end = self._places(curve.start), self._places(curve.end)
+        start, end = self.places(curve.start), self.places(curve.end)
         if isinstance(curve, Line):
             return Line(start, end)
         radius, first, sweep = (
             float(rounded(x)) for x in (curve.radius / self.scale, curve.first, curve.sweep)
         )
-        return Arc(start, end, self._places(curve.centre), radius, first, sweep)
+        return Arc(start, end, self.places(curve.centre), radius, first, sweep)
 
-    def _places(self, places: Array) -> Array:
+    def places(self, places: Array) -> Array:
+        """Places (k, 2) in the mesher's coordinates."""
         return np.asarray(rounded((np.asarray(places) - self.middle) / self.scale))
 
     def place(self, place: Vector) -> Vector:
-        x, y = self._places(np.array(place))
+        x, y = self.places(np.array(place))
         return float(x), float(y)
 
     def length(self, length: float) -> float:

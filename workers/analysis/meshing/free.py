@@ -64,7 +64,7 @@ def mesh_drawing(drawing: Drawing, meshing: Meshing, revise: Revise | None = Non
     local, whole, sizes = cut_edges(*_with_points(plan, drawing))
     seconds = PATIENCE + PER_ELEMENT * plan.elements
     flat = _best(local, sizes, element, seconds)
-    return finish(outward(flat, local, plan.frame, whole), whole, element)
+    return finish(outward(flat, local, plan.frame, whole), whole, plan.frame, element)
 
 
 def _with_points(plan: Plan, drawing: Drawing) -> tuple[Drawing, Drawing, Sizes]:

@@ -84,6 +84,9 @@ def follow(plan: Plan, points: Array, elements: float) -> Plan:
     local[:, :2] = (points[:, :2] - plan.frame.middle) / plan.frame.scale
     local[:, 2] /= plan.frame.scale
     sizes = plan.sizes._replace(
-        points=np.concatenate((plan.sizes.points, local)), grading=GRADING, per_radius=PER_RADIUS
+        points=np.concatenate((plan.sizes.points, local)),
+        grading=GRADING / 2,  # measured on coarse meshes, whose elements are split once
+        per_radius=PER_RADIUS,
     )
-    return plan._replace(sizes=sizes, elements=elements)
+    nodes = plan.nodes / plan.elements * elements
+    return plan._replace(sizes=sizes, elements=elements, nodes=nodes)

@@ -40,12 +40,16 @@ class Sizes(NamedTuple):
     per_radius: float = 2.0
 
     def scaled(self, factor: float) -> "Sizes":
-        """All sizes so much larger; twice as large for a mesh whose elements are split once."""
+        """All sizes so much larger; twice as large for a mesh whose elements are split once.
+
+        The same field in larger elements grows faster.
+        """
         return self._replace(
             general=factor * self.general,
             edges=factor * self.edges,
             domains=factor * self.domains,
             points=self.points * [1.0, 1.0, factor],
+            grading=factor * self.grading,
         )
 
 
@@ -66,7 +70,8 @@ class Fineness(NamedTuple):
 
 # Quadratic elements follow an arc and a stress gradient with far fewer elements than linear ones.
 DEFAULTS: Mapping[int, Fineness] = {1: Fineness(3000, 48, 24, 4), 2: Fineness(800, 24, 16, 2)}
-RINGS = 4  # around a named point, where the size grows back
+RINGS = 5  # around a named point, where the size grows back
+CORE = 2.0  # sizes from the point up to where it does not grow: one element before the split
 SHARP = 50.0  # degrees: a corner between arcs that is sharper needs smaller elements
 TRIANGLE = 0.433  # area of an equilateral triangle over the square of its side
 
@@ -116,14 +121,16 @@ def _sharp_corners(drawing: Drawing, general: float) -> Iterator[tuple[Vector, f
 
 
 def around(place: tuple[float, float], size: float, general: float) -> Array:
-    """Size points at a place and in rings about it; a lone point would not be followed."""
+    """Size points at a place and in rings about it; a lone point would not be followed.
+
+    The elements that meet in the place have the size; from their other ends on it grows.
+    """
     rings = [np.array([[*place, size]])]
-    radius = size
-    for _ in range(RINGS):
+    for radius in size * 2.0 ** np.arange(RINGS):
         angles = np.arange(8) * np.pi / 4
         ring = np.asarray(place) + radius * np.stack((np.cos(angles), np.sin(angles)), axis=1)
-        rings.append(np.column_stack((ring, np.full(8, min(size + 0.2 * radius, general)))))
-        radius *= 2
+        grown = size + GRADING * max(radius - CORE * size, 0.0)
+        rings.append(np.column_stack((ring, np.full(8, min(grown, general)))))
     return np.concatenate(rings)
 
 
