@@ -5,6 +5,7 @@ worker does it; all data are invented. N and mm. Where a threshold decides, the 
 document says on which side it is and why.
 """
 
+import math
 from copy import deepcopy
 from typing import Any
 
@@ -57,6 +58,25 @@ def changed(document: Json, changes: Json) -> Json:
         else:
             place[int(last) if isinstance(place, list) else last] = value
     return result
+
+
+def wedge(degrees: float) -> Json:
+    """A triangular fender plate, held at its back; its tip has that many degrees."""
+    return changed(
+        WEB,
+        {
+            "geometry": {
+                "outline": [
+                    {"at": [0, 0], "side": "low"},
+                    {"at": [200, 0], "side": "back"},
+                    {"at": [200, 200 * math.tan(math.radians(degrees))]},
+                ]
+            },
+            "meshing": {"element": "T6", "size": 20},
+            "supports": [{"on": "back", "ux": 0, "uy": 0}],
+            "load_cases": {"push": [{"on": "low", "pressure": 0.1}]},
+        },
+    )
 
 
 def tie(**changes: Any) -> Json:
@@ -346,6 +366,10 @@ CASES: dict[str, tuple[list[Json], list[Json]]] = {
     "thickness-step": (
         [stepped(12.1), stepped(5.2)],
         [stepped(11.9), stepped(8, "bronze")],
+    ),
+    "sharp-corner": (
+        [wedge(29), wedge(15)],
+        [wedge(31), wedge(45)],
     ),
     "bearing-contact-assumed": (
         [ring({"on": "bore", "bearing": [0, 9000]}), ring({"on": "bore", "bearing": [0, 1]})],

@@ -93,7 +93,8 @@ def test_every_example_in_a_message_is_right(dimension: Dimension) -> None:
 
 
 @given(
-    value=st.floats(-1e9, 1e9),
+    # Numbers so small that their digits end (below 1e-300) carry no fourteen digits to compare.
+    value=st.floats(-1e9, 1e9).filter(lambda value: value == 0 or abs(value) > 1e-280),
     written=st.tuples(st.sampled_from(sorted(METRES)), st.sampled_from(sorted(NEWTONS))),
     declared=st.tuples(st.sampled_from(sorted(METRES)), st.sampled_from(sorted(NEWTONS))),
     power=st.sampled_from([1, 2, 3]),
