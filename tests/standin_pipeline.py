@@ -34,6 +34,7 @@ def run(
     progress: Progress,
     pictures: int = 6,
     most_dofs: int | None = None,
+    seconds: float = 0.0,
     shared: Any = None,
     memory: float | None = None,
 ) -> dict[str, Any]:

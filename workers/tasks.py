@@ -56,6 +56,7 @@ from workers.tallies import Stopwatch
 REPORT_EVERY = 0.2  # shortest time between two reports of the same stage [s]
 REPORT_AGAIN = 30.0  # after Redis did not answer [s]
 UNHEARD = object()  # stands for a stage that Redis did not take
+MESHES_SHARE = 0.5  # of the time limit, for all meshes of an adaptive run
 LOOK_EVERY = 1.0  # between two looks whether the job was cancelled [s]
 
 OUT_OF_TIME = (
@@ -146,6 +147,7 @@ def _attempt(
                 progress=_reporter(store, queue, job_id, watch),
                 pictures=settings.pictures,
                 most_dofs=settings.most_dofs,
+                seconds=MESHES_SHARE * settings.time_limit,
                 shared=shared,
                 memory=settings.memory_limit if settings.large_jobs == "iterate" else None,
             )
