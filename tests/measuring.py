@@ -1,7 +1,7 @@
 """What the benchmarks share: the child process, ratios of paired runs, and the printed rows.
 
 Goals are goals, not limits: what a shared machine does to a ratio must not fail a build, so only
-twice the goal does.
+an order of magnitude beyond the goal does. A missed goal is printed beside what was measured.
 """
 
 import json
@@ -26,7 +26,7 @@ CHILD = Path(__file__).parent / "benchmarks" / "measure_job.py"
 LONG = os.environ.get("BENCHMARKS") == "long"
 HAS_PARDISO = find_spec("pypardiso") is not None
 ROUNDS = 5
-ROOM = 2.0  # over the goal before a test fails
+ROOM = 10.0  # beyond the goal before a test fails
 
 
 def in_child(**order: Any) -> dict[str, Any]:
@@ -51,7 +51,7 @@ def paired(one: Sequence[float], other: Sequence[float]) -> float:
 
 
 def at_most(what: str, measured: float, goal: float, unit: str = "times") -> None:
-    """Print a figure beside its goal; fails at twice the goal."""
+    """Print a figure beside its goal; fails an order of magnitude beyond it."""
     print(f"\n{what}: {measured:.3g} {unit} (goal: at most {goal:g})")
     assert measured < ROOM * goal
 
@@ -62,4 +62,5 @@ def at_least(what: str, measured: float, goal: float, unit: str = "times") -> No
 
 
 def not_measured(what: str, goal: str) -> None:
-    print(f"\n{what}: not measured, needs fishplate[mkl] (goal: {goal})")
+    missing = "BENCHMARKS=long" if HAS_PARDISO else "fishplate[mkl]"
+    print(f"\n{what}: not measured, needs {missing} (goal: {goal})")
