@@ -5,6 +5,7 @@ from werkzeug.middleware.proxy_fix import ProxyFix
 
 from api import (
     access,
+    batches,
     catalogue,
     checks,
     docs,
@@ -24,6 +25,7 @@ from api.preferences import WaitingRoom
 from api.responses import CautiousJSON
 from api.services import KEY, Services
 from workers.audit import Audit
+from workers.preflight import Foresight
 from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
@@ -32,6 +34,7 @@ from workers.tokens import Tokens
 BLUEPRINTS = (
     jobs.blueprint,
     checks.blueprint,
+    batches.blueprint,
     results.blueprint,
     catalogue.blueprint,
     health.blueprint,
@@ -59,6 +62,7 @@ def create_app(settings: Settings | None = None) -> Flask:
         WaitingRoom(settings.api_threads // 2),
         Tokens(settings.store),
         Audit(settings.store),
+        Foresight(),
     )
     packing.register(app)
     api = Api(app, spec_kwargs={"info": {"description": ABOUT}})

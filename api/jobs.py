@@ -33,7 +33,6 @@ from workers.document.job import JobSchema
 from workers.document.read import read_document
 from workers.errors import UnknownJobError
 from workers.model_hash import model_hash
-from workers.preflight import foresee
 from workers.record import RUNNING, Record
 from workers.sizes import check_size
 
@@ -84,7 +83,8 @@ def submit(query: dict[str, Any]) -> Any:
     document = read_document_bytes(flask.request, services().settings.body_bytes)
     job = read_document(document)
     check_size(job, services().settings)
-    foreseen = foresee(job)
+    model = model_hash(job)
+    foreseen = services().foresight.foresee(job, model)
     require_memory(job, foreseen)
     record, created = services().store.accept(
         document,
@@ -94,7 +94,7 @@ def submit(query: dict[str, Any]) -> Any:
         workspace=asks.workspace,
         owner=asks.name,
         priority=choose_line(query.get("priority"), job, foreseen.mesh, asks),
-        model=model_hash(job),
+        model=model,
     )
     if created:
         note(SUBMITTED, record)

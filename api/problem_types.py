@@ -82,6 +82,15 @@ NOTHING_OF_THAT_NAME = ProblemType(
     "unknown-name", 404, "The job has nothing of that name",
     "The job has no case, combination, quantity or table of this name; `available` lists them.",
 )  # fmt: skip
+UNKNOWN_BATCH = ProblemType(
+    "unknown-batch", 404, "There is no such batch",
+    "No job has this label; labels are given in the job documents.",
+)  # fmt: skip
+NOTHING_JOINT = ProblemType(
+    "nothing-joint", 409, "The batch has no joint envelope",
+    "A joint envelope needs finished jobs on the same mesh, in the same units. The worst of jobs "
+    "on different meshes is in the answer for the batch itself.",
+)  # fmt: skip
 NOT_FINAL = ProblemType(
     "not-finished", 409, "The job is not finished",
     "Results exist only when the job is finished. Ask for the job with `Prefer: wait=30`.",

@@ -6,6 +6,7 @@ from flask import current_app
 
 from api.preferences import WaitingRoom
 from workers.audit import Audit
+from workers.preflight import Foresight
 from workers.queue import Queue
 from workers.settings import Settings
 from workers.store import Store
@@ -22,6 +23,7 @@ class Services:
     waiting_room: WaitingRoom
     tokens: Tokens
     audit: Audit
+    foresight: Foresight
 
 
 def services() -> Services:

@@ -9,7 +9,7 @@ from collections.abc import Sequence
 from typing import Any, cast
 
 from workers.document.read import load
-from workers.job import OutlineGeometry
+from workers.geometry import OutlineGeometry
 
 Json = dict[str, Any]
 Place = Sequence[float]

@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 from hypothesis import strategies as st
 
+from workers import geometry as shapes
 from workers import job as parts
 
 SIDE, HOLE, REGION, POINT = "edge (north)", "pin-hole #1", "ärmel", "точка 2"
@@ -59,16 +60,16 @@ def material(name: str) -> st.SearchStrategy[parts.Material]:
 
 
 MATERIALS = st.fixed_dictionaries({name: material(name) for name in (STEEL, OTHER)})
-CIRCLE = st.builds(parts.CircleShape, VECTOR, POSITIVE)
+CIRCLE = st.builds(shapes.CircleShape, VECTOR, POSITIVE)
 POINTS = st.fixed_dictionaries({POINT: VECTOR})
 
 
-def loop(*names: str | None) -> st.SearchStrategy[tuple[parts.Vertex, ...]]:
+def loop(*names: str | None) -> st.SearchStrategy[tuple[shapes.Vertex, ...]]:
     """A closed loop; its first vertex has the first name for its side."""
     name = st.sampled_from(names)
-    first = st.builds(parts.Vertex, at=VECTOR, side=st.just(names[0]), through=maybe(VECTOR))
-    other = st.builds(parts.Vertex, at=VECTOR, side=name) | st.builds(
-        parts.Vertex, at=VECTOR, fillet=POSITIVE, fillet_side=name
+    first = st.builds(shapes.Vertex, at=VECTOR, side=st.just(names[0]), through=maybe(VECTOR))
+    other = st.builds(shapes.Vertex, at=VECTOR, side=name) | st.builds(
+        shapes.Vertex, at=VECTOR, fillet=POSITIVE, fillet_side=name
     )
     return st.tuples(first, some(other, 2, 4)).map(lambda pair: (pair[0], *pair[1]))
 
@@ -76,24 +77,24 @@ def loop(*names: str | None) -> st.SearchStrategy[tuple[parts.Vertex, ...]]:
 SHAPE = CIRCLE | loop(None)
 
 
-def region(shape: st.SearchStrategy[Any]) -> st.SearchStrategy[tuple[parts.Region, ...]]:
+def region(shape: st.SearchStrategy[Any]) -> st.SearchStrategy[tuple[shapes.Region, ...]]:
     stuff = maybe(st.just(OTHER))
-    return st.builds(parts.Region, st.just(REGION), shape, POSITIVE, stuff).map(lambda r: (r,))
+    return st.builds(shapes.Region, st.just(REGION), shape, POSITIVE, stuff).map(lambda r: (r,))
 
 
 OUTLINE = st.builds(
-    parts.OutlineGeometry,
+    shapes.OutlineGeometry,
     loop(SIDE, None),
-    st.builds(parts.Hole, st.just(HOLE), SHAPE).map(lambda hole: (hole,)),
+    st.builds(shapes.Hole, st.just(HOLE), SHAPE).map(lambda hole: (hole,)),
     region(SHAPE),
     POINTS,
 )
 
 
-def patch(name: str, inside: str | None) -> st.SearchStrategy[parts.Patch]:
+def patch(name: str, inside: str | None) -> st.SearchStrategy[shapes.Patch]:
     ratio, division = st.floats(1e-3, 1e3), st.integers(1, 1000)
     return st.builds(
-        parts.Patch,
+        shapes.Patch,
         st.just(name),
         st.tuples(*[VECTOR] * 4),
         st.tuples(division, division),
@@ -105,22 +106,22 @@ def patch(name: str, inside: str | None) -> st.SearchStrategy[parts.Patch]:
 
 
 PATCHES = st.builds(
-    parts.PatchGeometry,
+    shapes.PatchGeometry,
     st.tuples(patch("one", REGION), patch("two", None)),
     region(st.none()),
     POINTS,
 )
 
 
-def block(element: str, width: int, inside: str | None) -> st.SearchStrategy[parts.MeshBlock]:
+def block(element: str, width: int, inside: str | None) -> st.SearchStrategy[shapes.MeshBlock]:
     row = st.tuples(*[st.integers(0, NODES - 1)] * width)
     array = st.lists(row, min_size=1, max_size=4).map(lambda rows: np.array(rows, np.int32))
-    return st.builds(parts.MeshBlock, st.just(element), array, st.just(inside))
+    return st.builds(shapes.MeshBlock, st.just(element), array, st.just(inside))
 
 
 NODE = st.integers(0, NODES - 1)
 MESH = st.builds(
-    parts.MeshGeometry,
+    shapes.MeshGeometry,
     st.lists(VECTOR, min_size=NODES, max_size=NODES + 3).map(lambda xy: np.array(xy, np.float64)),
     st.tuples(block("Q8", 8, REGION), block("T3", 3, None)),
     st.fixed_dictionaries({SIDE: some(st.tuples(NODE, NODE) | st.tuples(NODE, NODE, NODE), 1, 4)}),

@@ -13,17 +13,8 @@ from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.mesh import PLATE, Block, Mesh
 from workers.analysis.plane_stress import constitutive, principal, shear_max, von_mises
-from workers.job import (
-    Job,
-    Load,
-    LoadCase,
-    Material,
-    MeshGeometry,
-    Plate,
-    Region,
-    Support,
-    Units,
-)
+from workers.geometry import MeshGeometry, Region
+from workers.job import Job, Load, LoadCase, Material, Plate, Support, Units
 
 Map = Callable[[NDArray, NDArray], tuple[NDArray, NDArray]]
 E, NU = 210_000.0, 0.3

@@ -9,18 +9,8 @@ import numpy as np
 
 from elements.registry import get
 from workers.analysis.mesh import PLATE, Block, Mesh
-from workers.job import (
-    Combination,
-    Job,
-    Load,
-    LoadCase,
-    Material,
-    PatchGeometry,
-    Plate,
-    Region,
-    Support,
-    Units,
-)
+from workers.geometry import PatchGeometry, Region
+from workers.job import Combination, Job, Load, LoadCase, Material, Plate, Support, Units
 
 ELEMENTS = ("T3", "Q4", "T6", "Q8")
 MIXED = ("T3+Q4", "T6+Q8")

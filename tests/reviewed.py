@@ -12,18 +12,8 @@ from tests.plates import grid
 from workers.analysis.mesh import Mesh
 from workers.analysis.quality import mesh_quality
 from workers.cautions import STANDING, Caution
-from workers.job import (
-    Job,
-    Limits,
-    LoadCase,
-    Material,
-    Named,
-    PatchGeometry,
-    Plate,
-    Pressure,
-    Support,
-    Units,
-)
+from workers.geometry import PatchGeometry
+from workers.job import Job, Limits, LoadCase, Material, Named, Plate, Pressure, Support, Units
 from workers.review.review import review
 
 LENGTH, HEIGHT, THICKNESS = 200.0, 100.0, 5.0

@@ -47,7 +47,7 @@ def run(
         path = folder / name
         path.parent.mkdir(parents=True, exist_ok=True)
         path.write_bytes(document)
-    return {"cautions": [{"code": "made-up"}], "pictures": pictures}
+    return {"cautions": [{"code": "made-up"}], "units": {}, "mesh": {}, "envelope": {}}
 
 
 def write_fields(folder: Path, case: str) -> Path:

@@ -12,10 +12,12 @@ import orjson
 import pytest
 
 from tests.job_documents import strip
+from workers import preflight as preflight_module
 from workers.analysis.mesh import Mesh
 from workers.document.read import read_document
 from workers.errors import DocumentError
-from workers.preflight import preflight
+from workers.model_hash import model_hash
+from workers.preflight import MODELS, Foresight, preflight
 
 Document = dict[str, Any]
 Change = Callable[[Document], None]
@@ -439,3 +441,51 @@ def test_a_wrong_target_in_many_cases_is_reported_in_each() -> None:
     changes = {"/load_cases": {"one": [load], "two": [load, load]}}
     places = [place for place, _ in faults_of(changed(bracket(), changes))]
     assert places == [f"/load_cases/{name}/on" for name in ("one/0", "two/0", "two/1")]
+
+
+# --- models that come again -----------------------------------------------------------------------
+
+
+def foresee(foresight: Foresight, document: Document) -> Mesh | None:
+    job = read_document(orjson.dumps(document))
+    return foresight.foresee(job, model_hash(job)).mesh
+
+
+def test_a_model_that_comes_again_is_not_meshed_again(monkeypatch: pytest.MonkeyPatch) -> None:
+    foresight = Foresight()
+    first = foresee(foresight, strip())
+    monkeypatch.setattr(preflight_module, "mesh_directly", lambda *_: pytest.fail("meshed"))
+    assert foresee(foresight, strip(force=1.0)) is first
+
+
+def test_loads_and_requests_of_a_known_model_are_looked_over_all_the_same() -> None:
+    foresight = Foresight()
+    foresee(foresight, strip())
+    lost = strip()
+    lost["load_cases"]["pull"] = [{"on": {"box": [[500, 0], [600, 1]]}, "total_force": [1, 0]}]
+    lost["requests"] = {"probes": {"far": [1e4, 0]}}
+    with pytest.raises(DocumentError) as known:
+        foresee(foresight, lost)
+    with pytest.raises(DocumentError) as unknown:
+        foresee(Foresight(), lost)
+    assert known.value.faults == unknown.value.faults
+    assert len(known.value.faults) == 2
+    assert foresee(foresight, strip()) is not None
+
+
+def test_another_model_is_another_mesh() -> None:
+    foresight = Foresight()
+    meshes = [foresee(foresight, strip(length=float(length))) for length in (100, 200)]
+    lengths = [mesh.nodes[:, 0].max() for mesh in meshes if mesh is not None]
+    assert lengths == [100.0, 200.0]
+
+
+def test_only_the_last_models_are_remembered() -> None:
+    foresight = Foresight()
+    first = foresee(foresight, strip())
+    for length in range(MODELS - 1):
+        foresee(foresight, strip(length=200.0 + length))
+    assert foresee(foresight, strip()) is first  # used again: now the last
+    for length in range(MODELS):
+        foresee(foresight, strip(length=300.0 + length))
+    assert foresee(foresight, strip()) is not first

@@ -17,16 +17,17 @@ from importlib.metadata import version
 from pathlib import Path
 from typing import Any
 
-import numpy as np
 import orjson
 
-from elements import registry
-from workers.analysis.mesh import Block, Mesh
+from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.build import mesh_job
-from workers.job import Hole, Job, OutlineGeometry, Region, Vertex
+from workers.geometry import Hole, OutlineGeometry, Region, Vertex
+from workers.job import Job
+from workers.mesh_file import read_mesh, write_mesh
 
 FORMAT = 1  # of the files, and of what goes into the digest
 LIMIT = 512 * 1024**2  # bytes of all files
+UNFINISHED = "new-"  # begins the name of a file that is being written
 ABANDONED = 3600.0  # age of a half-written file that nobody writes any more [s]
 
 log = logging.getLogger(__name__)
@@ -52,8 +53,7 @@ class MeshCache:
 
     def _read(self, path: Path) -> Mesh | None:
         try:
-            with path.open("rb") as file, np.load(file, allow_pickle=False) as arrays:
-                mesh = _mesh(arrays)
+            mesh = read_mesh(path)
             os.utime(path)  # used just now
         except FileNotFoundError:
             return None
@@ -67,15 +67,15 @@ class MeshCache:
     def _write(self, path: Path, mesh: Mesh) -> None:
         try:
             self.folder.mkdir(parents=True, exist_ok=True)
-            with tempfile.NamedTemporaryFile(dir=self.folder, suffix=".new", delete=False) as file:
-                scratch = Path(file.name)
-                try:
-                    np.savez(file, **_arrays(mesh))
-                    file.close()
-                    scratch.replace(path)
-                except BaseException:
-                    scratch.unlink(missing_ok=True)
-                    raise
+            descriptor, name = tempfile.mkstemp(dir=self.folder, prefix=UNFINISHED, suffix=".npz")
+            os.close(descriptor)
+            scratch = Path(name)
+            try:
+                write_mesh(scratch, mesh)
+                scratch.replace(path)
+            except BaseException:
+                scratch.unlink(missing_ok=True)
+                raise
             self._make_room()
         except OSError as error:
             log.warning("mesh %s is not kept: %s", path.name, error)
@@ -86,7 +86,7 @@ class MeshCache:
         total = 0
         for path, used, size in found:
             total += size
-            is_abandoned = path.suffix == ".new" and used < time.time() - ABANDONED
+            is_abandoned = path.name.startswith(UNFINISHED) and used < time.time() - ABANDONED
             if total > self.limit or is_abandoned:
                 path.unlink(missing_ok=True)
 
@@ -127,38 +127,3 @@ def _shaped(part: Hole | Region) -> list[Any]:
 
 def _vertex(vertex: Vertex) -> list[Any]:
     return [vertex.at, vertex.side, vertex.through, vertex.fillet, vertex.fillet_side]
-
-
-# --- a mesh as arrays ---------------------------------------------------------------------------
-
-
-def _arrays(mesh: Mesh) -> dict[str, Any]:
-    facets = list(mesh.sides.values())
-    names = {
-        "elements": [block.element.name for block in mesh.blocks],
-        "regions": mesh.regions,
-        "sides": list(mesh.sides),
-        "points": dict(mesh.points),
-    }
-    arrays = {
-        "names": np.frombuffer(orjson.dumps(names), np.uint8),
-        "nodes": mesh.nodes,
-        "facets": np.concatenate([np.empty((0, 3), np.int32), *facets]),
-        "facet_counts": np.array([len(rows) for rows in facets], np.int64),
-    }
-    for number, block in enumerate(mesh.blocks):
-        arrays[f"connectivity {number}"] = block.connectivity
-        arrays[f"region {number}"] = block.region
-    return arrays
-
-
-def _mesh(arrays: Any) -> Mesh:
-    names = orjson.loads(arrays["names"].tobytes())
-    blocks = tuple(
-        Block(registry.get(name), arrays[f"connectivity {number}"], arrays[f"region {number}"])
-        for number, name in enumerate(names["elements"])
-    )
-    ends = np.cumsum(arrays["facet_counts"])
-    facets = np.split(arrays["facets"], ends[:-1]) if len(ends) else []
-    sides = dict(zip(names["sides"], facets, strict=True))
-    return Mesh(arrays["nodes"], blocks, tuple(names["regions"]), sides, names["points"])

@@ -9,7 +9,8 @@ from dataclasses import replace
 
 import numpy as np
 
-from workers.job import Geometry, Job, MeshGeometry
+from workers.geometry import Geometry, MeshGeometry
+from workers.job import Job
 
 
 def model_hash(job: Job) -> str | None:

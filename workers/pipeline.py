@@ -37,8 +37,9 @@ from workers.cautions import Caution
 from workers.document.read import read_document
 from workers.errors import MeshError
 from workers.filing import Filing, Json, Progress, Work, draw_line
-from workers.job import Job, OutlineGeometry
-from workers.mesh_file import read_mesh, write_mesh
+from workers.geometry import OutlineGeometry
+from workers.job import Job
+from workers.mesh_file import mesh_digest, read_mesh, write_mesh
 from workers.outputs import preview
 from workers.outputs.names import SHEET
 from workers.outputs.sheet import write_sheet
@@ -121,6 +122,7 @@ def run(
                 "stress": job.units.stress,
             },
             **results,
+            "mesh": {**results["mesh"], "digest": mesh_digest(solved.mesh)},
             "cautions": [caution.as_json() for caution in cautions],
         }
         filed = Filing(folder, work, cautions, results)
@@ -195,7 +197,7 @@ def write_fields(folder: Path, state: str) -> Path:
     KeyError   the job has no such state.
     """
     with one_thread():
-        return _reopen(folder).write_fields(state)
+        return reopen(folder).write_fields(state)
 
 
 def render(folder: Path, state: str, quantity: str) -> Path:
@@ -207,7 +209,7 @@ def render(folder: Path, state: str, quantity: str) -> Path:
     PicturesUnavailableError   this machine cannot render; the message says why.
     """
     with one_thread():
-        return _reopen(folder).draw(state, quantity)
+        return reopen(folder).draw(state, quantity)
 
 
 def write_envelope(folder: Path, kind: str) -> Path:
@@ -221,7 +223,7 @@ def write_envelope(folder: Path, kind: str) -> Path:
     PicturesUnavailableError   this machine cannot render; the message says why.
     """
     with one_thread():
-        filing = _reopen(folder)
+        filing = reopen(folder)
         if kind == "fields":
             return filing.write_envelope()
         if kind == "nodes":
@@ -248,12 +250,17 @@ def render_sheet(folder: Path, target: Path) -> Path:
     return write_sheet(job, results, folder, target)
 
 
-def _reopen(folder: Path) -> Filing:
-    """A finished job from its folder: document, mesh and displacements say everything."""
+def reopen(folder: Path, mesh: Mesh | None = None) -> Filing:
+    """A finished job from its folder: document, mesh and displacements say everything.
+
+    mesh : where it is known already
+    """
     job = read_document((folder / DOCUMENT).read_bytes())
     results = orjson.loads((folder / RESULTS).read_bytes())
-    kept = folder / MESH
-    model = build_model(job, read_mesh(kept) if kept.exists() else mesh_job(job))
+    if mesh is None:
+        kept = folder / MESH
+        mesh = read_mesh(kept) if kept.exists() else mesh_job(job)
+    model = build_model(job, mesh)
     displacement = np.load(folder / DISPLACEMENTS, mmap_mode="r")
     formed = None
     if (folder / ENVELOPE).exists():

@@ -5,6 +5,8 @@ requests on it, and looks for free motions. NumPy and shapely only, so that the 
 once. An outline is checked as a drawing; what finds no place on its mesh shows in a worker.
 """
 
+from collections import OrderedDict
+from threading import Lock
 from typing import NamedTuple
 
 from elements.registry import get
@@ -18,7 +20,11 @@ from workers.analysis.motions import free_motions
 from workers.analysis.request_places import request_faults
 from workers.analysis.selection import Finder
 from workers.errors import DocumentError, Fault, MechanismError, MeshError
-from workers.job import Job, OutlineGeometry
+from workers.geometry import OutlineGeometry
+from workers.job import Job
+
+MODELS = 4  # remembered
+MOST_REMEMBERED = 50_000  # elements of a model: some 50 MB with all that a mesh makes of itself
 
 
 class Foreseen(NamedTuple):
@@ -37,8 +43,10 @@ def preflight(job: Job) -> Mesh | None:
     return foresee(job).mesh
 
 
-def foresee(job: Job) -> Foreseen:
+def foresee(job: Job, known: Foreseen | None = None) -> Foreseen:
     """Look a job over.
+
+    known : what was foreseen of a sound job of the same model (`model_hash.py`)
 
     Raises
     ------
@@ -46,6 +54,10 @@ def foresee(job: Job) -> Foreseen:
         supports, loads, requests and free motions.
     UnknownElementError   the element type is not installed.
     """
+    if known is not None:
+        if known.mesh is not None and (faults := placing_faults(job, known.mesh)):
+            raise DocumentError(faults)
+        return known
     if isinstance(job.geometry, OutlineGeometry):
         drawing, element = draw(job.geometry), get(job.meshing.element)
         if too_many := plan_faults(drawing, element, job.meshing):
@@ -58,6 +70,28 @@ def foresee(job: Job) -> Foreseen:
     if faults := placing_faults(job, mesh):
         raise DocumentError(faults)
     return Foreseen(mesh, mesh.element_count)
+
+
+class Foresight:
+    """Looks jobs over and remembers the last few models: a script sends one hundreds of times."""
+
+    def __init__(self) -> None:
+        self._seen: OrderedDict[str, Foreseen] = OrderedDict()
+        self._lock = Lock()
+
+    def foresee(self, job: Job, model: str | None) -> Foreseen:
+        """As the function; model : the job's `model_hash`."""
+        if model is None:
+            return foresee(job)
+        with self._lock:
+            known = self._seen.pop(model, None)
+        found = foresee(job, known)
+        if found.elements <= MOST_REMEMBERED:
+            with self._lock:
+                self._seen[model] = found
+                while len(self._seen) > MODELS:
+                    self._seen.popitem(last=False)
+        return found
 
 
 def placing_faults(job: Job, mesh: Mesh) -> list[Fault]:

@@ -36,6 +36,7 @@ LINES = {priority: f"fishplate-{priority}" for priority in PRIORITIES}
 
 RUN_JOB = "workers.tasks.run_job"
 MAKE_ARTEFACT = "workers.tasks.make_artefact"
+MAKE_BATCH_FILE = "workers.tasks.make_batch_file"
 PROGRESS = "fishplate:progress:"
 FOLLOWER = "fishplate:follower:"
 
@@ -200,10 +201,16 @@ class Queue:
 
         When the answer is "done" the file is in the results folder, whole.
         """
-        answer = self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait)
-        if answer.state == "done" and not answer.value["ok"]:
-            return Answer("failed", reason=answer.value["reason"], error=answer.value["error"])
-        return answer
+        return _unpacked(self.ask(MAKE_ARTEFACT, job_id, kind, case, quantity, wait=wait))
+
+    def make_batch_file(
+        self, label: str, workspace: str | None, digest: str, kind: str, *, wait: float = 0.0
+    ) -> Answer:
+        """Have a file of the joint envelope of a batch made, for its jobs that are finished now.
+
+        digest : of these jobs; kind : "fields", "nodes", or a measure
+        """
+        return _unpacked(self.ask(MAKE_BATCH_FILE, label, workspace, digest, kind, wait=wait))
 
     def ask(self, function: str, *arguments: Any, wait: float = 0.0) -> Answer:
         """Have a worker call a function ahead of all jobs; wait that many seconds for its answer.
@@ -263,6 +270,13 @@ class Queue:
         """Number of entries in line: questions, and jobs by priority."""
         lines = {"questions": self._questions, **self._lines}
         return {name: line.count for name, line in lines.items()}
+
+
+def _unpacked(answer: Answer) -> Answer:
+    """The answer of a task that says by itself whether it has failed."""
+    if answer.state == "done" and not answer.value["ok"]:
+        return Answer("failed", reason=answer.value["reason"], error=answer.value["error"])
+    return answer
 
 
 def _description(record: Record) -> str:

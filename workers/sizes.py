@@ -8,7 +8,8 @@ from collections.abc import Iterator
 
 from elements.registry import get
 from workers.errors import Fault, LimitError
-from workers.job import Job, MeshGeometry, Patch, PatchGeometry
+from workers.geometry import MeshGeometry, Patch, PatchGeometry
+from workers.job import Job
 from workers.settings import Settings, variable
 
 

@@ -10,6 +10,7 @@
     workspaces/NAME/DAY/ID     index: the jobs of a workspace
     lines/NAME/DAY/ID          index: those of them that are unfinished
     interactive/WHO/DAY/ID     index: unfinished interactive jobs of an owner in a workspace
+    batches/DIGEST             joint files of the finished jobs of a label, made when asked for
     keys/DIGEST                the job that an Idempotency-Key stands for, within a workspace
     incoming/ID, removed/ID    on the way in and out
     tokens.json, audit/        who may do what (tokens.py), who did what (audit.py)
@@ -30,6 +31,7 @@ from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 
 from workers import durable
+from workers.batch import batch_folder
 from workers.errors import KeyConflictError, NotFinalError, PinnedError, UnknownJobError
 from workers.record import (
     BULK,
@@ -274,6 +276,8 @@ class Store(StoreReader):
             durable.make_folder(self._removed)
             durable.move(folder, removed)
             self.indexes.drop(record)
+            if record.label is not None:  # what was joint holds its numbers as well
+                shutil.rmtree(batch_folder(self.root, record.label), ignore_errors=True)
             if record.key:
                 (self._keys / record.key).unlink(missing_ok=True)
             shutil.rmtree(removed, ignore_errors=True)

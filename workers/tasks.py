@@ -17,7 +17,9 @@ from typing import Any
 import redis
 
 from elements.errors import FishplateError
-from workers import pipeline
+from workers import durable, pipeline
+from workers.batch import Batch, outcome_of, read_batch
+from workers.batch_envelope import form_joint, write_joint
 from workers.errors import (
     AnalysisError,
     DocumentError,
@@ -152,7 +154,7 @@ def _attempt(
                 memory=settings.memory_limit if settings.large_jobs == "iterate" else None,
             )
         watch.enter(None)
-        record = store.publish(job_id, staging, results["cautions"], results.get("outcome"))
+        record = store.publish(job_id, staging, results["cautions"], outcome_of(results))
     except (TransitionError, UnknownJobError):
         raise
     except (Exception, TimeLimitError) as error:
@@ -244,6 +246,37 @@ def make_artefact(job_id: str, kind: str, case: str, quantity: str | None = None
         log.warning("no %s of job %s: %s", kind, job_id, error, exc_info=is_ours(error))
         return refusal(error, explain(error, settings)["reason"])
     return {"ok": True}
+
+
+def make_batch_file(label: str, workspace: str | None, digest: str, kind: str) -> dict[str, Any]:
+    """Make one file of the joint envelope of a batch's finished jobs; returns as above.
+
+    digest : of the jobs meant; should more have finished meanwhile, it is made for all of these.
+    """
+    settings = Settings.from_environment()
+    store = Store(settings.store)
+    try:
+        with time_limit(ANSWER_LIMIT), memory_limit(settings.memory_limit):
+            _make_joint(store, read_batch(store, label, workspace), kind)
+    except KeyError as error:
+        return refusal(error, f"the batch has nothing of the name {error}")
+    except (Exception, TimeLimitError) as error:
+        log.warning("no %s of batch %s: %s", kind, label, error, exc_info=is_ours(error))
+        return refusal(error, explain(error, settings)["reason"])
+    return {"ok": True}
+
+
+def _make_joint(store: Store, batch: Batch, kind: str) -> None:
+    """Make the file, and take out what was made for fewer jobs."""
+    place = batch.file(store.root, kind)
+    with store.scratch() as scratch:
+        durable.make_folder(place.parent)
+        joint = form_joint(store, batch, place.parent)
+        write_joint(joint, batch, kind, scratch / place.name)
+        (scratch / place.name).replace(place)
+    for older in place.parent.parent.iterdir():
+        if older != place.parent:
+            shutil.rmtree(older, ignore_errors=True)
 
 
 def refusal(error: BaseException, reason: str) -> dict[str, Any]:

@@ -20,7 +20,8 @@ from workers.analysis.refiner import COARSER, refiner
 from workers.analysis.solved import Solved, solve_on
 from workers.document.read import read_document
 from workers.errors import Fault, MeshError
-from workers.job import Job, OutlineGeometry
+from workers.geometry import OutlineGeometry
+from workers.job import Job
 
 Json = dict[str, Any]
 TARGET = 0.02

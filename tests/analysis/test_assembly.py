@@ -7,7 +7,7 @@ from tests.plates import ELEMENTS, MIXED, grid, plate_job, warp
 from workers.analysis.assembly import NodePairs, assemble_stiffness, element_blocks, pair_positions
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model, build_model
-from workers.job import Region
+from workers.geometry import Region
 
 
 def _dense(model: Model) -> np.ndarray:

@@ -8,6 +8,7 @@ from workers.analysis.cuts import CutForces, cut_forces
 from workers.analysis.section import find_section
 from workers.analysis.solution import Solution, solve
 from workers.errors import MeshError
+from workers.geometry import Region
 from workers.job import (
     Acceleration,
     Bearing,
@@ -18,7 +19,6 @@ from workers.job import (
     Named,
     PointForce,
     Pressure,
-    Region,
     Shear,
     Spin,
     Spring,

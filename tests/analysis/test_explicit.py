@@ -11,7 +11,7 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.explicit import mesh_explicit
 from workers.analysis.meshing.shape import shape_faults
 from workers.errors import Fault, MeshError
-from workers.job import MeshBlock, MeshGeometry, Region
+from workers.geometry import MeshBlock, MeshGeometry, Region
 
 NODES = "/geometry/mesh/nodes"
 BLOCKS = "/geometry/mesh/blocks"

@@ -11,6 +11,7 @@ from workers.analysis.loads.cases import Loads, resolve_loads
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import build_model
 from workers.errors import MeshError
+from workers.geometry import Region
 from workers.job import (
     Acceleration,
     Bearing,
@@ -23,7 +24,6 @@ from workers.job import (
     OnCircle,
     PointForce,
     Pressure,
-    Region,
     Segment,
     Shear,
     Spin,

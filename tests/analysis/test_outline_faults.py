@@ -366,6 +366,24 @@ def test_all_faults_are_told_at_once() -> None:
     ]
 
 
+@pytest.mark.parametrize(
+    "parts",
+    [
+        {"holes": [hole(f"pin {i}", 60, 50, 20) for i in range(2000)]},
+        {"holes": [hole(f"pin {i}", 60, 50, 20 + i * 1e-7) for i in range(2000)]},
+        {"holes": [hole(f"pin {i}", 60 + i / 100, 50, 20) for i in range(2000)]},
+        {"regions": [region(f"pad {i}", circle(60 + i / 100, 50, 20)) for i in range(2000)]},
+        {"points": {f"gauge {i}": [60 + i * 1e-7, 50] for i in range(5000)}},
+    ],
+    ids=["same holes", "nearly same holes", "crossing holes", "crossing regions", "points"],
+)
+def test_thousands_of_things_in_one_place_are_refused_in_bounded_work(parts: Json) -> None:
+    """Millions of pairs, of which a few are told."""
+    with pytest.raises(DocumentError) as caught:
+        draw(drawn(plate(**parts)))
+    assert 1 <= len(caught.value.faults) <= 30
+
+
 @pytest.mark.parametrize("size", [1e-3, 1.0, 25.4, 1e6])
 def test_what_is_too_close_scales_with_the_plate(size: float) -> None:
     """A gap of half the tolerance is refused, one of twice is not, in any unit of length."""

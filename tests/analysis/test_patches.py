@@ -12,7 +12,7 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.curves import NoArcError, arc_through
 from workers.analysis.meshing.patches import graded, mesh_patches
 from workers.errors import Fault, MeshError
-from workers.job import Patch, PatchGeometry, Region, Vector
+from workers.geometry import Patch, PatchGeometry, Region, Vector
 
 
 def rectangle(

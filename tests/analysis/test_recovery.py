@@ -12,7 +12,7 @@ from workers.analysis.mesh import Block, Mesh
 from workers.analysis.model import build_model
 from workers.analysis.patch_recovery import border_corners, recovery_operator, sample_positions
 from workers.analysis.recovery import Recovery, raw_stress
-from workers.job import Region
+from workers.geometry import Region
 
 Field = Callable[[np.ndarray, np.ndarray], np.ndarray]
 

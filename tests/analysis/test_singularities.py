@@ -10,17 +10,8 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.model import build_model
 from workers.analysis.singularities import SingularPlace, find_singular_places
 from workers.analysis.turns import turns
-from workers.job import (
-    Load,
-    Named,
-    Nodes,
-    PointForce,
-    Region,
-    Segment,
-    Spring,
-    Support,
-    Traction,
-)
+from workers.geometry import Region
+from workers.job import Load, Named, Nodes, PointForce, Segment, Spring, Support, Traction
 
 ROLLER = Support("wall", Named("left"), ux=0.0)
 FIXED = Support("wall", Named("left"), ux=0.0, uy=0.0)

@@ -11,6 +11,7 @@ from workers.analysis.mesh import Block, Mesh
 from workers.analysis.solution import Solution, solve
 from workers.analysis.solver import Plan, SuperLUFactor
 from workers.errors import AnalysisError, MechanismError
+from workers.geometry import Region
 from workers.job import (
     Acceleration,
     Bearing,
@@ -20,7 +21,6 @@ from workers.job import (
     Named,
     PointForce,
     Pressure,
-    Region,
     Shear,
     Spin,
     Spring,

@@ -16,12 +16,12 @@ from workers.analysis.recovery import Recovery
 from workers.analysis.solution import solve
 from workers.analysis.summary import mesh_figures, summarise
 from workers.errors import MeshError
+from workers.geometry import Region
 from workers.job import (
     Combination,
     Cut,
     Line,
     Named,
-    Region,
     Requests,
     Support,
     TemperatureChange,

@@ -8,7 +8,8 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.support_rows import side_normals
 from workers.analysis.supports import Supports, resolve_supports
 from workers.errors import MeshError
-from workers.job import Box, Named, Nodes, PointForce, Region, Spring, Support
+from workers.geometry import Region
+from workers.job import Box, Named, Nodes, PointForce, Spring, Support
 
 LEFT, BOTTOM, CORNER = Named("left"), Named("bottom"), Named("SW")
 

@@ -12,7 +12,7 @@ import pytest
 from tests.good_documents import good
 from workers.document.read import load, read_document
 from workers.errors import DocumentError
-from workers.job import MeshGeometry
+from workers.geometry import MeshGeometry
 
 
 def grid(n: int) -> tuple[Any, Any]:

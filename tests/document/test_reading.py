@@ -6,9 +6,11 @@ import numpy as np
 import pytest
 
 from tests.good_documents import good
+from workers import geometry as shapes
 from workers import job as parts
 from workers.document.read import load
-from workers.job import MeshGeometry, OutlineGeometry, PatchGeometry, Units
+from workers.geometry import MeshGeometry, OutlineGeometry, PatchGeometry
+from workers.job import Units
 
 
 def test_units_are_converted_to_the_declared_ones() -> None:
@@ -19,7 +21,7 @@ def test_units_are_converted_to_the_declared_ones() -> None:
     assert (steel.youngs_modulus, steel.density) == (210_000, 7.85e-9)
     assert (steel.yield_strength, steel.thermal_expansion) == (355, 1.2e-5)
     assert isinstance(job.geometry, OutlineGeometry)
-    assert job.geometry.holes[0].shape == parts.CircleShape((80, 90), 25)
+    assert job.geometry.holes[0].shape == shapes.CircleShape((80, 90), 25)
     assert job.meshing.sizes == {"pin": 2, "boss": 4, "tip": 1, "round": 3}
 
 

@@ -13,6 +13,7 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.model import build_model
 from workers.cautions import STANDING
 from workers.errors import MeshError
+from workers.geometry import Region
 from workers.job import (
     Acceleration,
     Bearing,
@@ -25,7 +26,6 @@ from workers.job import (
     Nodes,
     PointForce,
     Pressure,
-    Region,
     Shear,
     Spin,
     Spring,

@@ -11,7 +11,7 @@ from tests.pictures import Picture, like_ink
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.cautions import STANDING, Caution
-from workers.job import Region
+from workers.geometry import Region
 from workers.outputs.drawing.palette import DIVERGING, SEQUENTIAL
 from workers.outputs.preview import QUANTITIES, render_deformed, render_field
 

@@ -23,7 +23,7 @@ from tests.output_samples import (
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.cautions import STANDING
-from workers.job import Region
+from workers.geometry import Region
 from workers.outputs.vtu import write_fields
 
 

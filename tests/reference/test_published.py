@@ -16,14 +16,13 @@ from workers.analysis.meshing.build import mesh_job
 from workers.analysis.recovery import Recovery
 from workers.analysis.solution import Solution, solve
 from workers.analysis.summary import summarise
+from workers.geometry import Patch, PatchGeometry
 from workers.job import (
     Job,
     LoadCase,
     Material,
     Meshing,
     Named,
-    Patch,
-    PatchGeometry,
     Plate,
     Pressure,
     Support,

@@ -6,7 +6,8 @@ import pytest
 
 from tests.plates import grid
 from tests.reviewed import raised, sound_job, sound_mesh, sound_results, steel
-from workers.job import Acceleration, Load, LoadCase, Material, Plate, Region, Units
+from workers.geometry import Region
+from workers.job import Acceleration, Load, LoadCase, Material, Plate, Units
 
 
 def codes_for(**changes: float | None) -> dict:

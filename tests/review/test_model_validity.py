@@ -9,18 +9,17 @@ import pytest
 from tests.plates import grid, ring
 from tests.reviewed import raised, sound_job, sound_mesh
 from workers.analysis.mesh import Mesh
-from workers.job import (
+from workers.geometry import (
     Geometry,
     Hole,
-    Job,
     MeshGeometry,
     OutlineGeometry,
     Patch,
     PatchGeometry,
-    Plate,
     Region,
     Vertex,
 )
+from workers.job import Job, Plate
 from workers.review.features import holes, parts
 
 RECTANGLE = ((0.0, 0.0), (200.0, 0.0), (200.0, 100.0), (0.0, 100.0))

@@ -15,7 +15,8 @@ from tests.reviewed import (
     steel,
     stressed,
 )
-from workers.job import Combination, Limits, Region
+from workers.geometry import Region
+from workers.job import Combination, Limits
 
 NO_LIMITS = Limits()
 

@@ -15,7 +15,8 @@ from workers import mesh_cache
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.build import mesh_job
 from workers.document.read import load
-from workers.job import Job, OutlineGeometry
+from workers.geometry import OutlineGeometry
+from workers.job import Job
 from workers.mesh_cache import MeshCache, digest
 
 
@@ -162,7 +163,7 @@ def test_folder_that_cannot_be_written_costs_only_time(tmp_path: Path, made: lis
 
 def test_half_written_files_of_killed_processes_are_removed(tmp_path: Path) -> None:
     cache = MeshCache(tmp_path)
-    old, young = tmp_path / "old.new", tmp_path / "young.new"
+    old, young = tmp_path / "new-old.npz", tmp_path / "new-young.npz"
     for path in (old, young):
         path.write_bytes(b"half")
     os.utime(old, (0, 0))

@@ -246,7 +246,7 @@ def test_a_failed_job_keeps_its_faults(store: Store) -> None:
     assert store.record(job_id).faults == faults
 
 
-@pytest.mark.parametrize("job_id", ["nothing", "..", new_id()])
+@pytest.mark.parametrize("job_id", ["nothing", "..", new_id()], ids=["word", "path", "id"])
 def test_unknown_jobs_are_named(store: Store, job_id: str) -> None:
     for ask in (store.record, store.document, store.results_path, store.remove):
         with pytest.raises(UnknownJobError, match="there is no job"):

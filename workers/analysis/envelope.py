@@ -76,6 +76,17 @@ class Envelope:
     def from_arrays(cls, arrays: Mapping[str, NDArray]) -> "Envelope":
         return cls({n: arrays[n] for n in WORST}, {n: arrays[n + STATE] for n in WORST})
 
+    def merge(self, other: "Envelope", first: int) -> None:
+        """Take in another envelope, whose states are counted from `first`."""
+        for name, sign in WORST.items():
+            state = (other.state[name] + first).astype(np.int32)
+            if name not in self.value:
+                self.value[name], self.state[name] = other.value[name].copy(), state
+                continue
+            worse = sign * other.value[name] > sign * self.value[name]
+            self.value[name][worse] = other.value[name][worse]
+            self.state[name][worse] = state[worse]
+
     def include(self, columns: range, values: Mapping[str, NDArray]) -> None:
         """Take in the measures (P, k) of some states."""
         for name, sign in WORST.items():

@@ -24,7 +24,8 @@ from workers.analysis.meshing.plan import Plan
 from workers.analysis.meshing.size_field import element_sizes, follow, rings, size_points
 from workers.analysis.nearby import close_pairs
 from workers.analysis.selection import TOLERANCE
-from workers.job import Job, Meshing, OutlineGeometry, PatchGeometry
+from workers.geometry import OutlineGeometry, PatchGeometry
+from workers.job import Job, Meshing
 
 Array = NDArray[np.float64]
 

@@ -11,7 +11,7 @@ from workers.document.mesh import MeshSchema
 from workers.document.record import Record, only_with
 from workers.document.targets import CircleSchema
 from workers.document.units import LENGTH
-from workers.job import (
+from workers.geometry import (
     CircleShape,
     Geometry,
     Hole,

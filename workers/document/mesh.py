@@ -19,7 +19,7 @@ from workers.document.containers import ListOf, MapOf, Part
 from workers.document.fields import Name, Whole
 from workers.document.record import Record
 from workers.document.targets import MOST_NODES
-from workers.job import MeshBlock
+from workers.geometry import MeshBlock
 
 MOST_BLOCKS = 10_000
 MOST_NAMES = 20_000

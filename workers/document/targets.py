@@ -11,7 +11,8 @@ from workers.document.faults import seen
 from workers.document.fields import Name, Plain, Quantity, Whole, described
 from workers.document.record import Record
 from workers.document.units import LENGTH
-from workers.job import Box, CircleShape, Named, Nodes, OnCircle, Segment, Target
+from workers.geometry import CircleShape
+from workers.job import Box, Named, Nodes, OnCircle, Segment, Target
 
 MOST_NODES = 20_000_000
 

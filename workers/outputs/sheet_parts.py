@@ -7,7 +7,8 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from workers.job import Job, Vector
+from workers.geometry import Vector
+from workers.job import Job
 from workers.outputs.drawing.numbers import vector
 from workers.outputs.leading import all_states, extremes, governing_states, severity
 from workers.outputs.plots import Curve, Plot, lay_out

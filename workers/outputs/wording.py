@@ -5,6 +5,7 @@ Vectors are written with both components and their signs, and values as they wer
 
 from collections.abc import Sequence
 
+from workers.geometry import MeshGeometry, OutlineGeometry
 from workers.job import (
     Acceleration,
     Bearing,
@@ -14,11 +15,9 @@ from workers.job import (
     Job,
     LineLoad,
     Load,
-    MeshGeometry,
     Named,
     Nodes,
     OnCircle,
-    OutlineGeometry,
     PointForce,
     Pressure,
     Segment,

@@ -9,7 +9,8 @@ from numpy.typing import NDArray
 
 from workers.analysis.connected import label_components
 from workers.analysis.mesh import Mesh
-from workers.job import CircleShape, Job, OutlineGeometry, PatchGeometry, Vector, Vertex
+from workers.geometry import CircleShape, OutlineGeometry, PatchGeometry, Vector, Vertex
+from workers.job import Job
 
 Array = NDArray[np.float64]
 

@@ -4,7 +4,7 @@ from collections.abc import Iterator
 
 from workers.analysis.meshing.corners import sharp_corners
 from workers.analysis.meshing.outline import draw
-from workers.job import OutlineGeometry
+from workers.geometry import OutlineGeometry
 from workers.review.context import ReviewContext
 from workers.review.rule import Finding, finding, rule
 

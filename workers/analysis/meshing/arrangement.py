@@ -20,8 +20,13 @@ from numpy.typing import NDArray
 from workers.analysis.meshing.curve_table import CurveTable, norm
 from workers.analysis.meshing.curves import Arc, Curve, Line, NoArcError, arc_through
 from workers.analysis.meshing.loops import SHORTEST, Loop, Side
-from workers.analysis.meshing.proximity import close_pairs, close_places, crossings
-from workers.job import Vector
+from workers.analysis.meshing.proximity import (
+    close_pairs,
+    close_places,
+    crossings,
+    near_pairs,
+)
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 Index = NDArray[np.intp]
@@ -86,6 +91,10 @@ def arrange(loops: Sequence[Loop], points: Mapping[str, Vector], diagonal: float
     """Cut loops into pieces.
 
     loops : the outline first, then holes, then regions
+
+    Raises
+    ------
+    CrowdedError   far too many vertices or sides are in one place.
     """
     loops = tuple(loops)
     sides = [side for loop in loops for side in loop.sides]
@@ -140,7 +149,7 @@ def _allowed_crossings(
 def _merged(places: Array, diagonal: float) -> tuple[Index, Array]:
     """Vertex number of each place, and the places of the vertices; close places are one."""
     points = shapely.points(places)
-    one, other = shapely.STRtree(points).query(points, predicate="dwithin", distance=ONE * diagonal)
+    one, other = near_pairs(points, points, ONE * diagonal)
     first = np.arange(len(places))
     np.minimum.at(first, one, other)
     while (first[first] != first).any():  # chains of close places

@@ -4,7 +4,8 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.direct import mesh_directly
 from workers.analysis.meshing.free import mesh_drawing
 from workers.analysis.meshing.outline import draw
-from workers.job import Job, OutlineGeometry
+from workers.geometry import OutlineGeometry
+from workers.job import Job
 
 
 def mesh_job(job: Job) -> Mesh:

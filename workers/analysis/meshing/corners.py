@@ -10,7 +10,7 @@ from workers.analysis.meshing.curve_table import CurveTable
 from workers.analysis.meshing.drawing import OUTSIDE, Edge
 from workers.analysis.meshing.places import at
 from workers.errors import Fault
-from workers.job import Vector
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 

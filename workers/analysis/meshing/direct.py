@@ -4,7 +4,7 @@ from elements.registry import get
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.explicit import mesh_explicit
 from workers.analysis.meshing.patches import mesh_patches
-from workers.job import MeshGeometry, PatchGeometry
+from workers.geometry import MeshGeometry, PatchGeometry
 
 
 def mesh_directly(geometry: PatchGeometry | MeshGeometry, element: str) -> Mesh:

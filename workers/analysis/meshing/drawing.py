@@ -10,7 +10,7 @@ from functools import cached_property
 
 from workers.analysis.meshing.curve_table import CurveTable
 from workers.analysis.meshing.curves import Curve, enclosed
-from workers.job import Vector
+from workers.geometry import Vector
 
 OUTSIDE = 0  # the domain beyond the plate's edge and inside holes
 

@@ -23,7 +23,7 @@ from workers.analysis.meshing.shape import shape_faults
 from workers.analysis.nearby import close_pairs
 from workers.analysis.selection import TOLERANCE
 from workers.errors import Fault, MeshError
-from workers.job import MeshGeometry
+from workers.geometry import MeshGeometry
 
 BASE = "/geometry/mesh"
 

@@ -7,7 +7,7 @@ import numpy as np
 from workers.analysis.mesh import Facets, Mesh
 from workers.analysis.meshing.first_few import first_few
 from workers.errors import Fault
-from workers.job import MeshGeometry
+from workers.geometry import MeshGeometry
 
 BASE = "/geometry/mesh"
 

@@ -16,7 +16,7 @@ from workers.analysis.meshing.drawing import OUTSIDE, Drawing
 from workers.analysis.meshing.flat_mesh import FlatMesh, middles
 from workers.analysis.meshing.frame import Frame
 from workers.analysis.meshing.judge import TRIANGLE_LIKE
-from workers.job import Vector
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.int32]

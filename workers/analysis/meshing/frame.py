@@ -11,7 +11,7 @@ from numpy.typing import NDArray
 
 from workers.analysis.meshing.curves import Arc, Curve, Line
 from workers.analysis.meshing.drawing import Drawing
-from workers.job import Vector
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 

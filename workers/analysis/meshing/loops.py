@@ -15,7 +15,7 @@ from workers.analysis.meshing.curves import Arc, Curve, NoArcError, curve, enclo
 from workers.analysis.meshing.fillets import Corner, round_corners
 from workers.analysis.meshing.places import at
 from workers.errors import Fault
-from workers.job import CircleShape, Vertex
+from workers.geometry import CircleShape, Vertex
 
 Array = NDArray[np.float64]
 

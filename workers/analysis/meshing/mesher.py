@@ -21,7 +21,7 @@ from workers.analysis.meshing.curves import Arc
 from workers.analysis.meshing.drawing import Drawing
 from workers.analysis.meshing.flat_mesh import FlatMesh
 from workers.analysis.meshing.sizing import Sizes
-from workers.job import Vector
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 Indices = NDArray[np.int32]
@@ -112,7 +112,7 @@ def _lower_limit(kind: int, limit: int) -> None:
 
 def mesh_here(drawing: Drawing, sizes: Sizes, *, quads: bool) -> FlatMesh:
     """What the child does: only for drawings that are known to be harmless."""
-    geometry = _geometry(drawing, sizes)
+    geometry = library_geometry(drawing, sizes)
     parameters = MeshingParameters(
         maxh=sizes.general, grading=sizes.grading, curvaturesafety=sizes.per_radius
     )
@@ -121,7 +121,7 @@ def mesh_here(drawing: Drawing, sizes: Sizes, *, quads: bool) -> FlatMesh:
     return _read(geometry.GenerateMesh(mp=parameters, quad_dominated=quads), drawing)
 
 
-def _geometry(drawing: Drawing, sizes: Sizes) -> SplineGeometry:
+def library_geometry(drawing: Drawing, sizes: Sizes) -> SplineGeometry:
     """The library's description of the drawing; its pieces are the edges in their order."""
     geometry = SplineGeometry()
     vertices: dict[Vector, int] = {}

@@ -17,12 +17,14 @@ from workers.analysis.meshing.curve_table import CurveTable, cross, norm
 from workers.analysis.meshing.curves import NoArcError, curve
 from workers.analysis.meshing.domains import Domains
 from workers.analysis.meshing.drawing import OUTSIDE, Drawing, Edge
+from workers.analysis.meshing.first_few import first_few
 from workers.analysis.meshing.loops import SHORTEST, Loop, Side, circle_sides, vertex_sides
 from workers.analysis.meshing.places import at
-from workers.analysis.meshing.proximity import close_places
+from workers.analysis.meshing.proximity import CrowdedError, close_places, near_pairs
 from workers.errors import DocumentError, Fault
-from workers.job import CircleShape, OutlineGeometry, Vector, Vertex
+from workers.geometry import CircleShape, OutlineGeometry, Vector, Vertex
 
+GEOMETRY = "/geometry"
 FARTHEST = 1e5  # diagonals from the origin, beyond which coordinates lose their digits
 
 
@@ -47,20 +49,36 @@ def draw(geometry: OutlineGeometry) -> Drawing:
             loops.append(loop)
     if not loops:
         raise DocumentError(faults)
-    arrangement = arrange(loops, geometry.points, diagonal)
-    faults += contact_faults(arrangement, diagonal)
-    if faults:
-        raise DocumentError(faults)
+    try:
+        arrangement = arrange(loops, geometry.points, diagonal)
+        faults += first_few(iter(contact_faults(arrangement, diagonal)), GEOMETRY)
+        if faults:
+            raise DocumentError(faults)
+        return _drawing(arrangement, geometry.points, diagonal)
+    except CrowdedError as error:
+        raise DocumentError([*faults, _crowded(error)]) from error
+
+
+def _drawing(arrangement: Arrangement, points: Mapping[str, Vector], diagonal: float) -> Drawing:
+    """The drawing of an arrangement whose pieces meet at their ends only; raises as `draw`."""
     domains = Domains(arrangement)
-    if faults := domains.faults():
+    if faults := list(first_few(iter(domains.faults()), GEOMETRY)):
         raise DocumentError(faults)
     edges = tuple(_edges(arrangement, domains))
     inner = _inner_points(arrangement, domains, edges)
-    faults = corner_faults(edges)
-    faults += _point_faults(geometry.points, arrangement, inner, diagonal)
+    faults = list(first_few(iter(corner_faults(edges)), GEOMETRY))
+    faults += first_few(_point_faults(points, arrangement, inner, diagonal), f"{GEOMETRY}/points")
     if faults:
         raise DocumentError(faults)
     return _numbered(arrangement, edges, inner)
+
+
+def _crowded(error: CrowdedError) -> Fault:
+    return Fault(
+        GEOMETRY,
+        f"far too many vertices, sides or points lie in one place near {at(error.at)}; is a hole "
+        "or a region repeated?",
+    )
 
 
 @dataclass(frozen=True, eq=False)
@@ -187,9 +205,7 @@ def _point_faults(
         if inner[names[number]] != OUTSIDE:
             yield _too_close(names[number], given, "a side", shortest)
     points = shapely.points(places)
-    for one, other in zip(
-        *shapely.STRtree(points).query(points, predicate="dwithin", distance=shortest), strict=True
-    ):
+    for one, other in zip(*near_pairs(points, points, shortest), strict=True):
         same = arrangement.points[names[one]] == arrangement.points[names[other]]
         if one < other and not same:
             yield _too_close(names[other], given, f"point {names[one]!r}", shortest)

@@ -16,7 +16,7 @@ from workers.analysis.meshing.curves import Arc, Curve, NoArcError, curve
 from workers.analysis.nearby import SKEW, close_pairs
 from workers.analysis.selection import TOLERANCE
 from workers.errors import Fault
-from workers.job import Patch
+from workers.geometry import Patch
 
 Array = NDArray[np.float64]
 

@@ -24,7 +24,7 @@ from workers.analysis.meshing.shape import shape_faults
 from workers.analysis.nearby import close_pairs
 from workers.analysis.selection import TOLERANCE
 from workers.errors import Fault, MeshError
-from workers.job import Patch, PatchGeometry, Vector
+from workers.geometry import Patch, PatchGeometry, Vector
 
 Array = NDArray[np.float64]
 

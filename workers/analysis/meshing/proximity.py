@@ -16,6 +16,19 @@ Array = NDArray[np.float64]
 Index = NDArray[np.intp]
 
 
+CHUNK = 64  # searches at a time, which bounds the memory where everything is in one place
+USUAL = 64  # neighbours of each place or curve, on average, beyond which a drawing is crowded
+ALWAYS = 100_000  # pairs that are never too many
+
+
+class CrowdedError(ValueError):
+    """Far too many things are in one place, whose coordinates are `at`, (2,)."""
+
+    def __init__(self, at: Array) -> None:
+        self.at = at
+        super().__init__(f"too many places or sides near {at}")
+
+
 class Close(NamedTuple):
     """Nearest places of pairs of curves: (p, 2) on the first and on the second, distance (p,)."""
 
@@ -25,22 +38,50 @@ class Close(NamedTuple):
 
 
 def close_pairs(curves: CurveTable, reach: float) -> tuple[Index, Index]:
-    """Pairs i < j of curves that may come within a distance of each other (a few too many)."""
+    """Pairs i < j of curves that may come within a distance of each other (a few too many).
+
+    Raises
+    ------
+    CrowdedError   nearly every curve is near nearly every other.
+    """
     lines = curves.polylines()
-    i, j = shapely.STRtree(lines).query(
-        lines, predicate="dwithin", distance=reach + 2 * curves.rise
-    )
+    i, j = near_pairs(lines, lines, reach + 2 * curves.rise)
     return i[i < j], j[i < j]
 
 
 def close_places(curves: CurveTable, places: Array, reach: float) -> tuple[Index, Index]:
-    """Pairs (place, curve) with the place within a distance of the curve."""
-    tree = shapely.STRtree(curves.polylines())
-    place, curve = tree.query(
-        shapely.points(places), predicate="dwithin", distance=reach + curves.rise
-    )
+    """Pairs (place, curve) with the place within a distance of the curve.
+
+    Raises
+    ------
+    CrowdedError   nearly every place is near nearly every curve.
+    """
+    place, curve = near_pairs(shapely.points(places), curves.polylines(), reach + curves.rise)
     near = curves.distance(curve, places[place]) <= reach
     return place[near], curve[near]
+
+
+def near_pairs(
+    one: NDArray[np.object_], other: NDArray[np.object_], reach: float
+) -> tuple[Index, Index]:
+    """Numbers of shapes, one of each kind, that are within a distance of each other.
+
+    Raises
+    ------
+    CrowdedError   there are so many that only a mistake, or malice, explains them.
+    """
+    tree = shapely.STRtree(other)
+    pairs: list[NDArray[np.intp]] = [np.empty((2, 0), np.intp)]
+    count, most = 0, USUAL * (len(one) + len(other)) + ALWAYS
+    for first in range(0, len(one), CHUNK):
+        found = tree.query(one[first : first + CHUNK], predicate="dwithin", distance=reach)
+        found[0] += first
+        pairs.append(found)
+        count += found.shape[1]
+        if count > most:
+            raise CrowdedError(shapely.get_coordinates(one[first])[0])
+    i, j = np.concatenate(pairs, axis=1)
+    return i, j
 
 
 def crossings(curves: CurveTable, i: Index, j: Index) -> tuple[Array, NDArray[np.bool_]]:

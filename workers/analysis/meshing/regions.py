@@ -7,7 +7,7 @@ from numpy.typing import NDArray
 
 from workers.analysis.mesh import PLATE
 from workers.errors import Fault, MeshError
-from workers.job import Region
+from workers.geometry import Region
 
 
 def region_index(

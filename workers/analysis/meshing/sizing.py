@@ -14,7 +14,7 @@ from numpy.typing import NDArray
 from workers.analysis.meshing.corners import sharp_corners
 from workers.analysis.meshing.curves import Arc, enclosed
 from workers.analysis.meshing.drawing import OUTSIDE, Drawing
-from workers.job import Vector
+from workers.geometry import Vector
 
 Array = NDArray[np.float64]
 

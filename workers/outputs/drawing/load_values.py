@@ -9,6 +9,7 @@ from typing import Any
 import numpy as np
 from numpy.typing import NDArray
 
+from workers.geometry import Vector
 from workers.job import (
     Acceleration,
     Bearing,
@@ -25,7 +26,6 @@ from workers.job import (
     TotalMoment,
     Traction,
     Units,
-    Vector,
 )
 from workers.outputs.drawing import numbers
 from workers.outputs.drawing.numbers import TIMES
