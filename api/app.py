@@ -24,6 +24,7 @@ from api.openapi import ABOUT, SETTINGS, Api
 from api.preferences import WaitingRoom
 from api.responses import CautiousJSON
 from api.services import KEY, Services
+from workers import layout
 from workers.audit import Audit
 from workers.preflight import Foresight
 from workers.queue import Queue
@@ -48,6 +49,7 @@ def create_app(settings: Settings | None = None) -> Flask:
     Raises
     ------
     SettingsError   a setting is wrong, or anybody could reach the server.
+    LayoutError     the store is laid out otherwise than this program expects.
     """
     settings = settings or Settings.from_environment()
     app = Flask("api", static_folder=None)
@@ -55,6 +57,7 @@ def create_app(settings: Settings | None = None) -> Flask:
     app.config["MAX_CONTENT_LENGTH"] = settings.body_bytes + 1  # see bodies.py
     app.json = CautiousJSON(app)
     require_tokens_beyond_loopback(settings)
+    layout.require(settings.store)
     app.extensions[KEY] = Services(
         settings,
         Store(settings.store),

@@ -103,9 +103,13 @@ def move(source: Path, target: Path) -> None:
 
 
 @contextmanager
-def lock(path: Path, *, wait: bool = True) -> Iterator[bool]:
-    """Hold the lock of `path` (created when missing); yields False when taken and wait is off."""
-    descriptor = _locked_descriptor(path, fcntl.LOCK_EX | (0 if wait else fcntl.LOCK_NB))
+def lock(path: Path, *, wait: bool = True, shared: bool = False) -> Iterator[bool]:
+    """Hold the lock of `path` (created when missing); yields False when taken and wait is off.
+
+    shared : together with others that hold it shared.
+    """
+    kind = fcntl.LOCK_SH if shared else fcntl.LOCK_EX
+    descriptor = _locked_descriptor(path, kind | (0 if wait else fcntl.LOCK_NB))
     try:
         yield descriptor is not None
     finally:

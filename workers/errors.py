@@ -71,6 +71,14 @@ class StoreError(FishplateError, OSError):
     """The job store could not do what was asked."""
 
 
+class LayoutError(StoreError):
+    """The store is laid out otherwise than this program expects, or is being changed."""
+
+
+class BackupError(StoreError):
+    """A back-up cannot be made or restored; the message names the file that is to blame."""
+
+
 class UnknownJobError(StoreError, LookupError):
     """There is no job of that id."""
 

@@ -19,7 +19,7 @@ from types import FrameType
 
 import redis
 
-from workers import logs
+from workers import layout, logs
 from workers.errors import FishplateError, StoreError
 from workers.housekeeping import keep_house
 from workers.lineage import die_with_parent
@@ -169,7 +169,7 @@ def run_pool(settings: Settings) -> None:
         del os.environ[name]
     os.environ.update({**ONE_THREAD, **settings.as_environment()})
     server = PrivateRedis(settings.store) if settings.redis_url is None else nullcontext()
-    with server as private:
+    with layout.in_use(settings.store), server as private:
         # Only now: numerical libraries read the number of threads when they are loaded.
         importlib.import_module("workers.worker")
         importlib.import_module("workers.pipeline").warm_up()

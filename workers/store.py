@@ -15,6 +15,7 @@
     incoming/ID, removed/ID    on the way in and out
     tokens.json, audit/        who may do what (tokens.py), who did what (audit.py)
     usage.json                 what the store held when it was looked at last (housekeeping.py)
+    layout.json, in-use.lock   the version of all this, who is at work on it (layout.py)
 
 Redis may be lost at any time; this folder may not. Every method raises StoreError when the file
 system refuses (full disk, no permission), and UnknownJobError for an id without a job.
@@ -30,7 +31,7 @@ from pathlib import Path
 from tempfile import TemporaryDirectory
 from typing import Any, NamedTuple
 
-from workers import durable
+from workers import durable, layout
 from workers.batch import batch_folder
 from workers.errors import KeyConflictError, NotFinalError, PinnedError, UnknownJobError
 from workers.record import (
@@ -129,6 +130,8 @@ class Store(StoreReader):
         incoming = self._incoming / record.id
         target = self.jobs.path(record.id)
         try:
+            if not self.jobs.root.exists():  # the first job of a store
+                layout.stamp(self.root)
             durable.make_folder(self._incoming)
             durable.make_folder(target.parent)
             incoming.mkdir()

@@ -15,10 +15,12 @@ import click
 from redis.exceptions import RedisError
 
 from api.commands.http_server import ServerStartError, http_server
-from api.commands.settings import settings_with
+from api.commands.settings import STORE, settings_with
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave
 from api.exposure import require_tokens_beyond_loopback
 from elements.errors import FishplateError
+from workers import layout
+from workers.errors import StoreError
 from workers.lineage import die_with_parent
 from workers.queue import Queue
 from workers.setting_table import as_help
@@ -33,9 +35,7 @@ PATIENCE = 120.0  # for the workers, which load the solver and the renderer firs
 @click.option(
     "--port", type=click.IntRange(0, 65535), help="Port to listen on; 0 takes a free one."
 )
-@click.option(
-    "--store", type=click.Path(file_okay=False, path_type=Path), help="Folder of the jobs."
-)
+@STORE
 @click.option("--workers", type=click.IntRange(1, 1024), help="Jobs to work on at a time.")
 @click.option("--address-file", type=click.Path(dir_okay=False, path_type=Path),
               help="Write the address into this file once jobs can be sent.")  # fmt: skip
@@ -61,11 +61,15 @@ def command(
         leave(BAD_INPUT, str(error))
     _exit_on_signals()
     try:
-        with worker_pool(settings) as pool, http_server(settings) as (address, server):
+        with (
+            layout.in_use(settings.store),
+            worker_pool(settings) as pool,
+            http_server(settings) as (address, server),
+        ):
             _await_workers(settings, pool)
             _announce(address, settings, address_file)
             _watch(pool, server)
-    except ServerStartError as error:
+    except (ServerStartError, StoreError) as error:
         leave(FAILED, str(error))
 
 

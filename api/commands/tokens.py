@@ -7,16 +7,13 @@ from pathlib import Path
 import click
 
 from api.commands.layout import print_table
-from api.commands.settings import settings_with
+from api.commands.settings import STORE, store_folder
 from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out
+from workers import layout
 from workers.audit import TOKEN_ADDED, TOKEN_REVOKED, Audit
 from workers.errors import StoreError, TokenError
 from workers.record import DEFAULT_WORKSPACE
 from workers.tokens import ROLES, Token, Tokens
-
-STORE = click.option(
-    "--store", type=click.Path(file_okay=False, path_type=Path), help="Folder of the jobs."
-)
 
 
 @click.group()
@@ -66,8 +63,9 @@ def add(name: str, role: str, workspace: str, expires: int | None, store: Path |
 @STORE
 def list_tokens(store: Path | None) -> None:
     """List all tokens, without their secrets."""
+    root = _root(store)
     try:
-        tokens = Tokens(_root(store)).all()
+        tokens = Tokens(root).all()
     except StoreError as error:
         leave(FAILED, str(error))
     rows = [(t.name, t.role, t.workspace, t.created[:10], _state(t), t.id) for t in tokens]
@@ -93,7 +91,12 @@ def revoke(name: str, store: Path | None) -> None:
 
 
 def _root(store: Path | None) -> Path:
-    return settings_with(store=store.absolute() if store else None).store
+    root = store_folder(store)
+    try:
+        layout.require(root)
+    except StoreError as error:
+        leave(FAILED, str(error))
+    return root
 
 
 def _note(root: Path, action: str, token: Token) -> None:
