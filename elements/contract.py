@@ -288,10 +288,12 @@ class ElementType(abc.ABC):
         centre = self.natural_nodes[: self.corners].mean(axis=0)
         natural = np.tile(centre, (m, 1))
         converged = np.zeros(m, dtype=bool)
+        # Seen from the point: of a plate far from the origin no digits are lost.
+        coords = coords - xy[:, None]
         todo = np.arange(m)
         for _ in range(NEWTON_STEPS):
             at = natural[todo]
-            residual = xy[todo] - np.einsum("mn,mnk->mk", self.shape_functions(at), coords[todo])
+            residual = -np.einsum("mn,mnk->mk", self.shape_functions(at), coords[todo])
             J = np.matmul(self.gradients(at), coords[todo])
             det_J = J[:, 0, 0] * J[:, 1, 1] - J[:, 0, 1] * J[:, 1, 0]
             regular = det_J > 0  # a step that leaves the invertible part of the map is lost

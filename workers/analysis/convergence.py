@@ -156,7 +156,9 @@ class Record:
             <= SAME_PLACE * self.diagonal
         ]
         first, last = seen[0], seen[-1]
-        if len(seen) < 2 or first["element_size"] < LEAST_LEVER * last["element_size"]:
+        if len(seen) < 2 or not first["value"] or not last["value"]:
+            return None
+        if first["element_size"] < LEAST_LEVER * last["element_size"]:
             return None
         growth = np.log(abs(last["value"] / first["value"]))
         growth /= np.log(first["element_size"] / last["element_size"])

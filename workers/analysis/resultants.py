@@ -52,7 +52,8 @@ def reactions(solution: Solution) -> tuple[Reaction, ...]:
     found = []
     for support in solution.support_forces:
         at = nodes[support.nodes]
-        about = at.mean(axis=0)
+        # One that holds nothing that others do not hold has no node of its own, and no force.
+        about = at.mean(axis=0) if len(at) else centroid(solution.model.mesh)
         found.append(Reaction(support.label, about, resultant(at, support.force, about)))
     return tuple(found)
 

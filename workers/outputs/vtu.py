@@ -5,14 +5,18 @@ so that a stress is never smeared over a change of thickness or material. Append
 LZ4: measured ten times faster than zlib for files a third larger.
 """
 
+import errno
+import os
 from collections.abc import Iterable, Mapping, Sequence
 from pathlib import Path
+from typing import Any
 
 import numpy as np
 from numpy.typing import NDArray
 from vtkmodules.util.numpy_support import numpy_to_vtk
 from vtkmodules.vtkCommonCore import vtkDataArray, vtkPoints, vtkStringArray
 from vtkmodules.vtkCommonDataModel import vtkCellArray, vtkFieldData, vtkUnstructuredGrid
+from vtkmodules.vtkCommonMisc import vtkErrorCode
 from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridWriter
 
 from workers.analysis.envelope import Envelope
@@ -23,6 +27,8 @@ from workers.job import Job, Units
 
 STRESS_COMPONENTS = ("xx", "yy", "xy")
 MAGNITUDE = "displacement_magnitude"  # of a vector: not to be taken for one
+# Single precision knows 1e-38 to 3e38; seven orders below a largest value of 1e-30 are still there.
+LEAST_SINGLE, MOST_SINGLE = 1e-30, 1e38
 
 
 def write_fields(
@@ -159,8 +165,11 @@ def _in_space(plane: NDArray) -> NDArray[np.float64]:
     return space
 
 
-def _single(values: NDArray) -> NDArray[np.float32]:
-    return np.ascontiguousarray(values, dtype=np.float32)
+def _single(values: NDArray) -> NDArray[Any]:
+    """In single precision, unless the largest value is beyond what that can tell."""
+    largest = np.abs(values).max(initial=0.0)
+    tells = largest == 0 or LEAST_SINGLE <= largest <= MOST_SINGLE
+    return np.ascontiguousarray(values, dtype=np.float32 if tells else np.float64)
 
 
 def _array(values: NDArray, name: str = "", components: Iterable[str] = ()) -> vtkDataArray:
@@ -188,4 +197,10 @@ def _write(path: Path, grid: vtkUnstructuredGrid) -> None:
     writer.EncodeAppendedDataOff()
     writer.SetCompressorTypeToLZ4()
     if not writer.Write():
-        raise OSError(f"{path}: the VTK file could not be written (is the disk full?)")
+        # VTK counts its own errors from 20000; below they are those of the system.
+        code = writer.GetErrorCode()
+        if code == vtkErrorCode.OutOfDiskSpaceError:
+            code = errno.ENOSPC
+        code = code if 0 < code < vtkErrorCode.FirstVTKErrorCode else errno.EIO
+        why = f"the VTK file could not be written: {os.strerror(code)}"
+        raise OSError(code, why, str(path))

@@ -1,0 +1,70 @@
+"""Faults that random jobs have shown, each in its smallest form."""
+
+import math
+from pathlib import Path
+from typing import Any
+
+import numpy as np
+import orjson
+import pytest
+from vtkmodules.util.numpy_support import vtk_to_numpy
+from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridReader
+
+from tests.job_documents import strip
+from workers.analysis.meshing.build import mesh_job
+from workers.analysis.solved import solve_on
+from workers.document.read import load
+from workers.pipeline import run, silent
+
+Json = dict[str, Any]
+
+
+def _bytes(document: Json) -> bytes:
+    return orjson.dumps(document)
+
+
+def results_of(document: Json) -> Any:
+    job = load(document)
+    return solve_on(job, mesh_job(job), silent).results
+
+
+def test_a_support_that_holds_what_others_hold_has_no_force() -> None:
+    """Where it acts was the mean of no nodes, which is not a number."""
+    document = strip()
+    document["supports"].append({"name": "again", "on": "left", "ux": 0})
+    reaction = results_of(document)["cases"]["pull"]["reactions"]["again"]
+    assert reaction["force"] == [0.0, 0.0]
+    assert reaction["about"] == pytest.approx([50.0, 20.0])  # the centre of the plate
+
+
+@pytest.mark.parametrize("far", [0.0, 1e6, 1e8])
+def test_the_corner_of_a_plate_far_from_the_origin_is_found(far: float) -> None:
+    """It was outside the plate: Newton's method waited for digits that were lost out there."""
+    document = strip()
+    patch = document["geometry"]["patches"][0]
+    patch["corners"] = [[x + far, y + far] for x, y in patch["corners"]]
+    document["geometry"]["points"]["corner"] = [far, far]
+    document["requests"] = {"probes": {"corner": [100 + far, 40 + far]}}
+    found = results_of(document)["probes"]["corner"]["pull"]
+    assert found["stress"] == pytest.approx([100, 0, 0], abs=1e-4)  # 32 kN on 40 x 8 mm
+
+
+def test_a_plate_without_stress_has_a_convergence_record(tmp_path: Path) -> None:
+    """The growth of its infinite stress, which is nothing, was divided by nothing."""
+    document = strip(force=0.0)
+    document["supports"] = [{"on": "left", "ux": 0, "uy": 0}]
+    document["requests"] = {"convergence": True}
+    results = run(_bytes(document), tmp_path, pictures=0)
+    assert results["envelope"]["von_mises"]["value"] == 0
+
+
+@pytest.mark.parametrize("force", [1e45, 1e-45])
+def test_field_files_hold_numbers_beyond_single_precision(tmp_path: Path, force: float) -> None:
+    """3e38 and 1e-38 are the ends of single precision (IEEE 754 binary32)."""
+    run(_bytes(strip(force=force)), tmp_path, pictures=0)
+    reader = vtkXMLUnstructuredGridReader()
+    reader.SetFileName(str(tmp_path / "fields" / "pull.vtu"))
+    reader.Update()
+    stress = vtk_to_numpy(reader.GetOutput().GetPointData().GetArray("von_mises"))
+    assert math.isfinite(stress.max())
+    np.testing.assert_allclose(stress, force / (40 * 8), rtol=1e-6)
