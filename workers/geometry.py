@@ -45,7 +45,7 @@ class Hole:
 
 @dataclass(frozen=True)
 class Region:
-    """A part with its own thickness and/or material.
+    """A part with its own thickness or material, or one that loads and sizes refer to by name.
 
     shape is None when patches or mesh blocks say by name where the region is.
     """

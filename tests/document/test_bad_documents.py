@@ -140,8 +140,6 @@ OUTLINES = [
         "/geometry/regions/2/name", "plate|another name"),
     Bad("region without shape", "outline", "/geometry/regions/0/circle", DROP,
         "/geometry/regions/0", "exactly one"),
-    Bad("region that changes nothing", "outline", "/geometry/regions/0/thickness", DROP,
-        "/geometry/regions/0", "thickness, material"),
     Bad("region of unknown material", "outline", "/geometry/regions/1/material", "brass",
         "/geometry/regions/1/material", "no material|brass|bronze"),
     Bad("point named like a hole", "outline", "/geometry/points/pin", [0, 0],
@@ -241,6 +239,8 @@ SUPPORTS = [
     Bad("support on nothing", "outline", "/supports/0/on", "bsae", "/supports/0/on",
         "bsae|did you mean|base"),
     Bad("support on a number", "outline", "/supports/0/on", 3, "/supports/0/on", "selector|3"),
+    Bad("support on a place", "outline", "/supports/0/on", [0, 0], "/supports/0/on",
+        "a list of 2|geometry.points"),
     Bad("support that holds nothing", "outline", "/supports/-", {"on": "base"}, "/supports/7",
         "ux, uy, normal, along, spring"),
     Bad("displacement a stress", "outline", "/supports/0/ux", "1 MPa", "/supports/0/ux",
@@ -295,6 +295,8 @@ SUPPORTS = [
 ]  # fmt: skip
 
 LOADS = [
+    Bad("force without direction", "outline", f"{LIFT}/1/force", 9, f"{LIFT}/1/force",
+        "list of two, [x, y]|9"),
     Bad("load of no kind", "outline", f"{LIFT}/1", {"on": "tip"}, f"{LIFT}/1",
         "exactly one|pressure|none"),
     Bad("load of two kinds", "outline", f"{LIFT}/1/pressure", 1, f"{LIFT}/1", "force and pressure"),

@@ -115,6 +115,16 @@ def test_parts_know_their_places() -> None:
     assert job.requests.cuts["root"].pointer == "/requests/cuts/root"
 
 
+def test_a_region_may_be_a_name_for_loads_only() -> None:
+    """A part that is warmed has the thickness and the material of the plate unless told."""
+    document = good("outline")
+    del document["geometry"]["regions"][0]["thickness"]
+    document["load_cases"]["sun"] = [{"on": "boss", "temperature_change": 20}]
+    job = load(document)
+    assert job.thickness_of("boss") == job.plate.thickness
+    assert job.material_of("boss").name == job.plate.material
+
+
 def test_patches_are_read_with_their_defaults() -> None:
     """30 mm is 30 / 25.4 in."""
     geometry = load(good("patches")).geometry

@@ -26,6 +26,8 @@ from workers.document.units import Dimension
 class ListOf(Plain, fields.List):
     """A list within limits of length; becomes a tuple."""
 
+    shown = "a list"  # what it must be, in words
+
     def __init__(
         self, inner: fields.Field, description: str, *, least: int = 0, most: int, **options: Any
     ) -> None:
@@ -36,7 +38,7 @@ class ListOf(Plain, fields.List):
 
     def _deserialize(self, value: Any, attr: Any, data: Any, **kwargs: Any) -> Any:
         if not isinstance(value, list | tuple):
-            raise ValidationError(f"must be a list, not {seen(value)}")
+            raise ValidationError(f"must be {self.shown}, not {seen(value)}")
         if not self.least <= len(value) <= self.most:
             exact = self.least == self.most
             allowed = f"{self.least}" if exact else f"{self.least} to {self.most}"
@@ -87,6 +89,8 @@ def _each(inner: Any, entries: Any, attr: str | None, errors: Any = None) -> dic
 
 class Vector(ListOf):
     """[x, y]."""
+
+    shown = "a list of two, [x, y]"
 
     def __init__(self, *dimensions: Dimension, description: str, **options: Any) -> None:
         text = "x or y component"

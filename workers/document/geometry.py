@@ -77,7 +77,7 @@ class HoleSchema(_ShapedSchema):
 
 
 class RegionSchema(_ShapedSchema):
-    """A part with its own thickness and/or material.
+    """A part with its own thickness or material, or one that loads and sizes refer to by name.
 
     With geometry.outline it takes circle or outline; with patches and mesh it takes neither, and
     the patch or block says by name that it belongs to the region.
@@ -86,13 +86,10 @@ class RegionSchema(_ShapedSchema):
     makes = Region
 
     name = Name("Name of the region", required=True)
-    thickness = Quantity(LENGTH, description="Thickness here instead of the plate's", above=0)
-    material = Name("Material here instead of the plate's")
-
-    @validates_schema(pass_original=True, skip_on_field_errors=False)
-    def _overrides_something(self, data: Any, original: Any, **_: Any) -> None:
-        if isinstance(original, Mapping) and not {"thickness", "material"} & original.keys():
-            raise ValidationError("needs thickness, material or both")
+    thickness = Quantity(
+        LENGTH, description="Thickness here; that of the plate if left out", above=0
+    )
+    material = Name("Material here; that of the plate if left out")
 
 
 class PatchSchema(Record):
@@ -149,7 +146,7 @@ class GeometrySchema(Record):
     mesh = Part(MeshSchema, "A finished mesh")
     regions = ListOf(
         Part(RegionSchema, "A region"),
-        "Parts with their own thickness and/or material",
+        "Parts with their own thickness or material, or that loads and sizes refer to by name",
         most=MOST_PARTS,
     )
     points = MapOf(

@@ -97,9 +97,11 @@ class On(Plain, fields.Field[Target]):
         if isinstance(value, str):
             return Named(self.name_field.deserialize(value))
         if not isinstance(value, Mapping):
+            place = isinstance(value, list) and len(value) == 2
             raise ValidationError(
                 f"must be a name or a selector (an object with one of "
                 f"{', '.join(SelectorSchema.one_of)}), not {seen(value)}"
+                + ("; give the place a name in geometry.points" if place else "")
             )
         with inside(attr):
             target: Target = self.selector.deserialize(value)
