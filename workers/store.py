@@ -33,7 +33,13 @@ from typing import Any, NamedTuple
 
 from workers import durable, layout
 from workers.batch import batch_folder
-from workers.errors import KeyConflictError, NotFinalError, PinnedError, UnknownJobError
+from workers.errors import (
+    KeyConflictError,
+    NotFinalError,
+    PinnedError,
+    StoreError,
+    UnknownJobError,
+)
 from workers.record import (
     BULK,
     DEFAULT_WORKSPACE,
@@ -50,6 +56,9 @@ from workers.store_reader import StoreReader, telling
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
 STAGING = "staging"
+# After a full disk: less would be full again after a few jobs.
+ROOM = 256 * 1024**2  # bytes,
+ROOM_PART = 20  # or this part of a small disk
 ABANDONED = 86_400.0  # age at which something in incoming/ is nobody's any more [s]
 
 
@@ -161,6 +170,14 @@ class Store(StoreReader):
                 durable.write(path, bytes(4096))
             finally:
                 path.unlink(missing_ok=True)
+
+    def has_room(self) -> bool:
+        """Whether jobs can be worked on again after the disk was full: not on the last bytes."""
+        try:
+            self.probe()
+            return self.room_left() >= min(ROOM, self.disk_size() // ROOM_PART)
+        except StoreError:
+            return False
 
     # --- changing --------------------------------------------------------------------------------
 
@@ -281,9 +298,15 @@ class Store(StoreReader):
             self.indexes.drop(record)
             if record.label is not None:  # what was joint holds its numbers as well
                 shutil.rmtree(batch_folder(self.root, record.label), ignore_errors=True)
-            if record.key:
-                (self._keys / record.key).unlink(missing_ok=True)
             shutil.rmtree(removed, ignore_errors=True)
+            if record.key:
+                self._forget_key(self._keys / record.key, job_id)
+
+    def _forget_key(self, key: Path, job_id: str) -> None:
+        """Free the key of a removed job, unless it stands for another one already."""
+        with durable.lock(key):
+            if key.read_text() in (job_id, ""):
+                key.unlink()
 
     def reindex(self) -> None:
         """Rebuild the indexes from the records, and clear what crashes left behind."""

@@ -112,10 +112,18 @@ class StoreReader:
 
     def room_left(self) -> int:
         """Free bytes on the disk of the store."""
+        disk = self._disk()
+        return disk.f_bavail * disk.f_frsize
+
+    def disk_size(self) -> int:
+        """All bytes of the disk of the store."""
+        disk = self._disk()
+        return disk.f_blocks * disk.f_frsize
+
+    def _disk(self) -> os.statvfs_result:
         with telling("the disk of the store could not be asked"):
             existing = next(path for path in (self.root, *self.root.parents) if path.exists())
-            room = os.statvfs(existing)
-            return room.f_bavail * room.f_frsize
+            return os.statvfs(existing)
 
     def _folder(self, job_id: str) -> Path:
         self.record(job_id)

@@ -34,7 +34,7 @@ from workers.kin import followers, has_followers
 from workers.limits import TimeLimitError, address_space, memory_limit, time_limit
 from workers.logs import about
 from workers.queue import ANSWER_LIMIT, Queue
-from workers.reconcile import settle
+from workers.reconcile import MOST_ATTEMPTS, settle
 from workers.record import (
     ANALYSIS,
     DISK,
@@ -70,6 +70,7 @@ OUT_OF_MEMORY = (
     "load cases at a time, or have the memory limit raised."
 )
 DISK_FULL = "The disk of the job store is full; the results could not be written."
+DISK_WAS_FULL = "The disk of the job store was full; the job begins anew when there is room."
 CROWDED = "It ran out of memory beside what other jobs of its model had left; it begins anew alone."
 OUR_FAULT = (
     "Fishplate itself failed here ({error}); nothing was made. Please report it together with the "
@@ -135,8 +136,8 @@ def _work_on(
 def _attempt(
     store: Store, queue: Queue, job_id: str, staging: Path, shared: SharedModel | None, resting: int
 ) -> Record:
-    """One attempt; ends in a final state unless the store refuses even that, or the job shared
-    the memory with others: then it begins anew alone.
+    """One attempt; ends in a final state unless the store refuses even that, the job shared the
+    memory with others, or met a full disk for the first time: then it begins anew alone.
     """
     settings = queue.settings
     watch = Stopwatch()
@@ -160,17 +161,30 @@ def _attempt(
     except (Exception, TimeLimitError) as error:
         log.warning("job %s failed: %s", job_id, error, exc_info=is_ours(error))
         shutil.rmtree(staging, ignore_errors=True)  # makes room for the record, too
-        if isinstance(error, MemoryError) and shared is not None:
-            return _begin_anew(store, queue, job_id)
-        record = store.transition(job_id, FAILED, **explain(error, settings))
-    queue.tallies.add_end(record, watch.seconds)
+        record = _end_badly(store, queue, job_id, error, alone=shared is None)
+    if record.is_final:
+        queue.tallies.add_end(record, watch.seconds)
     log.info("job %s is %s", job_id, record.state)
     return record
 
 
-def _begin_anew(store: Store, queue: Queue, job_id: str) -> Record:
+def _end_badly(
+    store: Store, queue: Queue, job_id: str, error: BaseException, *, alone: bool
+) -> Record:
+    """What becomes of a job whose attempt raised this."""
+    if store.recover_published(job_id):  # only its record could not be written
+        return store.record(job_id)
+    if isinstance(error, MemoryError) and not alone:
+        return _begin_anew(store, queue, job_id, CROWDED)
+    why = explain(error, queue.settings)
+    if why["cause"] == DISK and store.record(job_id).attempts < MOST_ATTEMPTS:
+        return _begin_anew(store, queue, job_id, DISK_WAS_FULL)
+    return store.transition(job_id, FAILED, **why)
+
+
+def _begin_anew(store: Store, queue: Queue, job_id: str, why: str) -> Record:
     """Put a job in line again; after this attempt it will be worked on alone."""
-    record = store.transition(job_id, QUEUED, reason=CROWDED)
+    record = store.transition(job_id, QUEUED, reason=why)
     with suppress(redis.RedisError):  # then the reconciler will do it
         queue.submit(job_id)
     return record

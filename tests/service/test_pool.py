@@ -236,14 +236,43 @@ def test_jobs_end_although_redis_is_killed(settings: Settings) -> None:
     with running_pool(private) as service:
         job_id = accept(service.store, "wait")
         service.begun(job_id)
-        server = next(
-            c for c in psutil.Process(service.process.pid).children() if "redis" in c.name()
-        )
-        server.kill()
+        redis_of(service).kill()
         (service.store.jobs.path(job_id) / "go").touch()
         assert service.ended(job_id).state == "finished"
         late = accept(service.store, "nothing")
         assert service.ended(late).state == "finished"
+
+
+def test_a_running_job_goes_on_while_redis_is_away(settings: Settings) -> None:
+    """Longer than the time between two signs of life of a worker that works, which is 5 s."""
+    private = replace(settings, redis_url=None)
+    with running_pool(private) as service:
+        job_id = accept(service.store, "wait")
+        service.begun(job_id)
+        service.process.send_signal(signal.SIGSTOP)  # nobody starts the server again
+        redis_of(service).kill()
+        log = private.store / "pool.log"
+        eventually(lambda: "Redis does not hear" in log.read_text())
+        service.process.send_signal(signal.SIGCONT)
+        (service.store.jobs.path(job_id) / "go").touch()
+        record = service.ended(job_id)
+        assert (record.state, record.attempts) == ("finished", 1)
+        check_one_end(service, job_id)
+
+
+def test_a_worker_is_known_again_to_a_redis_that_lost_its_data(service: Service) -> None:
+    """Else the server would count as not ready, for want of workers."""
+    redis = service.queue.connection
+    eventually(lambda: any(client["cmd"] == "blpop" for client in redis.client_list()))
+    workers = service.workers()
+    redis.flushall()
+    service.ended(service.submit("nothing"))
+    eventually(lambda: service.queue.workers_alive() == 1)
+    assert service.workers() == workers
+
+
+def redis_of(service: Service) -> psutil.Process:
+    return next(c for c in psutil.Process(service.process.pid).children() if "redis" in c.name())
 
 
 # --- cancelled -----------------------------------------------------------------------------------
@@ -337,9 +366,29 @@ def test_a_job_that_fills_the_disk_fails_and_says_so(service: Service) -> None:
     (worker,) = eventually(service.workers)
     worker.rlimit(psutil.RLIMIT_FSIZE, (1 << 20, 1 << 20))
     record = service.ended(service.submit("fill", bytes=2 << 20))
-    assert (record.state, record.attempts) == ("failed", 1)
+    assert (record.state, record.attempts, record.cause) == ("failed", 2, "disk")
+    assert "begins anew when there is room" in record.history[2].reason
     assert "disk of the job store is full" in record.reason
     check_one_end(service, record.id)
+
+
+def test_jobs_wait_in_line_while_the_disk_is_full(service: Service) -> None:
+    (worker,) = eventually(service.workers)
+    running = service.submit("wait")
+    service.begun(running)
+    waiting = [service.submit("nothing") for _ in range(3)]
+    for process in (worker, *service.horses()):
+        process.rlimit(psutil.RLIMIT_FSIZE, (0, psutil.RLIM_INFINITY))
+    (service.store.jobs.path(running) / "go").touch()
+    # Its attempt came to nothing; the pool, which is not limited, puts it in line again.
+    eventually(lambda: service.store.record(running).state == "queued")
+    eventually(lambda: service.queue.waiting() == {running, *waiting})
+    assert {service.store.record(job_id).attempts for job_id in waiting} == {0}
+    worker.rlimit(psutil.RLIMIT_FSIZE, (psutil.RLIM_INFINITY, psutil.RLIM_INFINITY))
+    for job_id in (running, *waiting):
+        record = service.ended(job_id)
+        assert (record.state, record.attempts) == ("finished", 2 if job_id == running else 1)
+        check_one_end(service, job_id)
 
 
 # --- shutting down -------------------------------------------------------------------------------

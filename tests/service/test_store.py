@@ -9,10 +9,12 @@ import shutil
 import subprocess
 import sys
 import threading
+from collections import namedtuple
 from concurrent.futures import ThreadPoolExecutor
 from contextlib import suppress
 from pathlib import Path
 from typing import Any
+from unittest.mock import MagicMock
 
 import pytest
 
@@ -216,6 +218,36 @@ def test_a_key_is_free_again_once_its_job_was_removed(store: Store) -> None:
     store.transition(first, "cancelled")
     store.remove(first)
     assert store.accept(b"{}", title="lug", key="7").created
+
+
+def test_a_key_that_is_used_again_while_its_job_is_removed_stays_used(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Else a third request with the key would make a second job."""
+    first = accept(store, key="7")
+    store.transition(first, "cancelled")
+    drop, second = store.indexes.drop, []
+
+    def drop_slowly(record: Record) -> None:
+        drop(record)
+        second.append(accept(store, key="7"))
+
+    with monkeypatch.context() as patch:
+        patch.setattr(store.indexes, "drop", drop_slowly)
+        store.remove(first)
+    again = store.accept(b'{"plate": 1}', title="lug", key="7")
+    assert (again.record.id, again.created) == (second[0], False)
+
+
+def test_after_a_full_disk_a_store_waits_for_more_than_the_last_bytes(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    accept(store)
+    disk = namedtuple("disk", "f_blocks f_bavail f_frsize")
+    for size, free, enough in [(10**9, 10**3, False), (10**9, 10**6, True), (4000, 300, True)]:
+        found = disk(size, free, 1024)
+        monkeypatch.setattr(os, "statvfs", MagicMock(return_value=found))
+        assert store.has_room() == enough
 
 
 # --- states --------------------------------------------------------------------------------------
