@@ -118,7 +118,8 @@ def _place_hole(rng: Random, plate: Polygon, *, is_narrow: bool) -> Json | None:
         if is_narrow:
             border = rng.choice([plate.exterior, *plate.interiors])
             along = rng.uniform(0, border.length)
-            at, ahead = (np.array(border.interpolate(s).coords[0]) for s in (along, along + 1e-6))
+            further = (along + 1e-6) % border.length  # the ring starts again after its end
+            at, ahead = (np.array(border.interpolate(s).coords[0]) for s in (along, further))
             direction = (ahead - at) / np.linalg.norm(ahead - at)
             inward = np.array([-direction[1], direction[0]])
             if not plate.contains(shapely.Point(at + 1e-3 * inward)):
@@ -225,7 +226,7 @@ def _mapped(part: Any, place: Callable[[Any], Any], length: Callable[[float], fl
     for key, value in part.items():
         if key in ("at", "through", "centre"):
             done[key] = place(value)
-        elif key in ("fillet", "radius"):
+        elif key in ("fillet", "radius", "thickness"):
             done[key] = length(value)
         elif key == "points":
             done[key] = {name: place(at) for name, at in value.items()}
