@@ -44,6 +44,7 @@ class BatchLinksSchema(Answer):
     fields_ = fields.String(
         required=True,
         allow_none=True,
+        attribute="fields",
         data_key="fields",
         metadata={"description": "Joint envelope as VTK fields, where the meshes are the same"},
     )

@@ -21,7 +21,7 @@ from workers.record import CANCELLED, FAILED, FINISHED
 blueprint = Blueprint("batches", __name__, url_prefix="/v1", description="Jobs of one label")
 
 
-@blueprint.get("/batches/<label>")
+@blueprint.get("/batches/<path:label>")
 @blueprint.response(200, BatchSchema)
 @blueprint.doc(responses=problems_of(404))
 def show_batch(label: str) -> dict[str, Any]:
@@ -44,7 +44,7 @@ def show_batch(label: str) -> dict[str, Any]:
     }
 
 
-@blueprint.get("/batches/<label>/envelope/fields.vtu")
+@blueprint.get("/batches/<path:label>/envelope/fields.vtu")
 @blueprint.doc(responses={200: describe_file(VTU), **problems_of(404, 409, 500, 503)})
 def show_joint_fields(label: str) -> Response:
     """The worst of all finished jobs at every node, as a VTK XML file
@@ -54,14 +54,14 @@ def show_joint_fields(label: str) -> Response:
     return _joint_file(label, "fields", VTU)
 
 
-@blueprint.get("/batches/<label>/envelope/nodes.csv")
+@blueprint.get("/batches/<path:label>/envelope/nodes.csv")
 @blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409, 500, 503)})
 def show_joint_table(label: str) -> Response:
     """The worst of all finished jobs at every node, with what governs, as a table"""
     return _joint_file(label, "nodes", CSV)
 
 
-@blueprint.get("/batches/<label>/envelope/<measure>.png")
+@blueprint.get("/batches/<path:label>/envelope/<measure>.png")
 @blueprint.doc(responses={200: describe_file(PNG), **problems_of(404, 409, 500, 503)})
 def show_joint_picture(label: str, measure: str) -> Response:
     """A picture of what governs where, over all finished jobs

@@ -257,7 +257,7 @@ class MeshFiguresSchema(Answer):
     regions = by_name(MeshRegionSchema, "By name; `plate` is what no region overrides")
     quality = by_name(QualitySchema, "By measure")
     parts = whole("Unconnected parts")
-    digest = text("Of nodes, elements and regions: jobs on the same mesh share it")
+    digest = text("Of nodes, elements and regions: jobs on the same mesh share it", required=True)
 
 
 class EnvelopeFilesSchema(Answer):

@@ -77,6 +77,7 @@ RESULTS: dict[str, Any] = {
         "regions": {"plate": {"thickness": 8.0, "material": "steel", "area": 4000.0}},
         "quality": {"max_aspect": {"value": 2.5, "at": AT, "limit": 10.0, "bad": 0}},
         "parts": 1,
+        "digest": "0123456789abcdef",
     },
     "cases": {"pull": STATE},
     "combinations": {"pull, factored": {**STATE, "factors": {"pull": 1.0}}},

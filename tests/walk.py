@@ -17,6 +17,7 @@ from werkzeug.test import TestResponse
 from api.services import KEY, Services
 from tests.job_documents import strip
 from tests.small_check import answer_check
+from workers.batch import read_batch
 from workers.checks import Checks
 from workers.errors import Fault
 from workers.queue import Answer
@@ -26,7 +27,7 @@ from workers.record import CANCELLED, FAILED, RUNNING
 VALUES: dict[str, tuple[str, ...]] = {
     "case": ("pull", "pull, factored", "no such case"),
     "line": ("axis", "no such line"),
-    "measure": ("von_mises", "colour"),
+    "measure": ("von_mises", "shear_max", "colour"),
     "quantity": ("model", "von_mises", "colour"),
     "name": ("peaks", "lines", "no such table"),
 }
@@ -107,7 +108,19 @@ def visit_all(
             answer_check(services.settings.store, *arguments)
         return CHECKED.get(length, Answer("done", value={"ok": True}))
 
+    def make_batch_file(label: str, workspace: str | None, digest: str, kind: str,
+                        *, wait: float) -> Answer:  # fmt: skip
+        if kind == "shear_max":
+            return Answer("failed", reason="no libEGL", error="PicturesUnavailableError")
+        if label == "broken":
+            return Answer("failed", reason="the worker process ended before it had an answer")
+        path = read_batch(services.store, label, workspace).file(services.store.root, kind)
+        path.parent.mkdir(parents=True, exist_ok=True)
+        path.write_bytes(kind.encode())
+        return Answer("done", value={"ok": True})
+
     monkeypatch.setattr(services.queue, "make_artefact", make_artefact)
+    monkeypatch.setattr(services.queue, "make_batch_file", make_batch_file)
     monkeypatch.setattr(services.queue, "ask", ask)
     monkeypatch.setattr(services.queue, "workers_alive", lambda: 1)
     visits = []
@@ -132,7 +145,11 @@ def addresses(app: Flask, rule: Rule, finish: Finish) -> Iterator[str]:
     """The address of a rule with all combinations of values, and fresh jobs in all states."""
     partial: list[dict[str, str]] = [{}]
     for name in sorted(rule.arguments):
-        made = {"job_id": lambda: jobs(app, finish), "check_id": lambda: checks(app)}
+        made = {
+            "job_id": lambda: jobs(app, finish),
+            "check_id": lambda: checks(app),
+            "label": lambda: labels(app, finish),
+        }
         values = made[name]() if name in made else VALUES[name]
         partial = [{**given, name: value} for given in partial for value in values]
     for values in partial:
@@ -155,6 +172,15 @@ def jobs(app: Flask, finish: Finish) -> tuple[str, ...]:
     services.store.transition(pinned, CANCELLED)
     services.store.pin(pinned, True)
     return (queued, running, finished, failed, cancelled, pinned, "unknown")
+
+
+def labels(app: Flask, finish: Finish) -> tuple[str, ...]:
+    """Of a batch with a joint envelope, one whose cannot be made, one without, and no batch."""
+    store = app.extensions[KEY].store
+    for label in ("ropes 2031/04", "broken"):
+        finish(store.accept(b"{}", label=label, title=label).record.id)
+    store.accept(b"{}", label="waiting", title="waiting")
+    return ("ropes 2031/04", "broken", "waiting", "no such label")
 
 
 def checks(app: Flask) -> tuple[str, ...]:

@@ -149,6 +149,6 @@ def _units(record: Record) -> tuple[str, ...]:
     return tuple(_outcome(record)["units"].values())
 
 
-def _kind(record: Record) -> tuple[str | None, ...]:
-    """What jobs must share to be compared node by node."""
-    return (_outcome(record)["mesh"], *_units(record))
+def _kind(record: Record) -> tuple[str, ...]:
+    """What jobs must share to be compared node by node; a mesh that is not known is no other's."""
+    return (_outcome(record)["mesh"] or record.id, *_units(record))

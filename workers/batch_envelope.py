@@ -7,6 +7,7 @@ Jobs of the same model share their stress recovery and go through it in blocks o
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
+from tempfile import TemporaryDirectory
 
 import numpy as np
 import orjson
@@ -127,11 +128,15 @@ class _Forming:
         return pipeline.reopen(self._store.results_path(record.id), mesh).work
 
     def add(self, record: Record) -> None:
-        work = self._open(record, self._mesh)
-        if record.model is None or record.model != self._model or work.formed is not None:
+        # The nodes of another model are the same, the names of its sides may be others.
+        same = record.model is not None and record.model == self._model
+        work = self._open(record, self._mesh if same else None)
+        if not same or work.formed is not None:
             self.flush()
+        if not same:
             # The operator follows from the mesh, the stress at its samples from the model.
-            self._recovery, self._model = replace(self._recovery, model=work.model), record.model
+            self._recovery = replace(self._recovery, model=work.model)
+            self._model, self._mesh = record.model, work.model.mesh
         if work.formed is not None:
             self.envelope.merge(work.formed, len(self.states))
         else:
@@ -141,9 +146,12 @@ class _Forming:
             self.flush()
 
     def leave(self, folder: Path) -> None:
-        """Keep what was formed in a folder; the names come last."""
-        np.savez(folder / ENVELOPE, **self.envelope.arrays())
-        (folder / STATES).write_bytes(orjson.dumps(self.states))
+        """Keep what was formed in a folder, each file whole or not at all; the names come last."""
+        with TemporaryDirectory(dir=folder) as scratch:
+            np.savez(Path(scratch) / ENVELOPE, **self.envelope.arrays())
+            (Path(scratch) / STATES).write_bytes(orjson.dumps(self.states))
+            for name in (ENVELOPE, STATES):
+                (Path(scratch) / name).replace(folder / name)
 
     def recall(self, folder: Path) -> None:
         """Take what was kept."""

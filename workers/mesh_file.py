@@ -3,7 +3,6 @@
 NumPy's own archive of plain arrays; names are kept as text, so that nothing is unpickled.
 """
 
-import hashlib
 from pathlib import Path
 from typing import Any
 
@@ -26,17 +25,6 @@ def write_mesh(path: Path, mesh: Mesh) -> None:
     arrays["points"] = np.array(list(mesh.points), dtype=np.str_)
     arrays["point nodes"] = np.array(list(mesh.points.values()), np.int64)
     np.savez(path, **arrays)
-
-
-def mesh_digest(mesh: Mesh) -> str:
-    """A digest that meshes share when their nodes, elements and regions are the same."""
-    digest = hashlib.sha256(np.ascontiguousarray(mesh.nodes).tobytes())
-    for block in mesh.blocks:
-        digest.update(block.element.name.encode())
-        for array in (block.connectivity, block.region):
-            digest.update(np.ascontiguousarray(array, np.int32).tobytes())
-    digest.update(repr(mesh.regions).encode())
-    return digest.hexdigest()[:32]
 
 
 def read_mesh(path: Path) -> Mesh:

@@ -39,7 +39,7 @@ from workers.errors import MeshError
 from workers.filing import Filing, Json, Progress, Work, draw_line
 from workers.geometry import OutlineGeometry
 from workers.job import Job
-from workers.mesh_file import mesh_digest, read_mesh, write_mesh
+from workers.mesh_file import read_mesh, write_mesh
 from workers.outputs import preview
 from workers.outputs.names import SHEET
 from workers.outputs.sheet import write_sheet
@@ -122,7 +122,6 @@ def run(
                 "stress": job.units.stress,
             },
             **results,
-            "mesh": {**results["mesh"], "digest": mesh_digest(solved.mesh)},
             "cautions": [caution.as_json() for caution in cautions],
         }
         filed = Filing(folder, work, cautions, results)

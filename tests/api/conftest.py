@@ -13,6 +13,7 @@ from api.app import create_app
 from api.services import KEY, Services
 from tests.job_documents import strip
 from tests.small_results import RESULTS
+from workers.batch import outcome_of
 from workers.private_redis import PrivateRedis
 from workers.record import RUNNING
 from workers.settings import Settings
@@ -89,6 +90,6 @@ def finish(services: Services) -> Callable[[str], None]:
                 path = staging / name
                 path.parent.mkdir(parents=True, exist_ok=True)
                 path.write_bytes(name.encode())
-            services.store.publish(job_id, staging, RESULTS["cautions"])
+            services.store.publish(job_id, staging, RESULTS["cautions"], outcome_of(RESULTS))
 
     return publish

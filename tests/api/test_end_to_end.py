@@ -1,5 +1,6 @@
 """A real `fishplate serve`: Redis, workers and HTTP server, with plates whose answer is known."""
 
+import csv
 import io
 import json
 import os
@@ -231,6 +232,44 @@ def test_the_sheet_and_the_archive_tell_the_known_answer(
         assert archive.testzip() is None
         assert archive.read("sheet.html") == sheet
         assert {"job.json", "results.json", "tables/peaks.csv"} <= {*archive.namelist()}
+
+
+def test_jobs_of_one_label_have_the_envelope_of_one_job_with_their_cases(
+    ask: Callable[..., tuple[bytes, Any]], tmp_path: Path
+) -> None:
+    """At every node; values survive the table exactly, the sums may differ in the last digit."""
+    pulls = {"light": 8_000.0, "heavy": 32_000.0, "back": -40_000.0}
+    cases = {name: [{"on": "right", "total_force": [pull, 0]}] for name, pull in pulls.items()}
+    one, _ = solve(ask, {**strip(), "load_cases": cases})
+    label = "slings 12/31"
+    ids = {}
+    for name in pulls:
+        document = {**strip(), "label": label, "load_cases": {name: cases[name]}}
+        ids[name] = solve(ask, document)[0].rsplit("/", 1)[1]
+    batch = json.loads(ask(f"/v1/batches/{label}")[0])
+    assert (batch["jobs"]["finished"], batch["progress"], batch["meshes"]) == (3, 1.0, 1)
+    (envelope,) = batch["envelopes"]
+    assert envelope["von_mises"]["value"] == pytest.approx(125.0, rel=EXACT)  # 40000 / (40 x 8)
+    assert envelope["principal_max"]["governs"]["job"] == ids["heavy"]
+    assert envelope["principal_min"]["governs"]["job"] == ids["back"]
+
+    def rows(path: str) -> list[dict[str, str]]:
+        return list(csv.DictReader(io.StringIO(ask(path)[0].decode())))
+
+    joint, ours = rows(f"/v1/batches/{label}/envelope/nodes.csv"), rows(f"{one}/envelope/nodes.csv")
+    assert joint[0].keys() == ours[0].keys()
+    for there, here in zip(joint, ours, strict=True):
+        assert float(there["principal_max [MPa]"]) == pytest.approx(
+            float(here["principal_max [MPa]"]), rel=1e-12
+        )
+        assert there["principal_max governed by"] == f"heavy ({ids['heavy']})"
+    body, headers = ask(f"/v1/batches/{label}/envelope/fields.vtu")
+    assert "/v1/batches/slings%2012%2F31>" in headers["Link"]
+    path = tmp_path / "joint.vtu"
+    path.write_bytes(body)
+    governing = {*np.unique(pyvista.read(path).point_data["principal_min_governs"])}
+    states = [str(state) for state in pyvista.read(path).field_data["states"]]
+    assert {states[state] for state in governing} == {f"back ({ids['back']})"}
 
 
 def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes, Any]]) -> None:

@@ -18,6 +18,7 @@ from workers.analysis.envelope import WORST, Envelope, measures
 from workers.analysis.error_estimate import element_volumes, error_stress, estimate_error
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.loads.kinds import Places
+from workers.analysis.mesh_digest import mesh_digest
 from workers.analysis.model import Model
 from workers.analysis.peak_interval import peak_intervals
 from workers.analysis.peaks import Peak, find_peaks, find_utilisation
@@ -347,4 +348,5 @@ def mesh_figures(model: Model) -> Json:
         },
         "quality": mesh_quality(mesh),
         "parts": mesh.component_count,
+        "digest": mesh_digest(mesh),
     }
