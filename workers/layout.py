@@ -100,13 +100,25 @@ def in_use(root: Path) -> Iterator[None]:
     ------
     LayoutError   the store has another layout, or its layout is being changed.
     """
-    with _opened(root, shared=True) as mine:
-        if not mine:
-            raise LayoutError(f"the store {root} is being migrated or restored; try again later")
+    with _together(root):
         require(root)
         if layout_of(root) is None:
             with telling(f"the store {root} could not be written"):
                 stamp(root)
+        yield
+
+
+@contextmanager
+def unchanged(root: Path) -> Iterator[None]:
+    """Look into a store, of this layout or an older one, while nobody changes its layout.
+
+    Raises
+    ------
+    LayoutError   the store has a newer layout, or its layout is being changed.
+    """
+    with _together(root):
+        if (layout_of(root) or 0) > LAYOUT:
+            require(root)
         yield
 
 
@@ -124,6 +136,14 @@ def alone(root: Path, why: str) -> Iterator[None]:
                 f"the store {root} is in use, so it cannot be {why}: stop `fishplate serve` and "
                 "`fishplate work` on every machine that shares it"
             )
+        yield
+
+
+@contextmanager
+def _together(root: Path) -> Iterator[None]:
+    with _opened(root, shared=True) as mine:
+        if not mine:
+            raise LayoutError(f"the store {root} is being migrated or restored; try again later")
         yield
 
 

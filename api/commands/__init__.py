@@ -16,6 +16,8 @@ COMMANDS: Mapping[str, str] = MappingProxyType(
         "solve": "Solve a job here and now, without server or queue.",
         "submit": "Send a job to a server, wait for it, fetch its results.",
         "tokens": "Make, list and revoke the tokens that a server asks for.",
+        "backup": "Copy the store to another place, while it is in use.",
+        "restore": "Bring a back-up into an empty store, or only check it.",
         "migrate": "Bring a store of an older Fishplate to this one's layout.",
         "check": "Read a job and say what was understood; solve nothing.",
         "verify": "Run the reference cases on this installation.",

@@ -22,6 +22,14 @@ def settled(value: float, scale: float) -> float:
     return value if abs(value) > 1e-9 * scale else 0.0
 
 
+def size(count: int) -> str:
+    """Bytes, in the unit that suits them."""
+    for unit, least in (("GiB", 1024**3), ("MiB", 1024**2), ("KiB", 1024)):
+        if count >= least:
+            return f"{count / least:.1f} {unit}"
+    return f"{count} bytes"
+
+
 def place(at: Iterable[float]) -> str:
     return "(" + ", ".join(number(c, 4) for c in at) + ")"
 

@@ -52,6 +52,14 @@ def test_the_manifest_is_what_sha256sum_checks(folder: Path, tmp_path: Path) -> 
     assert check_sums(tmp_path / "out")[0] != 0
 
 
+def test_the_same_files_give_the_same_bytes_at_any_time(
+    folder: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    now = b"".join(stream_archive(folder))
+    monkeypatch.setattr("time.time", lambda: 2.0e9)
+    assert b"".join(stream_archive(folder)) == now
+
+
 def test_what_cannot_be_made_smaller_is_stored(folder: Path) -> None:
     with ZipFile(io.BytesIO(b"".join(stream_archive(folder)))) as archive:
         kinds = {info.filename: info.compress_type for info in archive.infolist()}

@@ -54,7 +54,9 @@ def stream_archive(folder: Path) -> Iterator[bytes]:
                     entry.write(piece)
                     yield from sink.drain()
             sums.append(f"{digest.hexdigest()}  {name}\n")
-        archive.writestr(MANIFEST, "".join(sums))
+        manifest = ZipInfo(MANIFEST)  # without the time of now: the same files, the same bytes
+        manifest.external_attr = 0o644 << 16
+        archive.writestr(manifest, "".join(sums))
     yield from sink.drain()
 
 
