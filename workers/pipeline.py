@@ -40,9 +40,8 @@ from workers.filing import Filing, Json, Progress, Work, draw_line
 from workers.geometry import OutlineGeometry
 from workers.job import Job
 from workers.mesh_file import read_mesh, write_mesh
-from workers.outputs import preview
+from workers.outputs import preview, sheet
 from workers.outputs.names import SHEET
-from workers.outputs.sheet import write_sheet
 from workers.outputs.tables import write_tables
 from workers.preflight import placing_faults, preflight
 from workers.record import now
@@ -61,6 +60,7 @@ def silent(stage: str, fraction: float) -> None:
 def warm_up() -> None:
     """Find out once, before processes are forked for the jobs, what each would ask anew."""
     preview.probe()
+    sheet.warm_up()
 
 
 def run(
@@ -130,7 +130,7 @@ def run(
         results["pictures"] = filed.draw_some(pictures, files, progress)
         files["tables"], files["sheet"] = write_tables(results, folder), SHEET
         (folder / RESULTS).write_bytes(orjson.dumps(results, option=orjson.OPT_INDENT_2))
-        write_sheet(job, results, folder, folder)
+        sheet.write_sheet(job, results, folder, folder)
     return results
 
 
@@ -246,7 +246,7 @@ def render_sheet(folder: Path, target: Path) -> Path:
     """Write the review sheet of a finished job anew, into the target folder; returns its path."""
     results = orjson.loads((folder / RESULTS).read_bytes())
     job = read_document((folder / DOCUMENT).read_bytes())
-    return write_sheet(job, results, folder, target)
+    return sheet.write_sheet(job, results, folder, target)
 
 
 def reopen(folder: Path, mesh: Mesh | None = None) -> Filing:

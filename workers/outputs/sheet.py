@@ -50,6 +50,12 @@ MOST_EVIDENCE = 6  # entries of a list in the evidence of a caution
 PNG_SIZE = slice(16, 24)  # where a PNG file has its width and height
 
 
+def warm_up() -> None:
+    """Compile the templates, which takes longer than a small job: once, not in each process."""
+    for name in _ENVIRONMENT.list_templates():
+        _ENVIRONMENT.get_template(name)
+
+
 def render_sheet(job: Job, results: Json, folder: Path) -> str:
     """The sheet of a finished job as HTML.
 
