@@ -78,8 +78,9 @@ class Settings:
     # --- how much at a time ----------------------------------------------------------------------
     workers: int = _setting(
         default_workers,
-        readers.whole(1, 1024),
-        "Jobs worked on at a time on this machine.",
+        readers.whole(0, 1024),
+        "Jobs worked on at a time on this machine; 0 has `fishplate serve` answer requests only, "
+        "for workers that run elsewhere (`fishplate work`).",
         default_text="one for each processor",
     )
     api_threads: int = _setting(

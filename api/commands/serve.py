@@ -5,7 +5,7 @@ import signal
 import subprocess
 import sys
 import time
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from contextlib import contextmanager
 from pathlib import Path
 from types import FrameType
@@ -20,7 +20,7 @@ from api.commands.terminal import BAD_INPUT, FAILED, err, leave
 from api.exposure import require_tokens_beyond_loopback
 from elements.errors import FishplateError
 from workers import layout
-from workers.errors import StoreError
+from workers.errors import SettingsError, StoreError
 from workers.lineage import die_with_parent
 from workers.queue import Queue
 from workers.setting_table import as_help
@@ -36,7 +36,8 @@ PATIENCE = 120.0  # for the workers, which load the solver and the renderer firs
     "--port", type=click.IntRange(0, 65535), help="Port to listen on; 0 takes a free one."
 )
 @STORE
-@click.option("--workers", type=click.IntRange(1, 1024), help="Jobs to work on at a time.")
+@click.option("--workers", type=click.IntRange(0, 1024),
+              help="Jobs to work on at a time; 0 leaves them to `fishplate work`.")  # fmt: skip
 @click.option("--address-file", type=click.Path(dir_okay=False, path_type=Path),
               help="Write the address into this file once jobs can be sent.")  # fmt: skip
 def command(
@@ -49,6 +50,7 @@ def command(
     """Run queue, workers and HTTP server on this machine.
 
     Without FISHPLATE_REDIS_URL a private Redis server is started, whose files are in the store.
+    With it, and --workers 0, this is the HTTP server alone.
     Beyond this machine it listens only when tokens have been made (`fishplate tokens add`). Stop
     with Ctrl-C or SIGTERM: running jobs may end, what does not is queued again at the next start.
     Nothing that was accepted is lost.
@@ -57,6 +59,7 @@ def command(
     settings = settings_with(host=host, port=port, store=store, workers=workers)
     try:
         require_tokens_beyond_loopback(settings)
+        _require_queue(settings)
     except FishplateError as error:
         leave(BAD_INPUT, str(error))
     _exit_on_signals()
@@ -66,11 +69,21 @@ def command(
             worker_pool(settings) as pool,
             http_server(settings) as (address, server),
         ):
-            _await_workers(settings, pool)
+            if pool is not None:
+                _await_workers(settings, pool)
             _announce(address, settings, address_file)
-            _watch(pool, server)
+            _watch({"the worker pool": pool, "the HTTP server": server})
     except (ServerStartError, StoreError) as error:
         leave(FAILED, str(error))
+
+
+def _require_queue(settings: Settings) -> None:
+    """A server without workers needs a queue that outlives it; raises SettingsError."""
+    if settings.workers == 0 and settings.redis_url is None:
+        raise SettingsError(
+            "without workers (--workers 0) the queue must be elsewhere: set FISHPLATE_REDIS_URL to "
+            "that of the workers"
+        )
 
 
 def _exit_on_signals() -> None:
@@ -87,8 +100,14 @@ def _exit_on_signals() -> None:
 
 
 @contextmanager
-def worker_pool(settings: Settings) -> Iterator["subprocess.Popen[bytes]"]:
-    """Have the workers running, in a process of their own that ends with this one."""
+def worker_pool(settings: Settings) -> Iterator["subprocess.Popen[bytes] | None"]:
+    """Have the workers running, in a process of their own that ends with this one.
+
+    Yields None where they are to run elsewhere.
+    """
+    if settings.workers == 0:
+        yield None
+        return
     parent = os.getpid()
     process = subprocess.Popen(
         [sys.executable, "-m", "workers.pool"],
@@ -134,11 +153,10 @@ def _announce(address: str, settings: Settings, address_file: Path | None) -> No
         scratch.replace(address_file)
 
 
-def _watch(pool: "subprocess.Popen[bytes]", server: "subprocess.Popen[bytes]") -> None:
+def _watch(parts: "Mapping[str, subprocess.Popen[bytes] | None]") -> None:
     """Return never; raise when one of the processes ends by itself."""
-    parts = {"the worker pool": pool, "the HTTP server": server}
     while True:
         for name, process in parts.items():
-            if process.poll() is not None:
+            if process is not None and process.poll() is not None:
                 raise ServerStartError(f"{name} ended, status {process.returncode}")
         time.sleep(TICK)

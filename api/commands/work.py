@@ -3,7 +3,7 @@
 import click
 
 from api.commands.settings import settings_with
-from api.commands.terminal import FAILED, leave
+from api.commands.terminal import BAD_INPUT, FAILED, leave
 from workers import logs
 from workers.errors import FishplateError
 from workers.pool import run_pool
@@ -18,6 +18,10 @@ def command(workers: int | None) -> None:
     those of the server. On SIGTERM or SIGINT running jobs may end; what does not is queued again.
     """
     settings = settings_with(workers=workers)
+    if settings.workers == 0:
+        leave(
+            BAD_INPUT, "FISHPLATE_WORKERS=0 is for `fishplate serve`; say how many with --workers."
+        )
     logs.configure(settings.log_level)
     try:
         run_pool(settings)

@@ -42,7 +42,7 @@ def test_sizes_are_understood_with_and_without_a_unit(text: str, size: int) -> N
 @pytest.mark.parametrize(
     ("name", "text"),
     [
-        ("WORKERS", "0"),
+        ("WORKERS", "-1"),
         ("WORKERS", "two"),
         ("PORT", "65536"),
         ("BODY_BYTES", "64 MB"),
