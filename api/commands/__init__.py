@@ -1,6 +1,6 @@
 """The `fishplate` command: one module for each subcommand, imported only when it is used.
 
-Exit status: 0 the job finished, 1 it failed, 2 the input is wrong.
+Exit status: 0 all went well, 1 a job or the command failed, 2 the input is wrong.
 """
 
 from collections.abc import Mapping
@@ -8,13 +8,14 @@ from importlib import import_module
 from types import MappingProxyType
 
 import click
+from click.shell_completion import CompletionItem
 
 COMMANDS: Mapping[str, str] = MappingProxyType(
     {
         "serve": "Run queue, workers and HTTP server on this machine.",
         "work": "Run workers for a queue that runs elsewhere.",
-        "solve": "Solve a job here and now, without server or queue.",
-        "submit": "Send a job to a server, wait for it, fetch its results.",
+        "solve": "Solve jobs here and now, without server or queue.",
+        "submit": "Send jobs to a server, wait for them, fetch their results.",
         "tokens": "Make, list and revoke the tokens that a server asks for.",
         "backup": "Copy the store to another place, while it is in use.",
         "restore": "Bring a back-up into an empty store, or only check it.",
@@ -37,6 +38,17 @@ class Commands(click.Group):
         command: click.Command = import_module(f"api.commands.{cmd_name}").command
         return command
 
+    def shell_complete(self, ctx: click.Context, incomplete: str) -> list[CompletionItem]:
+        """Subcommands from their list, so that a shell is answered at once; and the options."""
+        return [
+            *(
+                CompletionItem(name, help=words)
+                for name, words in COMMANDS.items()
+                if name.startswith(incomplete)
+            ),
+            *click.Command.shell_complete(self, ctx, incomplete),
+        ]
+
     def format_commands(self, ctx: click.Context, formatter: click.HelpFormatter) -> None:
         with formatter.section("Commands"):
             formatter.write_dl(list(COMMANDS.items()))
@@ -49,4 +61,7 @@ def main() -> None:
 
     Every result comes with review cautions. Read them first; a qualified engineer must review
     every job before anything relies on it.
+
+    `fishplate COMMAND --help` says more. Exit status: 0 all went well, 1 a job or the command
+    failed, 2 the input is wrong.
     """

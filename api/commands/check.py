@@ -10,11 +10,11 @@ import click
 from rich.console import Console
 from rich.markup import escape
 
+from api.commands.documents import DocumentPath
 from api.commands.folders import OF_A_CHECK, name_files, refuse_foreign, replaced
 from api.commands.layout import number, place, print_cautions, print_table
 from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
 from elements.errors import FishplateError
-from workers import checking
 from workers.errors import FaultyError
 
 Check = Mapping[str, Any]
@@ -25,7 +25,7 @@ MEBIBYTE = 1024**2
 
 
 @click.command()
-@click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.argument("job", type=DocumentPath())
 @click.option(
     "--out",
     "folder",
@@ -57,6 +57,9 @@ def command(job: Path, folder: Path | None, pictures: int) -> None:
 
 
 def _check(document: bytes, folder: Path, pictures: int) -> Check:
+    # Takes seconds to load, for which neither help nor completion should wait.
+    from workers import checking  # noqa: PLC0415
+
     try:
         with progress() as report:
             return checking.check(document, folder, progress=report, pictures=pictures)

@@ -12,10 +12,12 @@ from rich.markup import escape
 from api.commands.terminal import BAD_INPUT, err, leave
 
 RESULTS = "results.json"
-MOST_FILES = 20  # that are named one by one
+# What a person opens first, and why.
+FIRST = {"sheet.html": "  the review sheet: read it, print it, file it",
+         "check.json": "  everything that was understood"}  # fmt: skip
 # All that results ever consist of, see `workers/pipeline.py`.
-OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines",
-        "envelope", "envelope.npz", "mesh.npz", "tables", "sheet.html"}  # fmt: skip
+OURS = {RESULTS, "job.json", "displacements.npy", "fields", "previews", "lines", "envelope",
+        "envelope.npz", "mesh.npz", "tables", "sheet.html", "convergence.png"}  # fmt: skip
 OF_A_CHECK = {"check.json", "previews"}  # see `workers/checking.py`
 
 
@@ -45,10 +47,14 @@ def replaced(folder: Path) -> Iterator[Path]:
 
 
 def name_files(folder: Path) -> None:
-    """Say which files there are now."""
-    files = sorted(path for path in folder.rglob("*") if path.is_file())
-    err().print(f"Written to {folder}:", soft_wrap=True)
-    for path in files[:MOST_FILES]:
-        err().print(f"  {escape(str(path.relative_to(folder)))}", soft_wrap=True)
-    if len(files) > MOST_FILES:
-        err().print(f"  ... and {len(files) - MOST_FILES} more")
+    """Say what there is now: first what a person reads."""
+    console = err()
+    console.print(f"Written to {escape(str(folder))}:", soft_wrap=True)
+    entries = sorted(folder.iterdir(), key=lambda path: (path.name not in FIRST, path.name))
+    for path in entries:
+        if path.is_dir():
+            count = sum(inner.is_file() for inner in path.rglob("*"))
+            what = f"{path.name}/  ({count} file{'s' if count != 1 else ''})"
+        else:
+            what = f"{path.name}{FIRST.get(path.name, '')}"
+        console.print(f"  {escape(what)}", soft_wrap=True)

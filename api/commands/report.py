@@ -24,16 +24,16 @@ def print_results(console: Console, results: Mapping[str, Any]) -> None:
     print_table(
         console,
         "Peaks, the highest stress first",
-        ("case", f"von Mises [{stress}]", "doubt", f"at [{length}]", "of yield",
-         f"moves [{length}]", "error estimate"),
+        ("case", f"von Mises\n[{stress}]", "\ndoubt", f"at\n[{length}]", "of\nyield",
+         f"moves\n[{length}]", "error\nestimate"),
         _peaks(shown),
         words=1,
     )  # fmt: skip
     print_table(
         console,
         "What the supports do to the plate",
-        ("case", "support", f"x [{force}]", f"y [{force}]", f"moment [{force} {length}]",
-         f"about [{length}]"),
+        ("case", "support", f"x\n[{force}]", f"y\n[{force}]", f"moment\n[{force} {length}]",
+         f"about\n[{length}]"),
         _reactions(shown, _size(results["mesh"])),
         words=2,
     )  # fmt: skip

@@ -1,51 +1,150 @@
-"""`fishplate solve`: one job in the foreground, results beside the document."""
+"""`fishplate solve`: jobs in the foreground, one after the other, without server or queue."""
 
 from pathlib import Path
 from typing import Any
 
 import click
 
+from api.commands.documents import (
+    Document,
+    DocumentPath,
+    beside,
+    gather,
+    is_single,
+    result_folders,
+)
 from api.commands.folders import name_files, refuse_foreign, replaced
+from api.commands.outcomes import (
+    NOT_BEGUN,
+    WRONG,
+    Outcome,
+    exit_status,
+    finished,
+    print_outcomes,
+    print_troubles,
+    title_of,
+)
 from api.commands.report import print_results
-from api.commands.terminal import BAD_INPUT, FAILED, leave, out, progress
+from api.commands.terminal import (
+    BAD_INPUT,
+    FAILED,
+    Report,
+    err,
+    leave,
+    out,
+    progress,
+    progress_of_many,
+)
 from elements.errors import FishplateError
-from workers import pipeline
+from workers import record
 from workers.errors import DocumentError, FaultyError
+
+DOCUMENT_WRONG = "The job document is wrong; nothing was solved."
 
 
 @click.command()
-@click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.argument("jobs", nargs=-1, required=True, type=DocumentPath(folders=True), metavar="JOB...")
 @click.option(
     "--out",
     "folder",
     type=click.Path(file_okay=False, path_type=Path),
-    help="Folder for the results; JOB-results beside the document if not given.",
+    help="Folder for the results, where there are several jobs with a folder in it for each. "
+    "Without it they go beside each document, into JOB-results.",
 )
 @click.option("--pictures", default=6, show_default=True, type=click.IntRange(0, 1000),
-              help="How many pictures to draw.")  # fmt: skip
-def command(job: Path, folder: Path | None, pictures: int) -> None:
-    """Solve the job document JOB without server or queue.
+              help="How many pictures to draw of each job.")  # fmt: skip
+def command(jobs: tuple[Path, ...], folder: Path | None, pictures: int) -> None:
+    """Solve job documents without server or queue.
 
-    Writes the review sheet (sheet.html), results.json, tables/*.csv, fields/*.vtu and
-    previews/*/*.png. A folder with earlier results is replaced as a whole, so that old and new
-    files never mix.
+    Each JOB is a job document, or a folder: then every *.json in it is one. Writes the review sheet
+    (sheet.html), results.json, tables/*.csv, fields/*.vtu and previews/*/*.png of each. A folder
+    with earlier results is replaced as a whole, so that old and new files never mix.
+
+    One job prints its cautions, peaks and reactions; several print a line each, and one that fails
+    does not stop the others.
+
+    Ends with 0 when every job is finished; with 2 when documents are wrong and everything else
+    is finished; with 1 when a job failed.
+
+    \b
+    For example:
+      fishplate solve plate.json
+      fishplate solve plates/ --out results
+      fishplate solve yard/*.json dock/*.json --pictures 0
     """
-    folder = folder or job.with_name(f"{job.stem}-results")
+    if is_single(jobs):
+        solve_one(jobs[0], folder or beside(jobs[0]), pictures)
+    else:
+        solve_many(gather(jobs), folder, pictures)
+
+
+def solve_one(document: Path, folder: Path, pictures: int) -> None:
+    """Solve a job and print what an engineer wants to see first."""
     refuse_foreign(folder)
-    with replaced(folder) as fresh:
-        results = _solve(job.read_bytes(), fresh, pictures)
+    try:
+        with progress() as report:
+            results = _solve(document, folder, pictures, report)
+    except FaultyError as error:
+        faults = [fault.as_json() for fault in error.faults]
+        if isinstance(error, DocumentError):
+            leave(BAD_INPUT, DOCUMENT_WRONG, faults)
+        leave(FAILED, "The job failed.", faults)
+    except (FishplateError, OSError, MemoryError) as error:
+        leave(FAILED, f"The job failed: {error or 'out of memory'}")
     print_results(out(), results)
     name_files(folder)
 
 
-def _solve(document: bytes, folder: Path, pictures: int) -> dict[str, Any]:
+def solve_many(documents: list[Document], out_folder: Path | None, pictures: int) -> None:
+    """Solve every job, whatever becomes of the others, and print a line for each."""
+    folders = result_folders(documents, out_folder)
+    for folder in folders.values():
+        refuse_foreign(folder)
+    outcomes = {document: Outcome(document, NOT_BEGUN) for document in documents}
     try:
-        with progress() as report:
-            return pipeline.run(document, folder, job_id=None, progress=report, pictures=pictures)
+        with progress_of_many(len(documents)) as many:
+            for document, folder in folders.items():
+                found = _outcome(document, folder, pictures, many.now(document.name))
+                outcomes[document] = found
+                many.done(found.in_words())
+    finally:  # an interrupt too: what is solved is solved
+        print_outcomes(out(), list(outcomes.values()))
+        print_troubles(outcomes.values())
+    where = "beside each document, in JOB-results" if out_folder is None else f"to {out_folder}"
+    err().print(f"Written {where}", soft_wrap=True)
+    click.get_current_context().exit(exit_status(outcomes.values()))
+
+
+def _outcome(document: Document, folder: Path, pictures: int, report: Report) -> Outcome:
+    try:
+        return finished(document, _solve(document.path, folder, pictures, report))
     except FaultyError as error:
-        faults = [fault.as_json() for fault in error.faults]
-        if isinstance(error, DocumentError):
-            leave(BAD_INPUT, "The job document is wrong; nothing was solved.", faults)
-        leave(FAILED, "The job failed.", faults)
+        wrong = isinstance(error, DocumentError)
+        return _failed(
+            document,
+            WRONG if wrong else record.FAILED,
+            DOCUMENT_WRONG if wrong else "The job failed.",
+            [fault.as_json() for fault in error.faults],
+        )
     except (FishplateError, OSError, MemoryError) as error:
-        leave(FAILED, f"The job failed: {error or 'out of memory'}")
+        return _failed(document, record.FAILED, f"The job failed: {error or 'out of memory'}")
+    except Exception as error:  # noqa: BLE001 - the others are solved all the same
+        words = f"Fishplate itself failed here ({type(error).__name__}: {error}); please report it."
+        return _failed(document, record.FAILED, words)
+
+
+def _failed(document: Document, state: str, reason: str, faults: Any = ()) -> Outcome:
+    try:
+        title = title_of(document.path.read_bytes())
+    except OSError:
+        title = ""
+    return Outcome(document, state, title, reason, faults)
+
+
+def _solve(document: Path, folder: Path, pictures: int, report: Report) -> dict[str, Any]:
+    # Takes seconds to load, for which neither help nor completion should wait.
+    from workers import pipeline  # noqa: PLC0415
+
+    content = document.read_bytes()
+    with replaced(folder) as fresh:
+        return pipeline.run(content, fresh, job_id=None, progress=report, pictures=pictures)

@@ -1,25 +1,35 @@
-"""`fishplate submit`: a job to a server, and its results back."""
+"""`fishplate submit`: jobs to a server, and their results back."""
 
-import time
-import uuid
 from pathlib import Path
 from typing import Any
-from urllib.parse import quote
 
 import click
 
 from api.commands.client import Client, ServerError
-from api.commands.folders import RESULTS, name_files, refuse_foreign, replaced
+from api.commands.documents import Document, DocumentPath, gather, is_single, result_folders
+from api.commands.fetching import fetch_files
+from api.commands.folders import name_files, refuse_foreign, replaced
+from api.commands.following import Job, Sent, follow, follow_all, key_of
+from api.commands.outcomes import (
+    WRONG,
+    Outcome,
+    exit_status,
+    finished,
+    print_outcomes,
+    print_troubles,
+    title_of,
+)
 from api.commands.report import print_results
-from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress
-from workers.outputs.names import SHEET, file_name
+from api.commands.terminal import BAD_INPUT, FAILED, err, leave, out, progress_of_many
 from workers.record import CANCELLED, FINISHED, PRIORITIES, UNFINISHED
 
-PAUSE = 0.25  # shortest time between two looks at a job [s]
+# What a server says about the document, not about who sends it or how much there is to do.
+ABOUT_THE_DOCUMENT = frozenset({400, 413, 415, 422})
+NOT_TWICE = "Repeat the command to go on: what was accepted is not sent twice."
 
 
 @click.command()
-@click.argument("job", type=click.Path(exists=True, dir_okay=False, path_type=Path))
+@click.argument("jobs", nargs=-1, required=True, type=DocumentPath(folders=True), metavar="JOB...")
 @click.option(
     "--url",
     default="http://127.0.0.1:8470",
@@ -32,93 +42,189 @@ PAUSE = 0.25  # shortest time between two looks at a job [s]
     help="Token, where the server wants one; better in FISHPLATE_TOKEN, which other users of this "
     "machine cannot read.",
 )
-@click.option("--priority", type=click.Choice(PRIORITIES), help="Line that the job should wait in.")
-@click.option("--wait", is_flag=True, help="Wait for the job and print its results.")
+@click.option("--priority", type=click.Choice(PRIORITIES), help="Line that jobs should wait in.")
+@click.option("--wait", is_flag=True, help="Wait for the jobs and print what came of them.")
 @click.option(
     "--out",
     "folder",
     type=click.Path(file_okay=False, path_type=Path),
-    help="Fetch review sheet, results, tables, fields and pictures into this folder (implies "
-    "--wait).",
+    help="Fetch review sheet, results, tables, fields and pictures into this folder, where there "
+    "are several jobs into a folder in it for each (implies --wait).",
 )
+@click.option("--anew", is_flag=True, help="Have documents solved once more that were sent before.")
 def command(
-    job: Path,
+    jobs: tuple[Path, ...],
     url: str,
     token: str | None,
     priority: str | None,
     wait: bool,
     folder: Path | None,
+    anew: bool,
 ) -> None:
-    """Send the job document JOB to a server.
+    """Send job documents to a server.
 
-    Prints the address of the job; with --wait also the summary of its results.
+    Each JOB is a job document, or a folder: then every *.json in it is one. Prints the id of each
+    job; with --wait or --out what came of it: one job with its cautions, peaks and reactions,
+    several with a line each.
+
+    A document that the server has already is not sent twice: a command that was interrupted can be
+    repeated. Where the server has too much to do, waits as long as it asks for.
+
+    Ends with 0 when every job is accepted, or finished where it was waited for; with 2 when
+    documents are wrong and everything else went well; with 1 when a job failed, or the server.
+
+    \b
+    For example:
+      fishplate submit plate.json --wait
+      fishplate submit plates/ --out results --url https://plates.example
     """
-    if folder:
-        refuse_foreign(folder)
     try:
         client = Client(url, token)
         if client.shows_token:
             err().print("[yellow]The token travels unencrypted; use https.[/yellow]")
-        accepted = client.submit(job.read_bytes(), key=str(uuid.uuid4()), priority=priority)
-        here = client.url.rstrip("/") + accepted["links"]["self"]
-        err().print(f"accepted: {here}", soft_wrap=True)
-        if not (wait or folder):
-            out().print(accepted["id"])
-            return
-        final = follow(client, accepted)
-        _leave_unless_finished(final)
-        results = client.results(final["id"])
-        if folder:
-            with replaced(folder) as fresh:
-                fetch_files(client, final["links"]["self"], results, fresh)
-            name_files(folder)
+        if is_single(jobs):
+            submit_one(client, jobs[0], priority, anew, wait=wait or bool(folder), folder=folder)
+        else:
+            submit_many(
+                client, gather(jobs), priority, anew, wait=wait or bool(folder), out_folder=folder
+            )
     except ServerError as error:
-        # 429 is nothing wrong with the job: the same may be sent later.
-        bad = error.status is not None and 400 <= error.status < 500 and error.status != 429
+        bad = error.status is not None and 400 <= error.status < 500
         leave(BAD_INPUT if bad else FAILED, str(error), error.errors)
+    except OSError as error:
+        leave(FAILED, str(error))
+
+
+def submit_one(
+    client: Client,
+    document: Path,
+    priority: str | None,
+    anew: bool,
+    *,
+    wait: bool,
+    folder: Path | None,
+) -> None:
+    """Send a job; if asked for, wait for it, print its results and fetch its files."""
+    if folder:
+        refuse_foreign(folder)
+    client.on_pause = lambda seconds: err().print(_wait_words(seconds))
+    content = document.read_bytes()
+    job, new = client.submit(content, key_of(content, anew), priority)
+    here = client.url.rstrip("/") + job["links"]["self"]
+    known = f"known already, {job['state']} (--anew has it solved once more)"
+    err().print(f"{'accepted' if new else known}: {here}", soft_wrap=True)
+    if not wait:
+        out().print(job["id"])
+        return
+    final = follow(client, job)
+    if final["state"] != FINISHED:
+        leave(FAILED, _why(final), final["errors"])
+    results = _results(client, final, folder)
     print_results(out(), results)
+    if folder:
+        name_files(folder)
 
 
-def follow(client: Client, job: dict[str, Any]) -> dict[str, Any]:
-    """Wait until the job is final, showing where it is."""
-    with progress() as report:
-        while job["state"] in UNFINISHED:
-            now = job["progress"] or {"stage": job["state"], "fraction": 0.0}
-            report(now["stage"], now["fraction"])
-            asked = time.monotonic()
-            job = client.job(job["id"], wait=1)  # a person watches: no stage should go unseen long
-            # A busy server may answer at once instead of holding the request.
-            if job["state"] in UNFINISHED:
-                time.sleep(max(0.0, PAUSE - (time.monotonic() - asked)))
-    return job
+def submit_many(
+    client: Client,
+    documents: list[Document],
+    priority: str | None,
+    anew: bool,
+    *,
+    wait: bool,
+    out_folder: Path | None,
+) -> None:
+    """Send every job, whatever becomes of the others; if asked for, wait for all of them."""
+    folders = result_folders(documents, out_folder) if out_folder else {}
+    for folder in folders.values():
+        refuse_foreign(folder)
+    outcomes: dict[Document, Outcome] = {}
+    sent: list[Sent] = []
+    try:
+        _send_all(client, documents, priority, anew, outcomes, sent)
+        if wait:
+            with progress_of_many(len(sent)) as many:
+                client.on_pause = lambda seconds: many.note(_wait_words(seconds))
+                for document, job in follow_all(client, sent, many):
+                    found = _conclude(client, document, job, folders.get(document))
+                    outcomes[document] = found
+                    many.done(found.in_words())
+    except ServerError as error:
+        far = f"{len(sent)} of {len(documents)} documents were accepted."
+        raise ServerError(f"{error} {far} {NOT_TWICE}", error.status, error.errors) from error
+    finally:  # an interrupt too
+        _print(outcomes, sent, wait)
+    if out_folder:
+        err().print(f"Written to {out_folder}", soft_wrap=True)
+    click.get_current_context().exit(exit_status(outcomes.values()))
 
 
-def _leave_unless_finished(job: dict[str, Any]) -> None:
+def _send_all(
+    client: Client,
+    documents: list[Document],
+    priority: str | None,
+    anew: bool,
+    outcomes: dict[Document, Outcome],
+    sent: list[Sent],
+) -> None:
+    """Adds to `outcomes` what the server says of each, to `sent` what it accepts."""
+    known = 0
+    with progress_of_many(len(documents)) as many:
+        client.on_pause = lambda seconds: many.note(_wait_words(seconds))
+        for document in documents:
+            content, words = document.path.read_bytes(), ""
+            try:
+                job, new = client.submit(content, key_of(content, anew), priority)
+            except ServerError as error:
+                if error.status not in ABOUT_THE_DOCUMENT:
+                    raise
+                found = Outcome(document, WRONG, title_of(content), str(error), error.errors)
+            else:
+                sent.append((document, job))
+                found = _as_it_is(document, job)
+                if not new:
+                    known, words = known + 1, ", known already"
+            outcomes[document] = found
+            many.done(found.in_words() + words)
+    if known:
+        err().print(f"{known} of {len(documents)} were known already; --anew has them solved once "
+                    "more", soft_wrap=True)  # fmt: skip
+
+
+def _as_it_is(document: Document, job: Job) -> Outcome:
+    bad = job["state"] not in (FINISHED, *UNFINISHED)
+    reason = _why(job) if bad else ""
+    return Outcome(document, job["state"], job["title"], reason, job["errors"])
+
+
+def _conclude(client: Client, document: Document, job: Job, folder: Path | None) -> Outcome:
     if job["state"] != FINISHED:
-        what = "was cancelled" if job["state"] == CANCELLED else "failed"
-        leave(FAILED, f"The job {what}: {job['reason'] or 'see the faults'}", job["errors"])
+        return _as_it_is(document, job)
+    return finished(document, _results(client, job, folder))
 
 
-def fetch_files(client: Client, here: str, results: dict[str, Any], folder: Path) -> None:
-    """Fetch the results and every file that was made with the job."""
-    client.fetch(f"{here}/results", folder / RESULTS)
-    client.fetch(f"{here}/sheet", folder / SHEET)
-    for table in results["files"]["tables"]:
-        target = folder / "tables" / f"{file_name(table)}.csv"
-        client.fetch(f"{here}/tables/{quote(table, safe='')}.csv", target)
-    # Names go into addresses and file names by our own rules; paths in an answer are not followed.
-    for case in results["files"]["fields"]:
-        target = folder / "fields" / f"{file_name(case)}.vtu"
-        client.fetch(f"{here}/fields/{quote(case, safe='')}.vtu", target)
-    for case, pictures in results["files"]["previews"].items():
-        for quantity in pictures:
-            target = folder / "previews" / file_name(case) / f"{file_name(quantity)}.png"
-            client.fetch(f"{here}/previews/{quote(case, safe='')}/{quote(quantity)}.png", target)
-    made = results["files"]["envelope"]
-    names = [f"{measure}.png" for measure in made["previews"]]
-    for name in [*names, "fields.vtu"] if "fields" in made else names:
-        target = folder / "envelope" / file_name(name)
-        client.fetch(f"{here}/envelope/{quote(name, safe='')}", target)
-    for line in results["files"]["lines"]:
-        target = folder / "lines" / f"{file_name(line)}.png"
-        client.fetch(f"{here}/lines/{quote(line, safe='')}.png", target)
+def _results(client: Client, job: Job, folder: Path | None) -> dict[str, Any]:
+    """Results of a finished job; with a folder, all its files as well."""
+    results = client.results(job["id"])
+    if folder:
+        with replaced(folder) as fresh:
+            fetch_files(client, job["links"]["self"], results, fresh)
+    return results
+
+
+def _print(outcomes: dict[Document, Outcome], sent: list[Sent], wait: bool) -> None:
+    if wait:
+        print_outcomes(out(), list(outcomes.values()))
+    else:
+        for document, job in sent:
+            out().print(f"{job['id']}  {document.name}", soft_wrap=True, markup=False)
+    print_troubles(outcomes.values())
+
+
+def _why(job: Job) -> str:
+    what = "was cancelled" if job["state"] == CANCELLED else "failed"
+    return f"The job {what}: {job['reason'] or 'see the faults'}"
+
+
+def _wait_words(seconds: float) -> str:
+    return f"the server has too much to do and asks to wait {seconds:.0f} s"

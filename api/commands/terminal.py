@@ -8,7 +8,15 @@ from typing import Any, NoReturn
 import click
 from rich.console import Console
 from rich.markup import escape
-from rich.progress import BarColumn, Progress, TextColumn, TimeElapsedColumn
+from rich.progress import (
+    BarColumn,
+    Progress,
+    ProgressColumn,
+    TextColumn,
+    TimeElapsedColumn,
+    TimeRemainingColumn,
+)
+from rich.table import Column
 
 FAILED = 1
 BAD_INPUT = 2
@@ -37,28 +45,79 @@ def progress() -> Iterator[Report]:
     """A function (stage, fraction) that shows a bar on a terminal and plain lines elsewhere."""
     console = err()
     if console.is_terminal:
-        with _bar(console) as report:
-            yield report
+        with _bar(console) as bar:
+            task = bar.add_task("waiting", total=1.0)
+            yield lambda stage, fraction: bar.update(
+                task, description=stage, completed=_part(stage, fraction)
+            )
     else:
         yield _lines()
 
 
+class Many:
+    """How far many jobs are: one bar for all on a terminal, a line for each job elsewhere."""
+
+    def __init__(self, total: int, bar: Progress | None) -> None:
+        self._total, self._done, self._bar = total, 0, bar
+        if bar is not None:
+            self._task = bar.add_task(self._count(), total=total)
+
+    def now(self, words: str) -> Report:
+        """Progress of the job that is being worked on; `words` say which."""
+        return lambda stage, fraction: self._show(f"{words}: {stage}", _part(stage, fraction))
+
+    def note(self, words: str) -> None:
+        """Something that holds everything up."""
+        if self._bar is None:
+            print(words, file=sys.stderr, flush=True)
+        self._show(words)
+
+    def _show(self, words: str, part: float = 0.0) -> None:
+        if self._bar is not None:
+            self._bar.update(
+                self._task,
+                description=f"{self._count()}  {escape(words)}",
+                completed=self._done + part,
+            )
+
+    def done(self, words: str) -> None:
+        """One more is done; `words` say which and how it went."""
+        self._done += 1
+        if self._bar is None:
+            print(f"{self._count()}  {words}", file=sys.stderr, flush=True)
+        else:
+            self._bar.update(self._task, description=self._count(), completed=self._done)
+
+    def _count(self) -> str:
+        return f"{self._done} of {self._total}"
+
+
 @contextmanager
-def _bar(console: Console) -> Iterator[Report]:
-    columns = (
-        TextColumn("{task.description:<12}"),
-        BarColumn(bar_width=40),
+def progress_of_many(total: int) -> Iterator[Many]:
+    """Shows how far many jobs are."""
+    console = err()
+    if console.is_terminal:
+        with _bar(console, TimeRemainingColumn()) as bar:
+            yield Many(total, bar)
+    else:
+        yield Many(total, None)
+
+
+def _bar(console: Console, *more: ProgressColumn) -> Progress:
+    """A bar that is gone when all is done."""
+    return Progress(
+        BarColumn(bar_width=24),
         TextColumn("{task.percentage:>3.0f}%"),
-        TimeElapsedColumn(),
+        *(more or (TimeElapsedColumn(),)),
+        TextColumn("{task.description}", table_column=Column(no_wrap=True, overflow="ellipsis")),
+        console=console,
+        transient=True,
     )
-    with Progress(*columns, console=console, transient=True) as bar:
-        task = bar.add_task("waiting", total=len(STAGES))
 
-        def report(stage: str, fraction: float) -> None:
-            begun = STAGES.index(stage) + fraction if stage in STAGES else 0.0
-            bar.update(task, description=stage, completed=begun)
 
-        yield report
+def _part(stage: str, fraction: float) -> float:
+    """How much of a job is done, if all stages were alike."""
+    return (STAGES.index(stage) + fraction) / len(STAGES) if stage in STAGES else 0.0
 
 
 def _lines() -> Report:
@@ -73,9 +132,10 @@ def _lines() -> Report:
     return report
 
 
-def print_faults(faults: Iterable[Mapping[str, Any]]) -> None:
-    """Where and what, one fault a line."""
+def print_faults(message: str, faults: Iterable[Mapping[str, Any]]) -> None:
+    """What is wrong, then where and what in particular, one fault a line."""
     console = err()
+    console.print(f"[bold red]{escape(message)}[/bold red]", soft_wrap=True)
     for fault in faults:
         place = fault.get("pointer", fault.get("parameter", "")) or "(document)"
         console.print(f"  [bold]{escape(place)}[/bold]  {escape(str(fault['message']))}",
@@ -84,6 +144,5 @@ def print_faults(faults: Iterable[Mapping[str, Any]]) -> None:
 
 def leave(status: int, message: str, faults: Iterable[Mapping[str, Any]] = ()) -> NoReturn:
     """Say why on standard error and end with the status."""
-    err().print(f"[bold red]{escape(message)}[/bold red]", soft_wrap=True)
-    print_faults(faults)
+    print_faults(message, faults)
     click.get_current_context().exit(status)

@@ -203,4 +203,4 @@ def test_a_name_that_no_case_has_is_bad_input() -> None:
 def test_one_case_can_be_run_from_the_command_line() -> None:
     result = run("--only", "tapered")
     assert result.exit_code == 0
-    assert "target 23.96" in result.stdout
+    assert " 23.96 " in result.stdout
