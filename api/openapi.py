@@ -79,6 +79,7 @@ class Blueprint(flask_smorest.Blueprint):
     def __init__(self, *arguments: Any, **options: Any) -> None:
         super().__init__(*arguments, **options)
         self._prepare_doc_cbks.append(self._prepare_security_doc)
+        self._prepare_doc_cbks.append(self._prepare_file_doc)
 
     @staticmethod
     def _prepare_security_doc(
@@ -91,14 +92,32 @@ class Blueprint(flask_smorest.Blueprint):
             doc["responses"] = {**problems_of(*refusals), **doc.get("responses", {})}
         return doc
 
+    @staticmethod
+    def _prepare_file_doc(
+        doc: dict[str, Any], doc_info: dict[str, Any], **_: Any
+    ) -> dict[str, Any]:
+        """A file can be asked for under conditions, and most files in parts (RFC 9110, 13, 14)."""
+        file = doc_info.get("manual_doc", {}).get("responses", {}).get(200)
+        headers = file["headers"] if isinstance(file, dict) else {}
+        if "ETag" in headers:
+            doc["responses"][304] = {"description": "The client has it already"}
+        if "Accept-Ranges" in headers:
+            doc["responses"][206] = {**file, "description": "Parts of the file"}
+            doc["responses"] |= problems_of(416)
+        return doc
+
 
 def problems_of(*statuses: int) -> dict[int, str]:
     """Responses that a view may give besides its own: problem documents of these statuses."""
     return {status: http.HTTPStatus(status).name for status in statuses}
 
 
-def describe_file(media_type: str, schema: Any = None) -> dict[str, Any]:
-    """Description of a 200 response that is a file."""
+def describe_file(media_type: str, schema: Any = None, *, parts: bool = True) -> dict[str, Any]:
+    """Description of a 200 response that is a file.
+
+    parts : whether it can be asked for in parts; what is made while it is sent cannot
+    """
+    ranges = {"Accept-Ranges": {"schema": {"type": "string"}}} if parts else {}
     return {
         "description": "The file",
         "headers": {
@@ -107,6 +126,7 @@ def describe_file(media_type: str, schema: Any = None) -> dict[str, Any]:
                 "schema": {"type": "string"},
             },
             "ETag": {"schema": {"type": "string"}},
+            **ranges,
         },
         "content": {media_type: {"schema": schema or {}}},
     }

@@ -153,7 +153,7 @@ def show_convergence(job_id: str) -> Response:
 
 
 @blueprint.get("/jobs/<job_id>/tables/<name>.csv")
-@blueprint.doc(responses={200: describe_file(CSV), **problems_of(404, 409)})
+@blueprint.doc(responses={200: describe_file(CSV, parts=False), **problems_of(404, 409)})
 def show_table(job_id: str, name: str) -> Response:
     """A part of the results as a table
 
@@ -182,7 +182,7 @@ def show_sheet(job_id: str) -> Response:
 
 
 @blueprint.get("/jobs/<job_id>/archive.zip")
-@blueprint.doc(responses={200: describe_file(ZIP), **problems_of(404, 409)})
+@blueprint.doc(responses={200: describe_file(ZIP, parts=False), **problems_of(404, 409)})
 def show_archive(job_id: str) -> Response:
     """Everything of a finished job in one file
 
