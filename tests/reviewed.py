@@ -8,10 +8,14 @@ from copy import deepcopy
 from dataclasses import replace
 from typing import Any
 
+import orjson
+
 from tests.plates import grid
+from workers import pipeline
 from workers.analysis.mesh import Mesh
 from workers.analysis.quality import mesh_quality
 from workers.cautions import STANDING, Caution
+from workers.document.read import read_document
 from workers.geometry import PatchGeometry
 from workers.job import Job, Limits, LoadCase, Material, Named, Plate, Pressure, Support, Units
 from workers.review.review import review
@@ -92,3 +96,10 @@ def raised(
         if caution not in STANDING:
             codes.setdefault(caution.code, []).append(caution)
     return codes
+
+
+def cautions(document: dict[str, Any]) -> list[Caution]:
+    """Read, mesh, solve, summarise, review: as a worker does, without files."""
+    job = read_document(orjson.dumps(document))
+    done = pipeline.solve(job, pipeline.silent, most_dofs=None, seconds=60.0)
+    return review(job, done.mesh, done.results, done.solution, done.recovery)

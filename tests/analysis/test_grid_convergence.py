@@ -71,3 +71,15 @@ def test_one_mesh_says_nothing() -> None:
 def test_values_that_no_longer_change_have_converged() -> None:
     found = grid_convergence(list(2.0 + 1e-12 * np.arange(3)), [4.0, 2.0, 1.0], 2.0)
     assert (found.behaviour, found.uncertainty) == ("converging", 0.0)
+
+
+def test_changes_that_begin_late_have_no_order() -> None:
+    found = grid_convergence([2.0, 2.0, 2.5], [4.0, 2.0, 1.0], 2.0)
+    assert (found.behaviour, found.order) == ("unresolved", None)
+    assert found.uncertainty == pytest.approx(1.5)
+
+
+def test_rounding_of_larger_values_is_no_change() -> None:
+    """A stress that vanishes beside one of 100."""
+    found = grid_convergence([3e-14, -2e-14, 0.0], [4.0, 2.0, 1.0], 2.0, scale=100.0)
+    assert (found.behaviour, found.uncertainty) == ("converging", 0.0)

@@ -2,15 +2,12 @@
 
 from typing import Any
 
-import orjson
 import pytest
 
 from tests.caution_documents import CASES, bar, tie, web
-from workers import pipeline
+from tests.reviewed import cautions
 from workers.cautions import STANDING, Caution
-from workers.document.read import read_document
 from workers.review.catalogue import RULES
-from workers.review.review import review
 
 Json = dict[str, Any]
 
@@ -19,13 +16,6 @@ Json = dict[str, Any]
 OF_THE_PROGRAM = {"equilibrium-open", "solved-by-iteration"}
 RAISING = [(code, number) for code, (raising, _) in CASES.items() for number in range(len(raising))]
 SILENT = [(code, number) for code, (_, silent) in CASES.items() for number in range(len(silent))]
-
-
-def cautions(document: Json) -> list[Caution]:
-    """Read, mesh, solve, summarise, review: as a worker does, without files."""
-    job = read_document(orjson.dumps(document))
-    done = pipeline.solve(job, pipeline.silent, most_dofs=None, seconds=60.0)
-    return review(job, done.mesh, done.results, done.solution, done.recovery)
 
 
 def named(code: str, found: list[Caution]) -> list[Caution]:

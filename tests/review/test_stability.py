@@ -6,7 +6,9 @@ import numpy as np
 import pytest
 from scipy.linalg import eigh
 
+from tests.caution_documents import changed, enclosed
 from tests.plates import grid, plate_job, ring
+from tests.reviewed import cautions
 from workers.job import Named, OnCircle, Spring, Support
 from workers.review.strips import Strip, coefficient, find_edges, strips_through
 
@@ -140,3 +142,16 @@ def test_a_long_plate_on_supported_edges_buckles_in_squares() -> None:
 
 def test_a_strip_with_free_edges_is_a_strut() -> None:
     assert coefficient(Strip((0.5, 0.5), 1.0, 6.0, 0, False)) == (1.0, 6.0)
+
+
+@pytest.mark.parametrize("degrees", [0, 30])
+def test_where_all_directions_are_compressed_alike_the_border_gives_the_strip(degrees: int) -> None:
+    """A plate 300 x 100 that is held all around and warm, turned: across the short way."""
+    turn = complex(np.exp(1j * np.radians(degrees)))
+    corners = [turn * z for z in (0, 300, 300 + 100j, 100j)]
+    document = changed(
+        enclosed(2.45), {"geometry/patches/0/corners": [[z.real, z.imag] for z in corners]}
+    )
+    (caution,) = [c for c in cautions(document) if c.code == "compression-buckling"]
+    assert caution.evidence["b"] == pytest.approx(300)
+    assert caution.evidence["k"] == pytest.approx((3 + 1 / 3) ** 2)

@@ -102,7 +102,11 @@ class Record:
         else:
             sizes = [mesh.sizes[name][quantity] for mesh in self.meshes]
         same = _alike(peaks)
-        verdict = self._verdict(peaks[-same:], sizes[-same:], quantity, SURE if uniform else UNSURE)
+        # A principal stress that vanishes by the theory is rounding of the others.
+        largest = self.meshes[-1].states[name]["von_mises"]["value"]
+        scale = 0.0 if quantity == "displacement" else largest
+        safety = SURE if uniform else UNSURE
+        verdict = self._verdict(peaks[-same:], sizes[-same:], quantity, safety, scale)
         return {
             "values": [peak["value"] for peak in peaks],
             "at": [peak["at"] for peak in peaks],
@@ -114,13 +118,13 @@ class Record:
         }
 
     def _verdict(
-        self, peaks: list[Json], sizes: list[float], quantity: str, safety: float
+        self, peaks: list[Json], sizes: list[float], quantity: str, safety: float, scale: float
     ) -> GridConvergence:
         # Recovered stress mostly converges faster than the elements' own, but an order above theirs
         # may be chance, and would make the uncertainty too small.
         order = get(self.element).order
         highest = float(order if quantity != "displacement" else order + 1)
-        return grid_convergence([peak["value"] for peak in peaks], sizes, highest, safety)
+        return grid_convergence([peak["value"] for peak in peaks], sizes, highest, safety, scale)
 
     def _judged(self, peak: Json, name: str, quantity: str, entry: Json) -> Json:
         """The reported peak in the light of the series."""

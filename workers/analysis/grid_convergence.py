@@ -22,7 +22,7 @@ LEAST_RATIO = 1.1  # of sizes: below this two meshes say nothing of the order
 LEAST_ORDER = 0.5  # observed: slower convergence is not told from none
 LEAST_GROWTH = 0.1  # exponent of growth over size; a sharp but finite peak grows less
 SURE, UNSURE = 1.25, 3.0  # factors of safety
-SETTLED = 1e-9  # of the value: changes are rounding
+SETTLED = 1e-9  # of value or scale: changes are rounding
 
 
 @dataclass(frozen=True)
@@ -42,7 +42,11 @@ class GridConvergence:
 
 
 def grid_convergence(
-    values: Sequence[float], sizes: Sequence[float], highest_order: float, safety: float = SURE
+    values: Sequence[float],
+    sizes: Sequence[float],
+    highest_order: float,
+    safety: float = SURE,
+    scale: float = 0.0,
 ) -> GridConvergence:
     """Judge a series of values on finer and finer meshes.
 
@@ -51,13 +55,14 @@ def grid_convergence(
     sizes : of the elements, falling
     highest_order : an observed order above it counts as this one
     safety : factor where an order is observed
+    scale : what the values are small against, where they may be nothing but rounding
     """
     if len(values) < 3:
         return _without_order(values, "unresolved")
     coarse, middle, fine = values[-3:]
     first, last = middle - coarse, fine - middle
     r32, r21 = sizes[-3] / sizes[-2], sizes[-2] / sizes[-1]
-    if max(abs(first), abs(last)) <= SETTLED * abs(fine):
+    if max(abs(first), abs(last)) <= SETTLED * max(abs(fine), scale):
         return GridConvergence("converging", highest_order, fine, 0.0)
     if min(r32, r21) < LEAST_RATIO or first * last < 0:
         return _without_order(values, "oscillating" if first * last < 0 else "unresolved")
@@ -88,6 +93,8 @@ def _observed_order(first: float, last: float, r32: float, r21: float, highest: 
     """p with first / last = r21^p (r32^p - 1) / (r21^p - 1), between 0 and the highest."""
     if last == 0:
         return highest
+    if first == 0:
+        return 0.0
 
     def excess(p: float) -> float:
         return float(np.log(abs(first / last) * (r21**p - 1) / (r32**p - 1) / r21**p))

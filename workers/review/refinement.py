@@ -108,13 +108,30 @@ def _series(context: ReviewContext, peak: Peak) -> dict[str, Any] | None:
     return entry
 
 
+def _uncertainty(context: ReviewContext, peak: Peak) -> float:
+    """Of a von Mises peak by the series of meshes [F/L^2].
+
+    Where the series converges, the interval that is reported has taken it into account.
+    """
+    entry = _series(context, peak)
+    if entry is None or entry["uncertainty"] is None:
+        return 0.0
+    uncertainty = float(entry["uncertainty"])
+    interval = peak.record["interval"]
+    if entry["behaviour"] == "converging" and interval is not None:
+        low, high = interval
+        uncertainty = min(uncertainty, max(high - peak.value, peak.value - low))
+    return uncertainty
+
+
 @rule(
     "not-converged",
     "check",
     title="Refining the mesh has not settled the results",
     looks_at="Whether an adaptive run reached its target error, and the uncertainty of the peak "
     "von Mises stress by the series of meshes.",
-    action="Allow more unknowns or ask for a larger error; refine where the peak is, with `sizes`.",
+    action="Where the target was not reached, allow more unknowns, or ask for a larger error. "
+    "Where a peak has not settled, ask for a smaller error, or refine where it is, with `sizes`.",
 )
 def not_converged(context: ReviewContext) -> Iterator[Finding]:
     record = context.results.get("convergence")
@@ -134,9 +151,9 @@ def not_converged(context: ReviewContext) -> Iterator[Finding]:
         )
     unsettled = []
     for peak in context.peaks("von_mises"):
-        entry = _series(context, peak)
-        if entry is not None and (entry["uncertainty"] or 0.0) > UNSETTLED * abs(peak.value):
-            unsettled.append((peak, float(entry["uncertainty"])))
+        uncertainty = _uncertainty(context, peak)
+        if uncertainty > UNSETTLED * abs(peak.value):
+            unsettled.append((peak, uncertainty))
     if unsettled:
         peak, uncertainty = unsettled[0]
         yield finding(

@@ -20,6 +20,7 @@ SHARE = 0.5
 PLACES = 60  # elements from which strips are looked for, evenly spread
 ACROSS = 8  # points on each side of a place at which the stress is read
 COMPRESSED = 0.05  # of the largest stress of the state; less is not worth a strip
+ALIKE = 0.01  # of the stress: where it differs less by direction, rounding would choose the strip
 EDGES = {
     0: "both long edges taken as free and the ends as simply supported",
     1: "one long edge taken as simply supported, the other as free",
@@ -86,7 +87,7 @@ def _worst_strip(context: ReviewContext, edges: Edges, state: str) -> _Buckling 
     stress = context.nodal_stress(state)
     if stress is None or context.recovery is None:
         return None
-    places, directions, regions = _compressed_places(context, stress)
+    places, directions, regions = _compressed_places(context, edges, stress)
     strips = strips_through(edges, places, directions)
     kept = [number for number, strip in enumerate(strips) if strip is not None]
     if not kept:
@@ -105,7 +106,9 @@ def _worst_strip(context: ReviewContext, edges: Edges, state: str) -> _Buckling 
     return max(found, key=lambda one: one.stress / one.critical)
 
 
-def _compressed_places(context: ReviewContext, stress: Array) -> tuple[Array, Array, list[str]]:
+def _compressed_places(
+    context: ReviewContext, edges: Edges, stress: Array
+) -> tuple[Array, Array, list[str]]:
     """Centres of some elements, a direction in which each is compressed, its region."""
     assert context.recovery is not None
     centres, means, regions = [], [], []
@@ -124,12 +127,26 @@ def _compressed_places(context: ReviewContext, stress: Array) -> tuple[Array, Ar
         chosen = places[:: len(places) // PLACES + 1]
         if len(places):
             chosen = np.append(chosen, places[of_direction[places].argmin()])
-        xx, yy, xy = mean[chosen].T
         # The larger principal stress acts along this angle, the smaller one across it.
-        angle = 0.5 * np.arctan2(2 * xy, xx - yy) + (0 if sign > 0 else np.pi / 2)
+        angle = _angles(edges, centre[chosen], mean[chosen]) + (0 if sign > 0 else np.pi / 2)
         found.append((chosen, np.column_stack((np.cos(angle), np.sin(angle)))))
     chosen, directions = (np.concatenate(parts) for parts in zip(*found, strict=True))
     return centre[chosen], directions, [context.mesh.regions[n] for n in region[chosen]]
+
+
+def _angles(edges: Edges, places: Array, stress: Array) -> Array:
+    """Of the larger principal stress (p, 3) at places (p, 2); along the nearest border where all
+    directions are principal ones, (p,) [rad].
+    """
+    xx, yy, xy = stress.T
+    angle = 0.5 * np.arctan2(2 * xy, xx - yy)
+    even = np.hypot((xx - yy) / 2, xy) < ALIKE * np.abs(xx + yy) / 2
+    start, end = edges.border.start, edges.border.end
+    apart = np.linalg.norm(places[even, None] - (start + end) / 2, axis=2)
+    if even.any():
+        x, y = (end - start)[apart.argmin(axis=1)].T
+        angle[even] = np.arctan2(y, x)
+    return np.asarray(angle)
 
 
 def _across(place: Array, direction: Array, strip: Strip | None) -> Array:
