@@ -102,7 +102,9 @@ class Blueprint(flask_smorest.Blueprint):
         if "ETag" in headers:
             doc["responses"][304] = {"description": "The client has it already"}
         if "Accept-Ranges" in headers:
-            doc["responses"][206] = {**file, "description": "Parts of the file"}
+            content = {media: {} for media in file["content"]}
+            doc["responses"][206] = {**file, "description": "A part of the file",
+                                     "content": content}  # fmt: skip
             doc["responses"] |= problems_of(416)
         return doc
 

@@ -5,6 +5,7 @@ every id. It may name too much after a crash, never too little: entries are adde
 they stand for and taken out after it has gone. Readers therefore look at the record as well.
 """
 
+import hashlib
 import os
 from collections.abc import Iterable, Iterator, Sequence
 from contextlib import suppress
@@ -14,6 +15,8 @@ from urllib.parse import quote
 
 from workers import durable
 from workers.record import INTERACTIVE, QUEUED, RUNNING, STATES, Record, day_of, is_id
+
+LONGEST_NAME = 200  # of a folder that is named after its label [bytes]
 
 
 class Index:
@@ -76,6 +79,19 @@ def newest_first(indexes: Sequence[Index], after: str | None = None) -> Iterator
                 yield job_id
 
 
+def _folder_name(label: str) -> str:
+    """A path component for a label; differs whenever the labels differ.
+
+    File systems allow 255 bytes, and a letter may take twelve. Those that are cut are longer than
+    all that are not.
+    """
+    # The dot keeps "", "." and ".." from naming the folder itself or its parent.
+    name = "." + quote(label, safe=" ")
+    if len(name) <= LONGEST_NAME:
+        return name
+    return f"{name[:LONGEST_NAME]}~{hashlib.sha256(label.encode()).hexdigest()[:32]}"
+
+
 class Indexes:
     """Where to look for the jobs of a state, of a label, of a workspace."""
 
@@ -91,8 +107,7 @@ class Indexes:
         return self._states[state]
 
     def of_label(self, label: str) -> Index:
-        # The dot keeps "", "." and ".." from naming the folder itself or its parent.
-        return Index(self._labels / ("." + quote(label, safe=" ")))
+        return Index(self._labels / _folder_name(label))
 
     def of_workspace(self, workspace: str) -> Index:
         return Index(self._workspaces / workspace)

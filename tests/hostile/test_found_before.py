@@ -15,6 +15,7 @@ from workers.analysis.meshing.build import mesh_job
 from workers.analysis.solved import solve_on
 from workers.document.read import load
 from workers.pipeline import run, silent
+from workers.store import Store
 
 Json = dict[str, Any]
 
@@ -68,3 +69,17 @@ def test_field_files_hold_numbers_beyond_single_precision(tmp_path: Path, force:
     stress = vtk_to_numpy(reader.GetOutput().GetPointData().GetArray("von_mises"))
     assert math.isfinite(stress.max())
     np.testing.assert_allclose(stress, force / (40 * 8), rtol=1e-6)
+
+
+@pytest.mark.parametrize("letter", ["x", "ж", "点", "\U0001f6e5", "/", "."])
+def test_jobs_with_the_longest_labels_are_kept_and_found(tmp_path: Path, letter: str) -> None:
+    """The folder of their index had a name of more than the 255 bytes that file systems allow."""
+    store = Store(tmp_path)
+    labels = [
+        letter * 200,
+        letter * 199,
+        letter * 199 + "!",
+    ]  # 200 is the longest (document/job.py)
+    ids = [store.accept(b"{}", title="a", label=label).record.id for label in labels]
+    for label, job_id in zip(labels, ids, strict=True):
+        assert [record.id for record in store.list(label=label).records] == [job_id]
