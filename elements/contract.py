@@ -5,6 +5,7 @@ chunking of large meshes and supports are the business of `workers/analysis/`.
 """
 
 import abc
+from functools import lru_cache
 from typing import ClassVar
 
 import numpy as np
@@ -21,6 +22,7 @@ Side = tuple[int, int] | tuple[int, int, int]
 # found in 4-6 steps; what has not settled after 25 is not in the element.
 NEWTON_STEPS = 25
 NEWTON_TOLERANCE = 1e-12  # change of a natural coordinate, against 1 or 2 across the element
+FEW_POINTS = 64  # a rule, not the places of something in a mesh
 
 
 class ElementType(abc.ABC):
@@ -112,7 +114,7 @@ class ElementType(abc.ABC):
         ------
         DegenerateElementError   det J <= 0 (or not a number) at a point; names the elements.
         """
-        slopes = self.gradients(points).reshape(-1, self.node_count)
+        slopes = _gradients(self, points).reshape(-1, self.node_count)
         # One matrix product for all elements: far faster than m small ones.
         flat = coords.transpose(0, 2, 1).reshape(-1, self.node_count)
         J = (flat @ slopes.T).reshape(len(coords), 2, -1, 2).transpose(0, 2, 3, 1)
@@ -138,7 +140,7 @@ class ElementType(abc.ABC):
 
     def _pull_back(self, J: Array, scale: Array, points: Array) -> Array:
         """scale * adjugate(J) times the natural gradients: (m, q, 2, n)."""
-        natural = self.gradients(points)
+        natural = _gradients(self, points)
         d_first, d_second = natural[:, 0], natural[:, 1]
         scaled = (J * scale[..., None, None])[..., None]
         G = np.empty((*scale.shape, 2, self.node_count))
@@ -312,6 +314,20 @@ class ElementType(abc.ABC):
         if self.is_triangle:
             return (natural.min(axis=1) >= -tolerance) & (natural.sum(axis=1) <= 1 + tolerance)
         return np.abs(natural).max(axis=1) <= 1 + tolerance
+
+
+def _gradients(element: ElementType, points: Array) -> Array:
+    """`element.gradients`, remembered: every chunk of a mesh asks for the same few points."""
+    if len(points) > FEW_POINTS:
+        return element.gradients(points)
+    return _remembered(element, np.asarray(points, float).tobytes())
+
+
+@lru_cache(maxsize=256)
+def _remembered(element: ElementType, points: bytes) -> Array:
+    found = element.gradients(np.frombuffer(points).reshape(-1, 2))
+    found.flags.writeable = False
+    return found
 
 
 def strain_matrix(G: Array) -> Array:

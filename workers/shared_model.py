@@ -8,7 +8,7 @@ from dataclasses import dataclass, field, replace
 
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model
-from workers.analysis.recovery import OperatorStore, Recovery
+from workers.analysis.recovery import Recovery
 from workers.analysis.solution import Kept
 
 KEPT_BYTES = 400e6  # for operators that serve one job after another
@@ -25,6 +25,5 @@ class SharedModel:
     def recovery(self, model: Model) -> Recovery:
         """Stress recovery on the shared mesh, for the job of this model."""
         if self._recovery is None:
-            built = Recovery.build(model)
-            self._recovery = replace(built, operators=OperatorStore(KEPT_BYTES))
+            self._recovery = Recovery.build(model, KEPT_BYTES)
         return replace(self._recovery, model=model)

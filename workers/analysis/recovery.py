@@ -63,9 +63,10 @@ class Recovery:
     operators: OperatorStore = field(default_factory=lambda: OperatorStore(0))
 
     @classmethod
-    def build(cls, model: Model) -> "Recovery":
+    def build(cls, model: Model, room: float = 0) -> "Recovery":
+        """room : for operators that serve one state after another [bytes]"""
         field_mesh = FieldMesh.build(model.mesh)
-        return cls(model, field_mesh, recovery_operator(field_mesh))
+        return cls(model, field_mesh, recovery_operator(field_mesh), OperatorStore(room))
 
     def sample_stress(self, displacement: Array, temperature: Temperature = None) -> Array:
         """The elements' stress at the samples of the operator, (Q, 3, k) [F/L^2].

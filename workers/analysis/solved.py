@@ -17,6 +17,8 @@ from workers.job import Job
 Json = dict[str, Any]
 Progress = Callable[[str, float], None]
 
+KEPT_BYTES = 200e6  # for operators that serve the summary and the field files of all states
+
 
 @dataclass(frozen=True, eq=False)
 class Solved:
@@ -64,7 +66,8 @@ def solve_on(
     """
     solution = solve(job, mesh, progress, kept=shared.kept if shared else None, memory=memory)
     progress("recovering", 0.0)
-    recovery = (shared.recovery if shared else Recovery.build)(solution.model)
+    model = solution.model
+    recovery = shared.recovery(model) if shared else Recovery.build(model, KEPT_BYTES)
     envelope, wanted = Envelope(), SizesWanted(mesh)
     results = summarise(solution, recovery, load_states(job), progress, envelope, wanted)
     return Solved(solution, recovery, envelope, wanted, results)

@@ -5,7 +5,6 @@ particulars, cautions, files and pictures are added by later rooms.
 """
 
 from collections.abc import Callable
-from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -23,7 +22,7 @@ from workers.analysis.model import Model
 from workers.analysis.peak_interval import peak_intervals
 from workers.analysis.peaks import Peak, find_peaks, find_utilisation
 from workers.analysis.quality import mesh_quality
-from workers.analysis.recovery import OperatorStore, Recovery, Temperature
+from workers.analysis.recovery import Recovery, Temperature
 from workers.analysis.resultants import equilibrium, imbalance, reactions
 from workers.analysis.samples import Samples
 from workers.analysis.sizes_wanted import SizesWanted
@@ -37,7 +36,6 @@ Json = dict[str, Any]
 Progress = Callable[[str, float], None]
 
 CHUNK_BYTES = 200e6  # for the states that are worked on together
-KEPT_BYTES = 200e6  # for operators that serve one chunk of states after another
 STAGE = "recovering"
 
 
@@ -71,10 +69,7 @@ def summarise(
     cuts = _cuts(solution, states)
     by_state = _balances(solution, states)
     zones = Zones.build(solution, recovery.field_mesh, states)
-    at_once = states_at_once(recovery)
-    if len(states) > at_once:
-        recovery = replace(recovery, operators=OperatorStore(KEPT_BYTES))
-    for columns in states.chunks(at_once):
+    for columns in states.chunks(states_at_once(recovery)):
         results = _strain_and_stress(
             solution, recovery, states, columns, zones, (samples, envelope, wanted)
         )
