@@ -2,11 +2,17 @@
 
 from types import ModuleType
 
-from workers.verification import benchmark_cases, exact_cases, field_cases, statics_cases
+from workers.verification import (
+    benchmark_cases,
+    element_cases,
+    exact_cases,
+    field_cases,
+    statics_cases,
+)
 from workers.verification.case import Case
 
 GROUPS: dict[str, tuple[ModuleType, ...]] = {
-    "Exact, to rounding": (exact_cases, statics_cases),
+    "Exact, to rounding": (element_cases, exact_cases, statics_cases),
     "Closed forms, by convergence": (field_cases,),
     "Published benchmarks and handbook values": (benchmark_cases,),
 }
