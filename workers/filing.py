@@ -138,11 +138,15 @@ class Filing:
             return path
         fields = work.fields(state)
         if quantity == "deformed":
-            preview.render_deformed(path, work.job, work.field_mesh, fields, cautions=self.cautions)
+            largest = max(state["displacement"]["value"] for state in self._states.values())
+            preview.render_deformed(
+                path, work.job, work.field_mesh, fields, cautions=self.cautions, largest=largest
+            )
         else:
             preview.render_field(
                 path, work.job, work.field_mesh, fields, quantity,
                 cautions=self.cautions, limits=self._limits(quantity),
+                peak=self._states[state][quantity],
             )  # fmt: skip
         return path
 
@@ -242,8 +246,21 @@ class Filing:
         yield from ((state, quantity) for state in others for quantity in preview.QUANTITIES)
 
     def _limits(self, quantity: str) -> tuple[float, float]:
-        """One legend for all states of the job, so that their pictures compare."""
-        states = {**self.results["cases"], **self.results["combinations"]}.values()
-        low = [state[quantity].get("least", {"value": 0.0})["value"] for state in states]
-        high = [state[quantity]["value"] for state in states]
-        return min(low + high), max(low + high)
+        """One legend for all states of the job, so that their pictures compare.
+
+        It ends with the reported peaks, which leave singular places out, and at the other end no
+        farther from zero than with them: there a singular place would count.
+        """
+        peaks = [state[quantity]["value"] for state in self._states.values()]
+        others = [
+            state[quantity].get("least", {"value": 0.0})["value"] for state in self._states.values()
+        ]
+        low, high = min(peaks + others), max(peaks + others)
+        if low < 0 < high:
+            reach = max(map(abs, peaks))
+            low, high = max(low, -reach), min(high, reach)
+        return low, high
+
+    @cached_property
+    def _states(self) -> Mapping[str, Any]:
+        return {**self.results["cases"], **self.results["combinations"]}

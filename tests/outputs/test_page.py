@@ -9,7 +9,16 @@ from PIL import Image
 from workers.cautions import STANDING, Caution
 from workers.outputs.drawing.canvas import MISSING, Canvas, printable
 from workers.outputs.drawing.labels import Label, Labels
-from workers.outputs.drawing.page import FOOTER_LINES, HEIGHT, WIDTH, Page, footer_rows
+from workers.outputs.drawing.page import (
+    FOOTER_LINES,
+    HEIGHT,
+    LABEL_SIZE,
+    SMALL_SIZE,
+    WIDTH,
+    Page,
+    footer_rows,
+)
+from workers.outputs.drawing.palette import INK
 from workers.outputs.drawing.view import Box, View
 
 
@@ -28,11 +37,20 @@ MANY = [
 
 def test_the_worst_caution_comes_first_and_the_standing_notes_are_always_there():
     rows = footer_rows(Canvas(WIDTH, HEIGHT), MANY)
-    severities = [row.severity for row in rows]
+    severities = [row.severity for row in rows if row.code]
     assert severities == sorted(severities, key=["stop", "check", "note"].index)
     assert [row.code for row in rows][-len(STANDING) :] == [c.code for c in STANDING]
     without = footer_rows(Canvas(WIDTH, HEIGHT), [])
     assert [row.code for row in without] == [c.code for c in STANDING]
+
+
+def test_capitals_are_two_millimetres_high_at_half_an_a4_page():
+    """The page is then 184 mm wide; 1.8 to 2.5 mm are common practice for drawings."""
+    canvas = Canvas(WIDTH, HEIGHT)
+    canvas.text((100, 100), "H", SMALL_SIZE, colour=INK)
+    rows = np.flatnonzero((canvas.pixels()[..., 3] > 120).any(axis=1))
+    assert (rows[-1] - rows[0] + 1) * 184 / WIDTH >= 2.0
+    assert SMALL_SIZE < LABEL_SIZE
 
 
 def test_standing_notes_are_set_in_full():
@@ -146,7 +164,7 @@ def test_a_label_takes_the_layout_that_fits():
         np.array([60.0, 600.0]), [["a long line of text for a label"], ["a long line", "of text"]]
     )
     box = Labels(Canvas(WIDTH, HEIGHT), room, PAPER).place(label)
-    assert box.height > 50  # two lines of 26 pixels
+    assert box.height > 50  # two lines
 
 
 # --- the view ------------------------------------------------------------------------------------

@@ -225,7 +225,7 @@ def test_pictures_carry_title_case_and_cautions(tmp_path):
     shown = drawn(tmp_path, mesh, lambda x, y: (80 + x, 0 * x, 0 * x), cautions=[stop, *STANDING])
     pixels = shown.pixels
     assert pixels.shape == (1200, 1600, 3)
-    footer = pixels[-150:]
+    footer = pixels[-190:]
     assert (footer.max(axis=2) < 90).sum() > 5000  # text
     assert ((footer[..., 0] - footer[..., 1]) > 90).sum() > 800  # the red tag
     assert (pixels[:60].max(axis=2) < 90).sum() > 1500  # the title
@@ -239,14 +239,36 @@ def test_pictures_carry_title_case_and_cautions(tmp_path):
 def test_principal_directions_are_drawn_along_the_stress(tmp_path):
     """Uniform tension in x: the ticks lie level."""
     mesh = mapped_mesh("Q8", (6, 6), rectangle(100, 90))
-    stress = lambda x, y: (100 + 0 * x, 0 * x, 0 * x)  # noqa: E731
-    plain = drawn(tmp_path, mesh, stress, "principal_max")
-    ticked = drawn(tmp_path, mesh, stress, "principal_max", directions=True)
-    changed = np.abs(plain.pixels - ticked.pixels).max(axis=2) > 60
-    ticks, count = ndimage.label(changed)
+    shown = drawn(tmp_path, mesh, lambda x, y: (100 + 0 * x, 0 * x, 0 * x), "principal_max")
+    inside = shown.pixels[int(shown.top) + 8 : int(shown.bottom) - 8,
+                          int(shown.left) + 30 : int(shown.right) - 8]  # fmt: skip
+    ticks, count = ndimage.label(like_ink(inside))
     boxes = ndimage.find_objects(ticks)
     assert count > 30
     assert np.mean([(b[1].stop - b[1].start) > 3 * (b[0].stop - b[0].start) for b in boxes]) > 0.9
+
+
+def test_the_reported_peak_is_marked_and_what_is_beyond_the_legend_has_its_end_colour(tmp_path):
+    """At the corner (100, 90) the mesh shows 300, which the results leave out as singular: the ring
+    is at the reported 100 at (25, 45), the legend ends there, and the corner has a mark too."""
+    mesh = mapped_mesh("Q4", (8, 8), rectangle(100, 90))
+
+    def spike(x, y):
+        return np.where((x > 99) & (y > 89), 300.0, np.where(x < 51, 100.0, 50.0)), 0 * x, 0 * x
+
+    singular = {"value": 300.0, "at": [100.0, 90.0]}
+    shown = drawn(
+        tmp_path, mesh, spike, limits=(0.0, 100.0),
+        peak={"value": 100.0, "at": [25.0, 45.0], "singular": singular},
+    )  # fmt: skip
+    plain = drawn(tmp_path, mesh, spike, limits=(0.0, 100.0))
+    assert np.abs(shown.at(0.75, 0.5) - expected(SEQUENTIAL, 0.5)).max() <= 2
+    assert np.abs(plain.at(0.985, 0.985) - expected(SEQUENTIAL, 1.0)).max() <= 2
+    row, column = shown.place(0.25, 0.5)
+    assert like_ink(shown.pixels[row, column + 9 : column + 14]).any()
+    assert not like_ink(plain.pixels[row, column + 9 : column + 14]).any()
+    corner = shown.place(1.0, 1.0)
+    assert like_ink(shown.pixels[corner[0] - 15 : corner[0] - 9, corner[1]]).any()
 
 
 def test_an_unknown_quantity_is_refused(tmp_path):

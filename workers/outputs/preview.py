@@ -30,6 +30,7 @@ from workers.outputs.drawing.model import draw_model
 from workers.outputs.drawing.numbers import TIMES, show, vector
 from workers.outputs.drawing.offscreen import probe, require
 from workers.outputs.drawing.page import Page
+from workers.outputs.wording import factor_words
 
 __all__ = [
     "QUANTITIES", "probe", "render_deformed", "render_field", "render_governing", "render_line",
@@ -73,13 +74,16 @@ def render_field(
     *,
     cautions: Sequence[Caution],
     limits: tuple[float, float] | None = None,
-    directions: bool = False,
+    peak: Mapping[str, Any] | None = None,
 ) -> None:
     """Draw "von_mises", "principal_max" or "principal_min" of a state as a filled field.
 
-    limits : a range for the legend [F/L^2], so that pictures of several states compare; a state
-        that goes beyond it widens it
-    directions : add ticks along the principal direction
+    Principal stresses have ticks along their directions.
+
+    limits : a range for the legend [F/L^2], so that pictures of several states compare; what goes
+        beyond takes the colour of the end, and the legend says how far it goes
+    peak : the extreme as the results have it: `value`, `at` and `singular`, a place that it leaves
+        out; None: that of the field
 
     Raises
     ------
@@ -89,15 +93,24 @@ def render_field(
     """
     heading = STRESS_QUANTITIES[quantity].heading
     require()
-    page = Page(job.title, f"{fields.name} · {heading}", cautions)
-    draw_stress(page, job, mesh, fields, quantity, limits=limits, directions=directions)
+    ticks = ", ticks along it" if STRESS_QUANTITIES[quantity].signed else ""
+    page = Page(job.title, f"{fields.name} · {heading}{ticks}", cautions)
+    draw_stress(page, job, mesh, fields, quantity, limits=limits, peak=peak)
     page.save(path, _facts(fields.name, quantity, job.units.stress))
 
 
 def render_deformed(
-    path: Path, job: Job, mesh: FieldMesh, fields: Fields, *, cautions: Sequence[Caution]
+    path: Path,
+    job: Job,
+    mesh: FieldMesh,
+    fields: Fields,
+    *,
+    cautions: Sequence[Caution],
+    largest: float | None = None,
 ) -> None:
     """Draw the deformed shape of a state over the undeformed outline, scale stated.
+
+    largest : end of the legend [L], so that pictures of several states compare
 
     Raises PicturesUnavailableError and OSError as `render_field` does.
     """
@@ -105,7 +118,7 @@ def render_deformed(
     factor = deformation_factor(mesh, fields.displacement)
     subtitle = f"{fields.name} · Deformed shape, displacements drawn {TIMES} {show(factor, 1)}"
     page = Page(job.title, subtitle, cautions)
-    draw_deformed(page, job, mesh, fields, factor)
+    draw_deformed(page, job, mesh, fields, factor, largest=largest)
     facts = _facts(fields.name, "deformed", job.units.length)
     page.save(path, {**facts, "Scale": show(factor, 1)})
 
@@ -175,8 +188,7 @@ def _with_factors(job: Job, state: str) -> str:
     """A state with its factors, e.g. "ULS = 1.5 × lift + 1.35 × self weight"."""
     for combination in (*job.cases, *job.combinations):
         if combination.name == state:
-            terms = (f"{show(k, 4)} {TIMES} {case}" for case, k in combination.factors.items())
-            return f"{state} = {' + '.join(terms)}"
+            return f"{state} = {factor_words(combination)}"
     return state
 
 

@@ -18,7 +18,7 @@ from workers.outputs.drawing.view import View
 Array = NDArray[np.floating[Any]]
 
 BODY = (Acceleration, BodyForce, Spin, TemperatureChange)
-ROW = 1.5 * LABEL_SIZE  # height of a line of the list [pixels]
+ROW = 1.4 * LABEL_SIZE  # height of a line of the list [pixels]
 MOST_ROWS = 5
 
 

@@ -1,19 +1,19 @@
 """Pictures of a solved state: filled stress fields and the deformed shape."""
 
-from collections.abc import Callable, Iterator
+from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.plane_stress import principal, von_mises
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.labels import Label, Labels
 from workers.outputs.drawing.legend import Scale, draw_isoline, draw_legend, legend_size
+from workers.outputs.drawing.marks import Mark, draw_marks
 from workers.outputs.drawing.numbers import round_factor, show, vector
 from workers.outputs.drawing.page import HEIGHT, WIDTH, Page, over
 from workers.outputs.drawing.palette import INK, PAPER
@@ -24,12 +24,14 @@ from workers.outputs.drawing.view import Box, View
 
 Array = NDArray[np.floating[Any]]
 Limits = tuple[float, float]
+Peak = Mapping[str, Any]  # `value`, `at` and `singular`, as the results have it
 
 # A stress below this part of Young's modulus, or of the state's largest stress, is rounding.
 ROUNDING_OF_MODULUS, ROUNDING_OF_STATE = 1e-12, 1e-9
 DEFORMED_PART = 0.07  # the largest displacement is drawn as about this part of the plate's diagonal
 EVEN = 1e-7  # of the range: a smaller difference across a piece of an element is rounding
 AIR = 34  # between the plate and the edge of its room, for the peak's mark [pixels]
+FAINTEST = 0.02  # of the legend's range; a smaller stress has no tick
 TICK_SPACING = 44.0  # of the ticks along principal directions [pixels]
 CALLOUT = 62  # above and below the plate, for the peak's label [pixels]
 
@@ -63,12 +65,16 @@ def draw_stress(
     name: str,
     *,
     limits: Limits | None,
-    directions: bool,
+    peak: Peak | None,
 ) -> None:
-    """Fill the plate with a stress; mark its peak."""
+    """Fill the plate with a stress; mark its peak, and a singular place that it leaves out.
+
+    Principal stresses have ticks along their directions.
+    """
     quantity = STRESS_QUANTITIES[name]
     nodal = quantity.of_stress(fields.stress)
-    scale = stress_scale(nodal, limits, _rounding(job, fields), signed=quantity.signed)
+    rounding = _rounding(job, fields)
+    scale = stress_scale(nodal, limits, rounding, signed=quantity.signed)
     heading = (quantity.heading, f"[{job.units.stress}]")
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
     view = _lay_out(page, scale, heading, low, high)
@@ -76,24 +82,28 @@ def draw_stress(
     values = quantity.of_stress(surface.values[:, 2:])
     _fill(page, view, surface, values, scale)
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes)
-    if directions:
-        _draw_directions(page.canvas, mesh, view, fields, quantity)
-    peak = int(quantity.peak(nodal))
-    value = f"{show(nodal[peak])} {job.units.stress}"
-    mark_peak(page, view, mesh.points[peak], value, _where(mesh, peak, job))
+    if quantity.signed:
+        _draw_directions(page.canvas, mesh, view, fields, quantity, scale)
+    if peak is None:
+        number = int(quantity.peak(nodal))
+        peak = {"value": float(nodal[number]), "at": mesh.points[number]}
+    value = peak["value"] if abs(peak["value"]) > rounding else 0.0
+    text = f"{show(value)} {job.units.stress}"
+    marks = [Mark(np.asarray(peak["at"]), text, _where(mesh, peak["at"], job))]
+    if peak.get("singular"):
+        marks.append(_singular_mark(mesh, job, peak["singular"]))
+    draw_marks(page, view, marks)
 
 
 def stress_scale(nodal: Array, limits: Limits | None, rounding: float, *, signed: bool) -> Scale:
-    """The range of a legend: the field's own and the given one; never a range of mere rounding."""
-    low, high = float(nodal.min()), float(nodal.max())
-    if limits is not None:
-        low, high = min(low, limits[0]), max(high, limits[1])
-    elif not signed:
-        low = 0.0
+    """The range of a legend: the given one, else the field's own; never one of mere rounding."""
+    lowest, highest = (0.0 if abs(v) <= rounding else float(v) for v in (nodal.min(), nodal.max()))
+    low, high = limits or (lowest if signed else 0.0, highest)
     low, high = (0.0 if abs(v) <= rounding else v for v in (low, high))
     if high - low <= rounding:
         low, high = _widened(low, high)
-    return Scale.diverging(low, high) if signed else Scale.sequential(low, high)
+    scale = Scale.diverging(low, high) if signed else Scale.sequential(low, high)
+    return scale.of_field(lowest, highest)
 
 
 def _widened(low: float, high: float) -> Limits:
@@ -168,19 +178,24 @@ def _crossed(
         yield level, triangles[sloping & (low <= level) & (level <= high)]
 
 
-def mark_peak(page: Page, view: View, at: Array, value: str, where: str) -> None:
-    """A ring around the place and a label with its value, on one line or two."""
-    place = view.pixels(at)
-    page.canvas.disc(place, 11, fill=None, edge=PAPER, width=6.5)
-    page.canvas.disc(place, 11, fill=None, edge=INK, width=3)
-    labels = Labels(page.canvas, page.drawing, page.paper)
-    labels.place(Label(place, [(f"{value} {where}",), (value, where)], bold=True))
+def _singular_mark(mesh: FieldMesh, job: Job, singular: Peak) -> Mark:
+    text = f"singular place, left out: {show(singular['value'])} {job.units.stress}"
+    where = f"on this mesh {_where(mesh, singular['at'], job)}"
+    return Mark(np.asarray(singular["at"]), text, where, singular=True)
 
 
 def _draw_directions(
-    canvas: Canvas, mesh: FieldMesh, view: View, fields: Fields, quantity: StressQuantity
+    canvas: Canvas,
+    mesh: FieldMesh,
+    view: View,
+    fields: Fields,
+    quantity: StressQuantity,
+    scale: Scale,
 ) -> None:
-    """Ticks along the principal direction in a thinned set of element centres."""
+    """Ticks along the principal direction in a thinned set of element centres.
+
+    None where the stress is next to nothing: its direction there is that of the error.
+    """
     corners = [
         points[:, : block.element.corners]
         for block, points in zip(mesh.mesh.blocks, mesh.connectivity, strict=True)
@@ -189,12 +204,15 @@ def _draw_directions(
     stress = np.concatenate([fields.stress[c].mean(axis=1) for c in corners])
     cells = np.floor(centres / TICK_SPACING).astype(int)
     _, chosen = np.unique(cells, axis=0, return_index=True)
+    size = np.abs(quantity.of_stress(stress[chosen]))
+    chosen = chosen[size > FAINTEST * (scale.high - scale.low)]
     xx, yy, xy = stress[chosen].T
     angle = 0.5 * np.arctan2(2 * xy, xx - yy) + (np.pi / 2 if quantity.peak is np.argmin else 0.0)
     half = 0.3 * TICK_SPACING * np.column_stack((np.cos(angle), np.sin(angle)))
     ticks = np.stack((centres[chosen] - half, centres[chosen] + half), axis=1)
-    canvas.line(ticks, PAPER, 4.6, alpha=0.75)  # so that they show on the dark end of the map
-    canvas.line(ticks, INK, 2.0)
+    if len(ticks):
+        canvas.line(ticks, PAPER, 4.6, alpha=0.75)  # so that they show on the dark end of the map
+        canvas.line(ticks, INK, 2.0)
 
 
 # --- deformed shape ------------------------------------------------------------------------------
@@ -208,11 +226,22 @@ def deformation_factor(mesh: FieldMesh, displacement: Array) -> float:
     return round_factor(DEFORMED_PART * mesh.mesh.diagonal / largest)
 
 
-def draw_deformed(page: Page, job: Job, mesh: FieldMesh, fields: Fields, factor: float) -> None:
-    """The deformed shape, filled by the size of the displacement, over the undeformed outline."""
+def draw_deformed(
+    page: Page,
+    job: Job,
+    mesh: FieldMesh,
+    fields: Fields,
+    factor: float,
+    *,
+    largest: float | None = None,
+) -> None:
+    """The deformed shape, filled by the size of the displacement, over the undeformed outline.
+
+    largest : end of the legend; the largest displacement of this state if left out
+    """
     size = np.linalg.norm(fields.displacement, axis=1)
-    largest = float(size.max())
-    scale = Scale.sequential(0.0, largest if largest > 0 else 1.0)
+    end = float(size.max()) if largest is None else largest
+    scale = Scale.sequential(0.0, end if end > 0 else 1.0).of_field(0.0, float(size.max()))
     unit = job.units.length
     moved = mesh.points + factor * fields.displacement
     both = np.vstack((mesh.points, moved))
@@ -226,13 +255,13 @@ def draw_deformed(page: Page, job: Job, mesh: FieldMesh, fields: Fields, factor:
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes, dashed=True)
     draw_outline(page.canvas, mesh.mesh, view, positions)
     peak = int(np.argmax(size))
-    value = f"{show(largest)} {unit}"
-    mark_peak(page, view, moved[peak], value, _where(mesh, peak, job))
+    value = f"{show(size[peak])} {unit}"
+    draw_marks(page, view, [Mark(moved[peak], value, _where(mesh, mesh.points[peak], job))])
 
 
-def _where(mesh: FieldMesh, point: int, job: Job) -> str:
+def _where(mesh: FieldMesh, at: ArrayLike, job: Job) -> str:
     """A position to four digits; what is rounding against the size of the plate is zero."""
-    place = mesh.points[point]
+    place = np.asarray(at, float)
     x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)
     return f"at {vector(x, y, digits=4)} {job.units.length}"
 

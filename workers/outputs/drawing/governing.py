@@ -14,8 +14,8 @@ from scipy import ndimage
 from workers.analysis.field_mesh import FieldMesh
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.fields import mark_peak
 from workers.outputs.drawing.hatching import HATCHINGS, hatch, swatch
+from workers.outputs.drawing.marks import Mark, draw_marks
 from workers.outputs.drawing.numbers import show, vector
 from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page
 from workers.outputs.drawing.palette import FAINT, INK, PAPER
@@ -195,4 +195,4 @@ def _mark(page: Page, job: Job, view: View, quantity: str, peak: Mapping[str, An
     at = np.array(peak["at"])
     x, y = peak["at"]
     place = f"at {vector(x, y, digits=4)} {job.units.length}"
-    mark_peak(page, view, at, f"{show(peak['value'])} {unit}", f"in {name}, {place}")
+    draw_marks(page, view, [Mark(at, f"{show(peak['value'])} {unit}", f"in {name}, {place}")])

@@ -32,6 +32,7 @@ LEADER_FROM = 10  # a gap between label and anchor that needs a line to bridge i
 ON_INK, ON_PLATE = 40.0, 1.0  # per cell under the label
 CROSSING_INK, CROSSING_PLATE = 10.0, 0.6  # per pixel of leader
 OUTSIDE = 100.0  # per pixel
+CUT = 80.0  # for each line that does not fit whole
 WRONG_WAY = 45.0  # for going away from the wanted direction, twice that for the opposite
 LEFT: Align = "left"
 RIGHT: Align = "right"
@@ -141,7 +142,8 @@ class Labels:
             lines = [self._canvas.fit(line, LABEL_SIZE, self._room.width) for line in layout]
             extent = self._extent(lines, label.bold)
             places = self._candidates(label, extent)
-            cost = self._costs(places, label) + 4.0 * rank
+            cut = sum(line != whole for line, whole in zip(lines, layout, strict=True))
+            cost = self._costs(places, label) + 4.0 * rank + CUT * cut
             best = int(np.argmin(cost))
             if cost[best] < cheapest:
                 box = Box(*map(float, (*places.low[best], *places.high[best])))
@@ -194,8 +196,11 @@ class Labels:
     def _draw(self, label: Label, box: Box, lines: Sequence[str]) -> None:
         canvas, at = self._canvas, label.anchor
         end = _facing(_Places(*np.array(box).reshape(2, 1, 2)), at)[0]
-        if np.linalg.norm(end - at) > LEADER_FROM:
+        gap = np.linalg.norm(end - at)
+        if gap > (0 if label.covering else LEADER_FROM):
             canvas.line([at, end], label.colour, 1.5, alpha=0.8)
+            if label.covering:  # what it names is under the dot, not under the label
+                canvas.disc(at, 4.5, fill=label.colour, edge=label.colour, width=1)
         canvas.box((box.left - 4, box.bottom), (box.right + 4, box.top), PAPER, alpha=0.82)
         x, align = (box.right, RIGHT) if box.right < at[0] else (box.left, LEFT)
         for number, line in enumerate(lines):

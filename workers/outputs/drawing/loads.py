@@ -11,10 +11,12 @@ from numpy.typing import NDArray
 from workers.analysis.mesh import Mesh
 from workers.analysis.selection import select
 from workers.job import (
+    Bearing,
     Job,
     Load,
     PointForce,
     Target,
+    TotalForce,
     TotalMoment,
 )
 from workers.outputs.drawing.acting import Acting
@@ -41,6 +43,7 @@ SIDE_ARROW = 62.0  # length of the longest arrow of a load on a side
 SUPPORT_ROOM = 52.0  # a load stands behind the support of the same side
 SPACING = 44.0  # of arrows along a side
 ALONG_THE_SIDE = 0.2  # cosine of the angle to the normal below which a load lies in the side
+LEGIBLE = 60.0  # a load in a hole with shorter arrows is drawn as its resultant, where it has one
 SHORTEST = 9.0  # a shorter arrow is only a blot
 GAP = 5.0  # between an arrow and the outline
 
@@ -77,10 +80,9 @@ class Layer:
         """Distance from the outline, and length of the longest arrow [pixels]."""
         start = SUPPORT_ROOM if self.behind_support else 0.0
         longest = SIDE_ARROW
-        if run.closed:  # arrows on a hole point outward from within it
-            start = min(start, 0.4 * run.length / (2 * np.pi))
-            radius = run.length / (2 * np.pi) - start
-            longest = min(longest, 0.6 * radius / self.count)
+        if np.isfinite(run.radius):  # arrows in a hole have the room of the hole
+            start = min(start, 0.4 * run.radius)
+            longest = min(longest, 0.6 * (run.radius - start) / self.count)
         return GAP + start + self.number * (longest + 2 * GAP), longest
 
 
@@ -100,15 +102,25 @@ def _draw_load(
             for node in selection.nodes[:MOST_POINTS]
         ]
         return [Label(at, text, LOAD, toward=toward) for at, toward in ends[:1]]
-    sides = [
-        _draw_side_load(canvas, run, acting, layer) for run in runs(mesh, selection.facets, view)
-    ]
+    found = runs(mesh, selection.facets, view)
+    if isinstance(load, TotalForce | Bearing) and all(_is_cramped(run, layer) for run in found):
+        force = np.sign(acting.factor) * np.array(load.force)
+        centre = np.mean([run.centre for run in found], axis=0)
+        tip = centre + FORCE * unit(force)
+        arrow(canvas, centre, tip, LOAD, width=4.2)
+        return [Label(tip, text, LOAD, toward=unit(force))]
+    sides = [_draw_side_load(canvas, run, acting, layer) for run in found]
     labels = [Label(side.label, text, LOAD, toward=side.toward) for side in sides[:1]]
     if isinstance(load, Varying) and varies(load) and sides:
         values = end_values(load, acting.factor, job.units)
         for at, value in zip((sides[0].start, sides[-1].end), values, strict=True):
             labels.append(Label(at, [[value]], LOAD, toward=sides[0].toward))
     return labels
+
+
+def _is_cramped(run: Run, layer: Layer) -> bool:
+    """Whether arrows along the side, in a hole, would be too short to be read."""
+    return bool(np.isfinite(run.radius)) and layer.sizes(run)[1] < LEGIBLE
 
 
 def _draw_force(

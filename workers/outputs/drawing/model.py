@@ -11,38 +11,39 @@ from numpy.typing import NDArray
 
 from workers.analysis.mesh import PLATE as PLATE_REGION
 from workers.analysis.mesh import Mesh
+from workers.geometry import CircleShape, OutlineGeometry
 from workers.job import Job
 from workers.outputs.drawing.acting import acting_cases, acting_loads
 from workers.outputs.drawing.body_loads import draw_body_loads, list_height
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.labels import Label, Labels, layouts
+from workers.outputs.drawing.labels import LINE, Label, Labels, layouts
 from workers.outputs.drawing.loads import draw_loads
 from workers.outputs.drawing.numbers import show
-from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page, over
+from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, SMALL_SIZE, WIDTH, Page, over
 from workers.outputs.drawing.palette import FAINT, PLATE, PLATE_THICK, PLATE_THIN
 from workers.outputs.drawing.plate import draw_mesh, draw_outline
 from workers.outputs.drawing.raster import paint
 from workers.outputs.drawing.supports import draw_moves, draw_supports
 from workers.outputs.drawing.symbols import arrow, dimension
 from workers.outputs.drawing.tessellation import tessellate
-from workers.outputs.drawing.view import View
+from workers.outputs.drawing.view import Box, View
 
 Array = NDArray[np.floating[Any]]
 
-SIDE_ROOM, TOP_ROOM, BOTTOM_ROOM = 225.0, 140.0, 175.0  # for signs, labels and dimensions
+# Beside the signs at the plate [pixels]: for a label, a dimension with its number, and the axes.
+LABEL_WIDTH, DIMENSION, LEAST_ROOM, FOOT = 225.0, 64.0, 20.0, 34.0
+NEAR = 20.0  # a label that begins so near to the edge of the plate goes outside it
+MOST_HOLES = 6  # with a label
 STRIP = 18  # half the strip that a dimension line takes [pixels]
-LABEL_BAND = 46  # left free for a label between the signs at the plate and a dimension line
-SMALL = 22.0
+SLENDER = 1.5  # height over width of a plate beside which there is always room
 TINTS = (PLATE_THIN, PLATE, PLATE_THICK)
 
 
 def draw_model(page: Page, job: Job, mesh: Mesh, state: str | None) -> None:
     """Draw the model with the loads of a case or combination; with none of them for None."""
     acting = acting_loads(job, state)
-    top = TOP_ROOM + list_height(acting)
-    room = page.drawing.inset(SIDE_ROOM, BOTTOM_ROOM, SIDE_ROOM, top)
     low, high = mesh.nodes.min(axis=0), mesh.nodes.max(axis=0)
-    view = View.fit(low, high, room)
+    view = View.fit(low, high, _room(page, job, mesh, state))
     _paint_plate(page, job, mesh, view)
     canvas = page.canvas
     draw_outline(canvas, mesh, view, mesh.nodes)
@@ -54,8 +55,42 @@ def draw_model(page: Page, job: Job, mesh: Mesh, state: str | None) -> None:
     _draw_caption(page, job, mesh)
     _draw_dimensions(page, job.units.length, view, (low, high), wanted)
     labels = Labels(canvas, page.drawing, page.paper)
-    for label in [*_region_labels(job, mesh, view), *wanted]:
+    for label in [*_region_labels(job, mesh, view), *wanted, *_hole_labels(job, view)]:
         labels.place(label)
+
+
+def _room(page: Page, job: Job, mesh: Mesh, state: str | None) -> Box:
+    """What the signs at the plate leave for it: how far they reach is seen on a trial drawing."""
+    low, high = mesh.nodes.min(axis=0), mesh.nodes.max(axis=0)
+    acting = acting_loads(job, state)
+    slender = (high - low)[1] > SLENDER * (high - low)[0]
+    # Beside a slender plate there is room for labels, and nothing under it in the corners.
+    below = page.drawing.inset(0, 0 if slender else FOOT, 0, list_height(acting))
+    spare = LABEL_WIDTH + DIMENSION
+    view = View.fit(low, high, below.inset(spare, spare, spare, spare))
+    trial = Canvas(WIDTH, HEIGHT)
+    wanted = [
+        *draw_supports(trial, job, mesh, view),
+        *draw_loads(trial, job, mesh, view, acting),
+    ]
+    draw_moves(trial, job, mesh, view, acting_cases(job, state))
+    inked = np.asarray(trial.pixels()[::-1, :, 3] > 24)
+    (left, bottom), (right, top) = view.pixels(low), view.pixels(high)
+    columns = np.append(np.flatnonzero(inked.any(axis=0)), [left, right])
+    rows = np.append(np.flatnonzero(inked.any(axis=1)), [bottom, top])
+    at = np.array([label.anchor for label in wanted]).reshape(-1, 2)
+    over = 0.0 if slender else _height([w for w in wanted if w.anchor[1] > top - NEAR])
+    under = 0.0 if slender else _height([w for w in wanted if w.anchor[1] < bottom + NEAR])
+
+    def beside(outside: NDArray[np.bool_]) -> float:
+        return LABEL_WIDTH if outside.any() else LEAST_ROOM
+
+    return below.inset(
+        left - columns.min() + beside(at[:, 0] < left + NEAR),
+        bottom - rows.min() + max(under, LEAST_ROOM) + DIMENSION,
+        columns.max() - right + beside(at[:, 0] > right - NEAR) + DIMENSION,
+        rows.max() - top + max(over, LEAST_ROOM),
+    )
 
 
 def _paint_plate(page: Page, job: Job, mesh: Mesh, view: View) -> None:
@@ -102,7 +137,8 @@ def _draw_dimensions(
     (left, bottom), (right, top) = view.pixels(low), view.pixels(high)
     inked = np.asarray(canvas.pixels()[::-1, :, 3] > 24)
     rows = np.asarray(inked[:, int(left) : int(right) + 1].any(axis=1))
-    y = bottom - _free_strip(rows[int(room.bottom) : int(bottom) - 4][::-1], LABEL_BAND)
+    under = round(_height([label for label in wanted if label.anchor[1] < bottom + NEAR]))
+    y = bottom - _free_strip(rows[int(room.bottom) : int(bottom) - 4][::-1], under)
     width, height = (f"{show(v, 4)} {unit}" for v in high - low)
     start, end = np.array([left, bottom]), np.array([right, bottom])
     dimension(canvas, start, end, np.array([0.0, y - bottom]), width, LABEL_SIZE)
@@ -130,9 +166,9 @@ def _free_strip(inked: NDArray[np.bool_], band: int) -> int:
     for number in range(len(inked)):
         if inked[number]:
             last = number + 1
-        elif number - last >= 2 * STRIP + (band if last else 0):
+        elif number - last >= 2 * STRIP + band:
             return number + 4 - STRIP
-    return min(last + 4 + STRIP, len(inked) + 4 - STRIP)
+    return min(last + 4 + band + STRIP, len(inked) + 4 - STRIP)
 
 
 def _draw_axes(page: Page) -> None:
@@ -140,7 +176,7 @@ def _draw_axes(page: Page) -> None:
     for direction, name in ((np.array([1.0, 0.0]), "x"), (np.array([0.0, 1.0]), "y")):
         tip = corner + 52 * direction
         arrow(page.canvas, corner, tip, FAINT, width=2.0)
-        page.canvas.text(tip + 13 * direction, name, SMALL, colour=FAINT, align="centre")
+        page.canvas.text(tip + 13 * direction, name, SMALL_SIZE, colour=FAINT, align="centre")
 
 
 def _draw_caption(page: Page, job: Job, mesh: Mesh) -> None:
@@ -153,7 +189,26 @@ def _draw_caption(page: Page, job: Job, mesh: Mesh) -> None:
     section = f"t = {show(job.plate.thickness)} {job.units.length}, {job.plate.material}"
     text = f"{section} · {elements}, {mesh.node_count} nodes"
     at = (page.drawing.right, page.drawing.bottom + 14)
-    page.canvas.text(at, text, SMALL, colour=FAINT, align="right")
+    page.canvas.text(at, text, SMALL_SIZE, colour=FAINT, align="right")
+
+
+def _height(labels: Sequence[Label]) -> float:
+    """What labels side by side need above or below a plate [pixels]."""
+    lines = max((len(label.layouts[0]) for label in labels), default=0)
+    return LINE * LABEL_SIZE * lines + (20 if lines else 0)
+
+
+def _hole_labels(job: Job, view: View) -> Iterator[Label]:
+    """Name and diameter of round holes, where these are few."""
+    holes = job.geometry.holes if isinstance(job.geometry, OutlineGeometry) else ()
+    if len(holes) > MOST_HOLES:
+        return
+    for hole in holes:
+        if isinstance(hole.shape, CircleShape):
+            radius = hole.shape.radius
+            edge = np.array(hole.shape.centre) + radius * np.sqrt(0.5)
+            text = f"{hole.name} ⌀\N{NO-BREAK SPACE}{show(2 * radius, 4)}"
+            yield Label(view.pixels(edge), [[text]], FAINT)
 
 
 def _region_labels(job: Job, mesh: Mesh, view: View) -> Iterator[Label]:

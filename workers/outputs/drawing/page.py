@@ -1,7 +1,8 @@
 """The page that every picture stands on: title, room for the drawing, cautions at the foot.
 
-Paper of 1600 x 1200 pixels, made to be read at half an A4 page. The cautions take what room they
-need up to a limit; what is cut is named by its code.
+Paper of 1600 x 1200 pixels, made to be read at half an A4 page: there 184 mm wide, so that
+capitals of the smallest letters are 2 mm high (1.8 to 2.5 mm are common practice for drawings).
+The cautions take what room they need up to a limit; what is cut is named by its code.
 """
 
 from collections.abc import Iterable, Mapping, Sequence
@@ -20,13 +21,13 @@ from workers.outputs.vtu import caution_line
 
 WIDTH, HEIGHT = 1600, 1200
 MARGIN = 44
-TITLES = ((40, 1), (34, 1), (34, 2), (30, 2), (26, 2), (26, 3))  # size and lines, best first
-SUBTITLE_SIZE = 30
-LABEL_SIZE = 26
-FOOTER_SIZE = 21.5
-FOOTER_LINE = 28
-FOOTER_LINES = 11  # a quarter of the page
-TAG_WIDTH = 92
+TITLES = ((40, 1), (36, 1), (36, 2), (30, 2), (26, 3))  # size and lines, best first
+SUBTITLE_SIZE = 32
+LABEL_SIZE = 30
+SMALL_SIZE = 24  # of the footer and of what is only good to know
+FOOTER_LINE = 31
+FOOTER_LINES = 10  # a quarter of the page
+TAG_WIDTH = 104
 
 Pixels = NDArray[np.uint8]
 
@@ -79,10 +80,10 @@ class Page:
             self._draw_tag(row.severity, y)
             x = MARGIN + TAG_WIDTH + 14.0
             if row.code:
-                self.canvas.text((x, y), row.code, FOOTER_SIZE, colour=INK, bold=True)
+                self.canvas.text((x, y), row.code, SMALL_SIZE, colour=INK, bold=True)
             indent = code_width(self.canvas, row.code)
             for line in row.lines:
-                self.canvas.text((x + indent, y), line, FOOTER_SIZE, colour=INK)
+                self.canvas.text((x + indent, y), line, SMALL_SIZE, colour=INK)
                 indent, y = 0.0, y - FOOTER_LINE
         return top + 20
 
@@ -90,10 +91,10 @@ class Page:
         if not severity:
             return
         colour = SEVERITY_COLOURS[severity]
-        low, high = (MARGIN, y - 11), (MARGIN + TAG_WIDTH, y + 11)
+        low, high = (MARGIN, y - 12.5), (MARGIN + TAG_WIDTH, y + 12.5)
         self.canvas.box(low, high, colour)
         middle = (MARGIN + TAG_WIDTH / 2, y)
-        self.canvas.text(middle, severity.upper(), 19, colour=PAPER, bold=True, align="centre")
+        self.canvas.text(middle, severity.upper(), 21, colour=PAPER, bold=True, align="centre")
 
     # --- the finished picture ------------------------------------------------------------------
 
@@ -146,18 +147,18 @@ def footer_rows(canvas: Canvas, cautions: Iterable[Caution]) -> list[FooterRow]:
         left = raised[room - 1 :]
         named = f"and {len(left)} more: {', '.join(dict.fromkeys(c.code for c in left))}"
         width = WIDTH - 2 * MARGIN - TAG_WIDTH - 14
-        rows = [*rows[: room - 1], FooterRow("", "", (canvas.fit(named, FOOTER_SIZE, width),))]
+        rows = [*rows[: room - 1], FooterRow("", "", (canvas.fit(named, SMALL_SIZE, width),))]
     return [*rows, *standing]
 
 
 def code_width(canvas: Canvas, code: str) -> float:
-    return canvas.measure(code, FOOTER_SIZE, bold=True)[0] + 14 if code else 0.0
+    return canvas.measure(code, SMALL_SIZE, bold=True)[0] + 14 if code else 0.0
 
 
 def _row(canvas: Canvas, caution: Caution, lines: int) -> FooterRow:
     width = WIDTH - 2 * MARGIN - TAG_WIDTH - 14
     indent = code_width(canvas, caution.code)
-    wrapped = canvas.wrap(caution.message, FOOTER_SIZE, width, lines, indent=indent)
+    wrapped = canvas.wrap(caution.message, SMALL_SIZE, width, lines, indent=indent)
     return FooterRow(caution.severity, caution.code, tuple(wrapped))
 
 

@@ -1,6 +1,7 @@
 """Places along the sides of the plate at which signs are drawn."""
 
 from dataclasses import dataclass
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -13,6 +14,7 @@ from workers.outputs.drawing.view import View
 
 Array = NDArray[np.floating[Any]]
 
+LEAST_TURN = 1.0  # radians that a side must turn to count as an arc
 MOST_POINTS = 12  # signs for a set of single nodes; more would be a blot
 
 
@@ -48,6 +50,18 @@ class Run:
             [np.interp(part * self.length, self.at, c) for c in self.outward.T]
         )
         return points, outward / np.linalg.norm(outward, axis=1)[:, None], part
+
+    @cached_property
+    def radius(self) -> float:
+        """Of the arc that it makes around what is outside, as in a hole; else infinite."""
+        inner = np.linalg.norm(np.diff(self.points + self.outward, axis=0), axis=1).sum()
+        turned = self.length - float(inner)  # radians, by the shrinking over one pixel
+        return self.length / turned if turned > LEAST_TURN else float("inf")
+
+    @property
+    def centre(self) -> Array:
+        """Of that arc."""
+        return np.asarray((self.points + self.radius * self.outward).mean(axis=0))
 
     @property
     def middle(self) -> Array:
