@@ -158,9 +158,13 @@ def test_a_page_on_which_all_passed_says_so() -> None:
         (Check("q", "Q8", 100.0, 101.5, 0.02), ("+1.50%", "2 %")),
         (Check("q", "Q8", 100.0, 100.0 + 1e-9, 1e-9), ("+1e-11", "1e-09")),
         (Check("q", "Q8", 100.0, 100.0, None), ("0", "reported only")),
+        (Check("order", "Q8", 2.0, 2.015, 0.15, scale=1.0), ("+0.0150", "0.15")),
+        (Check("q", "Q8", -60.0, -59.5, 0.06, scale=100.0), ("+0.50%", "6 %")),
     ],
 )
-def test_deviations_are_shown_as_percent_or_as_rounding(check: Check, words: tuple) -> None:
+def test_deviations_are_shown_as_percent_or_difference_or_rounding(
+    check: Check, words: tuple
+) -> None:
     assert (part(check), tolerance(check)) == words
 
 

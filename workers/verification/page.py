@@ -29,15 +29,19 @@ def figure(value: float) -> str:
 
 
 def part(check: Check) -> str:
-    """The deviation: in percent, or as a power of ten where it is rounding."""
+    """The deviation: in percent of its scale, as a number where the scale is one, or as a power of
+    ten where it is rounding.
+    """
     deviation = check.deviation
     if deviation == 0:
         return "0"
-    return f"{deviation:+.0e}" if abs(deviation) < 5e-5 else f"{deviation:+.2%}"
+    if abs(deviation) < 5e-5:
+        return f"{deviation:+.0e}"
+    return f"{deviation:+.4f}" if check.scale == 1 else f"{deviation:+.2%}"
 
 
 def tolerance(check: Check) -> str:
     if check.tolerance is None:
         return "reported only"
     limit = check.tolerance
-    return f"{limit:.3g}" if limit < 1e-4 else f"{limit * 100:.3g} %"
+    return f"{limit:.3g}" if limit < 1e-4 or check.scale == 1 else f"{limit * 100:.3g} %"
