@@ -6,6 +6,7 @@ at jobs may look here; no name of any job, workspace or person is in it.
 """
 
 from collections.abc import Iterator
+from datetime import UTC, datetime
 from importlib.metadata import version
 
 import redis
@@ -23,6 +24,7 @@ from prometheus_client.registry import Collector
 from api.openapi import Blueprint, problems_of
 from api.responses import ABOUT_CAUTIONS, described_by
 from api.services import services
+from workers.backup import last_back_up
 from workers.housekeeping import usage_of
 from workers.queue import Queue
 from workers.record import QUEUED, STATES, age_of
@@ -49,8 +51,8 @@ def show() -> Response:
     """Measures of the server, in the Prometheus text format
 
     Jobs by state, length of the lines, age of the oldest waiting job, durations by stage, ends by
-    cause, workers alive, size of the store. While Redis is away `fishplate_redis_up` is 0 and what
-    only Redis knows is left out.
+    cause, workers alive, size of the store, age of the last back-up. While Redis is away
+    `fishplate_redis_up` is 0 and what only Redis knows is left out.
     """
     registry = CollectorRegistry(auto_describe=False)
     registry.register(Measures())
@@ -96,6 +98,12 @@ def _of_store(store: Store) -> Iterator[Metric]:
             "fishplate_store_bytes",
             "Room that the jobs take, when it was looked at last",
             value=usage.bytes,
+        )
+    if at := last_back_up(store.root):
+        yield GaugeMetricFamily(
+            "fishplate_backup_age_seconds",
+            "Time since the last back-up in which nothing was missing began",
+            value=(datetime.now(UTC) - datetime.fromisoformat(at)).total_seconds(),
         )
 
 

@@ -7,10 +7,13 @@ kept meshes, checks, joint files of batches, Redis) is left out.
 """
 
 import hashlib
+import logging
 from dataclasses import dataclass
 from datetime import UTC, datetime
 from importlib.metadata import version
 from pathlib import Path
+
+import orjson
 
 from workers import durable, layout
 from workers.audit import FOLDER as AUDIT
@@ -31,8 +34,11 @@ from workers.store import Store
 from workers.store_reader import telling
 from workers.tokens import FILE as TOKENS
 
+NOTE = "backed-up.json"  # in the store: when it was copied last, whole
 UNFINISHED = "unfinished"  # folder in the file of the rest
 DIGITS = 12  # of the digest in the name of a packed job
+
+log = logging.getLogger(__name__)
 
 
 @dataclass(frozen=True)
@@ -68,7 +74,27 @@ def back_up(root: Path, folder: Path) -> Made:
                 raise BackupError(f"another back-up into {folder} is being made")
             for half in folder.glob(HALF + "*"):  # of a run that was killed
                 half.unlink()
-            return _Attempt(Store(root), folder).run()
+            made = _Attempt(Store(root), folder).run()
+    if not made.damaged:
+        _note(root, made.run)
+    return made
+
+
+def last_back_up(root: Path) -> str | None:
+    """When the last back-up began in which nothing was missing, RFC 3339; None without one."""
+    try:
+        at: str = orjson.loads((root / NOTE).read_bytes())["at"]
+        return at
+    except FileNotFoundError:
+        return None
+
+
+def _note(root: Path, run: Run) -> None:
+    """For /metrics; a full disk of the store must not make the back-up a failure."""
+    try:
+        durable.replace(root / NOTE, orjson.dumps({"at": run.at, "run": run.name}))
+    except OSError as error:
+        log.warning("that there is back-up %s could not be noted: %s", run.name, error)
 
 
 def forget(folder: Path, keep: int) -> int:

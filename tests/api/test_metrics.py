@@ -14,6 +14,7 @@ from prometheus_client.parser import text_string_to_metric_families
 from api.app import create_app
 from api.services import KEY, Services
 from tests.job_documents import strip
+from workers.backup import back_up
 from workers.housekeeping import USAGE
 from workers.record import FAILED, RUNNING, TIME
 from workers.settings import Settings
@@ -51,6 +52,25 @@ def test_lines_states_and_the_oldest_are_measured(client: FlaskClient, services:
     assert value(samples, "workers_alive") == 0
     assert value(samples, "redis_up") == 1
     assert value(samples, "store_free_bytes") > 0
+
+
+def test_the_age_of_the_last_whole_back_up_is_measured(
+    client: FlaskClient, services: Services, post: Callable[..., Any], tmp_path: Path
+) -> None:
+    """One in which a job is missing does not count."""
+    root = services.store.root
+    job_id = post().get_json()["id"]
+    assert ("fishplate_backup_age_seconds", frozenset()) not in read(client)
+    path = services.store.jobs.path(job_id) / "record.json"
+    record = path.read_bytes()
+    path.write_bytes(b"{")
+    back_up(root, tmp_path / "back-ups")
+    assert ("fishplate_backup_age_seconds", frozenset()) not in read(client)
+    path.write_bytes(record)
+    began = time.monotonic()
+    back_up(root, tmp_path / "back-ups")
+    age = value(read(client), "backup_age_seconds")
+    assert 0.0 <= age < time.monotonic() - began + 1.0
 
 
 def test_ends_are_counted_by_cause_and_stages_by_duration(
