@@ -25,7 +25,7 @@ import hashlib
 import shutil
 import time
 from collections.abc import Iterator, Mapping, Sequence
-from contextlib import ExitStack, contextmanager
+from contextlib import ExitStack, contextmanager, suppress
 from dataclasses import replace
 from pathlib import Path
 from tempfile import TemporaryDirectory
@@ -56,6 +56,7 @@ from workers.store_reader import StoreReader, telling
 # The record as it will be, inside the results: the rename publishes both at once.
 FINAL_RECORD = ".record.json"
 STAGING = "staging"
+RECORD_LOCK = "record.lock"
 # After a full disk: less would be full again after a few jobs.
 ROOM = 256 * 1024**2  # bytes,
 ROOM_PART = 20  # or this part of a small disk
@@ -144,12 +145,14 @@ class Store(StoreReader):
             durable.make_folder(self._incoming)
             durable.make_folder(target.parent)
             incoming.mkdir()
-            (incoming / "job.json").write_bytes(document)
-            (incoming / "record.json").write_bytes(record.as_bytes())
-            entries = self.indexes.enter(record)
-            files = [incoming / "job.json", incoming / "record.json", incoming]
-            durable.sync(*files, *entries, *before)
-            durable.move(incoming, target)
+            # Held until the job is where it belongs: so it shows when the process was killed.
+            with durable.lock(incoming / RECORD_LOCK):
+                (incoming / "job.json").write_bytes(document)
+                (incoming / "record.json").write_bytes(record.as_bytes())
+                entries = self.indexes.enter(record)
+                files = [incoming / "job.json", incoming / "record.json", incoming]
+                durable.sync(*files, *entries, *before)
+                durable.move(incoming, target)
         except OSError:
             for half_done in (target, incoming):
                 shutil.rmtree(half_done, ignore_errors=True)
@@ -320,10 +323,15 @@ class Store(StoreReader):
                     shutil.rmtree(path) if path.is_dir() else path.unlink()
 
     def forget_unknown(self, job_id: str) -> None:
-        """Take out the index entries that a crash left for a job that never was."""
-        # A job being accepted is in incoming/ until the moment it is in jobs/: look there first.
-        if not (self._incoming / job_id).exists() and not self.jobs.path(job_id).exists():
-            self.indexes.drop_unknown(job_id)
+        """Take out what a crash left of a job that never was: index entries, half of its files."""
+        half = self._incoming / job_id
+        with telling(f"what is left of job {job_id} could not be removed"):
+            with suppress(FileNotFoundError), durable.lock(half / RECORD_LOCK, wait=False) as mine:
+                if mine:
+                    shutil.rmtree(half)
+            # A job being accepted is in incoming/ until it is in jobs/: look there first.
+            if not half.exists() and not self.jobs.path(job_id).exists():
+                self.indexes.drop_unknown(job_id)
 
     @contextmanager
     def _changing(self, job_id: str) -> Iterator[Path]:
@@ -331,7 +339,7 @@ class Store(StoreReader):
         folder = self._folder(job_id)
         with (
             telling(f"the record of job {job_id} could not be written"),
-            durable.lock(folder / "record.lock"),
+            durable.lock(folder / RECORD_LOCK),
         ):
             yield folder
 

@@ -72,7 +72,7 @@ def test_whatever_is_killed_every_accepted_job_ends_once_and_right(tmp_path: Pat
         for reader in readers:
             reader.join()
         ended = Counter(how_it_ended(watched, store, number) for number in range(JOBS))
-        check_store(watched, store)
+        watched.wrong += [about_stuck(store, job_id) for job_id in store.unfinished()]
         print(
             f"\nchaos, seed {SEED}: {len(watched.ids)} accepted; "
             + ", ".join(f"{count} {how}" for how, count in sorted(ended.items()))
@@ -82,7 +82,8 @@ def test_whatever_is_killed_every_accepted_job_ends_once_and_right(tmp_path: Pat
             + ", ".join(f"{what} {site.kills[what]}" for what in MUST)
             + f"; {calm - began:.0f} s of it, {time.monotonic() - began:.0f} s in all"
         )
-    assert watched.wrong == []
+        assert watched.wrong == []
+        check_store(watched, store)
     assert site.kills["Redis and its data"] >= 2 * ROUNDS
     assert site.kills["disk full"] == ROUNDS
     assert all(site.kills[what] for what in MUST)
@@ -132,6 +133,12 @@ def check_end(watched: Watched, store: Store, number: int, record: Record) -> No
     assert not (folder / "staging").exists()
     if status == 200:
         check_results(json.loads(body), number)
+
+
+def about_stuck(store: Store, job_id: str) -> str:
+    """What is known of a job that does not end."""
+    files = [path.name for path in store.jobs.path(job_id).iterdir()]
+    return f"unfinished: {store.record(job_id).history}, {files}"
 
 
 def check_store(watched: Watched, store: Store) -> None:

@@ -598,6 +598,27 @@ def test_what_a_crash_left_in_the_line_is_taken_out(store: Store) -> None:
     assert store.length_of_line("dock") == 0
 
 
+def test_what_is_left_of_a_job_whose_acceptance_was_killed_is_taken_out(
+    store: Store, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    """Nobody was told that it was accepted; else it would count as waiting for ever."""
+
+    class Killed(BaseException):
+        pass
+
+    def be_killed(*_: Path) -> None:
+        raise Killed
+
+    with monkeypatch.context() as patch, suppress(Killed):
+        patch.setattr(durable, "move", be_killed)
+        accept(store, workspace="dock")
+    (job_id,) = store.unfinished()
+    store.forget_unknown(job_id)
+    assert store.unfinished() == ()
+    assert store.length_of_line("dock") == 0
+    assert list((store.root / "incoming").iterdir()) == []
+
+
 def test_indexes_that_an_earlier_version_did_not_have_are_made(store: Store) -> None:
     waiting, done = accept(store), accept(store)
     finish(store, done)
