@@ -1,16 +1,13 @@
-"""A real `fishplate serve`: Redis, workers and HTTP server, with plates whose answer is known."""
+"""Real servers with Redis and workers, one and two of each, and plates whose answer is known."""
 
 import csv
 import io
+import itertools
 import json
-import os
 import re
 import signal
-import subprocess
-import sys
 import time
 from collections.abc import Callable, Iterator
-from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 from urllib.error import HTTPError
@@ -24,50 +21,30 @@ import pyvista
 from jsonschema import Draft202012Validator
 
 from tests.job_documents import hanging_bar, strip
+from tests.real_server import PATIENCE, Server, real_server, real_services
 
 pytestmark = pytest.mark.server
 
-FISHPLATE = Path(sys.executable).with_name("fishplate")
-PATIENCE = 120.0  # s, for starting and for jobs; on a busy machine
 E, NU = 210_000.0, 0.3  # N/mm2
 
 
-@dataclass(frozen=True)
-class Server:
-    process: "subprocess.Popen[bytes]"
-    url: str
-    store: Path
-
-
-@pytest.fixture(scope="module")
-def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Server]:
-    folder = tmp_path_factory.mktemp("server")
-    address = folder / "address"
-    settings = {"FISHPLATE_STORE": str(folder / "store"), "FISHPLATE_WORKERS": "1"}
-    with (folder / "log").open("wb") as log:
-        process = subprocess.Popen(
-            [FISHPLATE, "serve", "--port", "0", "--address-file", address],
-            env={**os.environ, **settings},
-            stderr=log,
-        )
-    until = time.monotonic() + PATIENCE
-    while not address.exists():
-        assert process.poll() is None, (folder / "log").read_text()
-        assert time.monotonic() < until, (folder / "log").read_text()
-        time.sleep(0.05)
-    yield Server(process, address.read_text().strip(), folder / "store")
-    process.terminate()
-    process.wait(PATIENCE)
+@pytest.fixture(scope="module", params=[real_server, real_services], ids=["one", "two"])
+def server(
+    request: pytest.FixtureRequest, tmp_path_factory: pytest.TempPathFactory
+) -> Iterator[Server]:
+    with request.param(tmp_path_factory.mktemp("server")) as server:
+        yield server
 
 
 @pytest.fixture(scope="module")
 def ask(server: Server) -> Callable[..., tuple[bytes, Any]]:
     """Body and headers of an answer."""
+    urls = itertools.cycle(server.urls)
 
     def request(path: str, body: Any = None, **headers: str) -> tuple[bytes, Any]:
         data = None if body is None else json.dumps(body).encode()
         sent = {"Content-Type": "application/json", **headers}
-        with urlopen(Request(server.url + quote(path), data, sent), timeout=PATIENCE) as answer:
+        with urlopen(Request(next(urls) + quote(path), data, sent), timeout=PATIENCE) as answer:
             return answer.read(), answer.headers
 
     return request
@@ -280,14 +257,27 @@ def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes,
         assert json.load(answer)["errors"][0]["pointer"].startswith("/supports")
 
 
-def test_the_server_is_ready(ask: Callable[..., tuple[bytes, Any]]) -> None:
+def test_the_server_is_ready(server: Server, ask: Callable[..., tuple[bytes, Any]]) -> None:
     checks = json.loads(ask("/health/ready")[0])["checks"]
     assert {check["name"] for check in checks if check["ok"]} == {"queue", "store", "workers"}
+    detail = {check["name"]: check["detail"] for check in checks}
+    assert detail["workers"] == f"{server.workers} alive"
+
+
+def test_all_jobs_are_on_one_list_whoever_was_asked(
+    server: Server, ask: Callable[..., tuple[bytes, Any]]
+) -> None:
+    lists = [json.loads(ask("/v1/jobs")[0])["jobs"] for _ in server.urls]
+    assert all(jobs == lists[0] for jobs in lists)
+    assert len(lists[0]) == len(list((server.store / "jobs").glob("*/*"))) > 1
 
 
 def test_the_server_stops_cleanly_when_told(server: Server) -> None:
     """The last test of this module: status 0, and nothing left that listens."""
-    server.process.send_signal(signal.SIGTERM)
-    assert server.process.wait(PATIENCE) == 0
-    with pytest.raises(OSError, match="refused"):
-        urlopen(server.url + "/health/live", timeout=5)
+    for process in server.processes:
+        process.send_signal(signal.SIGTERM)
+    for process in server.processes:
+        assert process.wait(PATIENCE) == 0
+    for url in server.urls:
+        with pytest.raises(OSError, match="refused"):
+            urlopen(url + "/health/live", timeout=5)
