@@ -1,7 +1,7 @@
 """One picture of many meshes, for a person to look at: `python -m tests.contact_sheet OUT.png`."""
 
 import sys
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from pathlib import Path
 
 import matplotlib
@@ -19,13 +19,20 @@ from workers.analysis.quality import element_quality
 from workers.job import Meshing
 
 COLUMNS = 4
+WIDTH, TITLE = 6.0, 0.5  # of a column, above a row [inch]
 ALONG = np.linspace(-1, 1, 7)[:-1]  # points on each side that draw it curved
 
 
 def contact_sheet(path: Path, meshes: Mapping[str, Mesh], columns: int = COLUMNS) -> None:
     """Draw every mesh, coloured by the scaled Jacobian of its elements, dark where it is poor."""
-    rows = -(-len(meshes) // columns)
-    figure, axes = plt.subplots(rows, columns, figsize=(6 * columns, 4.2 * rows), dpi=100)
+    heights = _row_heights(list(meshes.values()), columns)
+    figure, axes = plt.subplots(
+        len(heights),
+        columns,
+        figsize=(WIDTH * columns, sum(heights)),
+        gridspec_kw={"height_ratios": heights},
+        dpi=100,
+    )
     for axis in np.ravel(axes):
         axis.set_axis_off()
     for axis, (name, mesh) in zip(np.ravel(axes), meshes.items(), strict=False):
@@ -34,7 +41,7 @@ def contact_sheet(path: Path, meshes: Mapping[str, Mesh], columns: int = COLUMNS
             coords = mesh.coords(number)
             quality = element_quality(block.element, coords)["min_scaled_jacobian"]
             least, count = min(least, float(quality.min())), count + len(coords)
-            shapes = PolyCollection(_outlines(mesh, number), edgecolors="0.25", linewidths=0.3)
+            shapes = PolyCollection(_outlines(mesh, number), edgecolors="0.25", linewidths=0.2)
             shapes.set(array=quality, cmap="RdYlGn", clim=(0, 1))
             axis.add_collection(shapes)
         for place in mesh.points.values():
@@ -45,6 +52,13 @@ def contact_sheet(path: Path, meshes: Mapping[str, Mesh], columns: int = COLUMNS
     figure.tight_layout()
     figure.savefig(path)
     plt.close(figure)
+
+
+def _row_heights(meshes: Sequence[Mesh], columns: int) -> list[float]:
+    """Of the tallest plate in each row, as wide as a column [inch]."""
+    tall = [np.ptp(mesh.nodes, axis=0) for mesh in meshes]
+    heights = [TITLE + WIDTH * min(1.0, float(height / width)) for width, height in tall]
+    return [max(heights[k : k + columns]) for k in range(0, len(heights), columns)]
 
 
 def _outlines(mesh: Mesh, number: int) -> np.ndarray:

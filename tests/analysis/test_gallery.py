@@ -31,6 +31,7 @@ ELEMENTS = ("T3", "T6", "Q4", "Q8")
 CHORDS = {1: 3e-3, 2: 2e-5}  # relative error of an area, by order
 LEAST_ANGLE = 20.0  # degrees, of triangles
 LEAST_JACOBIAN = 0.25  # of quadrilaterals
+MOST_ASPECT = 4.0  # of quadrilaterals: length over width, by the eye of whoever looks at the sheet
 SHARP = 50.0  # degrees: near such a corner of the drawing no element can be better than it
 
 plates = pytest.mark.parametrize("name", GALLERY)
@@ -86,6 +87,7 @@ def test_elements_are_well_shaped(name: str, element: str) -> None:
             assert quality["min_angle"].min(initial=60) > LEAST_ANGLE
         else:
             assert quality["min_scaled_jacobian"].min(initial=1) > LEAST_JACOBIAN
+            assert quality["max_aspect"].max(initial=1) < MOST_ASPECT
 
 
 @elements

@@ -291,6 +291,19 @@ def test_poor_elements_are_told_with_place_and_size() -> None:
     assert (verdict.poor[:, 2] < 0.5).all()
 
 
+def test_slender_quadrilaterals_are_poor_and_told_with_their_place() -> None:
+    """The lowest of four rows of squares is squeezed to a fifth of its height."""
+    mesh, drawing = square(4)
+    squares = pair_triangles(mesh)
+    assert not len(judge(squares, drawing, get("Q4")).poor)
+    nodes = squares.nodes.copy()
+    nodes[5:10, 1] = 0.05  # the first row of nodes above the bottom, from 0.25
+    verdict = judge(replace(squares, nodes=nodes), drawing, get("Q4"))
+    assert 0 < verdict.worst < 1  # elements of 0.25 x 0.05: five to one
+    assert len(verdict.poor) == 4
+    np.testing.assert_allclose(verdict.poor[:, 1], 0.025)
+
+
 # --- gaps and cuts --------------------------------------------------------------------------------
 
 

@@ -91,7 +91,7 @@ def element_quality(element: ElementType, coords: Array) -> dict[str, Array]:
     ideal = 2 / np.sqrt(3) if element.is_triangle else 1.0
     return {
         "min_angle": angle.min(axis=1),
-        "max_aspect": _aspect(coords[:, : element.corners]),
+        "max_aspect": aspect_ratio(coords[:, : element.corners]),
         "min_scaled_jacobian": ideal * sine.min(axis=1),
     }
 
@@ -107,7 +107,8 @@ def _directions(element: ElementType, coords: Array) -> tuple[Array, Array]:
     return _unit(start), _unit(end)
 
 
-def _aspect(corners: Array) -> Array:
+def aspect_ratio(corners: Array) -> Array:
+    """`max_aspect` of elements with straight sides, (m,); corners is (m, 3 or 4, 2) [L]."""
     following = np.roll(corners, -1, axis=1)
     if corners.shape[1] == 3:
         longest = ((following - corners) ** 2).sum(axis=2).max(axis=1)

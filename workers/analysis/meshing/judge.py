@@ -16,19 +16,22 @@ from workers.analysis.meshing.drawing import Drawing
 from workers.analysis.meshing.flat_mesh import FlatMesh, cell_edges, side_keys
 from workers.analysis.meshing.shape import shape_faults
 from workers.analysis.meshing.smooth import QUALITY
-from workers.analysis.quality import element_quality
+from workers.analysis.quality import aspect_ratio, element_quality
 
 Array = NDArray[np.float64]
 
 # The element that fills in where a quadrilateral would be too poor.
 TRIANGLE_LIKE = {1: "T3", 2: "T6"}
 LEAST = {3: 0.42, 4: 0.3}  # scaled Jacobian by corners: below it is poor; 0.4 is 20 degrees
+# Aspect of quadrilaterals: above it is poor. The library's rows run together or apart here and
+# there, with elements of 10 and more; pairs of triangles are below 2 but in tight corners.
+MOST_ASPECT = 3.5
 SHARP = 50.0  # degrees: elements near a corner of the drawing so sharp are excused
 
 
 @dataclass(frozen=True, eq=False)
 class Verdict:
-    """worst : the scaled Jacobian over what is wanted, least of all elements; below 0 inverted.
+    """worst : the quality over what is wanted, least of all elements; below 0 inverted.
     poor : (k, 3) centres and sizes of the elements below 1 that no corner of the drawing excuses.
     """
 
@@ -55,7 +58,9 @@ def judge(mesh: FlatMesh, drawing: Drawing, element: ElementType) -> Verdict:
         if kind.order > 1:
             curved, with_arcs = _curved_quality(mesh, drawing, cells, kind)
             quality[curved] = np.minimum(quality[curved], with_arcs)
-        share = quality / LEAST[cells.shape[1]]
+        share = quality / LEAST[kind.corners]
+        if not kind.is_triangle:
+            share = np.minimum(share, MOST_ASPECT / aspect_ratio(corners))
         rows = np.flatnonzero(share < 1)
         sides = np.linalg.norm(np.roll(corners[rows], -1, axis=1) - corners[rows], axis=2)
         places = np.column_stack((corners[rows].mean(axis=1), sides.mean(axis=1)))
