@@ -62,3 +62,14 @@ def test_the_results_themselves_stay_as_they_are() -> None:
 def test_nothing_else_changes() -> None:
     """Where there is no rounding, settled results are the results."""
     assert settle(small_job(), small_results()) == small_results()
+
+
+def test_places_of_rounding_are_zero() -> None:
+    """The middle of a symmetric plate is at 0, not at 1e-15 of its unit."""
+    results = small_results()
+    state = results["cases"]["pull"]
+    state["equilibrium"]["about"] = [-1.7e-15, 20.0]
+    state["von_mises"]["at"] = [100.0, 3e-14]
+    shown = settle(small_job(), results)["cases"]["pull"]
+    assert shown["equilibrium"]["about"] == [0.0, 20.0]
+    assert shown["von_mises"]["at"] == [100.0, 0.0]

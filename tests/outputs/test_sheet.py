@@ -6,10 +6,11 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from PIL import Image
+from PIL import Image, PngImagePlugin
 
 from tests.sheet_samples import HOSTILE, many_cases, small_job, small_results
 from workers.cautions import STANDING
+from workers.outputs.drawing.page import WINDOW
 from workers.outputs.sheet import css_string, evidence_words, render_sheet
 
 VOID = {"meta", "img", "br", "path", "polyline", "polygon", "circle", "link", "input"}
@@ -58,9 +59,12 @@ def small(tmp_path: Path) -> Page:
     return Page(render_sheet(small_job(), small_results(), tmp_path))
 
 
-def draw(path: Path) -> None:
+def draw(path: Path, window: str | None = None) -> None:
     path.parent.mkdir(parents=True, exist_ok=True)
-    Image.new("RGB", (16, 12), "white").save(path)
+    text = PngImagePlugin.PngInfo()
+    if window is not None:
+        text.add_text(WINDOW, window)
+    Image.new("RGB", (16, 12), "white").save(path, pnginfo=text)
 
 
 def test_the_sheet_is_whole_html(small: Page) -> None:
@@ -147,6 +151,22 @@ def test_pictures_are_in_the_page_with_words_for_those_who_do_not_see_them(tmp_p
         assert (image["src"] or "").startswith("data:image/png;base64,")
         assert (image["width"], image["height"]) == ("16", "12")
         assert len(image["alt"] or "") > 20
+
+
+def test_of_a_picture_the_part_between_title_and_cautions_is_shown(tmp_path: Path) -> None:
+    """Rows 3 to 9 of 12: the window is 16 x 6, with 3 of the 6 hidden rows above it."""
+    draw(tmp_path / "previews" / "pull" / "model.png", window="3 9")
+    (image,) = Page(render_sheet(small_job(), small_results(), tmp_path)).all("img")
+    assert (image["width"], image["height"]) == ("16", "6")
+    assert image["style"] == "aspect-ratio: 16 / 6; object-position: 0 50.0%"
+
+
+def test_what_must_be_decided_has_room_for_initials(tmp_path: Path) -> None:
+    results = small_results()
+    html = render_sheet(small_job(), results, tmp_path)
+    to_decide = [c for c in results["cautions"] if c["severity"] != "note"]
+    assert to_decide
+    assert html.count('class="answered"') == len(to_decide)
 
 
 def test_a_sheet_without_pictures_says_so(tmp_path: Path) -> None:

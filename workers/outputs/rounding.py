@@ -18,7 +18,7 @@ STRESSES = ("von_mises", "principal_max", "principal_min", "shear_max")
 
 
 def settle(job: Job, results: Json) -> dict[str, Any]:
-    """The results with zeros for rounding in peaks, balances, reactions, probes and cuts.
+    """The results with zeros for rounding in peaks, places, balances, reactions, probes and cuts.
 
     Lines and everything that does not belong to a state are the same objects as before.
     """
@@ -48,7 +48,7 @@ def settle(job: Job, results: Json) -> dict[str, Any]:
 class Noise:
     """The sizes below which the numbers of one state are rounding.
 
-    stress [F/L^2], force [F], moment [F L], displacement [L]
+    stress [F/L^2], force [F], moment [F L], displacement [L], place [L]
     """
 
     def __init__(self, results: Json, state: Json, stiffest: float) -> None:
@@ -58,6 +58,7 @@ class Noise:
         self.stress = max(OF_STATE * state["von_mises"]["value"], OF_MODULUS * stiffest)
         self.force = self.stress * thickness * size
         self.moment = self.force * size
+        self.place = OF_STATE * size
         self.displacement = max(OF_STATE * state["displacement"]["value"], OF_MODULUS * size)
 
     def state(self, state: Json) -> dict[str, Any]:
@@ -70,6 +71,7 @@ class Noise:
                     **reaction,
                     "force": zeroed(reaction["force"], self.force),
                     "moment": zero(reaction["moment"], self.moment),
+                    "about": zeroed(reaction["about"], self.place),
                 }
                 for label, reaction in state["reactions"].items()
             },
@@ -77,13 +79,14 @@ class Noise:
                 **balance,
                 "applied": self._resultant(balance["applied"]),
                 "reaction": self._resultant(balance["reaction"]),
+                "about": zeroed(balance["about"], self.place),
             },
         }
 
     def peak(self, quantity: str, peak: Json) -> dict[str, Any]:
         rounding = {"displacement": self.displacement, "utilisation": 0.0}
         value = zero(peak["value"], rounding.get(quantity, self.stress))
-        return {**peak, "value": value}
+        return {**peak, "value": value, "at": zeroed(peak["at"], self.place)}
 
     def probe(self, found: Json) -> dict[str, Any]:
         return {
@@ -96,7 +99,8 @@ class Noise:
     def cut(self, found: Json) -> dict[str, Any]:
         normal, shear = zeroed((found["normal"], found["shear"]), self.force)
         moment = zero(found["moment"], self.moment)
-        return {**found, "normal": normal, "shear": shear, "moment": moment}
+        about = zeroed(found["about"], self.place)
+        return {**found, "normal": normal, "shear": shear, "moment": moment, "about": about}
 
     def _resultant(self, values: Sequence[float]) -> list[float]:
         return [*zeroed(values[:2], self.force), zero(values[2], self.moment)]

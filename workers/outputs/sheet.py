@@ -5,10 +5,8 @@ nothing from elsewhere: pictures are in it as data URIs, plots as inline SVG. Ev
 client's goes through the template's escaping.
 """
 
-from base64 import b64encode
 from collections import Counter
 from collections.abc import Iterable, Mapping
-from dataclasses import dataclass
 from pathlib import Path
 from typing import Any
 
@@ -27,8 +25,9 @@ from workers.outputs.leading import (
     reaction_extremes,
     worth_a_row,
 )
-from workers.outputs.names import SHEET, file_name
+from workers.outputs.names import SHEET
 from workers.outputs.rounding import settle
+from workers.outputs.shape_words import shape_rows
 from workers.outputs.sheet_parts import (
     MOST_ROWS,
     convergence_plot,
@@ -36,10 +35,10 @@ from workers.outputs.sheet_parts import (
     line_parts,
     peak_plot,
 )
+from workers.outputs.sheet_pictures import find_picture, find_pictures
 
 Json = Mapping[str, Any]
 
-PICTURES = ("model", "von_mises", "deformed", "principal_max", "principal_min")
 DIGITS = 4  # more than any of these numbers can be trusted for
 MOST_PEAKS = 24  # states with a row of their own; more are listed in small print
 MOST_REACTIONS = 30  # rows; for more, those of the governing states and the extremes
@@ -47,7 +46,6 @@ MOST_LISTED = 900  # states in the small print; further ones are in the table fi
 MOST_LOAD_CASES = 24  # whose loads are told; of more, those of the governing states
 MOST_ERRORS = 5  # states whose error estimate is shown, the largest first
 MOST_EVIDENCE = 6  # entries of a list in the evidence of a caution
-PNG_SIZE = slice(16, 24)  # where a PNG file has its width and height
 
 
 def warm_up() -> None:
@@ -77,6 +75,7 @@ def render_sheet(job: Job, results: Json, folder: Path) -> str:
         leading=leading,
         others=[name for name in states if name not in leading][:MOST_LISTED],
         left_out=max(0, len(states) - len(leading) - MOST_LISTED),
+        shape=shape_rows(job),
         told_cases=told_cases(job, governed),
         told_sums=[
             one
@@ -111,34 +110,6 @@ def write_sheet(job: Job, results: Json, folder: Path, target: Path) -> Path:
 
 
 # --- what is on it -------------------------------------------------------------------------------
-
-
-@dataclass(frozen=True)
-class Picture:
-    """A PNG file as a data URI, with its size in pixels."""
-
-    source: str
-    width: int
-    height: int
-
-
-def find_pictures(folder: Path, state: str) -> dict[str, Picture]:
-    """The pictures of a state that have been drawn, by quantity."""
-    here = folder / "previews" / file_name(state)
-    found = {quantity: find_picture(here / f"{quantity}.png") for quantity in PICTURES}
-    return {quantity: picture for quantity, picture in found.items() if picture is not None}
-
-
-def find_picture(path: Path) -> Picture | None:
-    if not path.is_file():
-        return None
-    data = path.read_bytes()
-    width, height = data[PNG_SIZE][:4], data[PNG_SIZE][4:]
-    return Picture(
-        f"data:image/png;base64,{b64encode(data).decode()}",
-        int.from_bytes(width),
-        int.from_bytes(height),
-    )
 
 
 def sorted_cautions(results: Json) -> list[Json]:

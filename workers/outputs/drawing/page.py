@@ -28,6 +28,8 @@ SMALL_SIZE = 24  # of the footer and of what is only good to know
 FOOTER_LINE = 31
 FOOTER_LINES = 10  # a quarter of the page
 TAG_WIDTH = 104
+AIR = 14  # below what is drawn, in the window
+WINDOW = "Window"  # key of the file's text with the first and last row between title and cautions
 
 Pixels = NDArray[np.uint8]
 
@@ -51,11 +53,13 @@ class Page:
         self.title, self.cautions = title, tuple(cautions)
         self.canvas = Canvas(WIDTH, HEIGHT)
         self.paper: Pixels = np.full((HEIGHT, WIDTH, 3), 255, np.uint8)
-        top = self._draw_title(title, subtitle)
+        foot, top = self._draw_title(title, subtitle)
         bottom = self._draw_footer(footer_rows(self.canvas, cautions))
+        self._between = round(HEIGHT - foot), round(HEIGHT - bottom)
         self.drawing = Box(MARGIN, bottom, WIDTH - MARGIN, top)
 
-    def _draw_title(self, title: str, subtitle: str) -> float:
+    def _draw_title(self, title: str, subtitle: str) -> tuple[float, float]:
+        """Where the title ends and where the subtitle below it does."""
         room = WIDTH - 2 * MARGIN
         for size, count in TITLES:
             lines = self.canvas.wrap(title, size, room, count, bold=True)
@@ -66,10 +70,11 @@ class Page:
             y -= 0.6 * size
             self.canvas.text((MARGIN, y), line, size, colour=INK, bold=True)
             y -= 0.6 * size
+        foot = y
         y -= 0.75 * SUBTITLE_SIZE
         shown = self.canvas.fit(subtitle, SUBTITLE_SIZE, room)
         self.canvas.text((MARGIN, y), shown, SUBTITLE_SIZE, colour=FAINT)
-        return y - SUBTITLE_SIZE
+        return foot, y - SUBTITLE_SIZE
 
     def _draw_footer(self, rows: Sequence[FooterRow]) -> float:
         count = sum(len(row.lines) for row in rows)
@@ -106,10 +111,19 @@ class Page:
         """Write the picture as PNG with its title, facts and cautions as text in the file."""
         text = PngImagePlugin.PngInfo()
         lines = "\n".join(map(caution_line, self.cautions))
-        for key, value in {"Title": self.title, **facts, "Cautions": lines}.items():
+        pixels = self.pixels()
+        told = {"Title": self.title, **facts, WINDOW: self._window(pixels), "Cautions": lines}
+        for key, value in told.items():
             text.add_itxt(key, value) if not _is_latin(value) else text.add_text(key, value)
-        image = Image.fromarray(self.pixels())
+        image = Image.fromarray(pixels)
         image.save(path, format="PNG", pnginfo=text, compress_level=3)
+
+    def _window(self, pixels: Pixels) -> str:
+        """The rows between title and cautions, without blank ones at their end."""
+        first, last = self._between
+        used = np.flatnonzero((pixels[first:last] < 250).any(axis=(1, 2)))
+        end = min(last, first + int(used.max(initial=0)) + AIR)
+        return f"{first} {end}"
 
 
 def over(paper: Pixels, sheet: Pixels) -> Pixels:
