@@ -2,6 +2,9 @@
 
 from collections.abc import Iterator
 
+import numpy as np
+from numpy.typing import NDArray
+
 from workers.analysis.effort import ENERGY_ERROR
 from workers.job import Support, TemperatureChange
 from workers.review.context import ReviewContext
@@ -34,12 +37,13 @@ def near_mechanism(context: ReviewContext) -> Iterator[Finding]:
     if any(prescribed_values(support) for support in context.job.supports):
         return  # a settlement moves the plate without straining it, as it should
     worst = None
+    heating = _free_strains(context)
     for peak in context.peaks("displacement"):
         stress = context.states[peak.case].get("von_mises")
         if not stress or not stress["value"]:
             continue
         modulus = context.job.material_of(stress.get("region") or "").youngs_modulus
-        strain = stress["value"] / modulus + _free_strain(context, peak.case)
+        strain = stress["value"] / modulus + np.abs(context.factors(peak.case)) @ heating
         share = peak.value / context.mesh.diagonal / strain
         if share > RIGID_SHARE and (worst is None or share > worst[0]):
             worst = share, peak
@@ -55,14 +59,14 @@ def near_mechanism(context: ReviewContext) -> Iterator[Finding]:
         )
 
 
-def _free_strain(context: ReviewContext, state: str) -> float:
-    """Largest thermal strain of a state, which moves the plate without stress."""
+def _free_strains(context: ReviewContext) -> NDArray[np.float64]:
+    """Largest thermal strain of each load case, which moves the plate without stress, (c,)."""
     largest = max((m.thermal_expansion or 0.0 for m in context.job.materials.values()), default=0.0)
-    return largest * sum(
-        abs(factor * load.change)
-        for factor, case in zip(context.factors(state), context.job.load_cases, strict=True)
-        for load in case.loads
-        if isinstance(load, TemperatureChange)
+    return largest * np.array(
+        [
+            sum(abs(load.change) for load in case.loads if isinstance(load, TemperatureChange))
+            for case in context.job.load_cases
+        ]
     )
 
 
