@@ -56,11 +56,17 @@ def _peaks(results: Results) -> Iterator[Row]:
             peak = state[quantity]
             low, high = peak["interval"] or (None, None)
             singular = peak["singular"] or {"value": None, "at": (None, None)}
-            unit = length if quantity == "displacement" else stress
-            yield [name, quantity, peak["value"], unit, *peak["at"], peak["region"], peak["error"],
-                   low, high, singular["value"], *singular["at"]]  # fmt: skip
+            yield [name, quantity, peak["value"], _unit(results, quantity), *peak["at"],
+                   peak["region"], peak["error"], low, high, singular["value"],
+                   *singular["at"]]  # fmt: skip
         if (use := state["utilisation"]) is not None:
             yield [name, "utilisation", use["value"], "1", *use["at"], use["region"], *[None] * 6]
+
+
+def _unit(results: Results, quantity: str) -> str:
+    """Of a value in a column of several quantities."""
+    units = {"displacement": results["units"]["length"], "utilisation": "1"}
+    return str(units.get(quantity, results["units"]["stress"]))
 
 
 def _combinations(results: Results) -> Iterator[Row]:
@@ -72,11 +78,12 @@ def _combinations(results: Results) -> Iterator[Row]:
 
 def _envelope(results: Results) -> Iterator[Row]:
     stress, length = results["units"]["stress"], results["units"]["length"]
-    yield ["quantity", f"value [{stress}; {length}; 1]", "governing case", f"x [{length}]",
-           f"y [{length}]", "region"]  # fmt: skip
+    yield ["quantity", f"value [{stress}; {length}; 1]", "unit", "governing case",
+           f"x [{length}]", f"y [{length}]", "region"]  # fmt: skip
     for quantity, peak in results["envelope"].items():
         if peak is not None:
-            yield [quantity, peak["value"], peak["governs"], *peak["at"], peak["region"]]
+            yield [quantity, peak["value"], _unit(results, quantity), peak["governs"], *peak["at"],
+                   peak["region"]]  # fmt: skip
 
 
 def _reactions(results: Results) -> Iterator[Row]:
