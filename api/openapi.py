@@ -102,7 +102,7 @@ class Blueprint(flask_smorest.Blueprint):
         if "ETag" in headers:
             doc["responses"][304] = {"description": "The client has it already"}
         if "Accept-Ranges" in headers:
-            content = {media: {} for media in file["content"]}
+            content: dict[str, Any] = {media: {} for media in file["content"]}
             doc["responses"][206] = {**file, "description": "A part of the file",
                                      "content": content}  # fmt: skip
             doc["responses"] |= problems_of(416)

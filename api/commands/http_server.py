@@ -66,7 +66,7 @@ def _start(settings: Settings, listener: socket.socket) -> "subprocess.Popen[byt
     options = {
         "bind": f"fd://{listener.fileno()}",
         "workers": PROCESSES,
-        "worker-class": "gthread",
+        "worker-class": "api.http_worker.Worker",
         "threads": settings.api_threads,
         "timeout": 2 * settings.longest_wait,
         "graceful-timeout": GRACE,

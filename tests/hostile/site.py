@@ -42,7 +42,7 @@ def settings_of(folder: Path, redis_url: str, **changes: Any) -> Settings:
     """For small documents and short waits, with as many jobs as a fuzzer may send."""
     return Settings(
         store=folder, redis_url=redis_url, body_bytes=100_000, longest_wait=1,
-        queue_length=10**6, pictures=0, port=0, log_level="warning", **changes,
+        queue_length=10**6, most_nodes=20_000, pictures=0, port=0, log_level="warning", **changes,
     )  # fmt: skip
 
 

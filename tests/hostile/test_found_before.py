@@ -12,6 +12,7 @@ from vtkmodules.vtkIOXML import vtkXMLUnstructuredGridReader
 
 from tests.job_documents import strip
 from workers.analysis.meshing.build import mesh_job
+from workers.analysis.meshing.size_field import element_areas
 from workers.analysis.solved import solve_on
 from workers.document.read import load
 from workers.pipeline import run, silent
@@ -83,3 +84,27 @@ def test_jobs_with_the_longest_labels_are_kept_and_found(tmp_path: Path, letter:
     ids = [store.accept(b"{}", title="a", label=label).record.id for label in labels]
     for label, job_id in zip(labels, ids, strict=True):
         assert [record.id for record in store.list(label=label).records] == [job_id]
+
+
+def test_small_elements_far_from_the_origin_keep_their_areas() -> None:
+    """Products of large coordinates lost them, so that a convergence record had no sizes."""
+    document = strip()
+    patch = document["geometry"]["patches"][0]
+    patch["corners"] = [[x + 1e8, y - 1e8] for x, y in patch["corners"]]
+    document["geometry"]["points"]["corner"] = [1e8, -1e8]
+    areas = element_areas(mesh_job(load(document)))
+    np.testing.assert_allclose(areas, 20 * 20, rtol=1e-6)
+
+
+def test_a_cut_far_from_the_origin_carries_the_weight_beyond_it() -> None:
+    """As above, of the parts of elements on one side of a cut: 100 x 15 x 8 mm of 200 kN/m3."""
+    document = strip()
+    patch = document["geometry"]["patches"][0]
+    patch["corners"] = [[x + 1e8, y - 1e8] for x, y in patch["corners"]]
+    document["geometry"]["points"]["corner"] = [1e8, -1e8]
+    document["supports"] = [{"on": "low", "ux": 0, "uy": 0}]
+    document["load_cases"] = {"pull": [{"body_force": [0, -2e-4]}]}
+    across = {"from": [1e8, 25 - 1e8], "to": [100 + 1e8, 25 - 1e8]}
+    document["requests"] = {"cuts": {"across": across}}
+    found = results_of(document)["cuts"]["across"]["pull"]
+    assert abs(found["normal"]) == pytest.approx(100 * 15 * 8 * 2e-4, rel=1e-3)

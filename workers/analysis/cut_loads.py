@@ -235,6 +235,10 @@ def _clip(polygon: Array, distance: Array) -> Array:
 
 def _area_and_moment(polygon: Array) -> tuple[float, Array]:
     """Area and first moments (2,) of a polygon."""
-    following = np.roll(polygon, -1, axis=0)
-    cross = polygon[:, 0] * following[:, 1] - following[:, 0] * polygon[:, 1]
-    return cross.sum() / 2, cross @ (polygon + following) / 6
+    # From one of its corners: the products of large coordinates would lose the area.
+    corner = polygon[:1]
+    seen = polygon - corner
+    following = np.roll(seen, -1, axis=0)
+    cross = seen[:, 0] * following[:, 1] - following[:, 0] * seen[:, 1]
+    area = cross.sum() / 2
+    return area, cross @ (seen + following) / 6 + area * corner.sum(axis=0)

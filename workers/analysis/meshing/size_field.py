@@ -31,7 +31,9 @@ def element_areas(mesh: Mesh) -> Array:
     """Area between the corners of every element, block after block, (m,) [L^2]."""
     areas = []
     for number, block in enumerate(mesh.blocks):
-        x, y = np.moveaxis(mesh.coords(number)[:, : block.element.corners], 2, 0)
+        corners = mesh.coords(number)[:, : block.element.corners]
+        # From the first corner: the products of large coordinates would lose the area.
+        x, y = np.moveaxis(corners - corners[:, :1], 2, 0)
         areas.append((x * np.roll(y, -1, axis=1) - np.roll(x, -1, axis=1) * y).sum(axis=1) / 2)
     return np.concatenate(areas)
 
