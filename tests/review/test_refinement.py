@@ -80,3 +80,10 @@ def test_what_is_infinite_is_told_with_both_values() -> None:
     (caution,) = raised(results=results)["stress-singularity"]
     assert (caution.evidence["value"], caution.evidence["outside"]) == (300.0, VALUE)
     assert "as the theory says" in caution.message
+
+
+def test_other_rules_do_not_call_what_is_left_out_the_peak() -> None:
+    """The corner lies on the fixed side of the plate."""
+    results = refined(series("converging", 1.0), singular=CORNER)
+    (caution,) = raised(results=results)["over-restrained"]
+    assert "300 MPa (left out of the reported peak, 120 MPa)" in caution.message

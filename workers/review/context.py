@@ -88,6 +88,16 @@ class ReviewContext:
         ]
         return sorted(found, key=lambda peak: -abs(peak.value))
 
+    def summit_words(self, peak: Peak) -> str:
+        """A von Mises peak of `summits`, as the subject of a sentence."""
+        if peak.record.get("singular"):
+            reported = self.stress(float(peak.record["value"]))
+            return (
+                f"The largest von Mises stress that the mesh shows in {peak.case!r}, "
+                f"{self.stress(peak.value)} (left out of the reported peak, {reported}),"
+            )
+        return f"The peak von Mises stress of {peak.case!r}, {self.stress(peak.value)},"
+
     def worst(self, quantity: str) -> Peak | None:
         return next(iter(self.peaks(quantity)), None)
 

@@ -143,8 +143,8 @@ def _report(context: ReviewContext, found: list[tuple[Peak, int]], what: str) ->
     x, y = context.mesh.nodes[node]
     distance = float(np.hypot(x - peak.at[0], y - peak.at[1]))
     yield finding(
-        f"The peak von Mises stress of {peak.case!r}, {context.stress(peak.value)}, lies within "
-        f"{NEAR:g} element sizes of ({x:.4g}, {y:.4g}), where {what}.",
+        f"{context.summit_words(peak)} lies within {NEAR:g} element sizes of ({x:.4g}, {y:.4g}), "
+        f"where {what}.",
         value=distance,
         limit=float(NEAR * context.element_size[node]),
         at=[x, y],

@@ -40,9 +40,9 @@ def over_restrained(context: ReviewContext) -> Iterator[Finding]:
         peak, node, distance, ratio = found[0]
         x, y = context.mesh.nodes[node]
         yield finding(
-            f"The peak von Mises stress of {peak.case!r}, {context.stress(peak.value)}, is next to "
-            f"({x:.4g}, {y:.4g}) on a side that is held in both directions; with a Poisson's ratio "
-            f"of {ratio:g} a part of it comes from the strain that the side holds back.",
+            f"{context.summit_words(peak)} is next to ({x:.4g}, {y:.4g}) on a side that is held in "
+            f"both directions; with a Poisson's ratio of {ratio:g} a part of it comes from the "
+            "strain that the side holds back.",
             value=distance,
             limit=float(NEAR * context.element_size[node]),
             at=[x, y],
