@@ -1,5 +1,7 @@
 """Settings of a command: those of the environment, with what the command line says on top."""
 
+import os
+import pwd
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
@@ -26,5 +28,19 @@ STORE = click.option(
 
 
 def store_folder(store: Path | None) -> Path:
-    """The folder that `--store` names, or the setting."""
-    return settings_with(store=store.absolute() if store else None).store
+    """The folder that `--store` names, or the setting; not another user's when we are root.
+
+    What root wrote there, the user of the server could not read: nobody would be let in any more.
+    """
+    folder = settings_with(store=store.absolute() if store else None).store
+    owner = folder.stat().st_uid if folder.is_dir() else os.geteuid()
+    if os.geteuid() == 0 and owner != 0:
+        leave(BAD_INPUT, f"The store {folder} is of {_name(owner)}; run this as that user.")
+    return folder
+
+
+def _name(owner: int) -> str:
+    try:
+        return f"the user {pwd.getpwuid(owner).pw_name}"
+    except KeyError:
+        return f"user number {owner}"

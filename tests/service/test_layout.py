@@ -2,6 +2,7 @@
 
 import json
 import multiprocessing
+import os
 import shutil
 from pathlib import Path
 from typing import Any
@@ -194,3 +195,20 @@ def test_records_of_any_age_are_read(old: Store) -> None:
     for record in old.list().records:
         assert isinstance(record, Record)
         assert record.workspace == "default"
+
+
+@pytest.mark.skipif(os.geteuid() != 0, reason="only root could do it")
+@pytest.mark.parametrize(
+    "command", [("tokens", "add", "ana", "--role", "read"), ("migrate",), ("backup", "/nowhere")]
+)
+def test_root_leaves_the_store_of_another_user_alone(
+    store: Store, command: tuple[str, ...]
+) -> None:
+    """Its server could not read what root wrote there."""
+    accept(store)
+    os.chown(store.root, 54321, -1)
+    before = set(store.root.rglob("*"))
+    result = fishplate(*command, "--store", store.root)
+    assert result.exit_code == 2
+    assert "user number 54321" in " ".join(result.stderr.split())
+    assert set(store.root.rglob("*")) == before
