@@ -1,7 +1,7 @@
 """The page of the jobs for a person with a browser."""
 
 import re
-from collections.abc import Callable, Iterator
+from collections.abc import Callable
 from html import unescape
 from pathlib import Path
 from typing import Any
@@ -10,7 +10,7 @@ import pytest
 from flask.testing import FlaskClient
 
 from api.services import Services
-from tests.browser import LOW_CONTRAST, OVERFLOW, Browser, browser, why_not
+from tests.browser import LOW_CONTRAST, OVERFLOW, Browser
 from tests.job_documents import strip
 from workers.cautions import STANDING
 from workers.errors import Fault
@@ -133,14 +133,6 @@ def test_the_page_needs_nothing_from_elsewhere(client: FlaskClient, yard: dict[s
     assert not re.search(
         r"<(script|link|img|iframe)\b|@import|url\(|(src|href)=.?https?:", answer.text
     )
-
-
-@pytest.fixture(scope="module")
-def chromium(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Browser]:
-    if reason := why_not():
-        pytest.skip(reason)
-    with browser(tmp_path_factory.mktemp("profile")) as found:
-        yield found
 
 
 @pytest.mark.slow

@@ -1,12 +1,11 @@
 """The review sheet of the example lug in a browser: at a desk, on a phone, on paper."""
 
 import re
-from collections.abc import Iterator
 from pathlib import Path
 
 import pytest
 
-from tests.browser import LOW_CONTRAST, OVERFLOW, Browser, browser, page_count, why_not
+from tests.browser import LOW_CONTRAST, OVERFLOW, Browser, page_count
 from tests.sheet_samples import HOSTILE, many_cases, small_job, small_results
 from workers import pipeline
 from workers.outputs.drawing.page import LABEL_SIZE, WIDTH
@@ -17,14 +16,6 @@ pytestmark = pytest.mark.slow
 LUG = Path(__file__).parents[2] / "examples" / "lug" / "job.json"
 DESK, PHONE = 1400, 390  # CSS pixels
 LONG_NAME = "W" * 80
-
-
-@pytest.fixture(scope="module")
-def chromium(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Browser]:
-    if reason := why_not():
-        pytest.skip(reason)
-    with browser(tmp_path_factory.mktemp("profile")) as found:
-        yield found
 
 
 @pytest.fixture(scope="module")

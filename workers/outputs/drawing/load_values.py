@@ -55,72 +55,33 @@ def target_name(load: Load, whole: str = "whole plate") -> str:
 # --- in words ------------------------------------------------------------------------------------
 
 
-@singledispatch
-def describe(load: Load, factor: float, units: Units) -> str:
+def describe(load: Load, factor: float, units: Units) -> str:  # noqa: PLR0911  a table of the kinds
     """One line for a load, e.g. "pressure 5 MPa"."""
+    force, length = units.force, units.length
+    match load:
+        case PointForce():
+            return _vector(load.force, factor, force)
+        case TotalForce():
+            return f"total {_vector(load.force, factor, force)}"
+        case Bearing():
+            return f"bearing {_vector(load.force, factor, force)}"
+        case TotalMoment():
+            return f"moment {show(factor * load.moment)} {force}·{length}"
+        case LineLoad():
+            return f"line load {_constant(load, factor, units)}".strip()
+        case Traction() | Pressure() | Shear():
+            return f"{type(load).__name__.lower()} {_constant(load, factor, units)}".strip()
+        case Acceleration():
+            return f"acceleration {_vector(load.acceleration, factor, f'{length}/s²')}"
+        case BodyForce():
+            return f"body force {_vector(load.force, factor, f'{force}/{length}³')}"
+        case Spin():
+            times = "" if factor == 1 else f", its forces {TIMES} {show(factor)}"
+            return f"spin {show(load.speed)} rad/s about {vector(*load.about)} {length}{times}"
+        case TemperatureChange():
+            change = factor * load.change
+            return f"temperature {'+' if change > 0 else ''}{show(change)} K"
     raise TypeError(f"{type(load).__name__} is not a load")
-
-
-@describe.register(PointForce)
-def _(load: PointForce, factor: float, units: Units) -> str:
-    return _vector(load.force, factor, units.force)
-
-
-@describe.register(TotalForce)
-def _(load: TotalForce, factor: float, units: Units) -> str:
-    return f"total {_vector(load.force, factor, units.force)}"
-
-
-@describe.register(Bearing)
-def _(load: Bearing, factor: float, units: Units) -> str:
-    return f"bearing {_vector(load.force, factor, units.force)}"
-
-
-@describe.register(TotalMoment)
-def _(load: TotalMoment, factor: float, units: Units) -> str:
-    return f"moment {show(factor * load.moment)} {units.force}·{units.length}"
-
-
-@describe.register(Traction)
-def _(load: Traction, factor: float, units: Units) -> str:
-    return f"traction {_constant(load, factor, units)}".strip()
-
-
-@describe.register(LineLoad)
-def _(load: LineLoad, factor: float, units: Units) -> str:
-    return f"line load {_constant(load, factor, units)}".strip()
-
-
-@describe.register(Pressure)
-def _(load: Pressure, factor: float, units: Units) -> str:
-    return f"pressure {_constant(load, factor, units)}".strip()
-
-
-@describe.register(Shear)
-def _(load: Shear, factor: float, units: Units) -> str:
-    return f"shear {_constant(load, factor, units)}".strip()
-
-
-@describe.register(Acceleration)
-def _(load: Acceleration, factor: float, units: Units) -> str:
-    return f"acceleration {_vector(load.acceleration, factor, f'{units.length}/s²')}"
-
-
-@describe.register(BodyForce)
-def _(load: BodyForce, factor: float, units: Units) -> str:
-    return f"body force {_vector(load.force, factor, f'{units.force}/{units.length}³')}"
-
-
-@describe.register(Spin)
-def _(load: Spin, factor: float, units: Units) -> str:
-    times = "" if factor == 1 else f", its forces {TIMES} {show(factor)}"
-    return f"spin {show(load.speed)} rad/s about {vector(*load.about)} {units.length}{times}"
-
-
-@describe.register(TemperatureChange)
-def _(load: TemperatureChange, factor: float, units: Units) -> str:
-    change = factor * load.change
-    return f"temperature {'+' if change > 0 else ''}{show(change)} K"
 
 
 def _vector(v: Vector, factor: float, unit: str) -> str:
