@@ -4,10 +4,14 @@ import numpy as np
 import pytest
 
 from tests.exact_solutions import Exact, kirsch, measure_errors, solve_with_exact_border, waves
-from tests.plates import ELEMENTS, grid, plate_job, warp
+from tests.plates import ELEMENTS, MIXED, grid, plate_job, warp
 from workers.analysis.error_estimate import element_volumes, error_stress, estimate_error
+from workers.analysis.mesh import PLATE
 from workers.analysis.model import Model, build_model
 from workers.analysis.recovery import Recovery
+from workers.analysis.solution import solve
+from workers.geometry import Region
+from workers.job import Named, Support, TotalForce
 
 E, NU, T = 1000.0, 0.3, 2.0
 
@@ -37,7 +41,7 @@ def _effectivity(model: Model, exact: Exact) -> float:
     return float(estimate_error(recovery, u, nodal).energy_norm[0]) / true.raw
 
 
-@pytest.mark.parametrize("kind", ELEMENTS)
+@pytest.mark.parametrize("kind", ELEMENTS + MIXED)
 @pytest.mark.parametrize("case", ["hole", "waves"])
 def test_estimate_is_within_a_fifth_of_the_true_error(kind: str, case: str) -> None:
     """0.8 to 1.2 on smooth problems, the range that Zienkiewicz & Zhu report for a fair mesh."""
@@ -92,6 +96,27 @@ def test_free_expansion_has_no_relative_error(kind: str) -> None:
     recovery = Recovery.build(model)
     estimate = estimate_error(recovery, u, recovery.nodal_stress(u, heat), heat)
     assert estimate.relative[0] == 0
+
+
+@pytest.mark.parametrize("kind", ELEMENTS + MIXED)
+def test_a_change_of_thickness_is_no_error(kind: str) -> None:
+    """A bar of two thicknesses in tension: 50 and 25 by hand, exactly, if nothing contracts."""
+    mesh = grid(
+        kind, 6, 3, size=(6.0, 3.0), region_of_column=[0, 0, 0, 1, 1, 1], regions=(PLATE, "pad")
+    )
+    job = plate_job(
+        [Support("wall", Named("left"), ux=0.0), Support("pin", Named("SW"), uy=0.0)],
+        [TotalForce(on=Named("right"), force=(300.0, 0.0))],
+        poissons_ratio=0.0,
+        thickness=2.0,
+        regions=(Region("pad", thickness=4.0),),
+    )
+    solution = solve(job, mesh)
+    recovery = Recovery.build(solution.model)
+    nodal = recovery.nodal_stress(solution.displacement)
+    expected = np.where(recovery.field_mesh.region == 0, 50.0, 25.0)
+    np.testing.assert_allclose(nodal[:, 0, 0], expected, rtol=1e-9)
+    assert estimate_error(recovery, solution.displacement, nodal).relative[0] < 1e-6
 
 
 def test_no_load_has_no_error() -> None:
