@@ -7,7 +7,22 @@ import pytest
 from tests.plates import grid
 from tests.reviewed import raised, sound_job, sound_mesh, sound_results, steel
 from workers.geometry import Region
-from workers.job import Acceleration, Load, LoadCase, Material, Plate, Units
+from workers.job import (
+    Acceleration,
+    Load,
+    LoadCase,
+    Material,
+    Named,
+    Plate,
+    Pressure,
+    Shear,
+    TotalForce,
+    Traction,
+    Units,
+)
+
+SIDE = Named("right")
+SMALL = (LoadCase("pull", (Pressure(on=SIDE, start=-1.0, end=-1.0),)),)
 
 
 def codes_for(**changes: float | None) -> dict:
@@ -60,7 +75,8 @@ REAL = [
 @pytest.mark.parametrize("material", REAL, ids=lambda material: material.name)
 def test_real_materials_are_not_suspected(material: Material) -> None:
     """Handbook values, from memory; only their order of magnitude matters."""
-    job = sound_job(materials={material.name: material}, plate=Plate(material.name, 5.0))
+    plate = Plate(material.name, 5.0)
+    job = sound_job(materials={material.name: material}, plate=plate, load_cases=SMALL)
     assert "units-suspect" not in raised(job)
 
 
@@ -129,3 +145,19 @@ def test_other_accelerations_are_silent(acceleration) -> None:
 def test_gravity_in_metres_in_a_job_in_metres_is_silent() -> None:
     found = weighed(0.0, -9.81, length="m")["units-suspect"]
     assert "acceleration" not in {caution.evidence["quantity"] for caution in found}
+
+
+@pytest.mark.parametrize(
+    ("load", "suspect"),
+    [
+        (Pressure(on=SIDE, start=0.0, end=2000.0), True),  # kPa in a job in MPa; steel of 355 MPa
+        (Traction(on=SIDE, start=(300.0, -300.0), end=(0.0, 0.0)), True),
+        (Shear(on=SIDE, start=-360.0, end=-360.0), True),
+        (Pressure(on=SIDE, start=-350.0, end=-350.0), False),
+        (Traction(on=SIDE, start=(250.0, 250.0), end=(0.0, 0.0)), False),
+        (TotalForce(on=SIDE, force=(1e6, 0.0)), False),
+    ],
+)
+def test_a_force_per_area_beyond_the_yield_strength_is_suspected(load: Load, suspect: bool) -> None:
+    found = raised(sound_job(load_cases=(LoadCase("pull", (load,)),))).get("units-suspect", [])
+    assert [caution.evidence["limit"] for caution in found] == [355.0] * suspect

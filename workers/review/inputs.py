@@ -1,10 +1,11 @@
 """Rules about the input: values that are possible, but more often a slip of units."""
 
 from collections.abc import Iterator
+from math import hypot
 from typing import NamedTuple
 
 from workers.document.units import FORCE_UNITS, LENGTH_UNITS
-from workers.job import Acceleration, Material
+from workers.job import Acceleration, Load, Material, Pressure, Shear, Traction
 from workers.review.context import ReviewContext, listed
 from workers.review.rule import Finding, finding, rule
 
@@ -66,7 +67,8 @@ def poisson_extreme(context: ReviewContext) -> Iterator[Finding]:
     "check",
     title="Values implausible for the declared units",
     looks_at="Stiffness, strength, density and thermal expansion of the materials, the size of the "
-    "plate and the acceleration, converted to SI with the declared units.",
+    "plate and the acceleration, converted to SI with the declared units; and forces per area on "
+    "sides, against the yield strength.",
     action='Check the number against `units`, or write it with its unit, such as "210 GPa".',
 )
 def units_suspect(context: ReviewContext) -> Iterator[Finding]:
@@ -87,6 +89,7 @@ def units_suspect(context: ReviewContext) -> Iterator[Finding]:
             yield from _outside(EXPANSION, material.thermal_expansion, material)
     yield from _outside(PLATE_SIZE, context.mesh.diagonal * length, None)
     yield from _misplaced_gravity(context, length)
+    yield from _crushing(context)
 
 
 def _materials(context: ReviewContext) -> list[Material]:
@@ -146,3 +149,36 @@ def _misplaced_gravity(context: ReviewContext, length: float) -> Iterator[Findin
             unit=f"{unit}/s2",
             case=cases[0],
         )
+
+
+def _crushing(context: ReviewContext) -> Iterator[Finding]:
+    """A force per area that no material here could take where it acts: kPa written as MPa."""
+    strengths = [m.yield_strength for m in _materials(context) if m.yield_strength is not None]
+    if len(strengths) < len(_materials(context)):
+        return
+    limit = max(strengths)
+    largest = {
+        case.name: max((_per_area(load) for load in case.loads), default=0.0)
+        for case in context.job.load_cases
+    }
+    cases = [name for name, value in largest.items() if value > limit]
+    if cases:
+        worst, unit = max(cases, key=lambda name: largest[name]), context.job.units.stress
+        yield finding(
+            f"A force per area of {largest[worst]:.4g} {unit} on a side in {listed(cases)} is "
+            f"more than the yield strength of {limit:.4g} {unit}.",
+            quantity="force per area",
+            value=largest[worst],
+            limit=limit,
+            unit=unit,
+            case=worst,
+        )
+
+
+def _per_area(load: Load) -> float:
+    match load:
+        case Pressure() | Shear():
+            return max(abs(load.start), abs(load.end))
+        case Traction():
+            return max(hypot(*load.start), hypot(*load.end))
+    return 0.0
