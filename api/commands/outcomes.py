@@ -7,10 +7,9 @@ from dataclasses import dataclass, field
 from typing import Any
 
 from rich.console import Console
-from rich.markup import escape
 
 from api.commands.documents import Document
-from api.commands.layout import STYLES, number, print_cautions, print_table
+from api.commands.layout import number, print_cautions, print_table
 from api.commands.terminal import BAD_INPUT, FAILED, print_faults
 from workers.cautions import STANDING
 from workers.record import FINISHED, UNFINISHED
@@ -98,8 +97,8 @@ def title_of(document: bytes) -> str:
 
 
 def print_outcomes(console: Console, outcomes: Sequence[Outcome]) -> None:
-    """The standing cautions, a line for each job, and what went wrong where."""
-    print_cautions(console, [caution.as_json() for caution in STANDING])
+    """The gravest cautions and the standing ones, then a line for each job."""
+    print_cautions(console, [*_stops(outcomes), *(caution.as_json() for caution in STANDING)])
     print_table(
         console,
         "Jobs",
@@ -108,12 +107,6 @@ def print_outcomes(console: Console, outcomes: Sequence[Outcome]) -> None:
         words=2,
         cut="title",
     )
-    for outcome in outcomes:
-        for caution in _stops(outcome):
-            console.print(
-                f"[{STYLES['stop']}]stop[/]  {escape(outcome.document.name)}: "
-                f"{escape(caution['message'])} [italic]{escape(caution['action'])}[/italic]"
-            )
     console.print(f"\n{_totals(outcomes)}")
 
 
@@ -129,8 +122,12 @@ def print_troubles(outcomes: Iterable[Outcome]) -> None:
             )
 
 
-def _stops(outcome: Outcome) -> Iterator[Json]:
-    return (caution for caution in outcome.cautions if caution["severity"] == "stop")
+def _stops(outcomes: Iterable[Outcome]) -> Iterator[Json]:
+    """What forbids to use a result, with the name of the job."""
+    for outcome in outcomes:
+        for caution in outcome.cautions:
+            if caution["severity"] == "stop":
+                yield {**caution, "message": f"{outcome.document.name}: {caution['message']}"}
 
 
 def _totals(outcomes: Sequence[Outcome]) -> str:
