@@ -125,7 +125,7 @@ def _quality(quality: Check) -> Iterator[str]:
         "min_scaled_jacobian": "smallest scaled Jacobian {}",
     }
     for name, measure in quality.items():
-        bad = f" ({measure['bad']} elements beyond {number(measure['limit'])})"
+        bad = f" ({measure['bad']} of them beyond {number(measure['limit'])})"
         yield words[name].format(number(measure["value"], 3)) + (bad if measure["bad"] else "")
 
 

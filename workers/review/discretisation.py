@@ -138,7 +138,8 @@ def distorted_elements(context: ReviewContext) -> Iterator[Finding]:
             x, y = measure["at"]
             yield finding(
                 f"The worst element, at ({x:.4g}, {y:.4g}), has {words.format(measure['value'])};"
-                f" {measure['bad']} are beyond {measure['limit']:g}.",
+                f" {measure['bad']} {'is' if measure['bad'] == 1 else 'are'} beyond "
+                f"{measure['limit']:g}.",
                 quantity=key,
                 value=measure["value"],
                 limit=measure["limit"],
