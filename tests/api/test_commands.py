@@ -10,7 +10,6 @@ from typing import Any
 import pytest
 from click.testing import CliRunner, Result
 from flask import Flask
-from werkzeug.serving import make_server
 
 from api.commands import COMMANDS, main
 from api.commands.client import Client
@@ -18,6 +17,7 @@ from api.commands.folders import replaced
 from api.commands.layout import number
 from api.services import KEY
 from tests.job_documents import strip
+from tests.served import served
 from workers.errors import Fault
 from workers.record import FAILED, RUNNING
 from workers.settings import Settings
@@ -36,14 +36,8 @@ def job(tmp_path: Path) -> Path:
 
 @pytest.fixture
 def url(app: Flask) -> Iterator[str]:
-    """The application behind a real socket."""
-    server = make_server("127.0.0.1", 0, app, threaded=True)
-    thread = threading.Thread(target=server.serve_forever)
-    thread.start()
-    yield f"http://127.0.0.1:{server.port}"
-    server.shutdown()
-    thread.join()
-    server.server_close()
+    with served(app) as address:
+        yield address
 
 
 @pytest.fixture
