@@ -20,6 +20,7 @@ from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields, displacement_fields
 from workers.analysis.model import Model
 from workers.analysis.recovery import Recovery, Temperature
+from workers.analysis.singularities import SingularPlace, find_singular_places
 from workers.analysis.summary import form_envelope
 from workers.cautions import Caution
 from workers.errors import PicturesUnavailableError
@@ -91,6 +92,10 @@ class Work:
         return self.recovery.field_mesh
 
     @cached_property
+    def singular_places(self) -> tuple[SingularPlace, ...]:
+        return find_singular_places(self.model)
+
+    @cached_property
     def envelope(self) -> Envelope:
         """The worst of all states at every point; `states.names` are the states that it counts."""
         if self.formed is not None:
@@ -146,7 +151,7 @@ class Filing:
             preview.render_field(
                 path, work.job, work.field_mesh, fields, quantity,
                 cautions=self.cautions, limits=self._limits(quantity),
-                peak=self._states[state][quantity],
+                peak=self._states[state][quantity], places=work.singular_places,
             )  # fmt: skip
         return path
 

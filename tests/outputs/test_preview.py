@@ -10,6 +10,7 @@ from tests.output_samples import fields_of, mapped_mesh, plain_job, quarter_ring
 from tests.pictures import Picture, like_ink
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
+from workers.analysis.singularities import SingularPlace
 from workers.cautions import STANDING, Caution
 from workers.geometry import Region
 from workers.outputs.drawing.palette import DIVERGING, SEQUENTIAL
@@ -269,6 +270,33 @@ def test_the_reported_peak_is_marked_and_what_is_beyond_the_legend_has_its_end_c
     assert not like_ink(plain.pixels[row, column + 9 : column + 14]).any()
     corner = shown.place(1.0, 1.0)
     assert like_ink(shown.pixels[corner[0] - 15 : corner[0] - 9, corner[1]]).any()
+
+
+def test_every_singular_place_beyond_the_peak_has_a_mark_and_no_other(tmp_path):
+    """Two upper corners show 300 and 200 beside a reported 100; the lower ones, as singular, do not
+    go beyond it."""
+    mesh = mapped_mesh("Q4", (8, 8), rectangle(100, 90))
+
+    def spikes(x, y):
+        top = np.where(x > 99, 300.0, np.where(x < 1, 200.0, 90.0))
+        return np.where(y > 89, top, 90.0), 0 * x, 0 * x
+
+    corners = [(100.0, 90.0), (0.0, 90.0), (100.0, 0.0), (0.0, 0.0)]
+    singular = {"value": 300.0, "at": [100.0, 90.0]}
+    shown = drawn(
+        tmp_path, mesh, spikes, limits=(0.0, 100.0),
+        peak={"value": 100.0, "at": [50.0, 45.0], "singular": singular},
+        places=[SingularPlace("fixed-end", 0, at, 0.7, 12.0, 15.0) for at in corners],
+    )  # fmt: skip
+
+    def is_marked(s: float, t: float) -> bool:
+        (row, column), outward = shown.place(s, t), 1 if t == 0 else -1
+        # The tip of a diamond, outside of the plate.
+        beside = shown.pixels[row + outward * 11 : row + outward * 15 : outward, column]
+        return bool(like_ink(beside).any())
+
+    found = [is_marked(s, t) for s, t in ((1, 1), (0, 1), (1, 0), (0, 0))]
+    assert found == [True, True, False, False]
 
 
 def test_an_unknown_quantity_is_refused(tmp_path):

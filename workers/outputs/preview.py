@@ -5,7 +5,7 @@ in the file. A machine that cannot render off-screen raises PicturesUnavailableE
 reason; its jobs finish without pictures.
 """
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from pathlib import Path
 from typing import Any
 
@@ -15,6 +15,7 @@ from numpy.typing import NDArray
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.mesh import Mesh
+from workers.analysis.singularities import SingularPlace
 from workers.cautions import Caution
 from workers.job import Job
 from workers.outputs.drawing.fields import (
@@ -75,6 +76,7 @@ def render_field(
     cautions: Sequence[Caution],
     limits: tuple[float, float] | None = None,
     peak: Mapping[str, Any] | None = None,
+    places: Iterable[SingularPlace] = (),
 ) -> None:
     """Draw "von_mises", "principal_max" or "principal_min" of a state as a filled field.
 
@@ -84,6 +86,7 @@ def render_field(
         beyond takes the colour of the end, and the legend says how far it goes
     peak : the extreme as the results have it: `value`, `at` and `singular`, a place that it leaves
         out; None: that of the field
+    places : all singular ones; those at which the field goes beyond the peak are marked as well
 
     Raises
     ------
@@ -95,7 +98,7 @@ def render_field(
     require()
     ticks = ", ticks along it" if STRESS_QUANTITIES[quantity].signed else ""
     page = Page(job.title, f"{fields.name} · {heading}{ticks}", cautions)
-    draw_stress(page, job, mesh, fields, quantity, limits=limits, peak=peak)
+    draw_stress(page, job, mesh, fields, quantity, limits=limits, peak=peak, places=places)
     page.save(path, _facts(fields.name, quantity, job.units.stress))
 
 

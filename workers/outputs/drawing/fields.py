@@ -1,6 +1,6 @@
 """Pictures of a solved state: filled stress fields and the deformed shape."""
 
-from collections.abc import Callable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Iterator, Mapping
 from dataclasses import dataclass
 from typing import Any
 
@@ -10,6 +10,7 @@ from numpy.typing import ArrayLike, NDArray
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
 from workers.analysis.plane_stress import principal, von_mises
+from workers.analysis.singularities import SingularPlace
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
 from workers.outputs.drawing.legend import Scale, draw_isoline, draw_legend, legend_size
@@ -45,6 +46,11 @@ class StressQuantity:
     peak: Callable[[Array], np.intp]
     signed: bool
 
+    def beyond(self, values: Array, peak: float) -> NDArray[np.bool_]:
+        """Which values are worse than the peak, by more than rounding."""
+        sign = -1 if self.peak is np.argmin else 1
+        return np.asarray(sign * (values - peak) > ROUNDING_OF_STATE * abs(peak))
+
 
 STRESS_QUANTITIES = {
     "von_mises": StressQuantity("Von Mises stress", von_mises, np.argmax, signed=False),
@@ -66,8 +72,9 @@ def draw_stress(
     *,
     limits: Limits | None,
     peak: Peak | None,
+    places: Iterable[SingularPlace],
 ) -> None:
-    """Fill the plate with a stress; mark its peak, and a singular place that it leaves out.
+    """Fill the plate with a stress; mark its peak, and the singular places that it leaves out.
 
     Principal stresses have ticks along their directions.
     """
@@ -91,7 +98,8 @@ def draw_stress(
     text = f"{show(value)} {job.units.stress}"
     marks = [Mark(np.asarray(peak["at"]), text, _where(mesh, peak["at"], job))]
     if peak.get("singular"):
-        marks.append(_singular_mark(mesh, job, peak["singular"]))
+        beyond = np.flatnonzero(quantity.beyond(nodal, peak["value"]))
+        marks += _singular_marks(mesh, job, peak["singular"], mesh.points[beyond], places)
     draw_marks(page, view, marks)
 
 
@@ -178,10 +186,24 @@ def _crossed(
         yield level, triangles[sloping & (low <= level) & (level <= high)]
 
 
-def _singular_mark(mesh: FieldMesh, job: Job, singular: Peak) -> Mark:
-    text = f"singular place, left out: {show(singular['value'])} {job.units.stress}"
-    where = f"on this mesh {_where(mesh, singular['at'], job)}"
-    return Mark(np.asarray(singular["at"]), text, where, singular=True)
+def _singular_marks(
+    mesh: FieldMesh, job: Job, worst: Peak, beyond: Array, places: Iterable[SingularPlace]
+) -> list[Mark]:
+    """The singular place with the worst stress, and the others near points beyond the peak."""
+    others = [
+        Mark(np.array(place.at), "", "", singular=True)
+        for place in places
+        if list(place.at) != list(worst["at"])
+        and (np.linalg.norm(beyond - place.at, axis=1) <= place.radius).any()
+    ]
+    which = (
+        "infinite stress at \N{WHITE DIAMOND}, left out: to"
+        if others
+        else "infinite stress, left out:"
+    )
+    text = f"{which} {show(worst['value'])} {job.units.stress}"
+    where = f"on this mesh {_where(mesh, worst['at'], job)}"
+    return [Mark(np.asarray(worst["at"]), text, where, singular=True), *others]
 
 
 def _draw_directions(

@@ -19,7 +19,10 @@ DIAMOND = 13 * np.array([(1.0, 0.0), (0.0, 1.0), (-1.0, 0.0), (0.0, -1.0)])
 
 @dataclass(frozen=True, eq=False)
 class Mark:
-    """A value at a place of the plate; a singular one has a diamond, the peak a ring."""
+    """A value at a place of the plate; a singular one has a diamond, the peak a ring.
+
+    value : no label where it is empty
+    """
 
     at: Array
     value: str
@@ -38,5 +41,7 @@ def draw_marks(page: Page, view: View, marks: Sequence[Mark]) -> None:
                 page.canvas.disc(place, 11, fill=None, edge=colour, width=width)
     labels = Labels(page.canvas, page.drawing, page.paper)
     for mark, place in zip(marks, places, strict=True):
+        if not mark.value:
+            continue
         layouts = [(f"{mark.value} {mark.where}",), (mark.value, mark.where)]
         labels.place(Label(place, layouts, bold=not mark.singular))
