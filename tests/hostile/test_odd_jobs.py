@@ -5,7 +5,6 @@ warning of NumPy (overflow, division by zero) fails the test: it stands for a nu
 """
 
 import html
-import math
 from collections import Counter
 from collections.abc import Iterator
 from pathlib import Path
@@ -21,6 +20,7 @@ from jsonschema import Draft202012Validator
 from api.result_schemas import ResultsSchema
 from tests.hostile.amount import count
 from tests.hostile.odd_jobs import odd_job
+from workers.analysis.finite import require_numbers
 from workers.document.read import read_document
 from workers.errors import FaultyError
 from workers.limits import time_limit
@@ -76,8 +76,7 @@ def solve(document: bytes, folder: Path) -> Any:
 
 def check_numbers(results: Any, seed: int, form: Draft202012Validator) -> None:
     """All finite, of the promised form, in balance, and with their cautions."""
-    wrong = [place for place, value in numbers(results) if not math.isfinite(value)]
-    assert not wrong, (seed, wrong)
+    require_numbers(results)
     written = orjson.loads(orjson.dumps(results))
     faults = [f"{e.json_path}: {e.message}" for e in form.iter_errors(written)]
     assert not faults, (seed, faults)
@@ -85,17 +84,6 @@ def check_numbers(results: Any, seed: int, form: Draft202012Validator) -> None:
     stops = {c["code"] for c in results["cautions"] if c["severity"] == "stop"}
     for name, state in {**results["cases"], **results["combinations"]}.items():
         assert state["equilibrium"]["residual"] <= BALANCED or stops, (seed, name)
-
-
-def numbers(value: Any, place: str = "") -> Iterator[tuple[str, float]]:
-    if isinstance(value, dict):
-        for key, inner in value.items():
-            yield from numbers(inner, f"{place}/{key}")
-    elif isinstance(value, list | tuple):
-        for position, inner in enumerate(value):
-            yield from numbers(inner, f"{place}/{position}")
-    elif isinstance(value, float):
-        yield place, value
 
 
 def check_files(results: Any, document: Any, folder: Path) -> None:

@@ -18,6 +18,7 @@ Array = NDArray[np.float64]
 Mask = NDArray[np.bool_]
 
 ON_LINE = 1e-9  # of the mesh's diagonal: such nodes lie on the cut
+LONGEST = 1e6  # of a cut, over the size of the plate: digits of moments about its middle
 # A cut should run from border to border. It may fall short by half an element, but by no more
 # than this part of the length that it crosses (chords of arcs, rounded figures).
 SHORT = 0.05
@@ -63,6 +64,9 @@ def find_section(mesh: Mesh, cut: Cut) -> Section:
     tolerance = ON_LINE * mesh.diagonal
     if length <= tolerance:
         raise _fault(cut, "the cut has no length; give two different ends")
+    if length > LONGEST * mesh.diagonal:
+        text = f"the cut is {length / mesh.diagonal:.2g} times as long as the plate is across, "
+        raise _fault(cut, text + "and moments are about its middle; give ends near the plate")
     direction = (end - start) / length
     normal = np.array([direction[1], -direction[0]])
     along, across = (mesh.nodes - start) @ direction, (mesh.nodes - start) @ normal

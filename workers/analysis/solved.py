@@ -6,6 +6,7 @@ from typing import Any, Protocol
 
 from workers.analysis.combine import load_states
 from workers.analysis.envelope import Envelope
+from workers.analysis.finite import require_numbers
 from workers.analysis.mesh import Mesh
 from workers.analysis.model import Model
 from workers.analysis.recovery import Recovery
@@ -62,7 +63,7 @@ def solve_on(
 
     Raises
     ------
-    MeshError, AnalysisError   as `solution.solve` and `summarise`.
+    MeshError, AnalysisError   as `solution.solve`, `summarise` and `require_numbers`.
     """
     solution = solve(job, mesh, progress, kept=shared.kept if shared else None, memory=memory)
     progress("recovering", 0.0)
@@ -70,4 +71,5 @@ def solve_on(
     recovery = shared.recovery(model) if shared else Recovery.build(model, KEPT_BYTES)
     envelope, wanted = Envelope(), SizesWanted(mesh)
     results = summarise(solution, recovery, load_states(job), progress, envelope, wanted)
+    require_numbers(results)
     return Solved(solution, recovery, envelope, wanted, results)

@@ -15,7 +15,7 @@ from numpy.typing import NDArray
 from elements.errors import ElementError
 from elements.registry import get
 from workers.document.faults import seen
-from workers.document.fields import Plain, described, finite
+from workers.document.fields import LARGEST, Plain, described, finite
 from workers.document.targets import MOST_NODES
 
 MOST_ELEMENTS = 20_000_000
@@ -91,7 +91,7 @@ class Rows(Plain, fields.Field[Any]):
         if self.whole:
             good = flat.min() >= 0 and flat.max() < MOST_NODES
             return flat.astype(np.int32) if good else None
-        return flat if np.isfinite(flat).all() else None
+        return flat if (np.abs(flat) <= LARGEST).all() else None  # nor where it is no number
 
     def _search(self, rows: Any, widths: tuple[int, ...]) -> Iterator[tuple[int, Any]]:
         """Bad rows with their errors."""

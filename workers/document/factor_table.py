@@ -9,12 +9,11 @@ line and column, both from 1.
 
 import csv
 import io
-import math
 from collections.abc import Iterator
 from dataclasses import dataclass, field
 
 from workers.document.faults import seen
-from workers.document.fields import NAME_RULE, is_name
+from workers.document.fields import LARGEST, NAME_RULE, is_name
 
 BYTE_ORDER_MARK = "\ufeff"  # what spreadsheets put before UTF-8
 
@@ -96,7 +95,7 @@ def _read_row(
         if factor is None:
             yield (
                 f"line {line}, column {column} ({pattern}): {seen(cell)} is not a finite number "
-                "with a decimal point"
+                f"with a decimal point, of at most {LARGEST:g} in size"
             )
             return
         factors[pattern] = factor
@@ -113,4 +112,4 @@ def _number(cell: str) -> float | None:
         number = float(cell)
     except ValueError:
         return None
-    return number if math.isfinite(number) else None
+    return number if abs(number) <= LARGEST else None

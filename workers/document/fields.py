@@ -22,6 +22,9 @@ NAME_RULE = (
     "not starting with a full stop or a space"
 )
 
+# Products of a few numbers within these are numbers still; no plate in any unit is near them.
+LARGEST, SMALLEST = 1e30, 1e-30  # also said in the docstring of JobSchema
+
 JsonSchema = dict[str, Any]
 
 
@@ -137,6 +140,8 @@ class Number(Plain, fields.Field[float]):
                 f"{w} {limit:g}" for w, limit in limits.items() if limit is not None
             )
             raise ValidationError(f"must be {allowed}, not {seen(value)}")
+        if self.above == 0 and number < SMALLEST:
+            raise ValidationError(f"must be at least {SMALLEST:g}, not {seen(value)}")
         return number
 
 
@@ -150,6 +155,16 @@ def finite(value: Any, expected: str = "a number") -> float:
         number = math.inf
     if not math.isfinite(number):
         raise ValidationError(f"must be a finite number, not {seen(value)}")
+    return within_reach(number, value)
+
+
+def within_reach(number: float, value: Any) -> float:
+    """The number, if it can be computed with; `value` as the client wrote it."""
+    if abs(number) > LARGEST:
+        raise ValidationError(
+            f"{seen(value)} is too large to be computed with; in the units of the job it must be "
+            f"at most {LARGEST:g} in size"
+        )
     return number
 
 
@@ -169,9 +184,10 @@ class Quantity(Number):
             example = f'a number or text such as "{self.dimensions[0].example}"'
             return finite(value, example)
         try:
-            return to_number(value, self.dimensions, declared_units())
+            number = to_number(value, self.dimensions, declared_units())
         except ValueError as error:
             raise ValidationError(f"{seen(value)} {error}") from None
+        return within_reach(number, value)
 
 
 class Truth(Plain, fields.Field[bool]):

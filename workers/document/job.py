@@ -28,7 +28,8 @@ class JobSchema(Record):
     """One plate with all its load cases.
 
     Names, here as keys and as values, are 1 to 80 letters (of any script), digits, spaces and
-    ._-+()#,= and do not start with a full stop or a space.
+    ._-+()#,= and do not start with a full stop or a space. Numbers are at most 1e30 in size, in
+    the units of the job; those that must be above 0 are at least 1e-30.
 
     `load` gives a `Job`, or ValidationError with every fault; `dump` gives the document again.
     """
