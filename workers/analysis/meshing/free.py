@@ -136,8 +136,8 @@ def _made(
 
 def _finer(sizes: Sizes, verdict: Verdict) -> Sizes:
     """Smaller elements where the last mesh had poor ones."""
-    rings = [around((x, y), FINER * size, sizes.general) for x, y, size in verdict.poor]
-    return sizes._replace(points=np.concatenate((sizes.points, *rings)))
+    rings = around(verdict.poor[:, :2], FINER * verdict.poor[:, 2], sizes.general)
+    return sizes._replace(points=np.concatenate((sizes.points, rings)))
 
 
 def _failure(reasons: list[str]) -> Fault:

@@ -97,11 +97,10 @@ def choose_sizes(
             edges[number] = min(sizes[edge.side], general, turn[number] / fineness.least_per_turn)
         beside = [domains[d - 1] for d in (edge.left, edge.right) if d != OUTSIDE]
         edges[number] = min(edges[number], *beside)
-    points = [
-        around(drawing.points[n], s, general) for n, s in sizes.items() if n in drawing.points
-    ]
-    points += [around(at, s, general) for at, s in _sharp_corners(drawing, general)]
-    return Sizes(general, edges, domains, np.concatenate([np.empty((0, 3)), *points]))
+    fine = [(*drawing.points[n], s) for n, s in sizes.items() if n in drawing.points]
+    fine += [(*at, s) for at, s in _sharp_corners(drawing, general)]
+    x, y, own = np.array(fine).reshape(-1, 3).T
+    return Sizes(general, edges, domains, around(np.column_stack((x, y)), own, general))
 
 
 def _sharp_corners(drawing: Drawing, general: float) -> Iterator[tuple[Vector, float]]:
@@ -120,18 +119,21 @@ def _sharp_corners(drawing: Drawing, general: float) -> Iterator[tuple[Vector, f
             yield corner.at, size
 
 
-def around(place: tuple[float, float], size: float, general: float) -> Array:
-    """Size points at a place and in rings about it; a lone point would not be followed.
+def around(places: Array, sizes: Array, general: float) -> Array:
+    """Size points at places (k, 2) and in rings about each; a lone point would not be followed.
 
-    The elements that meet in the place have the size; from their other ends on it grows.
+    The elements that meet in a place have its size, of (k,); from their other ends on it grows.
     """
-    rings = [np.array([[*place, size]])]
-    for radius in size * 2.0 ** np.arange(RINGS):
-        angles = np.arange(8) * np.pi / 4
-        ring = np.asarray(place) + radius * np.stack((np.cos(angles), np.sin(angles)), axis=1)
-        grown = size + GRADING * max(radius - CORE * size, 0.0)
-        rings.append(np.column_stack((ring, np.full(8, min(grown, general)))))
-    return np.concatenate(rings)
+    angles = np.arange(8) * np.pi / 4
+    arms = np.stack((np.cos(angles), np.sin(angles)), axis=1)
+    radii = sizes[:, None] * 2.0 ** np.arange(RINGS)
+    grown = sizes[:, None] + GRADING * np.maximum(radii - CORE * sizes[:, None], 0.0)
+    points = np.empty((len(places), 1 + RINGS * len(arms), 3))
+    points[:, 0] = np.column_stack((places, sizes))
+    rings = points[:, 1:].reshape(len(places), RINGS, len(arms), 3)
+    rings[..., :2] = places[:, None, None] + radii[:, :, None, None] * arms
+    rings[..., 2] = np.minimum(grown, general)[:, :, None]
+    return points.reshape(-1, 3)
 
 
 def estimate_triangles(drawing: Drawing, sizes: Sizes) -> float:
