@@ -169,6 +169,13 @@ def test_what_must_be_decided_has_room_for_initials(tmp_path: Path) -> None:
     assert html.count('class="answered"') == len(to_decide)
 
 
+def test_keys_in_a_caution_are_set_as_code_and_nothing_else_is(tmp_path: Path) -> None:
+    results = small_results()
+    results["cautions"][0]["action"] = "Use `sizes`, <b>not</b> luck."
+    html = render_sheet(small_job(), results, tmp_path)
+    assert "<em>Use <code>sizes</code>, &lt;b&gt;not&lt;/b&gt; luck.</em>" in html
+
+
 def test_a_sheet_without_pictures_says_so(tmp_path: Path) -> None:
     results = small_results(pictures={"available": False, "reason": "no libEGL"})
     assert "could not draw: no libEGL" in Page(render_sheet(small_job(), results, tmp_path)).words
@@ -264,6 +271,7 @@ def test_a_sheet_of_hundreds_of_cases_stays_small(tmp_path: Path) -> None:
         ({"value": 1234.56, "case": "lift"}, "value 1235 · case lift"),
         ({"cases": [f"c{i}" for i in range(9)]}, "cases c0, c1, c2, c3, c4, c5 and 3 more"),
         ({"is_free": True, "parts": {"a": 1}}, "is free True · parts a 1"),
+        ({"quantity": "factor_on_yield", "region": "a_b"}, "quantity factor on yield · region a_b"),
     ],
 )
 def test_evidence_is_put_into_words(evidence: dict[str, Any], words: str) -> None:

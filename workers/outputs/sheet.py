@@ -155,7 +155,10 @@ def moment(text: str) -> str:
 
 def evidence_words(evidence: Json) -> str:
     """The facts of a caution on one line, e.g. "value 412.3 · limit 355 · at (12, 40)"."""
-    return " · ".join(f"{key.replace('_', ' ')} {_fact(value)}" for key, value in evidence.items())
+    told = {**evidence}
+    if isinstance(told.get("quantity"), str):  # a key of the results, such as "factor_on_yield"
+        told["quantity"] = told["quantity"].replace("_", " ")
+    return " · ".join(f"{key.replace('_', ' ')} {_fact(value)}" for key, value in told.items())
 
 
 def _fact(value: Any) -> str:
