@@ -67,6 +67,18 @@ def test_the_size_of_a_turned_strip_is_its_width() -> None:
     assert [part.size for part in parts(turned)] == [pytest.approx(10.0)]
 
 
+def test_the_size_of_a_plate_does_not_depend_on_where_its_mesh_is_fine() -> None:
+    """Nodes drawn to two opposite corners of 100 x 60 would tilt the axes of their cloud."""
+
+    def towards_corners(x: np.ndarray, y: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+        s = 2 * x / 100 - 1
+        away = y / 60 - 0.5
+        return 50 * (1 + np.sign(s) * np.abs(s) ** (1 / (2 + 2 * np.sign(s) * away))), y
+
+    mesh = grid("Q4", 20, 20, size=(100.0, 60.0), shape=towards_corners)
+    assert [part.size for part in parts(mesh)] == [pytest.approx(60.0)]
+
+
 def test_the_size_of_a_thin_ring_is_near_twice_its_wall_not_its_diameter() -> None:
     """4 area / perimeter = 2 (R - r) for a ring."""
     assert [p.size for p in parts(ring("Q8", 48, 2, 90.0, 100.0))] == [pytest.approx(20, rel=1e-4)]

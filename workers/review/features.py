@@ -5,6 +5,7 @@ from itertools import pairwise
 from typing import NamedTuple
 
 import numpy as np
+import shapely
 from numpy.typing import NDArray
 
 from workers.analysis.connected import label_components
@@ -13,6 +14,9 @@ from workers.geometry import CircleShape, OutlineGeometry, PatchGeometry, Vector
 from workers.job import Job
 
 Array = NDArray[np.float64]
+
+
+CHUNK = 256  # sides of a hull at a time, which bounds the memory
 
 
 class Feature(NamedTuple):
@@ -30,10 +34,22 @@ def parts(mesh: Mesh) -> Iterator[Feature]:
         points = mesh.nodes[mesh.components == part]
         centre = points.mean(axis=0)
         own = [loop for loop in loops if loop.part == part]
-        _, axes = np.linalg.eigh(np.cov((points - centre).T))
-        width = float(np.ptp((points - centre) @ axes, axis=0).min())
         mean_width = 4 * sum(loop.area for loop in own) / sum(loop.perimeter for loop in own)
-        yield Feature("the plate", min(width, mean_width), (float(centre[0]), float(centre[1])))
+        size = min(_width(points), mean_width)
+        yield Feature("the plate", size, (float(centre[0]), float(centre[1])))
+
+
+def _width(points: Array) -> float:
+    """The smallest distance of two parallel lines with all points between them.
+
+    One of the lines runs along a side of their convex hull (Houle & Toussaint, "Computing the width
+    of a set", IEEE Trans. Pattern Analysis and Machine Intelligence 10 (1988)).
+    """
+    hull = shapely.get_coordinates(shapely.convex_hull(shapely.multipoints(points)))
+    side = np.diff(hull, axis=0)
+    normal = np.column_stack((-side[:, 1], side[:, 0])) / np.linalg.norm(side, axis=1)[:, None]
+    chunks = np.array_split(normal, len(normal) // CHUNK + 1)
+    return min(float(np.ptp(hull @ chunk.T, axis=0).min()) for chunk in chunks)
 
 
 def holes(mesh: Mesh) -> Iterator[Feature]:
