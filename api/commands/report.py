@@ -68,7 +68,8 @@ def _reactions(states: States, size: float) -> Iterator[tuple[str, ...]]:
         for label, reaction in found.items():
             fx, fy = (settled(component, largest) for component in reaction["force"])
             moment = settled(reaction["moment"], largest * size)
-            yield name, label, number(fx), number(fy), number(moment), place(reaction["about"])
+            about = place(settled(c, size) for c in reaction["about"])
+            yield name, label, number(fx), number(fy), number(moment), about
 
 
 def _size(mesh: Mapping[str, Any]) -> float:

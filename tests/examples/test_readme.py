@@ -3,7 +3,10 @@
 import re
 from pathlib import Path
 
+from api.app import create_app
+from api.commands import COMMANDS
 from api.reference import rewrite
+from workers.settings import Settings
 
 ROOT = Path(__file__).resolve().parents[2]
 README = ROOT / "README.md"
@@ -22,6 +25,22 @@ def test_every_example_says_what_it_is() -> None:
         for picture in re.findall(r"!\[.*?\]\((.*?)\)", text):
             assert (folder / picture).read_bytes().startswith(b"\x89PNG")  # ISO/IEC 15948, 5.2
         assert f"(examples/{folder.name}/README.md)" in README.read_text()
+
+
+def test_every_address_is_in_the_list_of_requests(tmp_path: Path) -> None:
+    """What stands around the variable parts of an address, word for word."""
+    text = README.read_text()
+    rules = create_app(Settings(store=tmp_path)).url_map.iter_rules()
+    addresses = {rule.rule for rule in rules if not rule.rule.startswith("/static")}
+    assert len(addresses) > 20
+    for address in addresses - {"/jobs"}:  # the list on the page for people, anew
+        for part in re.split(r"<[^>]+>", address):
+            assert part.rpartition("/envelope/")[2] in text, address
+
+
+def test_every_command_is_told() -> None:
+    text = README.read_text()
+    assert all(f"`{name}`" in text or f"fishplate {name}" in text for name in COMMANDS)
 
 
 def test_links_between_pages_lead_somewhere() -> None:
