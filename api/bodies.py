@@ -6,6 +6,7 @@ What the bytes mean is for `workers/document/`.
 import zlib
 
 from flask import Request
+from werkzeug.exceptions import BadRequest
 
 from api.problem_types import BODY_TOO_LARGE, MEDIA_TYPE_UNKNOWN
 from api.problems import RefusalError
@@ -30,6 +31,10 @@ def read_document_bytes(request: Request, limit: int) -> bytes:
     encoding = request.headers.get("Content-Encoding", "identity").strip().lower()
     if encoding in ("identity", "gzip"):
         body = request.get_data(cache=False)
+        announced = request.content_length
+        if announced is not None and len(body) < min(announced, limit):
+            # A document that is whole by chance would be accepted otherwise.
+            raise BadRequest(f"The body ended after {len(body)} of {announced} bytes.")
         if len(body) > limit:
             raise RefusalError(BODY_TOO_LARGE, f"The body has more than the {limit} bytes allowed.")
         return gunzip(body, limit) if encoding == "gzip" else body

@@ -11,8 +11,9 @@ from typing import Any
 
 import flask
 from flask import Flask, Response
+from gunicorn.http.errors import ParseException
 from redis.exceptions import RedisError
-from werkzeug.exceptions import HTTPException
+from werkzeug.exceptions import HTTPException, default_exceptions
 
 from api.problem_types import (
     BAD_REQUEST,
@@ -34,6 +35,7 @@ from api.problem_types import (
     ProblemType,
 )
 from api.services import services
+from api.unreadable import status_of, words_of
 from elements.errors import FishplateError
 from workers.errors import (
     AnalysisError,
@@ -134,6 +136,7 @@ def register(app: Flask) -> None:
     app.register_error_handler(HTTPException, http_problem)
     for error in BY_ERROR:
         app.register_error_handler(error, _known)
+    app.register_error_handler(ParseException, _unreadable)
     app.register_error_handler(Exception, _unexpected)
 
 
@@ -188,6 +191,11 @@ def _wrong_parameters(error: HTTPException) -> list[dict[str, str]]:
         for fields in places.values()
         for name, messages in fields.items()
     ]
+
+
+def _unreadable(error: ParseException) -> Response:
+    """The body is not what its headers say, or does not come; the headers have been read."""
+    return problem(default_exceptions[status_of(error)](), words_of(error))
 
 
 def _unexpected(error: Exception) -> Response:

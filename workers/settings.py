@@ -86,6 +86,12 @@ class Settings:
     api_threads: int = _setting(
         16, readers.whole(2, 1024), "Requests that each process of the API answers at a time."
     )
+    client_patience: float = _setting(
+        20.0,
+        readers.seconds,
+        "How long a request may take to come in [s]; a body may take a second more for every 10 kB "
+        "of it.",
+    )
     longest_wait: int = _setting(
         60, readers.whole(1, 3600), "Longest wait that `Prefer: wait=` is granted [s]."
     )

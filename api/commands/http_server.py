@@ -20,6 +20,7 @@ from workers.settings import Settings
 PROCESSES = 2  # so that one large document being read does not hold up everybody else
 BACKLOG = 1024  # connections that may wait for a thread
 PATIENCE = 60.0  # for the first answer [s]
+HEARTBEAT = 120  # silence of a process after which it is started anew [s]; requests do not matter
 GRACE = 5  # for requests under way when the server stops [s]; accepted jobs are safe anyway
 
 
@@ -68,7 +69,7 @@ def _start(settings: Settings, listener: socket.socket) -> "subprocess.Popen[byt
         "workers": PROCESSES,
         "worker-class": "api.http_worker.Worker",
         "threads": settings.api_threads,
-        "timeout": 2 * settings.longest_wait,
+        "timeout": HEARTBEAT,
         "graceful-timeout": GRACE,
         "config": "python:api.gunicorn_config",
     }

@@ -20,6 +20,8 @@ from workers.settings import Settings
 from workers.store import Store
 
 BATCH = "berth 4"
+THREADS = 8  # of each process of the server
+PATIENCE = 3.0  # of the server with slow clients [s]
 FILES = ("fields/pull.vtu", "previews/pull/model.png", "lines/axis.png", "envelope/fields.vtu",
          "envelope/nodes.csv", "envelope/von_mises.png", "sheet.html",
          "convergence.png")  # fmt: skip
@@ -42,7 +44,8 @@ def settings_of(folder: Path, redis_url: str, **changes: Any) -> Settings:
     """For small documents and short waits, with as many jobs as a fuzzer may send."""
     return Settings(
         store=folder, redis_url=redis_url, body_bytes=100_000, longest_wait=1,
-        queue_length=10**6, most_nodes=20_000, pictures=0, port=0, log_level="warning", **changes,
+        queue_length=10**6, most_nodes=20_000, pictures=0,
+        api_threads=THREADS, client_patience=PATIENCE, port=0, log_level="warning", **changes,
     )  # fmt: skip
 
 
