@@ -1,5 +1,6 @@
 """The convergence record: series of meshes, their peaks, and what they say of singular places."""
 
+from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
@@ -110,8 +111,13 @@ def test_a_series_that_would_be_too_large_is_refused_with_its_place() -> None:
 # --- by hand -------------------------------------------------------------------------------------
 
 
-def judged(values: list[float], interval: list[float], kind: str = "series") -> Json:
-    """The peak of the last mesh of a series made by hand, sizes falling by two."""
+def judged(
+    values: list[float],
+    interval: list[float],
+    kind: str = "series",
+    at: Sequence[list[float]] | None = None,
+) -> Json:
+    """The peak of the last mesh of a series made by hand, sizes falling by two from one."""
     record = Record("Q8")
     solved = series(ring("Q8"))
     for number, value in enumerate(values):
@@ -121,6 +127,8 @@ def judged(values: list[float], interval: list[float], kind: str = "series") -> 
             "envelope": {**solved.results["envelope"]},
         }
         peak = {**results["cases"]["load"]["von_mises"], "value": value, "interval": interval}
+        if at is not None:
+            peak["at"] = at[number]
         results["cases"]["load"]["von_mises"] = peak
         record.add(solved.mesh, results)
         record.meshes[-1].sizes["load"]["von_mises"] = 0.5**number
@@ -128,7 +136,7 @@ def judged(values: list[float], interval: list[float], kind: str = "series") -> 
     facts = {} if kind == "series" else {"target_error": 0.1}
     record.write(results, kind=kind, **facts)
     found: Json = results["cases"]["load"]["von_mises"]
-    return found
+    return {**found, "series": results["convergence"]["peaks"]["load"]["von_mises"]}
 
 
 @pytest.mark.parametrize(
@@ -165,3 +173,13 @@ def test_the_limit_of_a_series_is_never_outside_of_the_interval() -> None:
 
 def test_an_erratic_series_leaves_the_interval_alone() -> None:
     assert judged([1.0, 3.0, 2.5], [2.0, 2.9])["interval"] == [2.0, 2.9]
+
+
+@pytest.mark.parametrize(
+    ("last", "behaviour"), [([20.9, 0.0], "growing"), ([0.0, 20.0], "unresolved")]
+)
+def test_growth_is_told_of_one_place_only(last: list[float], behaviour: str) -> None:
+    """1, 1.4, 2 goes as h^-0.5; on the finest mesh the peak is two elements of 0.5 away, or not."""
+    places = [[20.0, 0.0], [20.0, 0.0], last]
+    found = judged([1.0, 2**0.5, 2.0], [1.0, 3.0], at=places)
+    assert found["series"]["behaviour"] == behaviour

@@ -5,6 +5,7 @@ of the series; whether the stress at a singular place grew as the theory says.
 """
 
 from dataclasses import dataclass, field
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -13,7 +14,7 @@ from scipy.spatial import KDTree
 
 from elements.registry import get
 from workers.analysis.envelope import WORST
-from workers.analysis.grid_convergence import SURE, UNSURE, GridConvergence, grid_convergence
+from workers.analysis.grid_convergence import SURE, UNSURE, grid_convergence
 from workers.analysis.mesh import Mesh
 from workers.analysis.meshing.size_field import element_areas
 
@@ -22,6 +23,7 @@ Json = dict[str, Any]
 
 SAME_PLACE = 1e-6  # of the diagonal
 SAME_RADIUS = 1e-6  # relative
+WANDERS = 2.0  # element sizes of the coarser mesh: a peak that moved so far is another one
 # Parts of the growth that theory foretells: from the first on it is confirmed, below the second
 # refuted. The recovered stress smooths coarse meshes: on three of a panel with a corner, six to
 # twelve elements to its legs, it grew by 0.4 to 0.55 of the exponent.
@@ -38,6 +40,9 @@ class _Mesh:
     elements: int
     states: Json
     sizes: dict[str, dict[str, float]]
+
+    def largest_stress(self, name: str) -> float:
+        return float(self.states[name]["von_mises"]["value"])
 
 
 @dataclass
@@ -102,11 +107,15 @@ class Record:
         else:
             sizes = [mesh.sizes[name][quantity] for mesh in self.meshes]
         same = _alike(peaks)
-        # A principal stress that vanishes by the theory is rounding of the others.
-        largest = self.meshes[-1].states[name]["von_mises"]["value"]
-        scale = 0.0 if quantity == "displacement" else largest
-        safety = SURE if uniform else UNSURE
-        verdict = self._verdict(peaks[-same:], sizes[-same:], quantity, safety, scale)
+        verdict = grid_convergence(
+            [peak["value"] for peak in peaks[-same:]],
+            sizes[-same:],
+            self._highest_order(quantity),
+            SURE if uniform else UNSURE,
+            # A principal stress that vanishes by the theory is rounding of the others.
+            0.0 if quantity == "displacement" else self.meshes[-1].largest_stress(name),
+            not self._wanders(name, quantity),
+        )
         return {
             "values": [peak["value"] for peak in peaks],
             "at": [peak["at"] for peak in peaks],
@@ -117,14 +126,21 @@ class Record:
             "uncertainty": verdict.uncertainty,
         }
 
-    def _verdict(
-        self, peaks: list[Json], sizes: list[float], quantity: str, safety: float, scale: float
-    ) -> GridConvergence:
-        # Recovered stress mostly converges faster than the elements' own, but an order above theirs
-        # may be chance, and would make the uncertainty too small.
+    def _highest_order(self, quantity: str) -> float:
+        """Recovered stress mostly converges faster than the elements' own, but an order above
+        theirs may be chance, and would make the uncertainty too small.
+        """
         order = get(self.element).order
-        highest = float(order if quantity != "displacement" else order + 1)
-        return grid_convergence([peak["value"] for peak in peaks], sizes, highest, safety, scale)
+        return float(order if quantity != "displacement" else order + 1)
+
+    def _wanders(self, name: str, quantity: str) -> bool:
+        """Whether a peak of the last three meshes is somewhere else than on the mesh before."""
+        last = self.meshes[-3:]
+        return any(
+            np.linalg.norm(np.subtract(*(m.states[name][quantity]["at"] for m in (before, after))))
+            > WANDERS * before.sizes[name][quantity]
+            for before, after in pairwise(last)
+        )
 
     def _judged(self, peak: Json, name: str, quantity: str, entry: Json) -> Json:
         """The reported peak in the light of the series."""

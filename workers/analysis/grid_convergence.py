@@ -47,6 +47,7 @@ def grid_convergence(
     highest_order: float,
     safety: float = SURE,
     scale: float = 0.0,
+    one_place: bool = True,
 ) -> GridConvergence:
     """Judge a series of values on finer and finer meshes.
 
@@ -56,6 +57,7 @@ def grid_convergence(
     highest_order : an observed order above it counts as this one
     safety : factor where an order is observed
     scale : what the values are small against, where they may be nothing but rounding
+    one_place : whether all are from the same place; else growth cannot be told
     """
     if len(values) < 3:
         return _without_order(values, "unresolved")
@@ -70,7 +72,8 @@ def grid_convergence(
     if order >= LEAST_ORDER:
         change = last / (r21**order - 1)
         return GridConvergence("converging", order, fine + change, safety * abs(change))
-    if min(_growth(coarse, middle, r32), _growth(middle, fine, r21)) > LEAST_GROWTH:
+    growth = min(_growth(coarse, middle, r32), _growth(middle, fine, r21))
+    if one_place and growth > LEAST_GROWTH:
         return GridConvergence("growing", None, None, None)
     return _without_order(values, "unresolved")
 
