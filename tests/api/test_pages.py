@@ -136,18 +136,20 @@ def test_the_page_needs_nothing_from_elsewhere(client: FlaskClient, yard: dict[s
 
 
 @pytest.mark.slow
+@pytest.mark.parametrize("address", ["/jobs?hold=true", "/docs"])
 @pytest.mark.parametrize("width", [1400, 390])
-def test_the_page_is_readable_at_a_desk_and_on_a_phone(
+def test_pages_are_readable_at_a_desk_and_on_a_phone(
     chromium: Browser,
     client: FlaskClient,
     services: Services,
     yard: dict[str, str],
     tmp_path: Path,
     width: int,
+    address: str,
 ) -> None:
     services.store.accept(b"{}", title="W" * 200, label=HOSTILE)
-    path = tmp_path / "jobs.html"
-    path.write_text(client.get("/jobs?hold=true").text, encoding="utf-8")
+    path = tmp_path / "page.html"
+    path.write_text(client.get(address).text, encoding="utf-8")
     page = chromium.open(path.as_uri(), width)
     assert page.evaluate(OVERFLOW) == []
     assert page.evaluate("document.documentElement.scrollWidth") <= width
