@@ -42,6 +42,7 @@ NOT_RUN = {
     "python3 -m venv": "this environment was made by it",
     ".venv/bin/pip install": "changes the environment under test; see test_element_plugin.py",
     ".venv/bin/pytest": "runs this test",
+    "BENCHMARKS=long": "takes half an hour",
     "fishplate solve examples/element_plugin": "needs the plug-in; see test_element_plugin.py",
 }
 # Commands that are run for a part of what they do; pictures have tests of their own.
