@@ -66,8 +66,7 @@ class Pool:
             self._replace_dead()
             self.store.reindex()  # reads every record: the workers need not wait for it
             while not self._stopping:
-                if self.server is not None:
-                    self.server.keep_alive()
+                self._keep_server_alive()
                 self._replace_dead()
                 self._reconcile()
                 self._keep_house()
@@ -77,6 +76,14 @@ class Pool:
 
     def _request_stop(self, _number: int, _frame: FrameType | None) -> None:
         self._stopping = True
+
+    def _keep_server_alive(self) -> None:
+        if self.server is None:
+            return
+        try:
+            self.server.keep_alive()
+        except OSError as error:  # a full disk, most likely: the workers go on
+            log.warning("redis-server cannot be started yet: %s", error)
 
     def _replace_dead(self) -> None:
         alive = [worker for worker in self.workers if worker.is_alive()]

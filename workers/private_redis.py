@@ -6,12 +6,15 @@ process that started it. Whoever comes second to the same store shares the first
 
 import fcntl
 import hashlib
+import logging
 import os
 import shutil
 import signal
+import socket
 import subprocess
 import tempfile
 import time
+from contextlib import suppress
 from pathlib import Path
 from typing import Self
 
@@ -21,7 +24,11 @@ from workers.errors import StoreError
 from workers.lineage import die_with_parent
 
 LONGEST_SOCKET_PATH = 100  # sockaddr_un holds 108 bytes; the server adds a suffix of its own
+DATA = "appendonlydir"  # the server's own name
+REFUSED = "refused"  # data that the server could not read
 PATIENCE = 20.0  # for the server to come up, with a long append-only file to read [s]
+
+log = logging.getLogger(__name__)
 
 
 def socket_path(store: Path) -> Path:
@@ -75,13 +82,26 @@ class PrivateRedis:
     def keep_alive(self) -> None:
         """Start the server if neither we nor anybody else has it running."""
         if self._process is None or self._process.poll() is not None:
+            if self._process is not None and self._process.returncode > 0:
+                self._set_data_aside()
             self._process = self._start()
+
+    def _set_data_aside(self) -> None:
+        """Begin without data after the server refused to: the store knows what has to be done."""
+        data, refused = self.folder / DATA, self.folder / REFUSED
+        if data.exists():
+            log.error("redis-server could not begin with %s, which becomes %s", data, refused.name)
+            shutil.rmtree(refused, ignore_errors=True)
+            data.rename(refused)
 
     def _start(self) -> "subprocess.Popen[bytes] | None":
         """Start the server unless one is running: it holds the lock itself, as long as it lives."""
         descriptor = os.open(self.folder / "server.lock", os.O_RDWR | os.O_CREAT, 0o600)
         try:
             fcntl.flock(descriptor, fcntl.LOCK_EX | fcntl.LOCK_NB)
+            with suppress(OSError):  # a full disk; then another machine is told less
+                os.ftruncate(descriptor, 0)
+                os.pwrite(descriptor, socket.gethostname().encode(), 0)
             with (self.folder / "redis.log").open("ab") as output:
                 return subprocess.Popen(
                     [_program(), *_options(self.folder, self.socket)],
@@ -94,9 +114,19 @@ class PrivateRedis:
                     preexec_fn=lambda: die_with_parent(signal.SIGTERM),  # noqa: PLW1509
                 )
         except BlockingIOError:
+            self._require_same_machine(descriptor)
             return None
         finally:
             os.close(descriptor)
+
+    def _require_same_machine(self, lock: int) -> None:
+        """Whoever comes second shares the socket, which does not reach to another machine."""
+        owner = os.pread(lock, 255, 0).decode(errors="replace")
+        if owner not in ("", socket.gethostname()):
+            raise StoreError(
+                f"the private Redis server of this store runs on {owner}: for workers on several "
+                "machines set FISHPLATE_REDIS_URL on all of them, to a server that they reach"
+            )
 
     def _await(self) -> None:
         until = time.monotonic() + PATIENCE
@@ -111,6 +141,9 @@ class PrivateRedis:
 
     def _give_up_if_hopeless(self, error: redis.RedisError, until: float) -> None:
         if self._process is not None and self._process.poll() is not None:
+            if self._process.returncode > 0 and (self.folder / DATA).exists():
+                self.keep_alive()
+                return
             raise StoreError(
                 f"redis-server ended with status {self._process.returncode}; see "
                 f"{self.folder / 'redis.log'}"

@@ -48,6 +48,7 @@ from workers.record import (
     RUNNING,
     Event,
     Record,
+    age_of,
     new_id,
     now,
 )
@@ -60,6 +61,7 @@ RECORD_LOCK = "record.lock"
 # After a full disk: less would be full again after a few jobs.
 ROOM = 256 * 1024**2  # bytes,
 ROOM_PART = 20  # or this part of a small disk
+NEWS_ARRIVE = 300.0  # network file systems keep what they know of a folder for up to 60 s [s]
 ABANDONED = 86_400.0  # age at which something in incoming/ is nobody's any more [s]
 
 
@@ -323,14 +325,20 @@ class Store(StoreReader):
                     shutil.rmtree(path) if path.is_dir() else path.unlink()
 
     def forget_unknown(self, job_id: str) -> None:
-        """Take out what a crash left of a job that never was: index entries, half of its files."""
+        """Take out what a crash left of a job that never was: index entries, half of its files.
+
+        Where nothing tells of the crash the job may be there although it is not seen: on a shared
+        folder another machine's news arrive late.
+        """
         half = self._incoming / job_id
         with telling(f"what is left of job {job_id} could not be removed"):
+            crashed = age_of(job_id) > NEWS_ARRIVE
             with suppress(FileNotFoundError), durable.lock(half / RECORD_LOCK, wait=False) as mine:
                 if mine:
                     shutil.rmtree(half)
+                    crashed = True
             # A job being accepted is in incoming/ until it is in jobs/: look there first.
-            if not half.exists() and not self.jobs.path(job_id).exists():
+            if crashed and not half.exists() and not self.jobs.path(job_id).exists():
                 self.indexes.drop_unknown(job_id)
 
     @contextmanager

@@ -436,6 +436,28 @@ def test_the_private_redis_ends_with_the_pool_and_remembers(settings: Settings) 
         assert service.ended(job_id).state == "finished"
 
 
+# --- several machines ----------------------------------------------------------------------------
+
+
+def test_a_job_of_a_pool_that_is_gone_is_begun_again_by_another_one(settings: Settings) -> None:
+    """Whatever either knows of the other it knows from locks and from Redis: no process ids."""
+    with running_pool(settings) as first, running_pool(settings) as second:
+        eventually(lambda: first.queue.workers_alive() == 2)
+        ids = [first.submit("wait") for _ in range(2)]
+        for job_id in ids:
+            first.begun(job_id)
+        killed = [first.process.pid, *(p.pid for p in (*first.workers(), *first.horses()))]
+        for pid in killed:
+            os.kill(pid, signal.SIGKILL)
+        eventually(lambda: sum(attempts_in(second.store, job_id) for job_id in ids) == 3)
+        for job_id in ids:
+            (second.store.jobs.path(job_id) / "go").touch()
+        attempts = [second.ended(job_id).attempts for job_id in ids]
+        assert sorted(attempts) == [1, 2]
+        for job_id in ids:
+            check_one_end(second, job_id)
+
+
 # --- everything at once --------------------------------------------------------------------------
 
 

@@ -2,6 +2,7 @@
 
 import os
 import signal
+import socket
 import stat
 import subprocess
 import sys
@@ -57,6 +58,27 @@ def test_the_second_to_come_shares_the_server_and_leaves_it_running(tmp_path: Pa
         assert answers(tmp_path)
 
 
+def test_data_that_the_server_cannot_read_is_set_aside(tmp_path: Path) -> None:
+    """The store knows what has to be done; a damaged file must not keep the service from it."""
+    with PrivateRedis(tmp_path) as server, redis.Redis.from_url(server.url) as client:
+        for number in range(100):
+            client.set(f"kept {number}", "yes")
+    (file,) = (tmp_path / "redis" / "appendonlydir").glob("*.incr.aof")
+    file.write_bytes(file.read_bytes()[:500] + b"!" * 50 + file.read_bytes()[550:])
+    with PrivateRedis(tmp_path) as server, redis.Redis.from_url(server.url) as client:
+        assert client.dbsize() == 0
+    assert (tmp_path / "redis" / "refused" / file.name).exists()
+
+
+def test_the_server_of_another_machine_is_named(
+    tmp_path: Path, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    with PrivateRedis(tmp_path):
+        monkeypatch.setattr(socket, "gethostname", lambda: "drawing-office")
+        with pytest.raises(StoreError, match=r"runs on .* set FISHPLATE_REDIS_URL"):
+            PrivateRedis(tmp_path).__enter__()
+
+
 def test_it_ends_with_a_killed_owner(tmp_path: Path) -> None:
     with subprocess.Popen(
         [sys.executable, "-c", OWN, str(tmp_path)], cwd=ROOT, stdout=subprocess.PIPE
@@ -91,8 +113,6 @@ def test_a_machine_without_the_program_is_told_what_to_do(
 
 
 def test_a_server_that_does_not_start_is_an_error_with_its_log(tmp_path: Path) -> None:
-    (tmp_path / "redis" / "appendonlydir").mkdir(parents=True)
-    manifest = tmp_path / "redis" / "appendonlydir" / "appendonly.aof.manifest"
-    manifest.write_text("no manifest at all\n")
+    (socket_path(tmp_path) / "in the way").mkdir(parents=True)
     with pytest.raises(StoreError, match=r"redis-server ended with status \d+; see .*redis\.log"):
         PrivateRedis(tmp_path).__enter__()

@@ -86,3 +86,14 @@ def test_the_same_question_twice_is_one_piece_of_work(queue: Queue) -> None:
 
 def test_without_workers_none_is_alive(queue: Queue) -> None:
     assert queue.workers_alive() == 0
+
+
+def test_a_worker_counts_as_long_as_it_reports_whatever_its_clock_says(queue: Queue) -> None:
+    for name, left in {"near": 90, "far": 65, "lost": 20}.items():
+        key = f"rq:worker:{name}"
+        queue.connection.sadd("rq:workers", key)
+        queue.connection.hset(key, "last_heartbeat", "2001-02-03T04:05:06.000000Z")
+        queue.connection.expire(key, left)
+    assert queue.workers_alive() == 2
+    queue.connection.hset("rq:worker:far", "death", "2031-02-03T04:05:06.000000Z")
+    assert queue.workers_alive() == 1

@@ -114,7 +114,10 @@ def test_many_reconcilers_at_once_decide_once(queue: Queue) -> None:
     assert queue.waiting() == set(ids)
 
 
-def test_an_index_entry_without_a_job_does_not_stop_the_rest(queue: Queue) -> None:
+def test_an_index_entry_without_a_job_does_not_stop_the_rest(
+    queue: Queue, monkeypatch: pytest.MonkeyPatch
+) -> None:
+    monkeypatch.setattr("workers.store.NEWS_ARRIVE", 0.0)
     store = queue.store
     gone, job_id = accept(store, "nothing"), accept(store, "nothing")
     store.jobs.path(gone).rename(store.root / "elsewhere")
