@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 import shapely
+import shapely.ops
 from shapely.geometry import Polygon
 
 Json = Mapping[str, Any]
@@ -18,23 +19,23 @@ FINE = 2000  # chords that a full circle is drawn with
 
 
 def polygon(shape: Json | list[Json]) -> Polygon:
-    """A circle or a loop of vertices; arcs may meet fillets only if all corners are alike."""
+    """A circle or a loop of vertices."""
     if isinstance(shape, Mapping):
         circle = shape["circle"]
         return shapely.Point(circle["centre"]).buffer(circle["radius"], quad_segs=FINE // 4)
-    places: list[np.ndarray] = []
+    sides: list[np.ndarray] = []
     for vertex, following in zip(shape, [*shape[1:], shape[0]], strict=True):
-        places.append(np.array([vertex["at"]], float))
-        if "through" in vertex:
-            places.append(_arc(vertex["at"], vertex["through"], following["at"]))
-    found = Polygon(np.concatenate(places))
+        ends = np.array([vertex["at"], following["at"]], float)
+        arc = _arc(vertex["at"], vertex["through"], following["at"]) if "through" in vertex else []
+        sides.append(np.insert(ends, 1, arc, axis=0) if len(arc) else ends)
+    found = Polygon(np.concatenate([side[:-1] for side in sides]))
     radii = {vertex.get("fillet") for vertex in shape}
     if None not in radii and len(radii) == 1:  # all corners alike, all convex
         radius = radii.pop()
         return found.buffer(-radius, quad_segs=FINE // 4).buffer(radius, quad_segs=FINE // 4)
-    for vertex in shape:
+    for k, vertex in enumerate(shape):
         if "fillet" in vertex:
-            found = _rounded(found, np.array(vertex["at"], float), float(vertex["fillet"]))
+            found = _rounded(found, sides[k - 1], sides[k], float(vertex["fillet"]))
     return found
 
 
@@ -54,25 +55,33 @@ def _arc(start: Any, through: Any, end: Any) -> np.ndarray:
     return np.stack((x + radius * np.cos(angle), y + radius * np.sin(angle)), axis=1)
 
 
-def _rounded(shape: Polygon, vertex: np.ndarray, radius: float) -> Polygon:
-    """The corner at a vertex cut off (convex) or filled (concave) by a round of that radius."""
-    ring = np.array(shape.exterior.coords)[:-1]
-    k = int(np.argmin(np.linalg.norm(ring - vertex, axis=1)))
-    before, after = ring[k - 1] - vertex, ring[(k + 1) % len(ring)] - vertex
-    before, after = before / np.linalg.norm(before), after / np.linalg.norm(after)
-    half = math.acos(float(np.clip(before @ after, -1, 1))) / 2
-    reach = radius / math.tan(half)
-    # The kite between the vertex, the two tangent points and the centre, less the round.
-    p, q = vertex + reach * before, vertex + reach * after
-    along = before + after
-    centre = vertex + along / np.linalg.norm(along) * radius / math.sin(half)
-    kite = Polygon([vertex, p, centre, q])
-    corner = kite.difference(shapely.Point(centre).buffer(radius, quad_segs=FINE // 4))
+def _rounded(shape: Polygon, before: np.ndarray, after: np.ndarray, radius: float) -> Polygon:
+    """The corner between two sides cut off (convex) or filled (concave) by a round.
+
+    Its centre is where the sides, moved by the radius to where the corner turns, cross.
+    """
+    (ax, ay), (bx, by) = before[-1] - before[-2], after[1] - after[0]
+    aside = math.copysign(radius, ax * by - ay * bx)
+    moved = [_longer(side).offset_curve(aside, join_style="mitre") for side in (before, after)]
+    crossings = moved[0].intersection(moved[1])
+    vertex = shapely.Point(before[-1])
+    centre = shapely.ops.nearest_points(vertex, crossings)[1]
+    # Between the vertex, the two tangent points and the centre, less the round.
+    lines = [shapely.LineString(before[::-1]), shapely.LineString(after)]
+    legs = [shapely.ops.substring(line, 0, line.project(centre)) for line in lines]
+    corner = Polygon([*legs[0].coords[::-1], *legs[1].coords[1:], *centre.coords])
+    corner = corner.difference(centre.buffer(radius, quad_segs=FINE // 4))
+    is_convex = shape.contains(corner.representative_point())
     corner = corner.buffer(1e-9 * radius)  # over the sides, which rounding has moved
-    concave = not shape.buffer(1e-9 * radius).contains(shapely.Point(vertex + 1e-3 * reach * along))
-    found = shape.union(corner) if concave else shape.difference(corner)
+    found = shape.difference(corner) if is_convex else shape.union(corner)
     largest = max(getattr(found, "geoms", [found]), key=lambda part: part.area)
     return Polygon(largest.exterior)  # no slivers
+
+
+def _longer(side: np.ndarray) -> shapely.LineString:
+    """A side made a little longer at both ends, for rounds that take it whole."""
+    first, last = (1e-6 * (side[k] - side[j]) for k, j in ((0, 1), (-1, -2)))
+    return shapely.LineString([side[0] + first, *side[1:-1], side[-1] + last])
 
 
 def plate_polygon(geometry: Json) -> Polygon:
