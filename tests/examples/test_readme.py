@@ -43,6 +43,15 @@ def test_every_command_is_told() -> None:
     assert all(f"`{name}`" in text or f"fishplate {name}" in text for name in COMMANDS)
 
 
+def test_the_map_has_every_module_of_the_workers() -> None:
+    """Of those that stand in no folder of their own."""
+    text = (ROOT / "DEVELOPERS.md").read_text()
+    chart = text[text.index("## The map") : text.index("## Recipes")]
+    modules = {path.name for path in (ROOT / "workers").glob("*.py")} - {"__init__.py"}
+    assert modules
+    assert [name for name in sorted(modules) if not re.search(rf"\b{name}`", chart)] == []
+
+
 def test_links_between_pages_lead_somewhere() -> None:
     """Files, and headings of README.md and DEVELOPERS.md."""
     for page in (README, ROOT / "DEVELOPERS.md"):
