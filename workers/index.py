@@ -85,8 +85,8 @@ def _folder_name(label: str) -> str:
     File systems allow 255 bytes, and a letter may take twelve. Those that are cut are longer than
     all that are not.
     """
-    # The dot keeps "", "." and ".." from naming the folder itself or its parent.
-    name = "." + quote(label, safe=" ")
+    # Neither the folder itself nor its parent, which "." and ".." are.
+    name = "." + {"": "%", ".": "%2E"}.get(label, quote(label, safe=" "))
     if len(name) <= LONGEST_NAME:
         return name
     return f"{name[:LONGEST_NAME]}~{hashlib.sha256(label.encode()).hexdigest()[:32]}"

@@ -15,6 +15,7 @@ from workers.analysis.meshing.build import mesh_job
 from workers.analysis.meshing.size_field import element_areas
 from workers.analysis.solved import solve_on
 from workers.document.read import load
+from workers.index import Indexes
 from workers.pipeline import run, silent
 from workers.store import Store
 
@@ -110,3 +111,15 @@ def test_a_cut_far_from_the_origin_carries_the_weight_beyond_it() -> None:
     document["requests"] = {"cuts": {"across": across}}
     found = results_of(document)["cuts"]["across"]["pull"]
     assert abs(found["normal"]) == pytest.approx(100 * 15 * 8 * 2e-4, rel=1e-3)
+
+
+def test_the_label_of_one_dot_is_a_label(tmp_path: Path) -> None:
+    """The folder of its index was the parent of all of them."""
+    store = Store(tmp_path)
+    ids = {label: store.accept(b"{}", title="a", label=label).record.id for label in (".", "..")}
+    for label, job_id in ids.items():
+        assert [record.id for record in store.list(label=label).records] == [job_id]
+    assert store.list(label="").records == ()
+    roots = [Indexes(tmp_path).of_label(label).root.resolve() for label in ("", ".", "..", "a")]
+    assert len({*roots}) == 4
+    assert len({root.parent for root in roots}) == 1
