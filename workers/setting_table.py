@@ -4,6 +4,7 @@ python -m workers.setting_table > deploy/SETTINGS.md
 """
 
 import sys
+import textwrap
 from dataclasses import MISSING, Field, fields
 from typing import Any
 
@@ -19,6 +20,7 @@ may have a unit: `64MiB`, `4GiB`. Written by `python -m workers.setting_table`.
 | variable | default | meaning |
 |---|---|---|
 """
+HELP_WIDTH = 76  # columns; click indents by two, and a terminal has 80
 _UNITS = ((GIBIBYTE, "GiB"), (1024**2, "MiB"))
 
 
@@ -49,7 +51,14 @@ def as_markdown() -> str:
 def as_help() -> str:
     """Names and defaults for the help of a command; click keeps lines after `\\b` as they are."""
     width = max(len(name) for name, _, _ in rows())
-    lines = [f"  {name:<{width}}  {default}" for name, default, _ in rows()]
+    later = " " * (width + 4)
+    lines = [
+        textwrap.fill(
+            f"  {name:<{width}}  {default}", HELP_WIDTH, subsequent_indent=later,
+            break_on_hyphens=False,
+        )
+        for name, default, _ in rows()
+    ]  # fmt: skip
     return "\n".join(["\b", "Environment variables and their defaults:", *lines])
 
 

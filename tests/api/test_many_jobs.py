@@ -1,6 +1,8 @@
 """`fishplate solve` and `submit` with several documents: each by itself, told together."""
 
+import io
 import json
+import re
 from collections.abc import Callable, Iterator
 from dataclasses import replace
 from pathlib import Path
@@ -11,10 +13,11 @@ import pytest
 from click.testing import CliRunner, Result
 from flask import Flask
 from rich.console import Console
+from rich.control import strip_control_codes
 
 from api.app import create_app
 from api.commands import client as client_module
-from api.commands import following, main
+from api.commands import following, main, terminal
 from api.commands.client import Client, ServerError
 from api.commands.documents import gather, result_folders
 from api.commands.layout import print_table
@@ -25,6 +28,8 @@ from tests.served import served
 from workers import pipeline
 from workers.record import FAILED, RUNNING
 from workers.settings import Settings
+
+ANSI = re.compile(r"\x1b\[[0-9;?]*[A-Za-z]")  # ECMA-48, 5.4
 
 
 def run(*arguments: str | Path) -> Result:
@@ -254,6 +259,49 @@ def test_what_was_sent_is_told_when_the_server_goes_away(
     assert "1 of 3 documents were accepted" in result.stderr
     assert "not sent twice" in result.stderr
     assert result.stdout.split()[1:] == ["a"]
+
+
+# --- progress ----------------------------------------------------------------------------------
+
+
+@pytest.fixture
+def seen(monkeypatch: pytest.MonkeyPatch) -> io.StringIO:
+    """What a person at a terminal of 80 columns gets to see."""
+    shown = io.StringIO()
+    console = Console(file=shown, force_terminal=True, width=80, highlight=False)
+    monkeypatch.setattr(terminal, "err", lambda: console)
+    return shown
+
+
+def test_one_bar_shows_how_far_hundreds_are(seen: io.StringIO) -> None:
+    with terminal.progress_of_many(300) as many:
+        many.now("dock/lug")("solving", 0.5)
+        many.done("dock/lug  finished")
+        many.note("the server asks to wait")
+        many.now("a-name-that-is-longer-than-the-line-" * 3)("meshing", 0.0)
+    lines = [strip_control_codes(ANSI.sub("", part)) for part in seen.getvalue().split("\r")]
+    assert "1 of 300" in "".join(lines)
+    assert all(len(line.strip()) <= 80 for line in lines)
+
+
+def test_a_bar_shows_the_stage_of_a_single_job(seen: io.StringIO) -> None:
+    with terminal.progress() as report:
+        report("factorising", 0.0)
+    assert "33%" in seen.getvalue()  # the fourth of nine stages begins
+    assert "factorising" in seen.getvalue()
+
+
+def test_where_there_is_no_terminal_each_job_has_a_line(capsys: pytest.CaptureFixture[str]) -> None:
+    with terminal.progress_of_many(2) as many:
+        many.now("a")("solving", 0.5)
+        many.done("a  finished")
+        many.note("wait")
+        many.done("b  failed")
+    assert capsys.readouterr().err.splitlines() == [
+        "1 of 2  a  finished",
+        "wait",
+        "2 of 2  b  failed",
+    ]
 
 
 # --- tables ------------------------------------------------------------------------------------
