@@ -106,20 +106,12 @@ def error_stress(model: Model, estimate: ErrorEstimate) -> tuple[Array, ...]:
     return tuple(
         np.sqrt(error * (section.youngs_modulus / volume)[:, None])
         for error, section, volume in zip(
-            estimate.element, model.sections, element_volumes(model), strict=True
+            estimate.element, model.sections, model.volumes, strict=True
         )
     )
 
 
-def element_volumes(model: Model) -> tuple[Array, ...]:
-    """Area times thickness of the elements, for each block (m,) [L^3]."""
-    blocks = range(len(model.mesh.blocks))
-    return tuple(_point_volumes(model, number).sum(axis=1) for number in blocks)
-
-
-def _point_volumes(
-    model: Model, number: int, elements: NDArray[np.intp] | slice = slice(None)
-) -> Array:
+def _point_volumes(model: Model, number: int, elements: NDArray[np.intp]) -> Array:
     """w det J t at the points of the load rule, (e, q) [L^3]."""
     block, section = model.mesh.blocks[number], model.sections[number]
     points, weights = block.element.load_rule()

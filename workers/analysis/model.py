@@ -4,6 +4,7 @@ Regions give thickness and material by name; from here on they are plain arrays 
 """
 
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 from numpy.typing import NDArray
@@ -13,6 +14,8 @@ from workers.analysis.plane_stress import constitutive
 from workers.job import Job
 
 Array = NDArray[np.float64]
+
+ELEMENTS_AT_ONCE = 1024  # their Jacobians stay in the cache
 
 
 @dataclass(frozen=True, eq=False)
@@ -38,6 +41,22 @@ class Model:
     job: Job
     mesh: Mesh
     sections: tuple[Sections, ...]
+
+    @cached_property
+    def volumes(self) -> tuple[Array, ...]:
+        """Area times thickness of the elements, for each block (m,) [L^3]."""
+        return tuple(map(self._volumes, range(len(self.sections))))
+
+    def _volumes(self, number: int) -> Array:
+        block = self.mesh.blocks[number]
+        points, weights = block.element.load_rule()
+        areas = np.empty(block.element_count)
+        for start in range(0, len(areas), ELEMENTS_AT_ONCE):
+            chunk = slice(start, start + ELEMENTS_AT_ONCE)
+            coords = self.mesh.nodes[block.connectivity[chunk]]
+            _, det_J = block.element.jacobian(coords, points)
+            areas[chunk] = det_J @ weights
+        return areas * self.sections[number].thickness
 
 
 def build_model(job: Job, mesh: Mesh) -> Model:

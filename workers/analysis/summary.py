@@ -14,7 +14,7 @@ from workers.analysis.combine import States, superpose, superpose_blocks
 from workers.analysis.cuts import cut_forces
 from workers.analysis.effort import TOLERANCE
 from workers.analysis.envelope import WORST, Envelope, measures
-from workers.analysis.error_estimate import element_volumes, error_stress, estimate_error
+from workers.analysis.error_estimate import error_stress, estimate_error
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.loads.kinds import Places
 from workers.analysis.mesh_digest import mesh_digest
@@ -324,9 +324,7 @@ def mesh_figures(model: Model) -> Json:
     mesh, job = model.mesh, model.job
     elements: dict[str, int] = {}
     areas = np.zeros(len(mesh.regions))
-    for block, section, volume in zip(
-        mesh.blocks, model.sections, element_volumes(model), strict=True
-    ):
+    for block, section, volume in zip(mesh.blocks, model.sections, model.volumes, strict=True):
         elements[block.element.name] = elements.get(block.element.name, 0) + block.element_count
         areas += np.bincount(block.region, volume / section.thickness, minlength=len(areas))
     return {
