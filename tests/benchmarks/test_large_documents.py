@@ -1,8 +1,7 @@
 """How long it takes to accept a client's own mesh of a million nodes.
 
-Against `orjson.loads` of the same bytes, which is as fast as a Python program can have them. The
-target is a goal; what a shared machine does to a ratio must not fail a build, so only twice the
-target does.
+Against `orjson.loads` of the same bytes, which is as fast as a Python program can have them. A
+tenth of the nodes unless BENCHMARKS=long.
 """
 
 import gzip
@@ -16,6 +15,7 @@ import pytest
 
 from api.app import create_app
 from tests.large_documents import large_document
+from tests.measuring import LONG, ROUNDS, Row, at_most, note
 from workers.analysis.mesh import Mesh
 from workers.document.read import read_document
 from workers.preflight import preflight
@@ -24,24 +24,25 @@ from workers.settings import Settings
 
 pytestmark = pytest.mark.benchmark
 
-CELLS = {False: 577, True: 533}  # each way, for a million nodes of Q8 and of T6 and Q8
-ROUNDS = 5
+# Each way, for a million nodes of Q8 and of T6 and Q8, or a tenth of them.
+CELLS = {False: 577, True: 533} if LONG else {False: 182, True: 168}
+NODES = 1_000_000 if LONG else 100_000
 TARGET = 3.0  # times orjson.loads
 
 
 def _seconds(work: Callable[[], object]) -> float:
-    start = time.perf_counter()
+    start = time.process_time()
     work()
-    return time.perf_counter() - start
+    return time.process_time() - start
 
 
 @pytest.mark.parametrize("mixed", [False, True], ids=["Q8", "T6 and Q8"])
-def test_million_nodes_are_read_and_checked(mixed: bool) -> None:
+def test_many_nodes_are_read_and_checked(mixed: bool) -> None:
     """Read, all checks of the mesh, sides by selectors, free motions: within 3 times the parser."""
     data = large_document(CELLS[mixed], mixed=mixed)
     mesh = preflight(read_document(data))
     assert isinstance(mesh, Mesh)
-    assert 990_000 < mesh.node_count < 1_010_000
+    assert mesh.node_count == pytest.approx(NODES, rel=0.02)
     del mesh
     alone, reading, checking = [], [], []
     for _ in range(ROUNDS):  # in turns, so that a slow spell of the machine meets all
@@ -51,15 +52,14 @@ def test_million_nodes_are_read_and_checked(mixed: bool) -> None:
         checking.append(_seconds(lambda: preflight(job)))  # noqa: B023
     parser = statistics.median(alone)
     read, check = (statistics.median(part) / parser for part in (reading, checking))
-    print(
-        f"\na million nodes, {'T6 and Q8' if mixed else 'Q8'}, {len(data) / 1e6:.0f} MB: "
-        f"{read + check:.2f} times orjson.loads ({parser:.2f} s): reading {read:.2f}, checks "
-        f"{check:.2f} (target {TARGET:g})"
-    )
-    assert read + check < 2 * TARGET
+    at_most(
+        f"accepting {NODES} nodes, {'T6 and Q8' if mixed else 'Q8'} / orjson.loads (reading "
+        f"{read:.2f}, checks {check:.2f})",
+        read + check, TARGET,
+    )  # fmt: skip
 
 
-def test_million_nodes_arrive_packed_and_are_accepted(tmp_path: Path) -> None:
+def test_many_nodes_arrive_packed_and_are_accepted(tmp_path: Path) -> None:
     """One request with a gzip body, from the client's send to 202: unpacked, checked, stored."""
     data = large_document(CELLS[False])
     packed = gzip.compress(data, compresslevel=1)
@@ -71,7 +71,5 @@ def test_million_nodes_arrive_packed_and_are_accepted(tmp_path: Path) -> None:
         answer = client.post("/v1/jobs", data=packed, headers=headers)
         taken = time.perf_counter() - start
     assert answer.status_code == 202, answer.json
-    print(
-        f"\na million nodes, {len(packed) / 1e6:.0f} MB packed: 202 after {taken:.2f} s, "
-        f"{taken / parser:.2f} times orjson.loads ({parser:.2f} s)"
-    )
+    what = f"POST of {NODES} nodes with gzip until 202, stored / orjson.loads"
+    note(Row(what, f"{taken / parser:.3g} times", "none", None))
