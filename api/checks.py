@@ -66,7 +66,7 @@ def make_check() -> Response:
     worker answers in time, send the document again: it is the same check.
     """
     document = read_document_bytes(flask.request, services().settings.body_bytes)
-    job = read_document(document)
+    job = read_document(document, services().settings.most_levels)
     check_size(job, services().settings)
     preflight(job)
     check_id = _checks().file(document, caller().workspace)

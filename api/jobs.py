@@ -81,7 +81,7 @@ def submit(query: dict[str, Any]) -> Any:
     asks = caller()
     require_room(asks)
     document = read_document_bytes(flask.request, services().settings.body_bytes)
-    job = read_document(document)
+    job = read_document(document, services().settings.most_levels)
     check_size(job, services().settings)
     model = model_hash(job)
     foreseen = services().foresight.foresee(job, model)

@@ -105,6 +105,11 @@ class Settings:
     body_bytes: int = _setting(
         GIBIBYTE // 4, readers.size, "Largest job document, after decompression [bytes]."
     )
+    most_levels: int = _setting(
+        32,
+        readers.whole(8, 1000),
+        "Levels of objects and lists within each other in a document; jobs have up to seven.",
+    )
     most_nodes: int = _setting(
         2_000_000,
         readers.whole(1, 10**9),

@@ -6,7 +6,7 @@ from typing import Any
 import pytest
 
 from tests.good_documents import KINDS, good
-from workers.document.parse import parse
+from workers.document.parse import parse, parse_leniently
 from workers.document.read import read_document
 from workers.errors import DocumentError
 
@@ -94,3 +94,26 @@ def test_a_key_that_stands_twice_is_a_fault(data: bytes, pointers: list[str]) ->
 def test_text_that_looks_like_a_key_is_no_key() -> None:
     document = {"title": 'a ": b', "note": ['"x" : 1', {'odd": "name': 1}]}
     assert parse(json.dumps(document).encode()) == document
+
+
+@pytest.mark.parametrize("opening", ["[", '{"a":'])
+def test_levels_are_counted(opening: str) -> None:
+    """Three objects or lists within each other are three levels; a number in them is none."""
+    closing = "]" if opening == "[" else "}"
+    data = (opening * 3 + "1" + closing * 3).encode()
+    parse_leniently(data, 3)
+    with pytest.raises(DocumentError, match="more than 2 levels"):
+        parse_leniently(data, 2)
+
+
+def test_levels_hidden_behind_wide_lists_are_found() -> None:
+    data = b'{"nodes": [' + b"[0, 0]," * 1000 + b'[0, [[["]]]"]]]]]}'
+    parse_leniently(data, 6)
+    with pytest.raises(DocumentError, match="more than 5 levels"):
+        parse_leniently(data, 5)
+
+
+@pytest.mark.parametrize("kind", KINDS)
+def test_good_documents_have_few_levels(kind: str) -> None:
+    """A server may allow as few as eight (workers/settings.py)."""
+    parse_leniently(json.dumps(good(kind)).encode(), 7)

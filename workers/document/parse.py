@@ -10,7 +10,7 @@ import math
 import re
 from collections import Counter
 from collections.abc import Iterator
-from itertools import islice
+from itertools import chain, islice
 from typing import Any
 
 import orjson
@@ -20,6 +20,7 @@ from workers.errors import DocumentError, Fault
 
 # A key is a string before a colon. Inside a string the same signs can stand too, so that this
 # counts too many rather than too few, and a false alarm costs only the slower reader.
+MOST_LEVELS = 1000  # about where the libraries give up anyway
 _KEY = re.compile(rb'"\s*:')
 
 
@@ -31,12 +32,17 @@ def parse(data: bytes) -> Any:
     return document
 
 
-def parse_leniently(data: bytes) -> tuple[Any, list[Fault]]:
+def parse_leniently(data: bytes, most_levels: int = MOST_LEVELS) -> tuple[Any, list[Fault]]:
     """The JSON value with NaN and repeated keys let in, and the faults that they are.
 
-    DocumentError when nothing can be read.
+    DocumentError when nothing can be read, or it has more levels of objects and lists.
     """
-    data = bytes(data).removeprefix(codecs.BOM_UTF8)
+    document, faults = _read(bytes(data).removeprefix(codecs.BOM_UTF8))
+    _require_levels(document, most_levels)
+    return document, faults
+
+
+def _read(data: bytes) -> tuple[Any, list[Fault]]:
     try:
         document = orjson.loads(data)
     except orjson.JSONDecodeError as error:
@@ -47,6 +53,22 @@ def parse_leniently(data: bytes) -> tuple[Any, list[Fault]]:
     if len(_KEY.findall(data)) == _count_keys(document):
         return document, []
     return _parse_slowly(data) or (document, [])
+
+
+def _require_levels(document: Any, most: int) -> None:
+    """All objects and lists of one level after the other, without recursion."""
+    level = [document]
+    for _ in range(most + 1):
+        lists = [value for value in level if isinstance(value, list)]
+        objects = [value.values() for value in level if isinstance(value, dict)]
+        if not lists and not objects:
+            return
+        # A look at the types first: most of a large document are numbers, two or three to a list.
+        kinds = set(map(type, chain.from_iterable(lists)))
+        held = lists if any(issubclass(kind, dict | list) for kind in kinds) else []
+        level = list(chain.from_iterable([*held, *objects]))
+    text = f"has more than {most} levels of objects and lists within each other"
+    raise DocumentError([Fault("", text)])
 
 
 class _Repeating(dict[str, Any]):

@@ -7,21 +7,23 @@ from marshmallow import ValidationError
 
 from workers.document.faults import MOST_FAULTS, flatten, in_document_order, seen
 from workers.document.job import JobSchema
-from workers.document.parse import parse_leniently
+from workers.document.parse import MOST_LEVELS, parse_leniently
 from workers.errors import DocumentError, Fault
 from workers.job import Job
 
 _SCHEMA = JobSchema()
 
 
-def read_document(data: bytes) -> Job:
+def read_document(data: bytes, most_levels: int = MOST_LEVELS) -> Job:
     """The job that a JSON document describes.
+
+    most_levels : of objects and lists within each other
 
     Raises
     ------
     DocumentError   with every fault that the document alone can tell.
     """
-    document, faults = parse_leniently(data)
+    document, faults = parse_leniently(data, most_levels)
     return _load(document, faults)
 
 
