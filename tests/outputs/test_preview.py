@@ -13,6 +13,7 @@ from workers.analysis.fields import Fields
 from workers.analysis.singularities import SingularPlace
 from workers.cautions import STANDING, Caution
 from workers.geometry import Region
+from workers.outputs.drawing.fields import stress_scale
 from workers.outputs.drawing.palette import DIVERGING, SEQUENTIAL
 from workers.outputs.preview import QUANTITIES, render_deformed, render_field
 
@@ -141,6 +142,15 @@ def test_the_same_limits_give_the_same_colour_to_the_same_stress(tmp_path):
 
 
 # --- shapes ------------------------------------------------------------------------------------
+
+
+def test_the_legend_of_a_size_begins_at_zero_and_shows_it():
+    values = np.array([3.0, 80.0])
+    for limits in (None, (2.5, 100.0)):
+        scale = stress_scale(values, limits, 1e-9, signed=False)
+        assert scale.low == 0.0
+        assert scale.ticks[0] == 0.0
+    assert stress_scale(values - 40, None, 1e-9, signed=True).low == -37.0
 
 
 @pytest.mark.parametrize("element", ["T6", "Q8"])

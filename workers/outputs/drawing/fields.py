@@ -104,9 +104,13 @@ def draw_stress(
 
 
 def stress_scale(nodal: Array, limits: Limits | None, rounding: float, *, signed: bool) -> Scale:
-    """The range of a legend: the given one, else the field's own; never one of mere rounding."""
+    """The range of a legend: the given one, else the field's own; never one of mere rounding.
+
+    That of a size begins at zero.
+    """
     lowest, highest = (0.0 if abs(v) <= rounding else float(v) for v in (nodal.min(), nodal.max()))
-    low, high = limits or (lowest if signed else 0.0, highest)
+    low, high = limits or (lowest, highest)
+    low = low if signed else 0.0
     low, high = (0.0 if abs(v) <= rounding else v for v in (low, high))
     if high - low <= rounding:
         low, high = _widened(low, high)
