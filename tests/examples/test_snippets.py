@@ -43,6 +43,7 @@ NOT_RUN = {
     ".venv/bin/pip install": "changes the environment under test; see test_element_plugin.py",
     ".venv/bin/pytest": "runs this test",
     "BENCHMARKS=long": "takes half an hour",
+    "HOSTILE=10000": "takes more than an hour",
     "fishplate solve examples/element_plugin": "needs the plug-in; see test_element_plugin.py",
 }
 # Commands that are run for a part of what they do; pictures have tests of their own.
