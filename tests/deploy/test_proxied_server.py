@@ -3,6 +3,7 @@
 import gzip
 import json
 import os
+import random
 import shutil
 import socket
 import ssl
@@ -66,9 +67,15 @@ class Office:
 
 
 def free_port() -> int:
-    with socket.create_server(("127.0.0.1", 0)) as listener:
-        port: int = listener.getsockname()[1]
-        return port
+    """A port below those that the kernel hands out, so that nobody else is given it meanwhile."""
+    while True:
+        port = random.randrange(12_000, 32_000)
+        with socket.socket() as attempt:
+            try:
+                attempt.bind(("127.0.0.1", port))
+                return port
+            except OSError:
+                continue
 
 
 @contextmanager
@@ -158,7 +165,11 @@ def office(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Office]:
         office = Office(
             proxy, trust, token, folder / "api.log", settings["FISHPLATE_REDIS_URL"], server.close
         )
-        eventually(lambda: office.ask("GET", "/health/ready")[0] == 200)
+        try:
+            eventually(lambda: office.ask("GET", "/health/ready")[0] == 200)
+        except AssertionError as error:
+            logs = "\n".join(f"{log}: {log.read_text()[-2000:]}" for log in folder.glob("*.log"))
+            raise AssertionError(logs) from error
         yield office
 
 
