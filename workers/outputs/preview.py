@@ -18,11 +18,10 @@ from workers.analysis.mesh import Mesh
 from workers.analysis.singularities import SingularPlace
 from workers.cautions import Caution
 from workers.job import Job
+from workers.outputs.drawing.deformed import deformation_factor, draw_deformed
 from workers.outputs.drawing.fields import (
     ROUNDING_OF_MODULUS,
     STRESS_QUANTITIES,
-    deformation_factor,
-    draw_deformed,
     draw_stress,
 )
 from workers.outputs.drawing.governing import HEADINGS, draw_governing

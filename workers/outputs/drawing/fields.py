@@ -1,11 +1,11 @@
-"""Pictures of a solved state: filled stress fields and the deformed shape."""
+"""Pictures of a solved state: filled fields of stress."""
 
-from collections.abc import Callable, Iterable, Iterator, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import ArrayLike, NDArray
+from numpy.typing import NDArray
 
 from workers.analysis.field_mesh import FieldMesh
 from workers.analysis.fields import Fields
@@ -13,15 +13,14 @@ from workers.analysis.plane_stress import principal, von_mises
 from workers.analysis.singularities import SingularPlace
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
-from workers.outputs.drawing.legend import Scale, draw_isoline, draw_legend, legend_size
-from workers.outputs.drawing.marks import Mark, draw_marks
-from workers.outputs.drawing.numbers import round_factor, show, vector
-from workers.outputs.drawing.page import HEIGHT, WIDTH, Page, over
+from workers.outputs.drawing.legend import Scale
+from workers.outputs.drawing.marks import Mark, draw_marks, where_words
+from workers.outputs.drawing.numbers import show
+from workers.outputs.drawing.page import Page
+from workers.outputs.drawing.painting import fill, lay_out, surface_of
 from workers.outputs.drawing.palette import INK, PAPER
-from workers.outputs.drawing.plate import draw_mesh, draw_outline
-from workers.outputs.drawing.raster import isolines, paint
-from workers.outputs.drawing.tessellation import Surface, tessellate
-from workers.outputs.drawing.view import Box, View
+from workers.outputs.drawing.plate import draw_outline
+from workers.outputs.drawing.view import View
 
 Array = NDArray[np.floating[Any]]
 Limits = tuple[float, float]
@@ -29,12 +28,8 @@ Peak = Mapping[str, Any]  # `value`, `at` and `singular`, as the results have it
 
 # A stress below this part of Young's modulus, or of the state's largest stress, is rounding.
 ROUNDING_OF_MODULUS, ROUNDING_OF_STATE = 1e-12, 1e-9
-DEFORMED_PART = 0.07  # the largest displacement is drawn as about this part of the plate's diagonal
-EVEN = 1e-7  # of the range: a smaller difference across a piece of an element is rounding
-AIR = 34  # between the plate and the edge of its room, for the peak's mark [pixels]
 FAINTEST = 0.02  # of the legend's range; a smaller stress has no tick
 TICK_SPACING = 44.0  # of the ticks along principal directions [pixels]
-CALLOUT = 62  # above and below the plate, for the peak's label [pixels]
 
 
 @dataclass(frozen=True)
@@ -84,10 +79,10 @@ def draw_stress(
     scale = stress_scale(nodal, limits, rounding, signed=quantity.signed)
     heading = (quantity.heading, f"[{job.units.stress}]")
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
-    view = _lay_out(page, scale, heading, low, high)
-    surface = _surface(mesh, view, np.column_stack((mesh.points, fields.stress)))
+    view = lay_out(page, scale, heading, low, high)
+    surface = surface_of(mesh, view.scale, np.column_stack((mesh.points, fields.stress)))
     values = quantity.of_stress(surface.values[:, 2:])
-    _fill(page, view, surface, values, scale)
+    fill(page, view, surface, values, scale)
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes)
     if quantity.signed:
         _draw_directions(page.canvas, mesh, view, fields, quantity, scale)
@@ -96,7 +91,7 @@ def draw_stress(
         peak = {"value": float(nodal[number]), "at": mesh.points[number]}
     value = peak["value"] if abs(peak["value"]) > rounding else 0.0
     text = f"{show(value)} {job.units.stress}"
-    marks = [Mark(np.asarray(peak["at"]), text, _where(mesh, peak["at"], job))]
+    marks = [Mark(np.asarray(peak["at"]), text, where_words(mesh, peak["at"], job))]
     if peak.get("singular"):
         beyond = np.flatnonzero(quantity.beyond(nodal, peak["value"]))
         marks += _singular_marks(mesh, job, peak["singular"], mesh.points[beyond], places)
@@ -131,65 +126,6 @@ def _rounding(job: Job, fields: Fields) -> float:
     return max(ROUNDING_OF_MODULUS * modulus, ROUNDING_OF_STATE * largest)
 
 
-# --- layout and painting -----------------------------------------------------------------------
-
-
-def _lay_out(page: Page, scale: Scale, heading: tuple[str, ...], low: Array, high: Array) -> View:
-    """Draw the legend where it costs least room, and fit the plate into the rest."""
-    room = page.drawing
-    width, height = high - low
-    upright = width * room.height < 1.25 * height * room.width
-    size = legend_size(page.canvas, scale, heading, upright)
-    if upright:
-        middle, tall = (room.bottom + room.top) / 2, min(room.height - 20, 720)
-        box = Box(room.right - size, middle - tall / 2, room.right, middle + tall / 2)
-        view = View.fit(low, high, room.inset(AIR, CALLOUT, AIR + size + 30, CALLOUT))
-    else:
-        view = View.fit(low, high, room.inset(AIR, size + 10 + CALLOUT, AIR, CALLOUT))
-        wide = min(room.width - 120, 1100)
-        middle, below = (room.left + room.right) / 2, view.pixels(low)[1] - CALLOUT
-        bottom = max(room.bottom, below - size - 30)
-        box = Box(middle - wide / 2, bottom, middle + wide / 2, bottom + size)
-    draw_legend(page.canvas, box, scale, heading, upright)
-    return view
-
-
-def _surface(mesh: FieldMesh, view: View, nodal: Array) -> Surface:
-    elements = [block.element for block in mesh.mesh.blocks]
-    return tessellate(elements, mesh.connectivity, nodal, view.scale)
-
-
-def _fill(page: Page, view: View, surface: Surface, values: Array, scale: Scale) -> None:
-    """Paint the field onto the paper of the page, with an isoline at each tick of the legend."""
-    points = view.pixels(surface.values[:, :2])
-    painted = paint(
-        (WIDTH, HEIGHT),
-        points,
-        surface.triangles,
-        values,
-        colours=scale.colours,
-        limits=scale.reach,
-    )
-    sheet = Canvas(WIDTH, HEIGHT)
-    for level, triangles in _crossed(surface.triangles, values, scale):
-        for line in isolines(points, triangles, values, level):
-            draw_isoline(sheet, line, level)
-    page.paper = over(painted, sheet.pixels())
-
-
-def _crossed(
-    triangles: NDArray[np.int64], values: Array, scale: Scale
-) -> Iterator[tuple[float, NDArray[np.int64]]]:
-    """Each tick of the legend but zero, with the triangles that its isoline may cross."""
-    first, second, third = values[triangles.T]
-    low = np.minimum(np.minimum(first, second), third)
-    high = np.maximum(np.maximum(first, second), third)
-    # Where the field is even up to rounding, a line would wander.
-    sloping = high - low > EVEN * (scale.high - scale.low)
-    for level in filter(None, scale.ticks):
-        yield level, triangles[sloping & (low <= level) & (level <= high)]
-
-
 def _singular_marks(
     mesh: FieldMesh, job: Job, worst: Peak, beyond: Array, places: Iterable[SingularPlace]
 ) -> list[Mark]:
@@ -206,7 +142,7 @@ def _singular_marks(
         else "infinite stress, left out:"
     )
     text = f"{which} {show(worst['value'])} {job.units.stress}"
-    where = f"on this mesh {_where(mesh, worst['at'], job)}"
+    where = f"on this mesh {where_words(mesh, worst['at'], job)}"
     return [Mark(np.asarray(worst["at"]), text, where, singular=True), *others]
 
 
@@ -239,61 +175,3 @@ def _draw_directions(
     if len(ticks):
         canvas.line(ticks, PAPER, 4.6, alpha=0.75)  # so that they show on the dark end of the map
         canvas.line(ticks, INK, 2.0)
-
-
-# --- deformed shape ------------------------------------------------------------------------------
-
-
-def deformation_factor(mesh: FieldMesh, displacement: Array) -> float:
-    """A round factor that makes the displacements visible; 1 when nothing moves."""
-    largest = float(np.linalg.norm(displacement, axis=1).max())
-    if largest <= 1e-15 * mesh.mesh.diagonal:
-        return 1.0
-    return round_factor(DEFORMED_PART * mesh.mesh.diagonal / largest)
-
-
-def draw_deformed(
-    page: Page,
-    job: Job,
-    mesh: FieldMesh,
-    fields: Fields,
-    factor: float,
-    *,
-    largest: float | None = None,
-) -> None:
-    """The deformed shape, filled by the size of the displacement, over the undeformed outline.
-
-    largest : end of the legend; the largest displacement of this state if left out
-    """
-    size = np.linalg.norm(fields.displacement, axis=1)
-    end = float(size.max()) if largest is None else largest
-    scale = Scale.sequential(0.0, end if end > 0 else 1.0).of_field(0.0, float(size.max()))
-    unit = job.units.length
-    moved = mesh.points + factor * fields.displacement
-    both = np.vstack((mesh.points, moved))
-    view = _lay_out(page, scale, ("Displacement", f"[{unit}]"), both.min(axis=0), both.max(axis=0))
-    surface = _surface(mesh, view, np.column_stack((moved, fields.displacement)))
-    _fill(page, view, surface, np.linalg.norm(surface.values[:, 2:], axis=1), scale)
-    positions = _by_node(mesh, moved)
-    sheet = Canvas(WIDTH, HEIGHT)
-    draw_mesh(sheet, mesh.mesh, view, positions)
-    page.paper = over(page.paper, sheet.pixels())
-    draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes, dashed=True)
-    draw_outline(page.canvas, mesh.mesh, view, positions)
-    peak = int(np.argmax(size))
-    value = f"{show(size[peak])} {unit}"
-    draw_marks(page, view, [Mark(moved[peak], value, _where(mesh, mesh.points[peak], job))])
-
-
-def _where(mesh: FieldMesh, at: ArrayLike, job: Job) -> str:
-    """A position to four digits; what is rounding against the size of the plate is zero."""
-    place = np.asarray(at, float)
-    x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)
-    return f"at {vector(x, y, digits=4)} {job.units.length}"
-
-
-def _by_node(mesh: FieldMesh, values: Array) -> Array:
-    """Values of the field points at the mesh nodes; displacements are the same in each region."""
-    found = mesh.mesh.nodes.copy()
-    found[mesh.origin] = values
-    return found

@@ -15,13 +15,14 @@ from workers.analysis.field_mesh import FieldMesh
 from workers.job import Job
 from workers.outputs.drawing.canvas import Canvas
 from workers.outputs.drawing.hatching import HATCHINGS, hatch, swatch
-from workers.outputs.drawing.marks import Mark, draw_marks
-from workers.outputs.drawing.numbers import show, vector
+from workers.outputs.drawing.marks import Mark, draw_marks, where_words
+from workers.outputs.drawing.numbers import show
 from workers.outputs.drawing.page import HEIGHT, LABEL_SIZE, WIDTH, Page
+from workers.outputs.drawing.painting import surface_of
 from workers.outputs.drawing.palette import FAINT, INK, PAPER
 from workers.outputs.drawing.plate import draw_outline
 from workers.outputs.drawing.raster import paint
-from workers.outputs.drawing.tessellation import Surface, tessellate
+from workers.outputs.drawing.tessellation import Surface
 from workers.outputs.drawing.view import Box, View
 
 HEADINGS = {
@@ -67,22 +68,17 @@ def draw_governing(
     """
     low, high = mesh.points.min(axis=0), mesh.points.max(axis=0)
     beside = (high - low)[0] * page.drawing.height < 1.6 * (high - low)[1] * page.drawing.width
-    surface = _surface(mesh, 1.0)
+    surface = surface_of(mesh, 1.0, mesh.points)
     zones, number_of = _zones(state[surface.nearest], _areas(surface), names)
     view, legend = _lay_out(page, low, high, len(zones), beside)
-    numbers = _paint(_surface(mesh, view.scale), view, state, number_of)
+    numbers = _paint(surface_of(mesh, view.scale, mesh.points), view, state, number_of)
     page.paper = hatch(numbers)
     _part(page, numbers)
     draw_outline(page.canvas, mesh.mesh, view, mesh.mesh.nodes)
     _draw_letters(page.canvas, numbers, zones)
     _draw_legend(page.canvas, legend, zones, beside)
     if peak is not None:
-        _mark(page, job, view, quantity, peak)
-
-
-def _surface(mesh: FieldMesh, scale: float) -> Surface:
-    elements = [block.element for block in mesh.mesh.blocks]
-    return tessellate(elements, mesh.connectivity, mesh.points, scale)
+        _mark(page, job, mesh, view, quantity, peak)
 
 
 def _areas(surface: Surface) -> NDArray[np.float64]:
@@ -188,11 +184,12 @@ def _draw_entry(canvas: Canvas, zone: Zone, x: float, y: float, width: float) ->
     canvas.text((x + wide + 44, y), name, LABEL_SIZE, colour=INK)
 
 
-def _mark(page: Page, job: Job, view: View, quantity: str, peak: Mapping[str, Any]) -> None:
+def _mark(
+    page: Page, job: Job, mesh: FieldMesh, view: View, quantity: str, peak: Mapping[str, Any]
+) -> None:
     """The extreme over the whole plate, with the state that it belongs to."""
     unit = job.units.length if quantity == "displacement" else job.units.stress
     name = page.canvas.fit(peak["governs"], LABEL_SIZE, 400, bold=True)
-    at = np.array(peak["at"])
-    x, y = peak["at"]
-    place = f"at {vector(x, y, digits=4)} {job.units.length}"
-    draw_marks(page, view, [Mark(at, f"{show(peak['value'])} {unit}", f"in {name}, {place}")])
+    where = f"in {name}, {where_words(mesh, peak['at'], job)}"
+    mark = Mark(np.array(peak["at"]), f"{show(peak['value'])} {unit}", where)
+    draw_marks(page, view, [mark])

@@ -5,9 +5,12 @@ from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
-from numpy.typing import NDArray
+from numpy.typing import ArrayLike, NDArray
 
+from workers.analysis.field_mesh import FieldMesh
+from workers.job import Job
 from workers.outputs.drawing.labels import Label, Labels
+from workers.outputs.drawing.numbers import vector
 from workers.outputs.drawing.page import Page
 from workers.outputs.drawing.palette import INK, PAPER
 from workers.outputs.drawing.view import View
@@ -45,3 +48,10 @@ def draw_marks(page: Page, view: View, marks: Sequence[Mark]) -> None:
             continue
         layouts = [(f"{mark.value} {mark.where}",), (mark.value, mark.where)]
         labels.place(Label(place, layouts, bold=not mark.singular))
+
+
+def where_words(mesh: FieldMesh, at: ArrayLike, job: Job) -> str:
+    """A position to four digits; what is rounding against the size of the plate is zero."""
+    place = np.asarray(at, float)
+    x, y = np.where(np.abs(place) < 1e-9 * mesh.mesh.diagonal, 0.0, place)
+    return f"at {vector(x, y, digits=4)} {job.units.length}"
