@@ -5,6 +5,7 @@ from typing import Any
 
 import click
 
+from api.commands.apart import ProcessDiedError, apart
 from api.commands.documents import (
     Document,
     DocumentPath,
@@ -82,8 +83,8 @@ def solve_one(document: Path, folder: Path, pictures: int) -> None:
     """Solve a job and print what an engineer wants to see first."""
     refuse_foreign(folder)
     try:
-        with progress() as report:
-            results = _solve(document, folder, pictures, report)
+        with progress() as report, replaced(folder) as fresh:
+            results = _solve(document, fresh, pictures, report)
     except FaultyError as error:
         faults = [fault.as_json() for fault in error.faults]
         if isinstance(error, DocumentError):
@@ -116,6 +117,27 @@ def solve_many(documents: list[Document], out_folder: Path | None, pictures: int
 
 
 def _outcome(document: Document, folder: Path, pictures: int, report: Report) -> Outcome:
+    """Solve a job in a process of its own, so that nothing that befalls it befalls the others."""
+    try:
+        with replaced(folder) as fresh:
+            found: Outcome = apart(attempt, document, fresh, pictures, report=report)
+            if found.state != record.FINISHED:
+                raise _UnfinishedError(found)  # leaves earlier results as they are
+    except _UnfinishedError as unfinished:
+        return unfinished.outcome
+    except (ProcessDiedError, OSError) as error:
+        return _failed(document, record.FAILED, f"The job failed: {error}")
+    return found
+
+
+class _UnfinishedError(Exception):
+    def __init__(self, outcome: Outcome) -> None:
+        super().__init__(outcome.state)
+        self.outcome = outcome
+
+
+def attempt(report: Report, document: Document, folder: Path, pictures: int) -> Outcome:
+    """Solve a job into an empty folder; whatever goes wrong is told in the outcome."""
     try:
         return finished(document, _solve(document.path, folder, pictures, report))
     except FaultyError as error:
@@ -146,5 +168,4 @@ def _solve(document: Path, folder: Path, pictures: int, report: Report) -> dict[
     from workers import pipeline  # noqa: PLC0415
 
     content = document.read_bytes()
-    with replaced(folder) as fresh:
-        return pipeline.run(content, fresh, job_id=None, progress=report, pictures=pictures)
+    return pipeline.run(content, folder, job_id=None, progress=report, pictures=pictures)

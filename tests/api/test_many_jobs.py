@@ -17,15 +17,15 @@ from rich.control import strip_control_codes
 
 from api.app import create_app
 from api.commands import client as client_module
-from api.commands import following, main, terminal
+from api.commands import following, main, solve, terminal
 from api.commands.client import Client, ServerError
 from api.commands.documents import gather, result_folders
 from api.commands.layout import print_table
 from api.commands.terminal import Many
 from api.services import KEY, Services
+from tests.dying import crash_if_odd
 from tests.job_documents import strip
 from tests.served import served
-from workers import pipeline
 from workers.record import FAILED, RUNNING
 from workers.settings import Settings
 
@@ -38,11 +38,19 @@ def run(*arguments: str | Path) -> Result:
 
 @pytest.fixture
 def yard(tmp_path: Path) -> Path:
-    """A folder of documents: two strips, one of them pulled beyond yield, and a wrong one."""
+    """A folder of documents: two strips, one of patches, the other an outline that is pulled
+    beyond yield; and a wrong one.
+    """
     folder = tmp_path / "yard"
     folder.mkdir()
     write(folder / "a.json", {**strip(), "requests": {"convergence": True}})
-    write(folder / "b.json", {**strip(force=128_000), "title": "Overloaded strip"})
+    overloaded = {**strip(force=128_000), "title": "Overloaded strip"}
+    corners = ([0, 0], None), ([100, 0], "right"), ([100, 40], None), ([0, 40], "left")
+    loop = [{"at": at, **({"side": side} if side else {})} for at, side in corners]
+    write(
+        folder / "b.json",
+        {**overloaded, "geometry": {"outline": loop, "points": {"corner": [0, 0]}}},
+    )
     write(folder / "c.json", {**strip(), "title": "Loose strip", "supports": []})
     (folder / "notes.txt").write_text("no job")
     return folder
@@ -55,7 +63,7 @@ def write(path: Path, document: dict[str, Any]) -> None:
 def rows(text: str) -> dict[str, list[str]]:
     """Words of each line that begins with the name of a document."""
     lines = [line.split() for line in text.splitlines()]
-    return {words[0]: words for words in lines if words and words[0] in ("a", "b", "c", "d")}
+    return {words[0]: words for words in lines if words and words[0] in ("a", "b", "c", "d", "e")}
 
 
 # --- which documents ---------------------------------------------------------------------------
@@ -99,30 +107,27 @@ def test_a_folder_without_documents_is_an_error(tmp_path: Path) -> None:
 def test_jobs_of_a_folder_are_solved_whatever_becomes_of_one(
     yard: Path, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    """32 and 128 kN on 40 x 8 mm: 100 and 400 MPa, 28 % and 113 % of 355 MPa."""
-    solve = pipeline.run
-
-    def run_unless_odd(document: bytes, *args: Any, **kwargs: Any) -> Any:
-        if b"Odd" in document:
-            raise ZeroDivisionError
-        return solve(document, *args, **kwargs)
-
-    monkeypatch.setattr(pipeline, "run", run_unless_odd)
-    write(yard / "d.json", {**strip(), "title": "Odd strip"})
+    """32 and 128 kN on 40 x 8 mm: 100 and 400 MPa, 28 % and 113 % of 355 MPa. Beside them a wrong
+    document, one that meets a fault of the program, and one over which the process is killed.
+    """
+    monkeypatch.setattr(solve, "attempt", crash_if_odd)
+    for name in ("d", "e"):
+        write(yard / f"{name}.json", {**strip(), "title": "Odd strip"})
     result = run("solve", yard, "--pictures", "0")
     assert result.exit_code == 1
     table = rows(result.stdout)
     assert {"100", "MPa", "28%", "finished"} <= set(table["a"])
     assert {"400", "MPa", "113%", "stop"} <= set(table["b"])
     assert table["c"][-1] == "wrong"
-    assert table["d"][-1] == "failed"
+    assert table["d"][-1] == table["e"][-1] == "failed"
     words = " ".join(result.stdout.split())
     assert "qualified engineer" in words
     assert "stop b: In 'pull' the von Mises stress reaches 400 MPa" in words
-    assert "4 jobs: 2 finished, 1 wrong, 1 failed; the highest use of yield is 113%, in b" in words
+    assert "5 jobs: 2 finished, 1 wrong, 2 failed; the highest use of yield is 113%, in b" in words
     assert "/supports" in result.stderr
-    assert "ZeroDivisionError" in result.stderr
-    assert "4 of 4" in result.stderr
+    assert "Fishplate itself failed here (TypeError" in result.stderr
+    assert "ended without a result (SIGSEGV)" in result.stderr
+    assert "5 of 5" in result.stderr
     assert {path.name for path in yard.glob("*-results")} == {"a-results", "b-results"}
     assert (yard / "b-results" / "sheet.html").is_file()
     # With all that results ever consist of, they are replaced.
