@@ -27,8 +27,8 @@ from workers.job import Job
 
 pytestmark = pytest.mark.server
 
-DOCUMENTS = count(1000)
-DRAWN = 150  # of them from the strategies of all jobs, which take long to make
+DOCUMENTS = count(700)
+DRAWN = 100  # of them from the strategies of all jobs, which take long to make
 WARM = 0.4  # of the requests
 GROWTH = 1.1  # of the memory of the server afterwards; what never is given back would be far more
 HANG = 60  # for an answer that takes milliseconds [s]

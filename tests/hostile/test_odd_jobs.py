@@ -29,7 +29,7 @@ from workers.preflight import foresee
 
 pytestmark = pytest.mark.slow
 
-JOBS, AT_A_TIME = count(48), 12
+JOBS, AT_A_TIME = count(36), 12
 DOFS = 20_000
 PATIENCE = 60  # for what takes a fraction of a second [s]
 BALANCED = 1e-6  # of the load; what the caution on equilibrium allows is far less
