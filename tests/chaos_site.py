@@ -7,6 +7,7 @@ kept alive by the pool, as in an installation on one machine.
 import os
 import random
 import shutil
+import signal
 import socket
 import subprocess
 import sys
@@ -20,10 +21,12 @@ from typing import Protocol
 import psutil
 
 from tests.service_pool import children, eventually
+from workers.lineage import die_with_parent
 from workers.settings import Settings
 
 FULL_FOR = 2.0  # that the disk stays full [s]
 DISK_BYTES = 128 * 1024**2  # of the disk that is mounted; the store of 300 small jobs takes 20 MB
+LOOK_FOR = 8.0  # a process to kill; there is none when all jobs have ended [s]
 PATIENCE = 60.0  # s
 
 # What happens, and how often; in random order.
@@ -89,6 +92,7 @@ class Site:
             stderr=self._log,
             pass_fds=(self._listener.fileno(),),
             start_new_session=True,
+            preexec_fn=lambda: die_with_parent(signal.SIGKILL),  # noqa: PLW1509
         )
 
     def keep_up(self) -> None:
@@ -169,7 +173,7 @@ class Site:
 
 
 def _kill_one(who: Callable[[], list[psutil.Process]], chance: random.Random) -> bool:
-    until = time.monotonic() + PATIENCE
+    until = time.monotonic() + LOOK_FOR
     while time.monotonic() < until:
         if (there := who()) and _kill(chance.choice(there)):
             return True

@@ -23,6 +23,7 @@ from workers import layout, logs
 from workers.errors import FishplateError, StoreError
 from workers.housekeeping import keep_house
 from workers.lineage import die_with_parent
+from workers.neighbours import Presence, present, require_locks
 from workers.private_redis import PrivateRedis
 from workers.queue import Queue
 from workers.reconcile import reconcile
@@ -62,10 +63,16 @@ class Pool:
         """Work until SIGTERM or SIGINT; then let running jobs end, or hand them back."""
         for number in STOP_SIGNALS:
             signal.signal(number, self._request_stop)
+        with present(self.store.root, self.queue.connection) as presence:
+            self._work(presence)
+
+    def _work(self, presence: Presence) -> None:
         try:
+            self._look_for_neighbours(presence)
             self._replace_dead()
             self.store.reindex()  # reads every record: the workers need not wait for it
             while not self._stopping:
+                presence.beat()
                 self._keep_server_alive()
                 self._replace_dead()
                 self._reconcile()
@@ -73,6 +80,18 @@ class Pool:
                 multiprocessing.connection.wait([w.sentinel for w in self.workers], timeout=TICK)
         finally:
             self._stop()
+
+    def _look_for_neighbours(self, presence: Presence) -> None:
+        """Before anything is begun: on other machines the same locks must hold."""
+        while not self._stopping:
+            try:
+                presence.beat()
+                require_locks(self.store.root, self.queue.connection, lambda: self._stopping)
+                return
+            except redis.RedisError as error:  # without it no worker could begin either
+                log.warning("the pool waits for Redis: %s", error)
+                self._keep_server_alive()
+                time.sleep(RESTART_PAUSE)
 
     def _request_stop(self, _number: int, _frame: FrameType | None) -> None:
         self._stopping = True

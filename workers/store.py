@@ -15,6 +15,7 @@
     incoming/ID, removed/ID    on the way in and out
     tokens.json, audit/        who may do what (tokens.py), who did what (audit.py)
     usage.json                 what the store held when it was looked at last (housekeeping.py)
+    pools/HOST.ID              locked by each pool that is at work (neighbours.py)
     layout.json, in-use.lock   the version of all this, who is at work on it (layout.py)
 
 Redis may be lost at any time; this folder may not. Every method raises StoreError when the file

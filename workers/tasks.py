@@ -287,6 +287,7 @@ def _make_joint(store: Store, batch: Batch, kind: str) -> None:
         durable.make_folder(place.parent)
         joint = form_joint(store, batch, place.parent)
         write_joint(joint, batch, kind, scratch / place.name)
+        durable.sync(scratch / place.name)
         (scratch / place.name).replace(place)
     for older in place.parent.parent.iterdir():
         if older != place.parent:
@@ -317,4 +318,5 @@ def _make(store: Store, folder: Path, kind: str, case: str, quantity: str | None
             raise KeyError(kind)
         place = folder / made.relative_to(scratch)
         place.parent.mkdir(parents=True, exist_ok=True)
+        durable.sync(made)  # else a power cut may leave an empty file of that name
         made.replace(place)
