@@ -9,35 +9,15 @@ import math
 from copy import deepcopy
 from typing import Any
 
-from tests.job_documents import STEEL, strip
+from tests.job_documents import QUARTER_WEB, STEEL, strip
 
 Json = dict[str, Any]
 
-# A quarter of a stiffener web with a round opening, 200 x 200 x 8 mm, opening 60 mm across.
 WEB: Json = {
     "title": "Web with opening, a quarter",
     "units": {"length": "mm", "force": "N"},
     "materials": {"steel": {**STEEL, "thermal_expansion": 1.2e-5}},
-    "geometry": {
-        "patches": [
-            {
-                "name": "right",
-                "corners": [[30, 0], [100, 0], [100, 100], [21.2132034, 21.2132034]],
-                "divisions": [10, 8],
-                "grading": [4, 1],
-                "sides": ["low", "right", None, "opening"],
-                "through": [None, None, None, [27.7163860, 11.4805030]],
-            },
-            {
-                "name": "top",
-                "corners": [[21.2132034, 21.2132034], [100, 100], [0, 100], [0, 30]],
-                "divisions": [10, 8],
-                "grading": [4, 1],
-                "sides": [None, "top", "left", "opening"],
-                "through": [None, None, None, [11.4805030, 27.7163860]],
-            },
-        ]
-    },
+    "geometry": QUARTER_WEB,
     "plate": {"material": "steel", "thickness": 8},
     "meshing": {"element": "Q8"},
     "supports": [{"on": "low", "uy": 0}, {"on": "left", "ux": 0}],

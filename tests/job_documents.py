@@ -51,3 +51,26 @@ def hanging_bar(*, height: float = 200.0, width: float = 20.0) -> dict[str, Any]
     document["supports"] = [{"on": "high", "uy": 0}, {"on": "corner", "ux": 0}]
     document["load_cases"] = {"self weight": [{"acceleration": [0, "-9.81 m/s2"]}]}
     return document
+
+
+# A quarter of a slipway stiffener web with a round opening, 200 x 200 mm, opening 60 mm across.
+QUARTER_WEB: dict[str, Any] = {
+    "patches": [
+        {
+            "name": "right",
+            "corners": [[30, 0], [100, 0], [100, 100], [21.2132034, 21.2132034]],
+            "divisions": [10, 8],
+            "grading": [4, 1],
+            "sides": ["low", "right", None, "opening"],
+            "through": [None, None, None, [27.7163860, 11.4805030]],
+        },
+        {
+            "name": "top",
+            "corners": [[21.2132034, 21.2132034], [100, 100], [0, 100], [0, 30]],
+            "divisions": [10, 8],
+            "grading": [4, 1],
+            "sides": [None, "top", "left", "opening"],
+            "through": [None, None, None, [11.4805030, 27.7163860]],
+        },
+    ]
+}

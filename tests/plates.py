@@ -9,6 +9,7 @@ import numpy as np
 
 from elements.registry import get
 from workers.analysis.mesh import PLATE, Block, Mesh
+from workers.analysis.solution import Solution
 from workers.geometry import PatchGeometry, Region
 from workers.job import Combination, Job, Load, LoadCase, Material, Plate, Support, Units
 
@@ -171,3 +172,19 @@ def plate_job(
         load_cases=tuple(LoadCase(name, tuple(acting)) for name, acting in by_case.items()),
         combinations=combinations,
     )
+
+
+def raw_stress(solution: Solution) -> np.ndarray:
+    """Stress at the stiffness points of all elements, (points, 3), from the element operators."""
+    found = []
+    for number, (block, section) in enumerate(
+        zip(solution.model.mesh.blocks, solution.model.sections, strict=True)
+    ):
+        operator = block.element.stress_operator(
+            solution.model.mesh.coords(number),
+            section.constitutive,
+            block.element.stiffness_rule().points,
+        )
+        u = solution.displacement[block.connectivity][..., 0].reshape(len(operator), -1)
+        found.append(np.einsum("mqsd,md->mqs", operator, u).reshape(-1, 3))
+    return np.concatenate(found)

@@ -9,9 +9,9 @@ import numpy as np
 import pytest
 
 from elements.registry import get
-from tests.plates import ELEMENTS, plate_job
+from tests.plates import ELEMENTS, plate_job, raw_stress
 from workers.analysis.mesh import Block, Mesh
-from workers.analysis.solution import Solution, solve
+from workers.analysis.solution import solve
 from workers.job import Named, Nodes, Support, Traction
 
 E, NU = 1e6, 0.25
@@ -64,22 +64,6 @@ def _edges(mesh: Mesh) -> dict[str, np.ndarray]:
     (x, y), tiny = middle.T, 1e-9
     lines = {"left": x < tiny, "right": x > 0.24 - tiny, "bottom": y < tiny, "top": y > 0.12 - tiny}
     return {name: mesh.boundary[chosen] for name, chosen in lines.items()}
-
-
-def raw_stress(solution: Solution) -> np.ndarray:
-    """Stress at the stiffness points of all elements, (points, 3), from the element operators."""
-    found = []
-    for number, (block, section) in enumerate(
-        zip(solution.model.mesh.blocks, solution.model.sections, strict=True)
-    ):
-        operator = block.element.stress_operator(
-            solution.model.mesh.coords(number),
-            section.constitutive,
-            block.element.stiffness_rule().points,
-        )
-        u = solution.displacement[block.connectivity][..., 0].reshape(len(operator), -1)
-        found.append(np.einsum("mqsd,md->mqs", operator, u).reshape(-1, 3))
-    return np.concatenate(found)
 
 
 def _exact(nodes: np.ndarray) -> np.ndarray:

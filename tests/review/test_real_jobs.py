@@ -6,6 +6,7 @@ from typing import Any
 import orjson
 import pytest
 
+from tests.job_documents import QUARTER_WEB
 from workers.analysis.combine import load_states
 from workers.analysis.meshing.build import mesh_job
 from workers.analysis.recovery import Recovery
@@ -15,7 +16,6 @@ from workers.cautions import STANDING, Caution
 from workers.document.read import read_document
 from workers.review.review import review
 
-# A quarter of a slipway stiffener web with a round opening, 200 x 200 x 8 mm, opening 60 mm across.
 WEB: dict[str, Any] = {
     "title": "Web with opening, a quarter",
     "units": {"length": "mm", "force": "N"},
@@ -27,26 +27,7 @@ WEB: dict[str, Any] = {
             "density": "7850 kg/m3",
         }
     },
-    "geometry": {
-        "patches": [
-            {
-                "name": "right",
-                "corners": [[30, 0], [100, 0], [100, 100], [21.2132034, 21.2132034]],
-                "divisions": [10, 8],
-                "grading": [4, 1],
-                "sides": ["low", "right", None, "opening"],
-                "through": [None, None, None, [27.7163860, 11.4805030]],
-            },
-            {
-                "name": "top",
-                "corners": [[21.2132034, 21.2132034], [100, 100], [0, 100], [0, 30]],
-                "divisions": [10, 8],
-                "grading": [4, 1],
-                "sides": [None, "top", "left", "opening"],
-                "through": [None, None, None, [11.4805030, 27.7163860]],
-            },
-        ]
-    },
+    "geometry": QUARTER_WEB,
     "plate": {"material": "S355", "thickness": 8},
     "meshing": {"element": "Q8"},
     "supports": [{"on": "low", "uy": 0}, {"on": "left", "ux": 0}],

@@ -33,6 +33,14 @@ from workers.record import Record, is_id, new_id
 from workers.store import Store
 
 
+class Crash(BaseException):
+    """The process ends here."""
+
+
+def crash(*_arguments: Any) -> None:
+    raise Crash
+
+
 def accept(store: Store, **more: Any) -> str:
     return store.accept(b'{"plate": 1}', **{"title": "lug", **more}).record.id
 
@@ -198,12 +206,6 @@ def test_a_key_used_for_another_document_is_refused(store: Store) -> None:
 def test_a_crash_after_the_key_was_written_leaves_the_key_unused(
     store: Store, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    class Crash(BaseException):
-        pass
-
-    def crash(*_arguments: Any) -> None:
-        raise Crash
-
     with monkeypatch.context() as patch:
         patch.setattr(Store, "_file", crash)
         with suppress(Crash):
@@ -366,12 +368,6 @@ def test_cancelling_a_finishing_job_has_exactly_one_outcome(store: Store, attemp
 def test_a_crash_between_rename_and_record_ends_finished(
     store: Store, monkeypatch: pytest.MonkeyPatch
 ) -> None:
-    class Crash(BaseException):
-        pass
-
-    def crash(*_arguments: Any) -> None:
-        raise Crash
-
     job_id = accept(store)
     begin(store, job_id)
     with store.working(job_id) as staging, monkeypatch.context() as patch:
