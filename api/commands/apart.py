@@ -10,8 +10,8 @@ from api.commands.terminal import Report
 from elements.errors import FishplateError
 
 PROGRESS, RESULT = "progress", "result"
-# Loaded once, in the process from which the others are forked.
-PRELOADED = ["workers.pipeline"]
+# Imported once, in the process from which the others are forked; a job finds all at hand.
+PRELOADED = ["api.commands.warm"]
 
 
 class ProcessDiedError(FishplateError, RuntimeError):
