@@ -249,6 +249,23 @@ def test_jobs_of_one_label_have_the_envelope_of_one_job_with_their_cases(
     assert {states[state] for state in governing} == {f"back ({ids['back']})"}
 
 
+def test_a_running_job_is_cancelled_at_once_and_its_worker_is_free(
+    server: Server, ask: Callable[..., tuple[bytes, Any]]
+) -> None:
+    long = strip()
+    long["geometry"]["patches"][0]["divisions"] = [400, 160]  # far longer than a small job
+    here = json.loads(ask("/v1/jobs", long)[0])["links"]["self"]
+    until = time.monotonic() + PATIENCE
+    while json.loads(ask(here)[0])["state"] != "running":
+        assert time.monotonic() < until
+        time.sleep(0.05)
+    with urlopen(Request(server.url + here, method="DELETE"), timeout=PATIENCE) as answer:
+        assert json.load(answer)["done"] == "cancelled"
+    assert json.loads(ask(here)[0])["state"] == "cancelled"
+    solve(ask, strip())
+    assert json.loads(ask(here)[0])["state"] == "cancelled"
+
+
 def test_a_wrong_document_never_reaches_a_worker(ask: Callable[..., tuple[bytes, Any]]) -> None:
     with pytest.raises(HTTPError) as error:
         ask("/v1/jobs", {**strip(), "supports": [{"on": "left", "uy": 0}]})
