@@ -44,6 +44,8 @@ NOT_RUN = {
     ".venv/bin/pytest": "runs this test",
     "BENCHMARKS=long": "takes half an hour",
     "HOSTILE=10000": "takes more than an hour",
+    "RANDOM_PLATES=1000": "takes half an hour",
+    ".venv/bin/python -m tests.contact_sheet": "test_gallery.py makes the same meshes",
     "fishplate solve examples/element_plugin": "needs the plug-in; see test_element_plugin.py",
 }
 # Commands that are run for a part of what they do; pictures have tests of their own.
