@@ -76,7 +76,9 @@ def main():
         print(f"{caution['severity']}: {caution['message']} {caution['action']}")
     peak, use = results["envelope"]["von_mises"], results["envelope"]["utilisation"]
     print(f"{len(results['cases'])} cases; {peak['governs']!r} governs:")
-    print(f"von Mises {peak['value']:.4g} {results['units']['stress']}, {use['value']:.0%} of yield")
+    print(
+        f"von Mises {peak['value']:.4g} {results['units']['stress']}, {use['value']:.0%} of yield"
+    )
     if arguments.peaks:
         arguments.peaks.write_bytes(ask(f"{url}{here}/tables/peaks.csv"))
         print(f"Peaks of every case: {arguments.peaks}")
