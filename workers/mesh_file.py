@@ -34,7 +34,8 @@ def read_mesh(path: Path) -> Mesh:
     ------
     UnknownElementError   an element type of the mesh is no longer installed.
     """
-    with np.load(path, allow_pickle=False) as arrays:
+    # Opened here: of a damaged file the library would leave its own handle open.
+    with path.open("rb") as file, np.load(file, allow_pickle=False) as arrays:
         count = sum(name.startswith("element ") for name in arrays.files)
         blocks = tuple(
             Block(
