@@ -5,10 +5,10 @@ that whoever has a mesh can ask, the web process included.
 
 Measured were 22 jobs on mapped patches, T3, T6, Q4 and Q8, 2 500 to 350 000 unknowns, 1 to 300 load
 cases, up to 100 combinations, with and without pictures, each in a fresh process with one BLAS
-thread. The coefficients are the non-negative least-squares fit of the relative errors; those of
-reviewing and writing were raised after four more jobs, when tables and sheet had come. Against the
-measured jobs the peaks of memory come out 0.75 to 1.2 times the true ones, the processor times 0.7
-to 1.3 times (one of 22: 1.7), on a machine that others were using as well.
+thread. The coefficients are the non-negative least-squares fit of the relative errors. Those of
+reviewing, writing and drawing, and what every stage takes beside its mesh, were fitted anew to nine
+jobs of 960 to 136 000 unknowns in forks of a warm process, as work-horses are: peaks of memory come
+out 0.96 to 1.22 times the true ones, processor times 0.8 to 1.2 times (`tests/measure_cost.py`).
 """
 
 import time
@@ -157,12 +157,12 @@ def memory_by_stage(load: Workload) -> dict[str, float]:
     chunk = min(CHUNK_BYTES, 48.0 * n * load.states)
     stages = {
         "factorising": direct_memory(n, entries),
-        "solving": 6.7e6 + 780 * n + 10.6 * entries + 1.5 * displacements + 1.6 * block,
-        "recovering": 8.4e6 + 1440 * n + 3.9 * entries + 0.5 * displacements + 1.4 * chunk,
-        "writing": 20e6 + 700 * n + 3.9 * entries + 0.9 * displacements,
+        "solving": 19e6 + 780 * n + 10.6 * entries + 1.5 * displacements + 1.6 * block,
+        "recovering": 20e6 + 1440 * n + 3.9 * entries + 0.5 * displacements + 1.4 * chunk,
+        "writing": 30e6 + 700 * n + 3.9 * entries + 0.9 * displacements,
     }
-    if load.pictures:  # the first picture loads what draws it: 0.2 GB whatever the mesh
-        stages["drawing"] = 217e6 + 9.5 * entries + 0.9 * displacements
+    if load.pictures:  # the first picture loads what draws it: a quarter of a GB whatever the mesh
+        stages["drawing"] = 262e6 + 9.5 * entries + 0.9 * displacements
     return stages
 
 
@@ -182,17 +182,13 @@ def time_by_stage(load: Workload) -> dict[str, float]:
         "factorising": 0.008 + 1.2e-10 * load.factor.work + 2.6e-6 * n,
         "solving": 7.7e-9 * entries + (0.43e-9 * entries + 18e-9 * n) * load.cases,
         "recovering": (
-            0.010 + 5.4e-6 * load.nodes + 5.1e-6 * load.elements + 0.17e-6 * n * load.states
+            0.030 + 5.4e-6 * load.nodes + 5.1e-6 * load.elements + 0.17e-6 * n * load.states
         ),
-        "reviewing": 0.08 + 1.3e-6 * n + 0.5e-3 * load.states,
-        # Tables and sheet; field files; the envelope, which has a table of all nodes.
-        "writing": (
-            0.10
-            + load.fields * (6e-3 + 1.6e-6 * n + 2.4e-6 * load.elements)
-            + 9e-6 * n * (load.states > 1)
-        ),
+        "reviewing": 0.015 + 1.1e-6 * n + 0.8e-3 * load.states,
+        # Tables and sheet; field files, that of the envelope among them.
+        "writing": 0.010 + load.fields * (1.5e-3 + 0.28e-6 * n + 0.97e-6 * load.elements),
         # The first picture loads what draws it.
-        "drawing": 0.3 * (load.pictures > 0) + load.pictures * (0.33 + 1.8e-6 * n),
+        "drawing": 0.5 * (load.pictures > 0) + load.pictures * (0.33 + 1.8e-6 * n),
     }
 
 
