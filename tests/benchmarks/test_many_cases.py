@@ -51,7 +51,7 @@ def test_memory_of_each_further_case() -> None:
         f"each further load case beyond {2 * CASES}, Q8, {few['dofs']} unknowns",
         each, BYTES_PER_CASE, "bytes/unknown", room=1.25,  # not of the load of the machine
     )  # fmt: skip
-    assert each > 8  # its displacements alone
+    assert each > 6  # its displacements alone are 8; the two peaks may lie in different stages
 
 
 def test_300_cases_against_the_naive_script() -> None:
