@@ -45,7 +45,7 @@ def real_server(folder: Path, **settings: str) -> Iterator[Server]:
         "FISHPLATE_STORE": str(folder / "store"), "FISHPLATE_WORKERS": "1", **settings
     }  # fmt: skip
     with ExitStack() as parts:
-        process, url = parts.enter_context(_serving(folder / "serve", environment))
+        process, url = parts.enter_context(serving(folder / "serve", environment))
         yield Server((url,), (process,), folder / "store", 1)
 
 
@@ -64,7 +64,7 @@ def real_services(folder: Path) -> Iterator[Server]:
         ]
         served = [
             parts.enter_context(
-                _serving(folder / f"serve-{n}", {**environment, "FISHPLATE_WORKERS": "0"})
+                serving(folder / f"serve-{n}", {**environment, "FISHPLATE_WORKERS": "0"})
             )
             for n in range(2)
         ]
@@ -76,9 +76,11 @@ def real_services(folder: Path) -> Iterator[Server]:
 
 
 @contextmanager
-def _serving(place: Path, environment: dict[str, str]) -> Iterator[tuple[Any, str]]:
+def serving(place: Path, environment: dict[str, str], *options: Any) -> Iterator[tuple[Any, str]]:
+    """`fishplate serve` on a free port: process and address; its log is beside `place`."""
     address = place.with_suffix(".address")
-    command = [FISHPLATE, "serve", "--port", "0", "--address-file", address]
+    address.unlink(missing_ok=True)  # of an earlier server at this place
+    command = [FISHPLATE, "serve", "--port", "0", "--address-file", address, *options]
     with _running(command, place, environment) as process:
         _await(address.exists, [process], place)
         yield process, address.read_text().strip()

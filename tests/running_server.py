@@ -1,9 +1,7 @@
 """A real `fishplate serve`, with what a client needs to use it."""
 
 import json
-import os
 import subprocess
-import sys
 import time
 from collections.abc import Iterator
 from contextlib import contextmanager
@@ -12,8 +10,7 @@ from pathlib import Path
 from typing import Any
 from urllib.request import Request, urlopen
 
-FISHPLATE = Path(sys.executable).with_name("fishplate")
-PATIENCE = 120.0  # s, for starting and for jobs; on a busy machine
+from tests.real_server import PATIENCE, serving
 
 
 @dataclass(frozen=True)
@@ -50,24 +47,6 @@ class Server:
 @contextmanager
 def running_server(store: Path, *options: str, **settings: str) -> Iterator[Server]:
     """A server on a free port of this machine; its log is beside the store."""
-    address = store.with_name(store.name + ".address")
-    address.unlink(missing_ok=True)
-    log = store.with_name(store.name + ".log")
     named = {f"FISHPLATE_{name.upper()}": value for name, value in settings.items()}
-    with log.open("ab") as file:
-        process = subprocess.Popen(
-            [FISHPLATE, "serve", "--port", "0", "--store", store, "--address-file", address,
-             *options],
-            env={**os.environ, **named},
-            stderr=file,
-        )  # fmt: skip
-    try:
-        until = time.monotonic() + PATIENCE
-        while not address.exists():
-            assert process.poll() is None, log.read_text()
-            assert time.monotonic() < until, log.read_text()
-            time.sleep(0.05)
-        yield Server(process, address.read_text().strip(), store)
-    finally:
-        process.terminate()
-        process.wait(PATIENCE)
+    with serving(store, named, "--store", store, *options) as (process, url):
+        yield Server(process, url, store)

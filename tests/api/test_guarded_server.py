@@ -1,10 +1,8 @@
 """A real `fishplate serve` that other machines may reach: tokens, lines, logs, measures."""
 
 import json
-import os
 import signal
 import subprocess
-import sys
 import time
 from collections.abc import Iterator
 from dataclasses import dataclass
@@ -17,12 +15,10 @@ import pytest
 from prometheus_client.parser import text_string_to_metric_families
 
 from tests.job_documents import strip
+from tests.real_server import PATIENCE, serving
 from workers.tokens import Tokens
 
 pytestmark = pytest.mark.server
-
-FISHPLATE = Path(sys.executable).with_name("fishplate")
-PATIENCE = 120.0  # s, for starting and for jobs; on a busy machine
 
 
 @dataclass(frozen=True)
@@ -30,7 +26,6 @@ class Server:
     process: "subprocess.Popen[bytes]"
     url: str
     store: Path
-    log: Path
     tokens: dict[str, str]
 
     def ask(self, who: str | None, path: str, body: Any = None, **headers: str) -> Any:
@@ -62,7 +57,7 @@ class Server:
 def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Server]:
     """On all addresses of this machine, with one worker."""
     folder = tmp_path_factory.mktemp("guarded")
-    store, address, log = folder / "store", folder / "address", folder / "log"
+    store = folder / "store"
     made = Tokens(store)
     tokens = {
         "ana": made.add("ana", "submit", "dock")[1],
@@ -71,21 +66,8 @@ def server(tmp_path_factory: pytest.TempPathFactory) -> Iterator[Server]:
     }
     settings = {"FISHPLATE_STORE": str(store), "FISHPLATE_WORKERS": "1",
                 "FISHPLATE_PICTURES": "0", "FISHPLATE_HOUSEKEEPING_EVERY": "0.5"}  # fmt: skip
-    with log.open("wb") as file:
-        process = subprocess.Popen(
-            [FISHPLATE, "serve", "--host", "0.0.0.0", "--port", "0", "--address-file", address],
-            env={**os.environ, **settings},
-            stderr=file,
-        )
-    until = time.monotonic() + PATIENCE
-    while not address.exists():
-        assert process.poll() is None, log.read_text()
-        assert time.monotonic() < until, log.read_text()
-        time.sleep(0.05)
-    url = address.read_text().strip().replace("0.0.0.0", "127.0.0.1")
-    yield Server(process, url, store, log, tokens)
-    process.terminate()
-    process.wait(PATIENCE)
+    with serving(folder / "serve", settings, "--host", "0.0.0.0") as (process, url):
+        yield Server(process, url.replace("0.0.0.0", "127.0.0.1"), store, tokens)
 
 
 def test_without_a_token_only_liveness_and_the_documentation_are_answered(server: Server) -> None:
@@ -146,7 +128,7 @@ def test_measures_are_the_same_from_every_process(server: Server) -> None:
 
 
 def test_every_line_of_the_log_is_an_object_and_names_request_and_job(server: Server) -> None:
-    text = server.log.read_text()
+    text = server.store.with_name("serve.log").read_text()
     lines = [json.loads(line) for line in text.splitlines() if line.startswith("{")]
     order = [line for line in lines if line.get("request") == "order-17"]
     assert {line["logger"] for line in order} == {"api.jobs", "api.access"}

@@ -11,7 +11,8 @@ import psutil
 import pytest
 
 from tests.job_documents import strip
-from tests.running_server import FISHPLATE, Server, running_server
+from tests.real_server import FISHPLATE
+from tests.running_server import Server, running_server
 
 pytestmark = pytest.mark.server
 

@@ -20,7 +20,7 @@ import pytest
 import redis
 
 from tests.job_documents import strip
-from tests.running_server import FISHPLATE, PATIENCE
+from tests.real_server import FISHPLATE, PATIENCE
 from workers.tokens import Tokens
 
 # Debian has it where ordinary users do not look.

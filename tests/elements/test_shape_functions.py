@@ -8,11 +8,11 @@ import numpy as np
 import pytest
 from numpy.typing import NDArray
 from vtkmodules.vtkCommonCore import mutable
-from vtkmodules.vtkCommonDataModel import vtkGenericCell
 
 from elements import registry
 from elements.contract import ElementType
 from elements.trials import curved_shapes, straight_shapes
+from workers.verification.element_cases import parametric, vtk_cell
 
 Array = NDArray[np.float64]
 NAMES = ["T3", "T6", "Q4", "Q8"]
@@ -21,20 +21,6 @@ NAMES = ["T3", "T6", "Q4", "Q8"]
 def random_natural_points(element: ElementType, count: int = 25) -> Array:
     """Inside and somewhat outside of the element."""
     return np.random.default_rng(3).uniform(-1.2, 1.2, (count, 2))
-
-
-def vtk_cell(element: ElementType, nodes: Array) -> vtkGenericCell:
-    cell = vtkGenericCell()
-    cell.SetCellType(element.vtk_cell_type)
-    for i, (x, y) in enumerate(nodes):
-        cell.GetPointIds().SetId(i, i)
-        cell.GetPoints().SetPoint(i, x, y, 0.0)
-    return cell
-
-
-def parametric(element: ElementType, natural: Array) -> list[float]:
-    r, s = natural if element.is_triangle else (natural + 1) / 2
-    return [float(r), float(s), 0.0]
 
 
 @pytest.mark.parametrize("name", NAMES)
