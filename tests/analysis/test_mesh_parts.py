@@ -11,7 +11,7 @@ from elements.registry import get
 from tests.gallery import GALLERY, drawn, hole, polar, rectangle
 from workers.analysis.meshing.audit import flaws
 from workers.analysis.meshing.curve_table import CurveTable
-from workers.analysis.meshing.curves import Arc, Line, arc_through
+from workers.analysis.meshing.curves import Arc, Curve, Line, arc_through
 from workers.analysis.meshing.cutting import LONGEST, cut_edges
 from workers.analysis.meshing.drawing import OUTSIDE, Drawing, Edge
 from workers.analysis.meshing.flat_mesh import (
@@ -40,10 +40,10 @@ def square(count: int, bulge: float = 0.0) -> tuple[FlatMesh, Drawing]:
     c, d = number[1:, 1:].ravel(), number[1:, :-1].ravel()
     triangles = np.concatenate((np.stack((a, b, c), 1), np.stack((a, c, d), 1)))
     corners = [np.array(p, float) for p in ((0, 0), (1, 0), (1, 1), (0, 1), (0, 0))]
-    curves = [Line(p, q) for p, q in pairwise(corners)]
+    curves: list[Curve] = [Line(p, q) for p, q in pairwise(corners)]
     if bulge:
         arc = arc_through(corners[1], np.array([1 + bulge, 0.5]), corners[2])
-        curves[1] = arc  # type: ignore[call-overload]
+        curves[1] = arc
         nodes[number[:, -1]] = arc.at(np.linspace(0, 1, count + 1))
     sides = (number[0], number[:, -1], number[-1, ::-1], number[::-1, 0])
     segments = np.concatenate([np.stack((s[:-1], s[1:]), 1) for s in sides])
@@ -388,11 +388,11 @@ def test_edges_stay_whole_where_nothing_is_fine() -> None:
 def test_closest_places_of_random_curves_are_those_of_a_fine_sampling() -> None:
     """Lines and arcs in all combinations, against 400 places on each."""
     random = np.random.default_rng(5)
-    curves = [Line(*random.uniform(0, 1, (2, 2))) for _ in range(8)]
+    curves: list[Curve] = [Line(*random.uniform(0, 1, (2, 2))) for _ in range(8)]
     while len(curves) < 20:
         a, b, c = random.uniform(0, 1, (3, 2))
         if abs((b - a)[0] * (c - a)[1] - (b - a)[1] * (c - a)[0]) > 0.05:
-            curves.append(arc_through(a, b, c))  # type: ignore[arg-type]
+            curves.append(arc_through(a, b, c))
     table = CurveTable.of(curves)
     i, j = np.triu_indices(len(curves), 1)
     found = closest(table, i, j, np.full((len(i), 2, 2), np.nan), 0.0)
